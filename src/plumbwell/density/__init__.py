@@ -1,0 +1,1 @@
+"""From gravity to rock: interval densities, layers, logs, porosity, overburden."""

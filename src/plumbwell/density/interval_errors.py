@@ -1,0 +1,238 @@
+"""Errors of interval densities: the independent ones by origin with their full covariance, the common ones by factor.
+
+Two neighbouring intervals share a station, whose error moves them in opposite ways: their correlation is near
+-1/2. What all intervals share (gradient, scale, depth scale, datum or ties) is one number a survey and one vector of
+derivatives each, and is kept apart.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from plumbwell.density.interval import IntervalDensities
+from plumbwell.earth.shells import interval_density_derivatives
+from plumbwell.reduction.datums import StationGravity
+from plumbwell.reduction.effects import Anomalies, KnownParts
+from plumbwell.reduction.spread import Spread
+from plumbwell.survey.column import Array, Column, Index, Input, Law, computed, constant_column
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class ChainSpread:
+    """A covariance of k intervals: tridiagonal along chains of shared stations, plus low rank.
+
+    Parameters
+    ----------
+    diagonal : (k,) array
+    follower : (k,) int array
+        The interval that starts where this one ends, -1 for none.
+    neighbour : (k,) array
+        Chain part of the covariance with the follower.
+    columns, signs : (k, r), (r,) arrays
+        As in `Spread`.
+    """
+
+    diagonal: Array
+    follower: Index
+    neighbour: Array
+    columns: Array
+    signs: Array
+
+    def variance(self) -> Array:
+        """The k variances; rounding below 0 is taken as 0."""
+        return np.maximum(self.diagonal + self.columns**2 @ self.signs, 0.0)
+
+    def matrix(self) -> Array:
+        """The whole covariance, (k, k)."""
+        matrix = np.diag(self.diagonal) + (self.columns * self.signs) @ self.columns.T
+        first = np.flatnonzero(self.follower >= 0)
+        second = self.follower[first]
+        matrix[first, second] += self.neighbour[first]
+        matrix[second, first] += self.neighbour[first]
+        return matrix
+
+    def with_follower(self) -> Array:
+        """Covariance of each interval with its follower, (k,); 0 where there is none."""
+        second = np.maximum(self.follower, 0)
+        low = np.einsum("kr,kr,r->k", self.columns, self.columns[second], self.signs)
+        return np.where(self.follower >= 0, self.neighbour + low, 0.0)
+
+    def __add__(self, other: ChainSpread) -> ChainSpread:
+        return ChainSpread(
+            diagonal=self.diagonal + other.diagonal,
+            follower=self.follower,
+            neighbour=self.neighbour + other.neighbour,
+            columns=np.hstack([self.columns, other.columns]),
+            signs=np.concatenate([self.signs, other.signs]),
+        )
+
+
+def _followers(top: Index, base: Index) -> Index:
+    at = {station: number for number, station in enumerate(top.tolist())}
+    return np.array([at.get(station, -1) for station in base.tolist()], dtype=np.intp)
+
+
+def through(spread: Spread, top: Index, base: Index, by_top: Array, by_base: Array, follower: Index) -> ChainSpread:
+    """The covariance of quantities that answer by `by_top` and `by_base` to errors of their two stations."""
+    next_top = np.where(follower >= 0, by_top[np.maximum(follower, 0)], 0.0)
+    return ChainSpread(
+        diagonal=by_top**2 * spread.diagonal[top] + by_base**2 * spread.diagonal[base],
+        follower=follower,
+        neighbour=by_base * next_top * spread.diagonal[base],
+        columns=by_top[:, None] * spread.columns[top] + by_base[:, None] * spread.columns[base],
+        signs=spread.signs,
+    )
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class CommonTerms:
+    """Sds of what all intervals share.
+
+    Parameters
+    ----------
+    gradient_sd : float
+        Of the free-air gradient, s-2.
+    scale_sd : tuple of (str, float)
+        Instrument and relative sd of its scale, in the order of `StationGravity.responses`.
+    depth_scale_sd : float
+        Relative sd of the depth scale.
+    datum_sd : float
+        Of the absolute level of parts without a tie, m/s2.
+    """
+
+    gradient_sd: float
+    scale_sd: tuple[tuple[str, float], ...]
+    depth_scale_sd: float
+    datum_sd: float
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class IntervalErrors:
+    """Errors of interval densities.
+
+    Parameters
+    ----------
+    parts : dict of str to ChainSpread
+        Independent errors by origin: "reading", "drift", "tare", "depth"; (kg/m3)2.
+    independent : ChainSpread
+        Their sum.
+    factors : dict of str to (k,) array
+        Answer of each density to one sd of each common factor, kg/m3.
+    part_sd : dict of str to Column
+    density_sd, common_sd : Column, kg/m3
+    """
+
+    parts: dict[str, ChainSpread]
+    independent: ChainSpread
+    factors: dict[str, Array]
+    part_sd: dict[str, Column]
+    density_sd: Column
+    common_sd: Column
+
+    def common_covariance(self) -> Array:
+        """Covariance of the common part, (k, k), (kg/m3)2."""
+        columns = np.column_stack(list(self.factors.values()))
+        return columns @ columns.T
+
+
+ROOT_OF_SQUARES = Law(
+    "standard deviation",
+    "square root of the sum of the squares of its parts",
+    "independent errors add in variance",
+    lambda **parts: np.sqrt(sum(np.square(part) for part in parts.values())),
+)
+
+
+def interval_errors(
+    densities: IntervalDensities,
+    gravity: StationGravity,
+    parts: KnownParts,
+    left: Anomalies,
+    *,
+    elevation: Array,
+    collar_elevation: float,
+    vertical_depth_sd: Array,
+    stretch: Array,
+    common: CommonTerms,
+) -> IntervalErrors:
+    """Errors of the interval densities by origin.
+
+    Parameters
+    ----------
+    densities : IntervalDensities
+    gravity : StationGravity
+    parts : KnownParts
+    left : Anomalies
+    elevation : (s,) array
+        m above sea level.
+    collar_elevation : float
+    vertical_depth_sd : (s,) array
+        Sd of each station's height by its own depth error, m.
+    stretch : (s,) array
+        Vertical drop of each station for a relative change of the depth scale by 1, m.
+    common : CommonTerms
+    """
+    pairs = densities.pairs
+    top, base = pairs.top, pairs.base
+    by_top, by_base, by_top_height, by_base_height = interval_density_derivatives(
+        top_anomaly=left.disturbance.values[top],
+        base_anomaly=left.disturbance.values[base],
+        top_radius=parts.radius.values[top],
+        base_radius=parts.radius.values[base],
+        top_gradient=parts.free_air_gradient.values[top],
+        base_gradient=parts.free_air_gradient.values[base],
+    )
+    follower = _followers(top, base)
+
+    def of_gravity(spread: Spread) -> ChainSpread:
+        return through(spread, top, base, by_top, by_base, follower)
+
+    heights = Spread(
+        diagonal=vertical_depth_sd**2, columns=np.zeros((len(elevation), 0)), signs=np.zeros(0)
+    )
+    spreads = {
+        "reading": of_gravity(gravity.reading),
+        "drift": of_gravity(gravity.drift),
+        "tare": of_gravity(gravity.tare),
+        "depth": through(heights, top, base, by_top_height, by_base_height, follower),
+    }
+
+    def shared(change: Array) -> Array:
+        return by_top * change[top] + by_base * change[base]
+
+    tied = gravity.datum < 0
+    above_collar = elevation - collar_elevation
+    datum_height = np.where(tied, 0.0, above_collar[np.maximum(gravity.datum, 0)])
+    factors = {"gradient": common.gradient_sd * shared(above_collar - datum_height)}
+    for number, (name, sd) in enumerate(common.scale_sd):
+        factors[f"scale {name}"] = sd * shared(gravity.responses[:, number])
+    if common.depth_scale_sd > 0.0:
+        # A longer depth scale lowers the stations while their gravity stays.
+        lowered = by_top_height * stretch[top] + by_base_height * stretch[base]
+        factors["depth scale"] = -common.depth_scale_sd * lowered
+    if not tied.all():
+        factors["datum"] = common.datum_sd * shared(np.where(tied, 0.0, 1.0))
+    for number in range(gravity.ties.shape[1]):
+        factors[f"tie {number + 1}"] = shared(gravity.ties[:, number])
+    known = np.where(pairs.joined, 1.0, np.nan)
+    part_sd = {
+        name: constant_column(f"density_sd_{name}", "kg/m3", known * np.sqrt(spread.variance()))
+        for name, spread in spreads.items()
+    }
+    common_columns = [constant_column(name, "kg/m3", known * np.abs(one)) for name, one in factors.items()]
+    independent = spreads["reading"] + spreads["drift"] + spreads["tare"] + spreads["depth"]
+    return IntervalErrors(
+        parts=spreads,
+        independent=independent,
+        factors=factors,
+        part_sd=part_sd,
+        density_sd=computed(
+            "density_sd", "kg/m3", ROOT_OF_SQUARES, *(Input(name, one) for name, one in part_sd.items())
+        ),
+        common_sd=computed(
+            "density_common_sd", "kg/m3", ROOT_OF_SQUARES,
+            *(Input(name, one) for name, one in zip(factors, common_columns, strict=True)),
+        ),
+    )

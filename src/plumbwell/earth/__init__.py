@@ -1,0 +1,1 @@
+"""What the planet does: gravity, its change with height, rock shells, tides, the weight of the air."""

@@ -1,0 +1,1 @@
+"""Everything on disk: survey folders, logs, grids, tables written, dossiers."""

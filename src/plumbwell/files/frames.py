@@ -1,0 +1,54 @@
+"""Output tables as pandas data frames, for those who work on in Python.
+
+Columns, headings and units are those of the CSV files; values keep their full precision.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+import pandas as pd
+
+from plumbwell.study.results import Results
+from plumbwell.study.tables import TABLES, TEXT, TIME
+
+
+def frame(results: Results, name: str) -> pd.DataFrame:
+    """One output table as a data frame, a row a station, interval, layer, reading or repeat.
+
+    Parameters
+    ----------
+    results : Results
+    name : str
+        "stations", "intervals", "layers", "readings_reduced" or "repeats".
+
+    Returns
+    -------
+    pandas.DataFrame
+        Columns by the headings of the CSV file, e.g. "density [g/cm3]"; numbers as float64 with NaN for not
+        known, times as UTC timestamps. Columns of the raw readings stand as they were written, as texts.
+
+    Raises
+    ------
+    ValueError
+        There is no such table, or the survey has none of it; the text says which there are.
+    """
+    there = [one for one, table in TABLES.items() if table.rows(results) is not None]
+    if name not in there:
+        raise ValueError(f"there is no table {name!r} in these results; there are {', '.join(there)}")
+    table = TABLES[name]
+    columns = {heading: pd.Series(texts, dtype=object) for heading, texts in table.leading(results)}
+    for one in table.columns:
+        values = one.values(results)
+        if one.kind == TIME:
+            milliseconds = np.round(np.asarray(values) * 1000.0).astype("timedelta64[ms]")
+            columns[one.heading] = pd.Series(np.datetime64("2000-01-01", "ms") + milliseconds).dt.tz_localize(
+                "UTC"
+            )
+        else:
+            columns[one.heading] = pd.Series(values, dtype=object if one.kind == TEXT else np.float64)
+    return pd.DataFrame(columns)
+
+
+def frames(results: Results) -> dict[str, pd.DataFrame]:
+    """All output tables of a reduction as data frames, by name."""
+    return {name: frame(results, name) for name, table in TABLES.items() if table.rows(results) is not None}

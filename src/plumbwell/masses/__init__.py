@@ -1,0 +1,1 @@
+"""What a shape attracts: prisms, cylinders, spheres, polygons, passages, meshes, terrain."""

@@ -1,0 +1,1 @@
+"""Everything drawn, on screen or on paper."""

@@ -1,0 +1,215 @@
+"""Axes: depth windows, value scales, ticks at 1, 2 and 5 times powers of ten, the graduated depth axis.
+
+Depth grows downward on the page. Depths and values are in the units of people; px are whole where lines lie.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from math import ceil, floor, log10
+
+from PySide6.QtGui import QPainter
+
+from plumbwell.plates.lettering import draw_text, text_height, text_width
+from plumbwell.plates.numbers import number, step_decimals
+from plumbwell.plates.painting import draw_graduated_bar, hairline_across, whole
+from plumbwell.plates.theme import Theme
+
+HEAD_HEIGHT = 52
+TITLE_BASELINE, UNIT_BASELINE = 22, 41
+AXIS_WIDTH = 58
+STATION_TICK, LEAST_TICK_GAP = 4, 3
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Frame:
+    """A rectangle in px with the depth window it shows: depth grows from its top edge to its base."""
+
+    left: float
+    top: float
+    right: float
+    base: float
+    depth_top: float
+    depth_base: float
+
+    def y(self, depth: float) -> float:
+        """Return the px row of a depth."""
+        share = (depth - self.depth_top) / (self.depth_base - self.depth_top)
+        return self.top + share * (self.base - self.top)
+
+    def across(self, left: float, right: float) -> Frame:
+        """Return the frame with the same depths between other edges."""
+        return Frame(
+            left=left,
+            top=self.top,
+            right=right,
+            base=self.base,
+            depth_top=self.depth_top,
+            depth_base=self.depth_base,
+        )
+
+
+def round_step(least: float) -> tuple[float, int]:
+    """Return the smallest step of 1, 2 or 5 x 10^n that is at least `least`, and its leading figure."""
+    exponent = floor(log10(least))
+    for figure, power in ((1, exponent), (2, exponent), (5, exponent), (1, exponent + 1)):
+        # Written as text so that 5 x 10^-3 is the float nearest to 0.005, not a product of two roundings.
+        step = float(f"{figure}e{power}")
+        if step >= least * (1 - 1e-9):
+            return step, figure
+    return float(f"2e{exponent + 1}"), 2
+
+
+def multiples(step: float, low: float, high: float) -> list[float]:
+    """Return the multiples of `step` from `low` to `high`, ends included."""
+    first, last = ceil(low / step - 1e-9), floor(high / step + 1e-9)
+    decimals = step_decimals(step)
+    return [round(index * step, decimals) + 0.0 for index in range(first, last + 1)]
+
+
+def value_ticks(
+    theme: Theme, low: float, high: float, *, left: float, width: float
+) -> list[tuple[float, str, float]]:
+    """Return the ticks of a value axis, their numbers and the px columns on which the numbers are centred.
+
+    Three to six numbers where they find room, at multiples of 1, 2 or 5 x 10^n. The numbers at both ends are
+    shifted into the axis, not dropped.
+
+    Parameters
+    ----------
+    low, high : float
+        Ends of the scale.
+    left, width : float
+        Left edge and width of the axis in px.
+    """
+    best: list[tuple[float, str, float]] = []
+    for gap in (8.0, 4.0):
+        for wanted in (6, 5, 4, 3, 7, 2, 1):
+            step, _ = round_step((high - low) / wanted)
+            row: list[tuple[float, str, float]] = []
+            end = left - gap
+            for tick in multiples(step, low, high):
+                words = number(tick, step_decimals(step))
+                half = text_width(theme, "small", words) / 2
+                middle = left + (tick - low) / (high - low) * width
+                middle = min(max(middle, left + half), left + width - half)
+                if middle - half < end + gap - 1e-6:
+                    break
+                row.append((tick, words, middle))
+                end = middle + half
+            else:
+                if len(row) >= 3:
+                    return row
+                best = row if len(row) > len(best) else best
+    return best
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Graduation:
+    """Fields of a depth axis: the step of one field and how many fields lie between two numbers."""
+
+    step: float
+    fields: int
+
+    @property
+    def numbered(self) -> float:
+        """Distance between numbers."""
+        return float(f"{self.step * self.fields:.6g}")
+
+
+def strip_graduation(depth_span: float, height: float) -> Graduation:
+    """Return the graduation of a core strip: a step of 1, 2 or 5 x 10^n that makes 20 to 40 fields."""
+    step, figure = round_step(max(depth_span / 40, 4 * depth_span / height))
+    fields = 5 if figure == 2 else 2
+    while step * fields / depth_span * height < 20:
+        fields *= 5 if fields in (2, 4) else 2
+    return Graduation(step=step, fields=fields)
+
+
+def track_graduation(depth_span: float, height: float) -> Graduation:
+    """Return the graduation of the tracks' depth axis: fields of 12 to 30 px, a number every five."""
+    step, figure = round_step(12 * depth_span / height)
+    return Graduation(step=step, fields=5)
+
+
+def depth_fields(graduation: Graduation, frame: Frame, first: float, last: float) -> tuple[list[float], int]:
+    """Return the boundaries in px of the fields between two depths, and the number of the first field."""
+    depths = [first, *multiples(graduation.step, first, last), last]
+    edges = [frame.y(depth) for depth in depths]
+    edges = [edge for index, edge in enumerate(edges) if index == 0 or edge - edges[index - 1] > 0.5]
+    return edges, floor(first / graduation.step + 1e-9)
+
+
+def spaced_rows(frame: Frame, depths: Sequence[float], gap: float) -> list[int]:
+    """Return the px rows of depths inside a frame, thinned so that no two are closer than `gap`."""
+    rows: list[int] = []
+    for depth in sorted(depths):
+        if frame.depth_top <= depth <= frame.depth_base:
+            row = whole(frame.y(depth))
+            if not rows or row - rows[-1] >= gap:
+                rows.append(row)
+    return rows
+
+
+def draw_depth_axis(
+    painter: QPainter,
+    frame: Frame,
+    theme: Theme,
+    *,
+    label: str,
+    unit: str,
+    stations: Sequence[float],
+    measured: tuple[float, float],
+    head_room: float = 0.0,
+) -> list[float]:
+    """Draw the depth axis of the tracks with its head, and return the numbered depths for the grid.
+
+    Parameters
+    ----------
+    painter : QPainter
+    frame : Frame
+        The axis below its head; the head takes the 52 px above.
+    theme : Theme
+    label, unit : str
+        What depth is ("depth", "MD", "chainage") and its unit.
+    stations : sequence of float
+        Depths of stations, drawn as ticks.
+    measured : tuple of float
+        Depths from and to which the bar is drawn, inside those of the frame.
+    head_room : float
+        Empty px left of the axis' head, for a long label.
+    """
+    head = frame.top - HEAD_HEIGHT
+    unit_width = text_width(theme, "small", unit)
+    if text_width(theme, "emphasis", label) + 5 + unit_width <= frame.right - frame.left + 4:
+        box = draw_text(painter, theme, label, x=frame.left, baseline=head + TITLE_BASELINE, face="emphasis")
+        x, baseline, align = box.right() + 5, head + TITLE_BASELINE, "left"
+    else:
+        room = (frame.left - head_room, frame.right - 8)
+        draw_text(
+            painter,
+            theme,
+            label,
+            x=frame.right - 8,
+            baseline=head + TITLE_BASELINE,
+            face="emphasis",
+            align="right",
+            room=room,
+        )
+        x, baseline, align = frame.right - 8, head + UNIT_BASELINE, "right"
+    draw_text(painter, theme, unit, x=x, baseline=baseline, face="small", role="muted", align=align)
+    graduation = track_graduation(frame.depth_base - frame.depth_top, frame.base - frame.top)
+    first, last = max(measured[0], frame.depth_top), min(measured[1], frame.depth_base)
+    edges, before = depth_fields(graduation, frame, first, last)
+    bar = frame.left + 8
+    draw_graduated_bar(painter, theme, x=bar, edges=edges, fields_before=before)
+    for row in spaced_rows(frame, stations, LEAST_TICK_GAP):
+        hairline_across(painter, bar + 4, bar + 4 + STATION_TICK, row, theme.colour("ink"))
+    numbered = multiples(graduation.numbered, first, last)
+    cap = text_height(theme, "small")
+    for depth in numbered:
+        baseline = min(max(frame.y(depth) + cap / 2, frame.top + cap + 4), frame.base - 1)
+        words = number(depth, step_decimals(graduation.numbered))
+        draw_text(painter, theme, words, x=bar + 13, baseline=baseline, face="small")
+    return numbered

@@ -1,0 +1,372 @@
+"""A reduced survey on one plate: core strip, ledger, fan and tracks, as an SVG or PNG file.
+
+The plate is 1440 px wide and 900 to 1440 px high. Equal plates give equal bytes: nothing comes from a
+clock.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from pathlib import Path
+
+from PySide6.QtCore import QBuffer, QIODevice, QRect, QSize
+from PySide6.QtGui import QImage, QPainter
+from PySide6.QtSvg import QSvgGenerator
+
+from plumbwell.plates.application import drawing_application
+from plumbwell.plates.axis import AXIS_WIDTH, HEAD_HEIGHT, Frame, draw_depth_axis
+from plumbwell.plates.fan import draw_fan, interval_ribbons, station_ribbons
+from plumbwell.plates.findings_list import draw_findings_list
+from plumbwell.plates.ledger_excerpt import (
+    LEAST_ROW_HEIGHT,
+    ROW_HEIGHT,
+    Excerpt,
+    column_widths,
+    draw_excerpt,
+    interval_excerpt,
+    station_excerpt,
+)
+from plumbwell.plates.lettering import draw_text, text_width, wrapped
+from plumbwell.plates.naming import draw_curve_names, draw_layer_names
+from plumbwell.plates.painting import hairline_across, painting
+from plumbwell.plates.plate import SurveyPlate
+from plumbwell.plates.strip import KEY_HEIGHT, draw_strip, draw_tone_key, strip_room
+from plumbwell.plates.survey_tracks import survey_tracks
+from plumbwell.plates.svg_paths import compact_svg
+from plumbwell.plates.theme import Theme
+from plumbwell.plates.track import Track, draw_grid, draw_track, draw_track_head
+
+WIDTH, LEAST_HEIGHT, GREATEST_HEIGHT = 1440, 900, 1440
+MARGIN, GAP = 16, 12
+TITLE_HEIGHT = 72
+FAN_WIDTH = 60
+LINE = 18
+DEPTH_PAD = 8.0
+SCALE_REMARK = "bars and bands 2 sd"
+REMARK_GAP = 28.0
+LEDGER_WIDTH, LEAST_TRACKS = 560.0, 520.0
+WIDEST_TITLE = 190.0
+METRE = 39.3701 * 96
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Layout:
+    """Where the parts of a plate lie, in px."""
+
+    width: int
+    height: int
+    caution: tuple[str, ...]
+    remarks: tuple[tuple[str, ...], ...]
+    strip_right: float
+    body_top: int
+    body_base: int
+    foot_top: int
+    excerpt: Excerpt | None
+    row_height: int
+
+    @property
+    def head_top(self) -> int:
+        """Return the upper edge of the heads."""
+        return self.body_top - HEAD_HEIGHT
+
+
+def _remark_lines(theme: Theme, remarks: tuple[str, ...], width: float) -> list[tuple[str, ...]]:
+    """Return remarks set in lines, in their order; one too long for a line is broken."""
+    room = width - text_width(theme, "small", SCALE_REMARK) - REMARK_GAP
+    pieces = [piece for remark in remarks for piece in wrapped(theme, "small", remark, room)]
+    lines: list[tuple[str, ...]] = []
+    used = 0.0
+    for piece in pieces:
+        needed = text_width(theme, "small", piece)
+        if lines and used + REMARK_GAP + needed <= room:
+            lines[-1] = (*lines[-1], piece)
+            used += REMARK_GAP + needed
+        else:
+            lines.append((piece,))
+            used = needed
+    return lines or [()]
+
+
+def plate_layout(plate: SurveyPlate, theme: Theme, *, height: int | None = None) -> Layout:
+    """Return the layout of a plate: its size, its lines of text and the ledger it has room for.
+
+    Rows are 24 px high and the plate grows with them up to 1440 px; then rows get lower, to 14 px; beyond
+    that the ledger and fan are left out and the tracks take their room.
+
+    Parameters
+    ----------
+    height : int, optional
+        Height of the plate where it is given from outside.
+    """
+    inner = WIDTH - 2 * MARGIN
+    caution = tuple(wrapped(theme, "text", plate.caution, inner)) if plate.caution else ()
+    remarks = _remark_lines(theme, plate.remarks, inner)
+    above = TITLE_HEIGHT + (len(caution) * 20 + 20 if caution else 0) + HEAD_HEIGHT + 8
+    below = len(remarks) * LINE + 26
+    excerpt = interval_excerpt(plate) if plate.intervals else station_excerpt(plate)
+    most = (height or GREATEST_HEIGHT) - above - below
+    row_height = min(ROW_HEIGHT, most // max(excerpt.rows, 1))
+    shown = excerpt if excerpt.rows and row_height >= LEAST_ROW_HEIGHT else None
+    rows_height = excerpt.rows * row_height if shown else 0
+    if height is None:
+        height = min(max(above + rows_height + below, LEAST_HEIGHT), GREATEST_HEIGHT)
+        if shown is None and excerpt.rows:
+            height = 1200
+    return Layout(
+        width=WIDTH,
+        height=height,
+        caution=caution,
+        remarks=tuple(remarks),
+        strip_right=strip_room(theme, plate),
+        body_top=above,
+        body_base=height - below,
+        foot_top=height - below + 8,
+        excerpt=shown,
+        row_height=row_height,
+    )
+
+
+def _draw_frame_text(painter: QPainter, plate: SurveyPlate, layout: Layout, theme: Theme) -> None:
+    """Draw title, subtitle, caution and foot."""
+    right = layout.width - MARGIN
+    room = (MARGIN, right)
+    draw_text(painter, theme, plate.title, x=MARGIN, baseline=36, face="heading", room=room)
+    draw_text(painter, theme, plate.subtitle, x=MARGIN, baseline=57, face="small", role="muted", room=room)
+    if layout.caution:
+        for y in (TITLE_HEIGHT, TITLE_HEIGHT + len(layout.caution) * 20 + 10):
+            hairline_across(painter, MARGIN, right, y, theme.colour("ink"))
+        for index, line in enumerate(layout.caution):
+            draw_text(painter, theme, line, x=MARGIN, baseline=TITLE_HEIGHT + 20 + index * 20, room=room)
+    else:
+        hairline_across(painter, layout.strip_right, layout.width, TITLE_HEIGHT, theme.colour("rule"))
+    hairline_across(painter, 0, layout.width, layout.foot_top, theme.colour("rule"))
+    for index, pieces in enumerate(layout.remarks):
+        x = float(MARGIN)
+        baseline = layout.foot_top + 19 + index * LINE
+        for piece in pieces:
+            box = draw_text(
+                painter, theme, piece, x=x, baseline=baseline, face="small", role="muted", room=room
+            )
+            x = box.right() + REMARK_GAP
+    draw_text(
+        painter,
+        theme,
+        SCALE_REMARK,
+        x=right,
+        baseline=layout.foot_top + 19,
+        face="small",
+        role="muted",
+        align="right",
+    )
+
+
+def _draw_ledger(
+    painter: QPainter, plate: SurveyPlate, excerpt: Excerpt, layout: Layout, frame: Frame, theme: Theme
+) -> float:
+    """Draw the ledger and the fan, and return the right edge of the fan."""
+    left = layout.strip_right + 16
+    widths = column_widths(excerpt, theme, layout.row_height)
+    tracks_left = layout.width - MARGIN - LEAST_TRACKS - AXIS_WIDTH - FAN_WIDTH
+    spare = max(min(LEDGER_WIDTH, tracks_left - left) - sum(widths), 0.0)
+    widths = [float(int(width + min(spare / len(widths), 14.0))) for width in widths]
+    draw_excerpt(
+        painter, excerpt, theme, left=left, top=layout.body_top, widths=widths, row_height=layout.row_height
+    )
+    fan_left = left + sum(widths)
+    if plate.intervals:
+        ribbons = interval_ribbons(
+            [(i.top, i.base, i.density, i.from_prior) for i in plate.intervals],
+            first_row=layout.body_top,
+            row_height=layout.row_height,
+        )
+    else:
+        depths = sorted(station.depth for station in plate.stations)
+        ribbons = station_ribbons(
+            depths, [None] * (len(depths) - 1), first_row=layout.body_top, row_height=layout.row_height
+        )
+    draw_findings_list(
+        painter,
+        plate.findings,
+        theme,
+        left=left,
+        top=layout.body_top + excerpt.rows * layout.row_height + 24,
+        right=fan_left - 16,
+        base=layout.body_base,
+    )
+    draw_fan(painter, ribbons, frame.across(fan_left, fan_left + FAN_WIDTH), theme)
+    return fan_left + FAN_WIDTH
+
+
+def _track_widths(theme: Theme, tracks: list[Track], total: float) -> list[float]:
+    """Return the width of each track: by weight, but wide enough for its title unless that is very long."""
+    least = [
+        min(
+            text_width(theme, "emphasis", track.title) + text_width(theme, "small", track.unit) + 8,
+            WIDEST_TITLE,
+        )
+        for track in tracks
+    ]
+    held: set[int] = set()
+    while True:
+        free = [index for index in range(len(tracks)) if index not in held]
+        part = (total - sum(least[index] for index in held)) / max(
+            sum(tracks[index].weight for index in free), 1e-9
+        )
+        narrow = {index for index in free if tracks[index].weight * part < least[index]}
+        if not narrow or narrow == set(free):
+            return [
+                least[index] if index in held else tracks[index].weight * part for index in range(len(tracks))
+            ]
+        held |= narrow
+
+
+def _draw_tracks(
+    painter: QPainter, plate: SurveyPlate, tracks: list[Track], frame: Frame, theme: Theme
+) -> None:
+    """Draw tracks side by side over one grid, with names at the curves and under the tops of layers."""
+    widths = _track_widths(theme, tracks, frame.right - frame.left - GAP * (len(tracks) - 1))
+    left = frame.left
+    names_stand = max(range(len(tracks)), key=lambda index: tracks[index].weight)
+    for index, track in enumerate(tracks):
+        right = left + widths[index]
+        own = frame.across(float(int(left)), float(int(right)))
+        draw_track_head(painter, track, own, theme)
+        boxes = draw_track(painter, track, own, theme)
+        boxes += draw_curve_names(painter, track, own, theme, taken=boxes)
+        if index == names_stand:
+            draw_layer_names(painter, track, own, theme, markers=plate.names_in_view, taken=boxes)
+        left = right + GAP
+
+
+def draw_figure(painter: QPainter, plate: SurveyPlate, size: tuple[int, int], theme: Theme) -> None:
+    """Draw a survey's plate.
+
+    Parameters
+    ----------
+    painter : QPainter
+        Paints in px; the ground is filled here.
+    plate : SurveyPlate
+    size : tuple of int
+        Width (1440) and height in px, as `figure_size` gives it.
+    theme : Theme
+    """
+    layout = plate_layout(plate, theme, height=size[1])
+    painter.fillRect(QRect(0, 0, layout.width, layout.height), theme.colour("ground"))
+    low, high = plate.depth_range
+    key_top = layout.foot_top - KEY_HEIGHT - 4
+    strip = Frame(
+        left=0,
+        top=layout.head_top + 12,
+        right=layout.strip_right,
+        base=(key_top if plate.has_density else layout.foot_top) - 14,
+        depth_top=low,
+        depth_base=high,
+    )
+    draw_strip(painter, plate, strip, theme)
+    if plate.has_density:
+        draw_tone_key(painter, theme, left=MARGIN + 1, top=key_top, width=176)
+    pad = DEPTH_PAD * (high - low) / (layout.body_base - layout.body_top - 2 * DEPTH_PAD)
+    body = Frame(
+        left=layout.strip_right + 16,
+        top=layout.body_top,
+        right=layout.width - MARGIN,
+        base=layout.body_base,
+        depth_top=low - pad,
+        depth_base=high + pad,
+    )
+    fan_right = body.left
+    if layout.excerpt is not None:
+        fan_right = _draw_ledger(painter, plate, layout.excerpt, layout, body, theme)
+    axis_width, head_room = float(AXIS_WIDTH), FAN_WIDTH - 8.0
+    if layout.excerpt is None:
+        axis_width, head_room = (
+            max(axis_width, min(text_width(theme, "emphasis", plate.depth_label), 140.0)),
+            0.0,
+        )
+    axis = body.across(fan_right, fan_right + axis_width)
+    stations = [station.depth for station in plate.stations]
+    depths = draw_depth_axis(
+        painter,
+        axis,
+        theme,
+        label=plate.depth_label,
+        unit=plate.depth_unit,
+        stations=stations,
+        measured=(low, high),
+        head_room=head_room,
+    )
+    tracks = survey_tracks(plate, wide=layout.excerpt is None)
+    across = body.across(axis.right + GAP / 2, body.right)
+    draw_grid(
+        painter,
+        across,
+        theme,
+        depths=depths,
+        markers=[depth for _, depth in plate.markers],
+        ground=low < 0 < high,
+    )
+    if tracks:
+        _draw_tracks(painter, plate, tracks, across, theme)
+    hairline_across(painter, body.left, body.right, layout.body_top - 1, theme.colour("ink"))
+    _draw_frame_text(painter, plate, layout, theme)
+
+
+def figure_size(plate: SurveyPlate, theme: Theme) -> tuple[int, int]:
+    """Return the width and height of a plate in px: 1440 wide, as high as its rows need from 900 to 1440."""
+    drawing_application()
+    layout = plate_layout(plate, theme)
+    return layout.width, layout.height
+
+
+def svg_bytes(plate: SurveyPlate, theme: Theme) -> bytes:
+    """Return a survey's plate as an SVG; text stands in it as outlines."""
+    width, height = figure_size(plate, theme)
+    buffer = QBuffer()
+    buffer.open(QIODevice.OpenModeFlag.WriteOnly)
+    generator = QSvgGenerator()
+    generator.setOutputDevice(buffer)
+    generator.setResolution(96)
+    generator.setSize(QSize(width, height))
+    generator.setViewBox(QRect(0, 0, width, height))
+    generator.setTitle(plate.title)
+    generator.setDescription(plate.subtitle)
+    with painting(generator) as painter:
+        draw_figure(painter, plate, (width, height), theme)
+    return compact_svg(bytes(buffer.data().data()))
+
+
+def figure_image(plate: SurveyPlate, theme: Theme, scale: float = 2) -> QImage:
+    """Return a survey's plate as an image, `scale` device px to each px of the plate."""
+    width, height = figure_size(plate, theme)
+    image = QImage(round(width * scale), round(height * scale), QImage.Format.Format_RGB32)
+    for set_resolution in (image.setDotsPerMeterX, image.setDotsPerMeterY):
+        set_resolution(round(METRE * scale))
+    with painting(image) as painter:
+        painter.scale(scale, scale)
+        draw_figure(painter, plate, (width, height), theme)
+    return image
+
+
+def write_svg(path: Path, plate: SurveyPlate, theme: Theme) -> None:
+    """Write a survey's plate as an SVG.
+
+    Raises
+    ------
+    OSError
+        The file cannot be written.
+    """
+    path.write_bytes(svg_bytes(plate, theme))
+
+
+def write_png(path: Path, plate: SurveyPlate, theme: Theme, scale: float = 2) -> None:
+    """Write a survey's plate as a PNG, `scale` device px to each px of the plate.
+
+    Raises
+    ------
+    OSError
+        The file cannot be written.
+    """
+    buffer = QBuffer()
+    buffer.open(QIODevice.OpenModeFlag.WriteOnly)
+    figure_image(plate, theme, scale).save(buffer, "PNG")  # type: ignore[call-overload]
+    path.write_bytes(bytes(buffer.data().data()))

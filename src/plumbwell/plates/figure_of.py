@@ -1,0 +1,157 @@
+"""The plate of a reduced survey: results in SI turned into what the plate shows, and written as figures.
+
+Depth on the plate is measured depth where every station of the column lies on the path, else vertical depth
+below the depth datum.
+"""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+
+from plumbwell import __version__
+from plumbwell.earth.constants import MILLIGAL
+from plumbwell.plates.figure import write_png, write_svg
+from plumbwell.plates.plate import PlateFinding, PlateInterval, PlateStation, SurveyPlate
+from plumbwell.plates.theme import theme_named
+from plumbwell.reduction.positions import well_path
+from plumbwell.reduction.reference_rock import log_depth
+from plumbwell.study.results import Results
+from plumbwell.survey.column import Array
+
+GRAM_PER_CM3 = 1000.0
+CAUTION = (
+    "An interpretation with a stated error: other masses could explain it. Verify by drilling or another method "
+    "before anyone relies on it."
+)
+
+
+def _known(value: float, factor: float = 1.0) -> float | None:
+    return float(value) / factor if np.isfinite(value) else None
+
+
+def survey_plate(results: Results) -> SurveyPlate:
+    """The plate of a reduced survey.
+
+    Parameters
+    ----------
+    results : Results
+    """
+    survey, stations, intervals = results.survey, results.stations, results.intervals
+    site, located = survey.site, stations.located
+    column = np.array([role == "column" for role in stations.role])
+    mark = located.mark_depth.values
+    measured = bool(np.isfinite(mark[column]).all())
+    depth = mark if measured else located.positions.tvd.values
+    path = well_path(survey.path, north_correction=site.north_correction)
+
+    def shown_depth(of_hole: Array) -> list[float]:
+        return (of_hole if measured else path.at(of_hole)[0]).tolist()
+
+    pairs = intervals.densities.pairs
+    flagged = {
+        number for finding in results.findings if finding.severity != "note" for number in finding.intervals
+    }
+    rows = []
+    for number, (top, base) in enumerate(zip(pairs.top.tolist(), pairs.base.tolist(), strict=True)):
+        sd = _known(intervals.density_sd.values[number], GRAM_PER_CM3)
+        difference = _known(intervals.density_less_log.values[number], GRAM_PER_CM3)
+        rows.append(
+            PlateInterval(
+                number=number + 1,
+                top=float(depth[top]),
+                base=float(depth[base]),
+                density=_known(intervals.density.values[number], GRAM_PER_CM3),
+                sd=sd,
+                common_sd=_known(intervals.density_common_sd.values[number], GRAM_PER_CM3),
+                slab=_known(intervals.density_slab.values[number], GRAM_PER_CM3),
+                log=_known(intervals.log_density.values[number], GRAM_PER_CM3),
+                difference=difference,
+                difference_sd=sd if difference is not None else None,
+                ratio=difference / sd if difference is not None and sd else None,
+                flagged=number in flagged,
+            )
+        )
+    logs, values = [], []
+    for log in survey.logs[:1]:
+        logs = shown_depth(log_depth(log, site))
+        values = [_known(one, GRAM_PER_CM3) for one in log.density.values.tolist()]
+    markers = (
+        []
+        if survey.markers is None
+        else list(zip(survey.markers.marker, shown_depth(survey.markers.depth.values), strict=True))
+    )
+    deepest = float(np.nanmax(depth[column])) if column.any() else 0.0
+    used = np.flatnonzero(column & np.isfinite(depth))
+    return SurveyPlate(
+        title=site.name,
+        subtitle=f"{len(used)} stations, {len(rows)} intervals, to {deepest:.0f} m",
+        depth_label="MD" if measured else "TVD",
+        intervals=tuple(rows),
+        stations=tuple(
+            PlateStation(
+                label=stations.label[one],
+                depth=float(depth[one]),
+                gravity=_known(stations.gravity.values[one], MILLIGAL),
+                gravity_sd=_known(stations.gravity_sd.values[one], MILLIGAL),
+                anomaly=_known(stations.anomalies.anomaly.values[one], MILLIGAL),
+                anomaly_sd=_known(stations.gravity_sd.values[one], MILLIGAL),
+            )
+            for one in used.tolist()
+        ),
+        markers=tuple((name, float(at)) for name, at in markers if np.isfinite(at)),
+        log_depths=tuple(logs),
+        log_values=tuple(values),
+        findings=tuple(
+            PlateFinding(severity=finding.severity, depth=_finding_depth(finding, depth, pairs.top), words="")
+            for finding in results.findings
+            if finding.severity != "note"
+        ),
+        remarks=_remarks(results),
+        caution=CAUTION,
+        gravity_label="gravity" if results.absolute else "relative gravity",
+    )
+
+
+def _finding_depth(finding, depth: Array, top: Array) -> float | None:  # type: ignore[no-untyped-def]
+    if finding.stations:
+        return _known(depth[finding.stations[0]])
+    return _known(depth[top[finding.intervals[0]]]) if finding.intervals else None
+
+
+def _remarks(results: Results) -> tuple[str, ...]:
+    """What the numbers rest on, for the foot of the plate."""
+    recipe, choice = results.recipe, results.choice
+    kind = "normal" if choice.measured is None else "measured"
+    reference = recipe.reference_density
+    rock = f"{reference / GRAM_PER_CM3:.3g} g/cm³" if isinstance(reference, float) else f"by {reference}"
+    dof = results.intervals.dof
+    return (
+        f"shell form; {recipe.normal_gravity}, {kind} gradient {choice.gradient / MILLIGAL:.5f} mGal/m",
+        f"reference rock {rock}",
+        "gravity absolute by ties" if results.absolute else "gravity relative to the datum station",
+        f"{dof} degrees of freedom",
+        f"Plumbwell {__version__}",
+    )
+
+
+def write_figures(results: Results, folder: Path) -> tuple[Path, Path]:
+    """Write figure.svg and figure.png of a reduced survey; gives their paths.
+
+    Parameters
+    ----------
+    results : Results
+    folder : Path
+        Existing folder.
+
+    Raises
+    ------
+    OSError
+        When a figure cannot be written.
+    """
+    plate, theme = survey_plate(results), theme_named("print")
+    paths = (folder / "figure.svg", folder / "figure.png")
+    write_svg(paths[0], plate, theme)
+    write_png(paths[1], plate, theme)
+    return paths

@@ -1,0 +1,1 @@
+"""From readings to gravity at the stations, freed of everything that is known."""

@@ -1,0 +1,325 @@
+"""Readings -> station gravity, drift and noise, by one adjustment of all runs.
+
+`adjusted` fits the network: reading noise from within visits, drift orders by F test, re-seating noise by
+restricted likelihood, then the solution and what it leaves at every reading. Nothing here knows of depth;
+the datum is set by `datums.referred_gravity`.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from plumbwell.reduction.design import (
+    Design,
+    DriftBasis,
+    DriftUnknown,
+    VisitRegressors,
+    design,
+    regressor,
+    visit_regressors,
+)
+from plumbwell.reduction.drift_order import Fit, OrderTest, chosen_orders
+from plumbwell.reduction.network import Rank, Solution, TieRows, rank_of_visits, solve
+from plumbwell.reduction.network_parts import Parts, undetermined
+from plumbwell.reduction.variances import ReadingNoise, Reseating, reading_noise, reseating, stated_reseating
+from plumbwell.reduction.visits import Visits
+from plumbwell.survey.column import Array, Index
+from plumbwell.survey.errors import NumericalError
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class NoiseTerms:
+    """What the instruments state about noise, one a row of the readings, m/s2.
+
+    Parameters
+    ----------
+    reading_sd : (n,) array
+        NaN where none is stated.
+    reading_floor, reseating_sd, station_floor : (n,) arrays
+    estimate : bool
+        False: as given.
+    """
+
+    reading_sd: Array
+    reading_floor: Array
+    reseating_sd: Array
+    station_floor: Array
+    estimate: bool
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class Adjustment:
+    """The adjusted network before its datum is set.
+
+    Parameters
+    ----------
+    basis, visits, design, solution, noise, reseating
+        What the fit rests on.
+    tests : tuple of OrderTest
+    held : (n,) array
+        Known drift of each row, m/s2.
+    visit_mean : (v,) array
+        Visit means of the observations less known drift.
+    station_floor : (s,) array
+        m/s2.
+    border_drift : (n,) array
+        Drift and tares of each row from the border unknowns, run bias left out, m/s2.
+    visit_effect, residual, standardised, redundancy : (n,) arrays
+        NaN where they have no meaning (unused rows; standardised where nothing checks the reading).
+        `residual` of unused rows is the observation less its prediction.
+    """
+
+    basis: DriftBasis
+    visits: Visits
+    design: Design
+    solution: Solution
+    noise: ReadingNoise
+    reseating: Reseating
+    tests: tuple[OrderTest, ...]
+    held: Array
+    visit_mean: Array
+    station_floor: Array
+    border_drift: Array
+    visit_effect: Array
+    residual: Array
+    standardised: Array
+    redundancy: Array
+
+    @property
+    def orders(self) -> tuple[int, ...]:
+        """Drift order by run code."""
+        return self.design.orders
+
+    def unknown(self, wanted: DriftUnknown) -> tuple[float, float]:
+        """Estimate and sd of a border unknown (drift per power of scaled time); 0, 0 when it is held at 0."""
+        if wanted not in self.design.unknowns:
+            return 0.0, 0.0
+        number = self.design.unknowns.index(wanted)
+        return float(self.solution.unknown[number, 0]), float(np.sqrt(self.solution.border[number, number]))
+
+
+def visit_means(weight: Array, values: Array, start: Index) -> Array:
+    """Weighted means over visits of used rows' values, (u,) or (u, m).
+
+    `weight` (u,) sums to 1 within a visit; `start` (v + 1,) marks where each visit starts.
+    """
+    shaped = weight if values.ndim == 1 else weight[:, None]
+    return np.add.reduceat(shaped * values, start[:-1], axis=0)
+
+
+def adjusted(
+    observed: Array,
+    basis: DriftBasis,
+    visits: Visits,
+    ties: TieRows,
+    parts: Parts,
+    terms: NoiseTerms,
+    *,
+    n_stations: int,
+    start_orders: tuple[int, ...],
+    automatic: tuple[int, ...],
+    station: Index,
+    responses: tuple[Array, ...] = (),
+) -> Adjustment:
+    """The adjusted network.
+
+    Parameters
+    ----------
+    observed : (n,) array
+        Readings with all corrections made, m/s2.
+    basis, visits, ties, parts, terms
+    n_stations : int
+    start_orders : tuple of int by run code
+        Given orders; 1 for automatic runs.
+    automatic : tuple of int
+        Codes of the runs whose order is chosen.
+    station : (n,) int array
+        Station of each row, -1 for none.
+    responses : tuple of (n,) arrays
+        Further right-hand sides, e.g. the calibrated readings of one instrument, whose answers in gravity
+        stand in the further columns of `solution.gravity`.
+    """
+    rows = visits.rows
+    orders = tuple(
+        0 if not basis.length[run] > 0.0 or _instant(visits, run) else order for run, order in enumerate(start_orders)
+    )
+    automatic = tuple(run for run in automatic if orders[run] > 0)
+    lost: list[DriftUnknown] = []
+
+    made: dict[tuple[int, ...], tuple[Design, Rank]] = {}
+
+    def designed(chosen: tuple[int, ...], regressors: VisitRegressors) -> tuple[Design, Rank]:
+        if chosen not in made:
+            one = design(
+                basis, visits, regressors, n_stations=n_stations, orders=chosen, dropped=parts.dropped, lost=tuple(lost)
+            )
+            made[chosen] = (one, rank_of_visits(one))
+        return made[chosen]
+
+    counts = np.diff(visits.start)
+    held = basis.held(rows, orders)
+    plain = visit_regressors(basis, visits, np.repeat(1.0 / counts, counts))
+    first, rank = designed(orders, plain)
+    while (missing := undetermined(first, ties, rank)) is not None:
+        lost.append(missing)
+        made.clear()
+        first, rank = designed(orders, plain)
+    values = observed[rows] - held
+    means = np.add.reduceat(values, visits.start[:-1]) / counts
+    stated = terms.reading_sd[rows]
+    rough = _solved(first, np.full(len(visits), 1.0 / float(np.mean(terms.reseating_sd[rows] ** 2))), means, ties)
+    drift = border_drift(basis, first, rough.unknown[:, 0], rows)
+    noise = reading_noise(
+        visits, values - drift, stated=stated, floor=terms.reading_floor[rows], estimate=terms.estimate
+    )
+    regressors = visit_regressors(basis, visits, noise.weight)
+    made.clear()
+    u0 = stated_reseating(
+        noise,
+        reseating_sd=terms.reseating_sd[rows][visits.start[:-1]],
+        stated=stated,
+        estimate=terms.estimate,
+    )
+
+    mean = visit_means(noise.weight, values, visits.start)
+
+    def fit(chosen: tuple[int, ...]) -> Fit | None:
+        one, rank = designed(chosen, regressors)
+        if undetermined(one, ties, rank) is not None:
+            return None
+        found = reseating(one, mean, noise, ties, rank=rank, stated_variance=u0, estimate=terms.estimate)
+        weight = 1.0 / (noise.variance + found.variance)
+        return Fit(freedom=found.freedom, solution=_solved(one, weight, mean, ties))
+
+    def squares(chosen: tuple[int, ...], above: Solution) -> float:
+        return _solved(designed(chosen, regressors)[0], above.weight, mean, ties).sum_of_squares()
+
+    tests: tuple[OrderTest, ...] = ()
+    if automatic:
+        orders, tests = chosen_orders(orders, automatic, fit, squares)
+    final, rank = designed(orders, regressors)
+    seat = reseating(final, mean, noise, ties, rank=rank, stated_variance=u0, estimate=terms.estimate)
+    weight = 1.0 / (noise.variance + seat.variance)
+    answers = [visit_means(noise.weight, one[rows], visits.start) for one in responses]
+    solution = _solved(final, weight, np.column_stack([mean, *answers]), ties)
+    everywhere = np.arange(len(observed))
+    whole_held = basis.held(everywhere, orders)
+    drift_all = border_drift(basis, final, solution.unknown[:, 0], everywhere)
+    checked = _checked(observed - whole_held, basis, visits, solution, noise, seat, station)
+    floor = np.zeros(n_stations)
+    np.maximum.at(floor, station[rows], terms.station_floor[rows])
+    bias = run_bias(basis, final, solution.unknown[:, 0])
+    return Adjustment(
+        basis=basis,
+        visits=visits,
+        design=final,
+        solution=solution,
+        noise=noise,
+        reseating=seat,
+        tests=tests,
+        held=whole_held,
+        visit_mean=mean,
+        station_floor=floor,
+        border_drift=drift_all - bias[basis.run],
+        visit_effect=checked[0],
+        residual=checked[1],
+        standardised=checked[2],
+        redundancy=checked[3],
+    )
+
+
+def _instant(visits: Visits, run: int) -> bool:
+    """True for a run whose used readings all share one time: it has no drift."""
+    length = visits.run_length[run]
+    return not length > 0.0
+
+
+def _solved(one: Design, weight: Array, observed: Array, ties: TieRows) -> Solution:
+    try:
+        return solve(one, weight, observed if observed.ndim == 2 else observed[:, None], ties)
+    except np.linalg.LinAlgError as error:
+        raise NumericalError(
+            "the network of readings could not be solved: its drift terms cannot be told apart; "
+            "lower drift_order or list fewer tares"
+        ) from error
+
+
+def run_bias(basis: DriftBasis, one: Design, unknown: Array) -> Array:
+    """Bias by run code, m/s2; 0 where it is held."""
+    bias = np.zeros(len(basis.start))
+    for number, what in enumerate(one.unknowns):
+        if what.kind == "bias":
+            bias[what.run] = unknown[number]
+    return bias
+
+
+def border_drift(basis: DriftBasis, one: Design, unknown: Array, rows: Index) -> Array:
+    """What the border unknowns (bias, drift, tares) put on the given rows, m/s2."""
+    total = np.zeros(len(rows))
+    run = basis.run[rows]
+    arranged = np.argsort(run, kind="stable")
+    edges = np.searchsorted(run[arranged], np.arange(len(basis.start) + 1))
+    for number, what in enumerate(one.unknowns):
+        mine = arranged[edges[what.run] : edges[what.run + 1]]
+        if mine.size:
+            total[mine] += unknown[number] * regressor(basis, what, rows[mine])
+    return total
+
+
+def _checked(
+    values: Array,
+    basis: DriftBasis,
+    visits: Visits,
+    solution: Solution,
+    noise: ReadingNoise,
+    seat: Reseating,
+    station: Index,
+) -> tuple[Array, Array, Array, Array]:
+    """Visit effect, residual, standardised residual and redundancy of every row."""
+    n = len(values)
+    effect, standardised, redundancy = (np.full(n, np.nan) for _ in range(3))
+    one = solution.design
+    gravity, border = solution.gravity[:, 0], solution.border
+    everywhere = np.arange(n)
+    predicted = np.where(station >= 0, gravity[np.maximum(station, 0)], np.nan)
+    predicted = predicted + border_drift(basis, one, solution.unknown[:, 0], everywhere)
+    without = np.setdiff1d(np.arange(len(basis.start)), visits.run_order)
+    residual = np.where(np.isin(basis.run, without), np.nan, values - predicted)
+    variance = noise.variance + seat.variance
+    kept = seat.variance / variance
+    spread = solution.mean @ border
+    at_station = np.einsum("sq,sq->s", spread, solution.mean)
+    visit_of = np.repeat(np.arange(len(visits)), np.diff(visits.start))
+    by_run: dict[int, list[int]] = {run: [] for run in visits.run_order.tolist()}
+    for number, what in enumerate(one.unknowns):
+        by_run[what.run].append(number)
+    for run, numbers in by_run.items():
+        mine = np.flatnonzero(visits.run == run)
+        first, last = int(mine[0]), int(mine[-1]) + 1
+        a, b = int(visits.start[first]), int(visits.start[last])
+        start = visits.start[first : last + 1] - a
+        rows, visit = visits.rows[a:b], visit_of[a:b]
+        z = np.column_stack([regressor(basis, one.unknowns[k], rows) for k in numbers] or [np.zeros((b - a, 0))])
+        z_mean = visit_means(noise.weight[a:b], z, start)[visit - first]
+        block = border[np.ix_(numbers, numbers)]
+        where = station[rows]
+        cross = spread[where][:, numbers]
+        base = 1.0 / solution.total[where] + at_station[where]
+        of_mean = np.einsum("rm,rm->r", z_mean, cross)
+        z_block = z_mean @ block
+        own = np.einsum("rm,rm->r", z_block, z) - np.einsum("rm,rm->r", z, cross) - of_mean + base
+        fit = np.einsum("rm,rm->r", z_block, z_mean) - 2.0 * of_mean + base
+        apart = z - z_mean
+        tilt = np.einsum("rm,mk,rk->r", apart, block, apart)
+        share = noise.weight[a:b]
+        off = visit_means(share, residual[rows], start)[visit - first]
+        effect[rows] = kept[visit] * off
+        residual[rows] -= effect[rows]
+        checked = np.maximum(1.0 - fit / variance[visit], 0.0)
+        sd2 = noise.sd[a:b] ** 2 - noise.variance[visit] + (1.0 - kept[visit]) ** 2 * variance[visit] * checked + tilt
+        enough = sd2 > 1e-9 * noise.sd[a:b] ** 2
+        standardised[rows] = np.where(enough, residual[rows] / np.sqrt(np.where(enough, sd2, 1.0)), np.nan)
+        redundancy[rows] = 1.0 - own * share / variance[visit]
+    return effect, residual, standardised, redundancy

@@ -1,0 +1,177 @@
+"""The datum of each network part, and station gravity with its errors by origin.
+
+Where a tie fixes a part its gravity is absolute; else gravity is 0 at the part's datum station and every
+error is that of the difference from there.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from plumbwell.reduction.adjustment import Adjustment, run_bias
+from plumbwell.reduction.network import NO_TIES, Solution, TieRows, border_matrix
+from plumbwell.reduction.network_parts import Parts
+from plumbwell.reduction.spread import Spread, diagonal_spread, low_rank
+from plumbwell.survey.column import Array, Index
+
+UNDETERMINED = 1e-13  # of a border matrix with unit diagonal: its rounding
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class StationGravity:
+    """Gravity of every station and its errors.
+
+    Parameters
+    ----------
+    gravity : (s,) array
+        m/s2; 0 at the datum station of a part without a tie.
+    datum : (s,) int array
+        Datum station of each station, -1 where a tie fixes its part.
+    reading, drift, tare : Spread
+        Independent errors by origin: with biases, drift and tares held; what freeing biases and drift adds;
+        what freeing tares adds. Where there are ties they are the datum of all three.
+    ties : (s, t) array
+        Answer of gravity to one sd of each tie: an error that all stations share.
+    responses : (s, k) array
+        Answers of gravity to the further right-hand sides.
+    bias : (k,) array by run code
+        Run bias, referred to the datum.
+    tare_shift : (m,) array
+        To be added to each tare of the basis, where its run's parts have datums of their own.
+    """
+
+    gravity: Array
+    datum: Index
+    reading: Spread
+    drift: Spread
+    tare: Spread
+    ties: Array
+    responses: Array
+    bias: Array
+    tare_shift: Array
+
+    def independent(self) -> Spread:
+        """The independent errors together."""
+        return self.reading + self.drift + self.tare
+
+
+def datum_stations(
+    parts: Parts, role: tuple[str, ...], elevation: Array, visited: Array, *, wanted: int | None
+) -> Index:
+    """The datum station of each part; -1 where a tie fixes it.
+
+    Parameters
+    ----------
+    parts : Parts
+    role : tuple of str
+    elevation : (s,) array
+    visited : (s,) bool array
+    wanted : int or None
+        The station that the recipe names; it serves its own part.
+    """
+    column = np.array([one == "column" for one in role])
+    # The highest column station; a base only when there is no other; unvisited stations never.
+    order = np.lexsort((np.arange(len(role)), -elevation, ~column, ~visited))
+    datum = np.full(parts.count, -1)
+    for station in order[::-1].tolist():
+        datum[parts.of_station[station]] = station
+    if wanted is not None:
+        datum[parts.of_station[wanted]] = wanted
+    datum[parts.tied] = -1
+    return datum
+
+
+def referred_gravity(adjustment: Adjustment, parts: Parts, ties: TieRows, datum_of_part: Index) -> StationGravity:
+    """Station gravity referred to its datums, with errors by origin."""
+    solution, design = adjustment.solution, adjustment.design
+    datum = datum_of_part[parts.of_station]
+    raw = solution.gravity
+    taken = datum >= 0
+    gravity = raw.copy()
+    gravity[taken] -= raw[datum[taken]]
+    tie_columns = _tie_columns(solution, ties)
+    visits_alone = border_matrix(design, solution.weight, NO_TIES) if len(ties.station) else None
+    matrix, of_visits, mean = visits_alone or (solution.border_matrix, solution.total, solution.mean)
+    visited = np.zeros(len(of_visits), dtype=bool)
+    visited[design.station] = True
+    own = np.where(visited, 1.0 / of_visits, 0.0)
+    floor = np.where(visited, np.maximum(adjustment.station_floor**2 - own, 0.0), 0.0)
+    # Ties are a datum spread over the tied stations: the errors of the visits alone, less what the ties take over
+    # of the errors at the tied stations. What visits alone leave open (the level at least) falls out of that.
+    tied = np.unique(ties.station)
+    taken_over = np.zeros((len(own), len(tied)))
+    np.add.at(taken_over.T, np.searchsorted(tied, ties.station), (tie_columns * np.sqrt(ties.weight)).T)
+
+    def on_ties(columns: Array) -> Array:
+        return columns - taken_over @ columns[tied]
+
+    at_tied = np.zeros_like(taken_over)
+    at_tied[tied, np.arange(len(tied))] = np.sqrt(own[tied])
+    own[tied] = 0.0
+    reading = diagonal_spread(own + floor) + low_rank(on_ties(at_tied))
+    tares = [number for number, one in enumerate(design.unknowns) if one.kind == "tare"]
+    others = [number for number, one in enumerate(design.unknowns) if one.kind != "tare"]
+    root = _inverse_root(matrix[np.ix_(others, others)])
+    drift = low_rank(on_ties(-mean[:, others] @ root))
+    carry = np.zeros((design.size, len(tares)))
+    if tares:
+        across = matrix[np.ix_(others, tares)]
+        carry[others] = -root @ (root.T @ across)
+        carry[tares] = np.eye(len(tares))
+        left = matrix[np.ix_(tares, tares)] + across.T @ carry[others]
+        carry = carry @ _inverse_root(left)
+    tare = low_rank(on_ties(-mean @ carry))
+    bias = run_bias(adjustment.basis, design, solution.unknown[:, 0])
+    for run, part in enumerate(parts.of_run.tolist()):
+        if part >= 0 and datum_of_part[part] >= 0:
+            bias[run] += raw[datum_of_part[part], 0]
+    return StationGravity(
+        gravity=gravity[:, 0],
+        datum=datum,
+        reading=reading.referred(datum),
+        drift=drift.referred(datum),
+        tare=tare.referred(datum),
+        ties=tie_columns,
+        responses=gravity[:, 1:],
+        bias=bias,
+        tare_shift=_tare_shifts(adjustment, parts, datum_of_part),
+    )
+
+
+def _inverse_root(matrix: Array) -> Array:
+    """A factor L with L L^T the inverse of a symmetric matrix, its unknowns scaled first; directions that it does
+    not determine are left out."""
+    if len(matrix) == 0:
+        return matrix
+    diagonal = np.diagonal(matrix)
+    scale = 1.0 / np.sqrt(np.where(diagonal > 0.0, diagonal, 1.0))
+    values, vectors = np.linalg.eigh(matrix * scale[:, None] * scale[None, :])
+    known = values > UNDETERMINED
+    return scale[:, None] * vectors[:, known] / np.sqrt(values[known])
+
+
+def _tie_columns(solution: Solution, ties: TieRows) -> Array:
+    """Answer of every station to one sd of each tie, (s, t)."""
+    columns = solution.mean @ solution.border @ solution.mean[ties.station].T
+    columns[ties.station, np.arange(len(ties.station))] += 1.0 / solution.total[ties.station]
+    return columns * np.sqrt(ties.weight)
+
+
+def _tare_shifts(adjustment: Adjustment, parts: Parts, datum_of_part: Index) -> Array:
+    """What each free tare takes over when the readings after it hang on another datum than those before."""
+    basis, raw = adjustment.basis, adjustment.solution.gravity[:, 0]
+
+    def level(part: int) -> float:
+        return float(raw[datum_of_part[part]]) if part >= 0 and datum_of_part[part] >= 0 else 0.0
+
+    shift = np.zeros(len(basis.tares))
+    before = [level(part) for part in parts.of_run.tolist()]
+    for number in sorted(range(len(basis.tares)), key=lambda one: basis.tares[one].time):
+        if basis.tares[number].size is not None:
+            continue
+        run, after = int(basis.tare_run[number]), level(int(parts.of_tare[number]))
+        shift[number] = after - before[run]
+        before[run] = after
+    return shift

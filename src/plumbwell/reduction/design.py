@@ -1,0 +1,330 @@
+"""The design of the network: which unknowns each reading touches.
+
+A reading touches one station, the bias of its run, the drift polynomial of its run at its time
+(0 at the run's first used reading, scaled by the run's length) and the tares before it. Visit means are
+the observations; a visit's row of the design is the weighted mean of its readings' rows.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from plumbwell.reduction.visits import Visits
+from plumbwell.survey.column import Array, Index, frozen, frozen_index
+from plumbwell.survey.instrument import Instrument, Tare
+
+HIGHEST_ORDER = 3
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class DriftUnknown:
+    """One unknown of the border: kind "bias", "drift" or "tare", its run code, power or number of the tare."""
+
+    kind: str
+    run: int
+    power: int = 0
+    tare: int = -1
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class DriftBasis:
+    """The regressors of drift and tares at every row, whatever order is chosen.
+
+    Parameters
+    ----------
+    run : (n,) int array
+        Run code of each row.
+    utc : (n,) array
+        s since 2000-01-01.
+    start, length : arrays by run code
+        First used reading of each run and time to its last, s; length 1 where it is 0 or unknown.
+    tares : tuple of Tare
+        Those that lie inside their run, others are left out.
+    tare_run : (m,) int array
+    rate, rate_sd : arrays by run code
+        Expected drift rate and its sd, m/s3, of the run's instrument.
+    """
+
+    run: Index
+    utc: Array
+    start: Array
+    length: Array
+    tares: tuple[Tare, ...]
+    tare_run: Index
+    rate: Array
+    rate_sd: Array
+
+    def time(self, rows: Index) -> Array:
+        """Time since the run's first used reading over the run's length, one a row."""
+        run = self.run[rows]
+        return (self.utc[rows] - self.start[run]) / self.length[run]
+
+    def jumps(self, rows: Index, tare: int) -> Array:
+        """1 for rows of the tare's run at or after it, else 0."""
+        after = self.utc[rows] >= self.tares[tare].time
+        return np.where(after & (self.run[rows] == self.tare_run[tare]), 1.0, 0.0)
+
+    def held(self, rows: Index, orders: tuple[int, ...]) -> Array:
+        """Drift that is known: the expected rate of runs of order 0, and tares of stated size, m/s2."""
+        zero = np.array([order == 0 for order in orders])
+        run = self.run[rows]
+        drift = np.where(zero[run], self.rate[run] * (self.utc[rows] - self.start[run]), 0.0)
+        for number, tare in enumerate(self.tares):
+            if tare.size is not None and tare.size_sd is None:
+                drift = drift + tare.size * self.jumps(rows, number)
+        return drift
+
+
+def drift_basis(
+    utc: Array,
+    run: Index,
+    run_names: tuple[str, ...],
+    visits: Visits,
+    tares: tuple[Tare, ...],
+    run_instrument: tuple[Instrument, ...],
+) -> DriftBasis:
+    """The drift basis of a survey; tares outside the used readings of their run are left out."""
+    rows = visits.rows
+    inside = []
+    for tare in tares:
+        code = run_names.index(tare.run) if tare.run in run_names else -1
+        times = utc[rows][run[rows] == code]
+        if times.size and times.min() < tare.time <= times.max():
+            inside.append((code, tare))
+    length = np.where(visits.run_length > 0.0, visits.run_length, 1.0)
+    return DriftBasis(
+        run=run,
+        utc=utc,
+        start=frozen(np.nan_to_num(visits.run_start)),
+        length=frozen(np.nan_to_num(length, nan=1.0)),
+        tares=tuple(tare for _, tare in inside),
+        tare_run=frozen_index([code for code, _ in inside]),
+        rate=frozen([one.drift_rate for one in run_instrument]),
+        rate_sd=frozen([one.drift_rate_sd for one in run_instrument]),
+    )
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class Prior:
+    """A pseudo-observation of border unknowns: sum of factor times unknown = value +- sd."""
+
+    name: str
+    unknowns: Index
+    factors: Array
+    value: float
+    sd: float
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class Design:
+    """The design of one choice of drift orders, in coordinate form.
+
+    Parameters
+    ----------
+    unknowns : tuple of DriftUnknown
+        The border unknowns that are solved for.
+    orders : tuple of int by run code
+    n_stations : int
+    station : (v,) int array
+        Station of each visit.
+    entry_visit, entry_unknown, entry_value : (e,) arrays
+        Non-zero elements of the visits' rows in the border.
+    pair_visit, pair_flat, pair_value : (p,) arrays
+        Products of two elements of one visit, and where they add in the flattened border matrix.
+    entry_flat : (e,) int array
+        Where each element adds in the flattened (station, border) matrix.
+    priors : tuple of Prior
+    prior_matrix, prior_side : (q, q), (q,) arrays
+        What the priors add to the border's normal matrix and right-hand side.
+    dropped : tuple of DriftUnknown
+        Constants that the datum of a network part makes superfluous: held at 0.
+    lost : tuple of DriftUnknown
+        Unknowns that the visits and priors cannot determine: held at 0.
+    """
+
+    unknowns: tuple[DriftUnknown, ...]
+    orders: tuple[int, ...]
+    n_stations: int
+    station: Index
+    entry_visit: Index
+    entry_unknown: Index
+    entry_value: Array
+    entry_flat: Index
+    pair_visit: Index
+    pair_flat: Index
+    pair_value: Array
+    priors: tuple[Prior, ...]
+    prior_matrix: Array
+    prior_side: Array
+    dropped: tuple[DriftUnknown, ...]
+    lost: tuple[DriftUnknown, ...]
+
+    @property
+    def size(self) -> int:
+        """Number of border unknowns."""
+        return len(self.unknowns)
+
+
+def regressor(basis: DriftBasis, unknown: DriftUnknown, rows: Index) -> Array:
+    """Value of one border unknown's regressor at the given rows."""
+    if unknown.kind == "tare":
+        return basis.jumps(rows, unknown.tare)
+    mine = basis.run[rows] == unknown.run
+    if unknown.kind == "bias":
+        return np.where(mine, 1.0, 0.0)
+    return np.where(mine, basis.time(rows) ** unknown.power, 0.0)
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class VisitRegressors:
+    """Weighted visit means of every regressor that any order could use.
+
+    Parameters
+    ----------
+    powers : (3, v) array
+        Means of time, its square and cube within the run.
+    jumps : (m, v) array
+        Share of each visit's weight at or after each tare.
+    """
+
+    powers: Array
+    jumps: Array
+
+
+def visit_regressors(basis: DriftBasis, visits: Visits, row_weight: Array) -> VisitRegressors:
+    """Visit means of the regressors; `row_weight` (u,) sums to 1 within each visit, in the order of `visits.rows`."""
+    rows = visits.rows
+    time = basis.time(rows)
+    powers = [np.add.reduceat(row_weight * time**power, visits.start[:-1]) for power in (1, 2, 3)]
+    jumps = [np.add.reduceat(row_weight * basis.jumps(rows, one), visits.start[:-1]) for one in range(len(basis.tares))]
+    return VisitRegressors(
+        powers=frozen(powers), jumps=frozen(np.array(jumps).reshape(len(basis.tares), len(visits)))
+    )
+
+
+def design(
+    basis: DriftBasis,
+    visits: Visits,
+    regressors: VisitRegressors,
+    *,
+    n_stations: int,
+    orders: tuple[int, ...],
+    dropped: tuple[DriftUnknown, ...],
+    lost: tuple[DriftUnknown, ...] = (),
+    use_priors: bool = True,
+) -> Design:
+    """The design for given drift orders.
+
+    Parameters
+    ----------
+    basis, visits, regressors
+        From `drift_basis`, `visits.visits`, `visit_regressors`.
+    n_stations : int
+    orders : tuple of int by run code
+        Runs without used readings are ignored.
+    dropped, lost : tuples of DriftUnknown
+        Constants and undetermined unknowns that are held at 0.
+    use_priors : bool
+        False leaves the pseudo-observations of mean drift rates out.
+    """
+    everything: list[DriftUnknown] = []
+    for run in visits.run_order.tolist():
+        everything.append(DriftUnknown(kind="bias", run=run))
+        everything.extend(DriftUnknown(kind="drift", run=run, power=p) for p in range(1, orders[run] + 1))
+    for number, tare in enumerate(basis.tares):
+        if tare.size is None or tare.size_sd is not None:
+            everything.append(DriftUnknown(kind="tare", run=int(basis.tare_run[number]), tare=number))
+    away = {*dropped, *lost}
+    unknowns = tuple(one for one in everything if one not in away)
+    by_run: dict[int, list[int]] = {}
+    for number, one in enumerate(unknowns):
+        by_run.setdefault(one.run, []).append(number)
+    entry_visit, entry_unknown, entry_value = [], [], []
+    pair_visit, pair_flat, pair_value = [], [], []
+    size = len(unknowns)
+    arranged = np.argsort(visits.run, kind="stable")
+    edges = np.searchsorted(visits.run[arranged], np.arange(len(basis.start) + 1))
+    for run, numbers in by_run.items():
+        mine = arranged[edges[run] : edges[run + 1]]
+        values = [_visit_values(unknowns[number], regressors, mine) for number in numbers]
+        for number, value in zip(numbers, values, strict=True):
+            entry_visit.append(mine)
+            entry_unknown.append(np.full(mine.size, number))
+            entry_value.append(value)
+            for other, other_value in zip(numbers, values, strict=True):
+                pair_visit.append(mine)
+                pair_flat.append(np.full(mine.size, number * size + other))
+                pair_value.append(value * other_value)
+    visit = _joined(entry_visit, np.intp)
+    unknown = _joined(entry_unknown, np.intp)
+    priors = _priors(basis, unknowns, use_priors)
+    prior_matrix, prior_side = np.zeros((size, size)), np.zeros(size)
+    for prior in priors:
+        factors = prior.factors / prior.sd
+        prior_matrix[np.ix_(prior.unknowns, prior.unknowns)] += factors[:, None] * factors[None, :]
+        prior_side[prior.unknowns] += factors * (prior.value / prior.sd)
+    return Design(
+        unknowns=unknowns,
+        orders=orders,
+        n_stations=n_stations,
+        station=visits.station,
+        entry_visit=visit,
+        entry_unknown=unknown,
+        entry_value=_joined(entry_value, np.float64),
+        entry_flat=visits.station[visit] * size + unknown,
+        pair_visit=_joined(pair_visit, np.intp),
+        pair_flat=_joined(pair_flat, np.intp),
+        pair_value=_joined(pair_value, np.float64),
+        priors=priors,
+        prior_matrix=prior_matrix,
+        prior_side=prior_side,
+        dropped=dropped,
+        lost=lost,
+    )
+
+
+def _joined(parts: list[Array], kind: type) -> Array:
+    return np.concatenate(parts).astype(kind) if parts else np.zeros(0, dtype=kind)
+
+
+def _visit_values(unknown: DriftUnknown, regressors: VisitRegressors, mine: Index) -> Array:
+    if unknown.kind == "bias":
+        return np.ones(mine.size)
+    if unknown.kind == "tare":
+        return regressors.jumps[unknown.tare, mine]
+    return regressors.powers[unknown.power - 1, mine]
+
+
+def _priors(basis: DriftBasis, unknowns: tuple[DriftUnknown, ...], use_priors: bool) -> tuple[Prior, ...]:
+    """Mean drift rate of each run of order 1 or more, and the tares whose size is stated with an sd."""
+    priors = []
+    drifts: dict[int, list[int]] = {}
+    for number, one in enumerate(unknowns):
+        if one.kind == "drift":
+            drifts.setdefault(one.run, []).append(number)
+        elif one.kind == "tare" and basis.tares[one.tare].size is not None:
+            tare = basis.tares[one.tare]
+            priors.append(
+                Prior(
+                    name=f"tare {one.tare}",
+                    unknowns=frozen_index([number]),
+                    factors=frozen([1.0]),
+                    value=float(tare.size),  # type: ignore[arg-type]
+                    sd=float(tare.size_sd),  # type: ignore[arg-type]
+                )
+            )
+    for run, numbers in drifts.items():
+        if use_priors and basis.rate_sd[run] < np.inf:
+            # The mean rate is the drift at the run's last used reading (scaled time 1) over its length.
+            priors.append(
+                Prior(
+                    name=f"drift rate of run {run}",
+                    unknowns=frozen_index(numbers),
+                    factors=frozen(np.full(len(numbers), 1.0 / basis.length[run])),
+                    value=float(basis.rate[run]),
+                    sd=float(basis.rate_sd[run]),
+                )
+            )
+    return tuple(priors)

@@ -1,0 +1,214 @@
+"""The weighted least-squares network: stations eliminated, biases, drift and tares in a small border.
+
+With D the summed weights of a station's visits, B what its visits put on the border and N the border's own
+normal matrix, M = N - B^T D^-1 B is solved by Cholesky; gravity follows station by station. The covariance of
+gravity is diagonal plus low rank, C = D^-1 + P M^-1 P^T with P = -D^-1 B, and is kept in that form.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from plumbwell.reduction.design import Design
+from plumbwell.survey.column import Array, Index
+
+RANK_TOLERANCE = 1e-10  # of the scaled border matrix; its rounding is near 1e-15 times the number of visits
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class TieRows:
+    """Observations of gravity itself: station, value m/s2, weight s4/m2."""
+
+    station: Index
+    value: Array
+    weight: Array
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class Solution:
+    """One solution of the network.
+
+    Parameters
+    ----------
+    design : Design
+    ties : TieRows
+    weight : (v,) array
+        Weight of each visit mean, s4/m2.
+    total : (s,) array
+        D: summed weights of each station, ties included.
+    mean : (s, q) array
+        D^-1 B: weighted mean of the border rows at each station.
+    border : (q, q) array
+        M^-1, the covariance of the border unknowns.
+    border_matrix : (q, q) array
+        M.
+    gravity : (s, r) array
+        One column a right-hand side.
+    unknown : (q, r) array
+    residual : (v, r) array
+        Visit mean less its estimate.
+    """
+
+    design: Design
+    ties: TieRows
+    weight: Array
+    total: Array
+    mean: Array
+    border: Array
+    border_matrix: Array
+    gravity: Array
+    unknown: Array
+    residual: Array
+
+    def fitted_border(self, unknown: Array) -> Array:
+        """What the border unknowns (q,) put on each visit, (v,)."""
+        one = self.design
+        return np.bincount(
+            one.entry_visit, one.entry_value * unknown[one.entry_unknown], minlength=len(self.weight)
+        )
+
+    def variance_of_fit(self) -> Array:
+        """a C a^T of each visit: the variance of its estimate, (v,)."""
+        one = self.design
+        spread = self.mean @ self.border
+        own = np.bincount(
+            one.pair_visit, one.pair_value * self.border.ravel()[one.pair_flat], minlength=len(self.weight)
+        )
+        cross = np.bincount(
+            one.entry_visit, one.entry_value * spread.ravel()[one.entry_flat], minlength=len(self.weight)
+        )
+        at_station = np.einsum("sq,sq->s", spread, self.mean)
+        station = one.station
+        return 1.0 / self.total[station] + own - 2.0 * cross + at_station[station]
+
+    def sum_of_squares(self) -> float:
+        """Weighted sum of squares of the first right-hand side's visit residuals."""
+        return float(self.weight @ self.residual[:, 0] ** 2)
+
+
+def border_matrix(
+    design: Design, weight: Array, ties: TieRows, *, priors: bool = True
+) -> tuple[Array, Array, Array]:
+    """M, D and D^-1 B for given visit weights, with or without the priors."""
+    size, n_stations = design.size, design.n_stations
+    total = np.bincount(design.station, weight, minlength=n_stations)
+    if len(ties.station):
+        total = total + np.bincount(ties.station, ties.weight, minlength=n_stations)
+    on_border = np.bincount(
+        design.entry_flat, weight[design.entry_visit] * design.entry_value, minlength=n_stations * size
+    ).reshape(n_stations, size)
+    matrix = np.bincount(
+        design.pair_flat, weight[design.pair_visit] * design.pair_value, minlength=size * size
+    ).reshape(size, size)
+    safe = np.where(total > 0.0, total, 1.0)
+    mean = on_border / safe[:, None]
+    matrix = matrix - on_border.T @ mean
+    return (matrix + design.prior_matrix if priors else matrix), safe, mean
+
+
+NO_TIES = TieRows(station=np.zeros(0, dtype=np.intp), value=np.zeros(0), weight=np.zeros(0))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Rank:
+    """Rank of the visits' design, stations and border together, priors and ties not counted; how many it lacks."""
+
+    rank: int
+    lacking: int
+
+
+def rank_of_visits(design: Design) -> Rank:
+    """What the visits alone determine."""
+    visited = int(np.count_nonzero(np.bincount(design.station)))
+    values, _ = spectrum(design, NO_TIES, priors=False)
+    known = int(np.count_nonzero(values > RANK_TOLERANCE))
+    return Rank(rank=visited + known, lacking=design.size - known)
+
+
+def spectrum(design: Design, ties: TieRows, *, priors: bool) -> tuple[Array, Array]:
+    """Eigenvalues and vectors of the border matrix at unit weights, its unknowns scaled to their own size.
+
+    Priors, when they count, count as much as one visit: rank is asked for, not strength.
+    """
+    size = design.size
+    if size == 0:
+        return np.zeros(0), np.zeros((0, 0))
+    ones = TieRows(station=ties.station, value=ties.value, weight=np.ones(len(ties.station)))
+    matrix, _, _ = border_matrix(design, np.ones(len(design.station)), ones, priors=False)
+    own = np.bincount(design.pair_flat, design.pair_value, minlength=size * size)[:: size + 1]
+    scale = 1.0 / np.sqrt(np.where(own > 0.0, own, 1.0))
+    matrix = matrix * scale[:, None] * scale[None, :]
+    for prior in design.priors if priors else ():
+        factors = prior.factors * scale[prior.unknowns]
+        factors = factors / np.linalg.norm(factors)
+        matrix[np.ix_(prior.unknowns, prior.unknowns)] += factors[:, None] * factors[None, :]
+    values, vectors = np.linalg.eigh(0.5 * (matrix + matrix.T))
+    return values, vectors
+
+
+def solve(design: Design, weight: Array, observed: Array, ties: TieRows) -> Solution:
+    """The least-squares solution for given weights.
+
+    Parameters
+    ----------
+    design : Design
+        Its border must be determined (see `rank_of_visits`).
+    weight : (v,) array
+    observed : (v, r) array
+        Visit means, m/s2; the first column is the survey itself. Ties and priors enter the first column
+        only, the others ask how the solution answers a change of the readings.
+    ties : TieRows
+
+    Raises
+    ------
+    numpy.linalg.LinAlgError
+        When the border is not positive definite.
+    """
+    matrix, total, mean = border_matrix(design, weight, ties)
+    n_stations, size, columns = design.n_stations, design.size, observed.shape[1]
+    weighted = weight[:, None] * observed
+    at_station = np.empty((n_stations, columns))
+    at_border = np.empty((size, columns))
+    for column in range(columns):
+        at_station[:, column] = np.bincount(design.station, weighted[:, column], minlength=n_stations)
+        at_border[:, column] = np.bincount(
+            design.entry_unknown, weighted[design.entry_visit, column] * design.entry_value, minlength=size
+        )
+    if len(ties.station):
+        at_station[:, 0] += np.bincount(ties.station, ties.weight * ties.value, minlength=n_stations)
+    at_border[:, 0] += design.prior_side
+    border = _inverse(matrix)
+    unknown = border @ (at_border - mean.T @ at_station)
+    gravity = at_station / total[:, None] - mean @ unknown
+    fitted = gravity[design.station]
+    residual = observed - fitted
+    for column in range(columns):
+        residual[:, column] -= np.bincount(
+            design.entry_visit, design.entry_value * unknown[design.entry_unknown, column], minlength=len(weight)
+        )
+    return Solution(
+        design=design,
+        ties=ties,
+        weight=weight,
+        total=total,
+        mean=mean,
+        border=border,
+        border_matrix=matrix,
+        gravity=gravity,
+        unknown=unknown,
+        residual=residual,
+    )
+
+
+def _inverse(matrix: Array) -> Array:
+    """Inverse of a symmetric positive definite matrix, its unknowns scaled to a unit diagonal first."""
+    if len(matrix) == 0:
+        return matrix
+    scale = 1.0 / np.sqrt(np.diagonal(matrix))
+    if not np.all(np.isfinite(scale)):
+        raise np.linalg.LinAlgError("the border of the network is not positive definite")
+    root = np.linalg.cholesky(matrix * scale[:, None] * scale[None, :])
+    inverse = np.linalg.inv(root) * scale[None, :]
+    return inverse.T @ inverse

@@ -1,0 +1,119 @@
+"""Parts of the network that no station joins, and the constants that their datums make superfluous.
+
+Two runs hang together when they share a station, or when both hold a tied station. A tare of unknown size
+parts its run in two, which then hang together only through stations read on both sides of it.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from plumbwell.reduction.design import Design, DriftBasis, DriftUnknown
+from plumbwell.reduction.network import RANK_TOLERANCE, Rank, TieRows, spectrum
+from plumbwell.reduction.visits import Visits
+from plumbwell.survey.column import Array, Index
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class Parts:
+    """Which part of the network each station belongs to.
+
+    Parameters
+    ----------
+    of_station : (s,) int array
+    count : int
+    tied : (parts,) bool array
+        True where a tie fixes the part's gravity.
+    dropped : tuple of DriftUnknown
+        One constant of each untied part, to be held at 0 while solving.
+    of_run : (k,) int array by run code
+        Part of the run's first used reading, -1 for runs without.
+    of_tare : (m,) int array
+        Part of the readings after each tare of the basis.
+    """
+
+    of_station: Index
+    count: int
+    tied: Array
+    dropped: tuple[DriftUnknown, ...]
+    of_run: Index
+    of_tare: Index
+
+
+def network_parts(basis: DriftBasis, visits: Visits, ties: TieRows, *, n_stations: int) -> Parts:
+    """The parts of a network, numbered by their first visit."""
+    n_runs = len(basis.start)
+    free = [n for n, tare in enumerate(basis.tares) if tare.size is None]
+    by_run: dict[int, list[int]] = {}
+    for number in sorted(free, key=lambda one: basis.tares[one].time):
+        by_run.setdefault(int(basis.tare_run[number]), []).append(number)
+    # Nodes: stations, then for each run its stretch before the first free tare, then one a free tare.
+    parent = np.arange(n_stations + n_runs + len(basis.tares) + 1)
+    all_ties = len(parent) - 1
+
+    def root(node: int) -> int:
+        while parent[node] != node:
+            parent[node] = parent[parent[node]]
+            node = int(parent[node])
+        return node
+
+    def join(a: int, b: int) -> None:
+        parent[max(root(a), root(b))] = min(root(a), root(b))
+
+    stretch = n_stations + visits.run
+    for run, numbers in by_run.items():
+        for number in numbers:
+            after = (visits.run == run) & (visits.last >= basis.tares[number].time)
+            stretch = np.where(after, n_stations + n_runs + number, stretch)
+    for pair in {*zip(visits.station.tolist(), stretch.tolist(), strict=True)}:
+        join(*pair)
+    for station in ties.station.tolist():
+        join(station, all_ties)
+    roots = np.array([root(node) for node in range(len(parent))])
+    order: dict[int, int] = {}
+    for node in [*visits.station.tolist(), *ties.station.tolist()]:
+        order.setdefault(int(roots[node]), len(order))
+    part = np.array([order.get(int(one), -1) for one in roots])
+    tied = np.zeros(len(order), dtype=bool)
+    tied[part[ties.station]] = True
+    of_run = np.where(np.isin(np.arange(n_runs), visits.run_order), part[n_stations : n_stations + n_runs], -1)
+    of_tare = part[n_stations + n_runs : n_stations + n_runs + len(basis.tares)]
+    for number, tare in enumerate(basis.tares):
+        if tare.size is not None:
+            of_tare[number] = of_run[basis.tare_run[number]]
+    dropped = []
+    for number in np.flatnonzero(~tied).tolist():
+        runs = [run for run in visits.run_order.tolist() if of_run[run] == number]
+        if runs:
+            dropped.append(DriftUnknown(kind="bias", run=runs[0]))
+            continue
+        tare = next(one for one in free if of_tare[one] == number)
+        dropped.append(DriftUnknown(kind="tare", run=int(basis.tare_run[tare]), tare=tare))
+    return Parts(
+        of_station=part[:n_stations],
+        count=len(order),
+        tied=tied,
+        dropped=tuple(dropped),
+        of_run=of_run,
+        of_tare=of_tare,
+    )
+
+
+def undetermined(design: Design, ties: TieRows, rank: Rank) -> DriftUnknown | None:
+    """A border unknown that visits, ties and priors together cannot determine, or None.
+
+    `rank` is what the visits alone determine. Tares go first, then the highest power: what is held at 0 is the
+    least that restores the rank.
+    """
+    if rank.lacking == 0:
+        return None
+    values, vectors = spectrum(design, ties, priors=True)
+    if values.size == 0 or values[0] > RANK_TOLERANCE:
+        return None
+    share = np.abs(vectors[:, 0])
+    among = np.flatnonzero(share > 0.1 * share.max())
+    order = {"tare": 2, "drift": 1, "bias": 0}
+    worst = max(among.tolist(), key=lambda n: (order[design.unknowns[n].kind], design.unknowns[n].power))
+    return design.unknowns[worst]

@@ -1,0 +1,1 @@
+"""The docket: one function a kind of finding."""

@@ -1,0 +1,123 @@
+"""Findings about rock: densities that no rock has, what a log does not cover, what the reference rests on."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from plumbwell.reduction.reference_rock import END_THICKNESS
+from plumbwell.study.docket.wording import amount, counted, density, interval, listed, numbers
+from plumbwell.study.finding import Finding
+from plumbwell.study.results import Results
+
+LIGHTEST, HEAVIEST = 500.0, 6000.0
+"""kg/m3; what lies outside is no rock as it stands in the ground."""
+
+BEYOND_DOUBT = 3.0
+"""Standard deviations by which a density must lie outside."""
+
+WORST = 5
+
+
+def density_outside(results: Results) -> Iterator[Finding]:
+    """Densities below 0.5 or above 6 g/cm3 by more than three sd."""
+    one = results.intervals
+    value = one.density.values
+    outside = np.maximum(LIGHTEST - value, value - HEAVIEST)
+    if not np.any(outside > 0.0):
+        return
+    sd = np.hypot(one.density_sd.values, one.density_common_sd.values)
+    bad = np.flatnonzero(outside > BEYOND_DOUBT * sd)
+    worst = bad[np.argsort(-outside[bad], kind="stable")]
+    for number in worst[:WORST].tolist():
+        yield Finding(
+            code="density_outside",
+            severity="look",
+            place=interval(results, number),
+            text=f"The density is {density(float(value[number]), 2)} ± {density(float(sd[number]), 2)}: no "
+            f"rock lies outside {density(LIGHTEST, 1)} to {density(HEAVIEST, 1)}.",
+            mend="See whether a depth, a unit or a label is wrong, or a tare is not listed; a void or a mass "
+            "near the hole does this too.",
+            intervals=(number,),
+        )
+    if worst.size > WORST:
+        left = np.sort(worst[WORST:])
+        yield Finding(
+            code="density_outside",
+            severity="look",
+            place=interval(results, int(left[0])),
+            text=f"{counted(left.size, 'more interval has', 'more intervals have')} a density outside "
+            f"{density(LIGHTEST, 1)} to {density(HEAVIEST, 1)}.",
+            mend="Where so many are outside, the unit of depth or reading is the first thing to see.",
+            intervals=numbers(left),
+        )
+
+
+def log_uncovered(results: Results) -> Iterator[Finding]:
+    """Intervals for which the logs give no mean density."""
+    one = results.intervals
+    if not results.survey.logs or not len(one):
+        return
+    bare = np.flatnonzero(np.isnan(one.log_density.values))
+    if not bare.size:
+        return
+    thickness = one.densities.thickness.values[bare]
+    open_part = (thickness * (1.0 - np.nan_to_num(one.log_coverage.values[bare]))).tolist()
+    words = [
+        f"{one.from_station[n]} to {one.to_station[n]} ({amount(metres, 1)} m)"
+        for n, metres in zip(bare[:WORST].tolist(), open_part[:WORST], strict=True)
+    ] + [""] * (bare.size - WORST)
+    yield Finding(
+        code="log_uncovered",
+        severity="note",
+        place=f"{one.from_station[bare[0]]} to {one.to_station[bare[-1]]}",
+        text=f"{counted(bare.size, 'interval has', 'intervals have')} no log density, since the log leaves "
+        f"{amount(sum(open_part), 1)} m of them uncovered: {listed(words, WORST)}.",
+        mend="Nothing; or bring in a log that covers them, or lower minimum_coverage.",
+        intervals=numbers(bare),
+    )
+
+
+def reference_from_log(results: Results) -> Iterator[Finding]:
+    """What stands in the reference density where the log says nothing."""
+    facts = results.reference.facts
+    if facts is None:
+        return
+    elevation = results.stations.located.positions.elevation.values
+    lowest, ground = float(np.min(elevation)), results.survey.site.ground_elevation
+    ends = []
+    if facts.top < ground:
+        ends.append(f"{density(facts.above)} above it ({amount(ground - facts.top, 1)} m up to the ground)")
+    if lowest < facts.base:
+        deeper = amount(facts.base - lowest, 1)
+        ends.append(f"{density(facts.below)} below it ({deeper} m down to the lowest station)")
+    if ends:
+        yield Finding(
+            code="reference_beyond_log",
+            severity="note",
+            place="reference density",
+            text="The log ends, and the reference density goes on with its mean over the nearest "
+            f"{END_THICKNESS:g} m: {' and '.join(ends)}.",
+            mend="Nothing; the reference changes anomalies, not interval densities.",
+        )
+    if facts.gaps:
+        widest = max(top - base for top, base in facts.gaps)
+        yield Finding(
+            code="reference_gaps",
+            severity="note",
+            place="reference density",
+            text=f"{counted(len(facts.gaps), 'gap')} of the log {'is' if len(facts.gaps) == 1 else 'are'} "
+            f"bridged straight in the reference density, the widest of {amount(widest, 1)} m.",
+            mend="Nothing; the reference changes anomalies, not interval densities.",
+        )
+    if facts.dropped:
+        yield Finding(
+            code="reference_samples_left_out",
+            severity="note",
+            place="reference density",
+            text=f"{counted(facts.dropped, 'density', 'densities')} of the log "
+            f"{'is' if facts.dropped == 1 else 'are'} left out of the reference density, since the hole "
+            "climbs there.",
+            mend="Nothing, if the hole climbs.",
+        )

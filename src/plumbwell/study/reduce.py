@@ -1,0 +1,407 @@
+"""The one chain: a case worked through from raw rows to densities and docket.
+
+`reduce` runs every step in order at every change; a step whose inputs are the same objects gives the object that
+it gave before, and what follows is found again. Window, command line and Python share it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import replace
+from time import perf_counter
+
+import numpy as np
+
+from plumbwell.density.interval import LESS_LOG, IntervalDensities, interval_densities, interval_pairs
+from plumbwell.density.interval_errors import CommonTerms, IntervalErrors, interval_errors
+from plumbwell.density.layer_boundaries import layer_boundaries
+from plumbwell.density.layers import Layers, plain_layers
+from plumbwell.density.log_mean import log_integrals, log_mean_columns
+from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
+from plumbwell.reduction.calibration import calibrated, instruments_used
+from plumbwell.reduction.datums import StationGravity, datum_stations, referred_gravity
+from plumbwell.reduction.design import drift_basis
+from plumbwell.reduction.effects import anomalies, free_air_choice, known_parts, normal_gravity, reference_shell
+from plumbwell.reduction.estimates import OBSERVED, TO_STATION, estimates
+from plumbwell.reduction.located import Located, located
+from plumbwell.reduction.network import TieRows
+from plumbwell.reduction.network_parts import Parts, network_parts
+from plumbwell.reduction.positions import WellPath, well_path
+from plumbwell.reduction.reference_rock import reference_rock
+from plumbwell.reduction.stations import placement, row_depths
+from plumbwell.reduction.tide_effect import modelled_tide, shifted_tides, tide, tide_comparison, utc_time
+from plumbwell.reduction.tilt_pressure import Pressure, pressure_effect, tilt
+from plumbwell.reduction.to_station import gravity_slopes
+from plumbwell.reduction.visits import Visits, visits
+from plumbwell.study.case import Case
+from plumbwell.study.docket.kinds import docket
+from plumbwell.study.kept import Kept
+from plumbwell.study.results import IntervalResults, NetworkResults, ReadingResults, Results, StationResults
+from plumbwell.survey.column import (
+    Array,
+    Column,
+    Index,
+    Input,
+    computed,
+    constant_column,
+    frozen,
+    frozen_index,
+)
+from plumbwell.survey.errors import SurveyError
+from plumbwell.survey.instrument import Instrument, Run
+from plumbwell.survey.places import Markers, Ties
+from plumbwell.survey.readings import Readings
+from plumbwell.survey.recipe import Recipe
+from plumbwell.survey.site import Site
+
+AUTOMATIC = "auto"
+
+
+def quiet(share: float, what: str) -> None:
+    """Progress that tells nobody."""
+
+
+def reduce(
+    case: Case,
+    *,
+    recipe: Recipe | None = None,
+    kept: Kept | None = None,
+    progress: Callable[[float, str], None] = quiet,
+) -> Results:
+    """One survey worked through with one recipe.
+
+    Parameters
+    ----------
+    case : Case
+    recipe : Recipe or None
+        None: the case's own.
+    kept : Kept or None
+        What was worked out before; the result is the same without it.
+    progress : callable
+        Called with the share done (0 to 1) and what is being done.
+
+    Returns
+    -------
+    Results
+
+    Raises
+    ------
+    SurveyError
+        The survey can be read but not reduced: no used reading belongs to a station.
+    """
+    keep = Kept() if kept is None else kept
+    survey, chosen = case.survey, case.chosen if recipe is None else recipe
+    timing: dict[str, float] = {}
+    started = perf_counter()
+
+    def done(part: str, share: float) -> None:
+        nonlocal started
+        now = perf_counter()
+        timing[part] = now - started
+        started = now
+        progress(share, part)
+
+    readings, site, instruments = survey.readings, survey.site, survey.instruments
+    utc = keep(utc_time, readings, instruments)
+    depths = keep(row_depths, readings, survey.runs, survey.places)
+    placed = keep(
+        placement, readings, depths, survey.places, survey.ties, utc=utc.values, same_place=chosen.same_place
+    )
+    path = keep(well_path, survey.path, north_correction=site.north_correction)
+    where = keep(located, placed, depths, path, site)
+    station = where.placement.station
+    stays = keep(visits, readings, station, utc=utc.values, visit_gap=chosen.visit_gap)
+    if len(stays) == 0:
+        raise SurveyError("no reading in use belongs to a station: nothing can be reduced")
+    done("stations", 0.1)
+    choice = keep(
+        free_air_choice, site, system=chosen.normal_gravity, form=chosen.height_form, free_air=chosen.free_air
+    )
+    reference = keep(
+        reference_rock, chosen.reference_density, survey.markers, survey.logs, path, site
+    )
+    normal = keep(normal_gravity, where.positions, choice)
+    shell = keep(reference_shell, where.positions, site, choice, reference)
+    parts = keep(known_parts, where.positions, site, choice, normal=normal, shell=shell)
+    done("known parts", 0.2)
+    raw = keep(calibrated, readings, instruments, remove_tide=chosen.tide != "none")
+    modelled = keep(modelled_tide, utc, site=site, source=chosen.tide, tide_table=survey.tide_table)
+    tidal = keep(
+        tide, readings, instruments, modelled, utc=utc, loading=survey.loading,
+        factor=1.0 if chosen.tide == "table" else chosen.tide_factor,
+    )
+    at_station = keep(_rows_at, station)
+    tilted = keep(tilt, readings, instruments, gravity=normal, station_rows=at_station)
+    pressure = keep(
+        _pressure, readings, instruments, where, at_station, admittance=chosen.pressure_admittance,
+        barometer=survey.barometer_elevation, ground=site.ground_elevation,
+    )
+    still = keep(_still, len(readings))
+    observed = keep(_observed, raw, tidal, tilted, pressure.column, still)
+    done("corrections", 0.4)
+    ties = keep(_tie_rows, survey.ties, where)
+    basis = keep(
+        drift_basis, utc.values, readings.run.code, readings.run.names, stays, survey.tares,
+        _run_instruments(readings, instruments),
+    )
+    network = keep(network_parts, basis, stays, ties, n_stations=len(where.placement.label))
+    noise = keep(_noise_terms, readings, instruments, estimate=chosen.noise == "estimate")
+    orders = keep(_orders, readings, survey.runs, stays, chosen.drift_order)
+    counts = keep(_visit_counts, stays, len(where.placement.label))
+    pairs = keep(
+        interval_pairs, where.positions, where.placement.role, network.of_station, counts,
+        min_thickness=chosen.min_thickness,
+    )
+    scales = keep(_scales, readings, instruments, raw)
+
+    def solved(values: Column) -> tuple[Adjustment, StationGravity]:
+        fit = keep(
+            adjusted, values.values, basis, stays, ties, network, noise,
+            n_stations=len(where.placement.label), start_orders=orders[0], automatic=orders[1], station=station,
+            responses=scales[1],
+        )
+        return fit, keep(_referred, fit, network, ties, where, counts, chosen.datum_station)
+
+    fit, gravity = solved(observed)
+    to_station = still
+    if np.any(where.placement.off_station):
+        slope = keep(
+            gravity_slopes, gravity.gravity, where, pairs.top, pairs.base, reference=reference, choice=choice, site=site
+        )
+        to_station = keep(_to_station, where, slope, path, depths.sensor)
+        observed = keep(_observed, raw, tidal, tilted, pressure.column, to_station)
+        fit, gravity = solved(observed)
+    columns = keep(estimates, observed, fit, gravity, network, station)
+    done("network", 0.6)
+    left = keep(anomalies, columns.gravity, parts, gravity.datum)
+    densities = keep(interval_densities, pairs, columns.gravity, where.positions, parts, left, choice)
+    errors = keep(
+        interval_errors, densities, gravity, parts, left,
+        elevation=where.positions.elevation.values,
+        collar_elevation=site.collar_elevation,
+        vertical_depth_sd=keep(_vertical_depth_sd, where, chosen.depth_sd),
+        stretch=keep(_stretch, where, path),
+        common=CommonTerms(
+            gradient_sd=chosen.gradient_sd if choice.measured is None else choice.measured[1],
+            scale_sd=scales[0],
+            depth_scale_sd=chosen.depth_scale_sd,
+            datum_sd=chosen.datum_sd,
+        ),
+    )
+    logged = keep(
+        log_mean_columns, survey.logs, keep(log_integrals, survey.logs, path, site),
+        sensor_depth=where.sensor_depth, upper=pairs.top, lower=pairs.base, path=path,
+    )
+    less_log = keep(_less_log, densities.density, logged.density)
+    layers = keep(
+        _layers, chosen.layers, chosen.layer_boundaries, densities, errors, where, survey.markers, path, site,
+        choice.radius,
+    )
+    done("densities", 0.8)
+    labels = where.placement.label
+    results = Results(
+        survey=survey,
+        recipe=chosen,
+        choice=choice,
+        reference=reference,
+        readings=ReadingResults(
+            utc=utc, calibrated=raw, tide=tidal, tilt=tilted, pressure_effect=pressure.column,
+            to_station=to_station, observed=observed, estimates=columns,
+        ),
+        network=NetworkResults(
+            visits=stays, ties=ties, tie_station=tuple(labels[one] for one in ties.station.tolist()),
+            parts=network, adjustment=fit, gravity=gravity,
+        ),
+        stations=StationResults(
+            label=labels, role=where.placement.role, located=where, visits=counts,
+            gravity=columns.gravity, gravity_sd=columns.gravity_sd, parts=parts, anomalies=left,
+        ),
+        intervals=IntervalResults(
+            from_station=tuple(labels[one] for one in pairs.top.tolist()),
+            to_station=tuple(labels[one] for one in pairs.base.tolist()),
+            densities=densities, errors=errors, log=logged,
+            density=densities.density, density_sd=errors.density_sd, density_common_sd=errors.common_sd,
+            density_slab=densities.slab, log_density=logged.density, log_coverage=logged.coverage,
+            density_less_log=less_log, dof=fit.reseating.t_freedom,
+        ),
+        layers=layers,
+        pressure=pressure,
+        tide_comparison=keep(
+            tide_comparison, readings, keep(shifted_tides, readings, utc, site), chosen.tide_factor
+        ),
+    )
+    results = replace(results, findings=docket(results))
+    done("docket", 1.0)
+    return replace(results, timing=timing)
+
+
+def _rows_at(station: Index) -> Index:
+    return frozen_index(np.maximum(station, 0))
+
+
+def _still(number: int) -> Column:
+    return constant_column("to_station", "m/s2", np.zeros(number))
+
+
+def _pressure(
+    readings: Readings,
+    instruments: tuple[Instrument, ...],
+    where: Located,
+    rows: Index,
+    *,
+    admittance: float,
+    barometer: float | str | None,
+    ground: float,
+) -> Pressure:
+    elevation = where.positions.elevation
+    with_tool = barometer == "station"
+    stated = ground if barometer is None or isinstance(barometer, str) else barometer
+    return pressure_effect(
+        readings,
+        instruments,
+        admittance=admittance,
+        barometer_elevation=elevation if with_tool else stated,
+        rows=rows if with_tool else None,
+        depth_below_ground=ground - elevation.values[rows],
+    )
+
+
+def _observed(raw: Column, tidal: Column, tilted: Column, pressed: Column, moved: Column) -> Column:
+    return computed(
+        "observed", "m/s2", OBSERVED, Input("calibrated", raw), Input("tide", tidal), Input("tilt", tilted),
+        Input("pressure_effect", pressed), Input("to_station", moved),
+    )
+
+
+def _run_instruments(readings: Readings, instruments: tuple[Instrument, ...]) -> tuple[Instrument, ...]:
+    """The instrument of each run, by run code: that of its first row."""
+    used = instruments_used(readings, instruments)
+    _, first = np.unique(readings.run.code, return_index=True)
+    return tuple(used[code] for code in readings.instrument.code[first].tolist())
+
+
+def _tie_rows(ties: Ties | None, where: Located) -> TieRows:
+    labels = {name: number for number, name in enumerate(where.placement.label)}
+    rows = [] if ties is None else [n for n, name in enumerate(ties.station) if name in labels]
+    if ties is None or not rows:
+        return TieRows(station=frozen_index([]), value=frozen([]), weight=frozen([]))
+    return TieRows(
+        station=frozen_index([labels[ties.station[n]] for n in rows]),
+        value=frozen(ties.gravity.values[rows]),
+        weight=frozen(1.0 / ties.gravity_sd.values[rows] ** 2),
+    )
+
+
+def _noise_terms(readings: Readings, instruments: tuple[Instrument, ...], *, estimate: bool) -> NoiseTerms:
+    used = instruments_used(readings, instruments)
+
+    def of_row(name: str) -> Array:
+        return np.array([getattr(one, name) for one in used])[readings.instrument.code]
+
+    stated = readings.reading_sd
+    return NoiseTerms(
+        reading_sd=np.full(len(readings), np.nan) if stated is None else stated.values,
+        reading_floor=of_row("reading_floor"),
+        reseating_sd=of_row("reseating_sd"),
+        station_floor=of_row("station_floor"),
+        estimate=estimate,
+    )
+
+
+def _orders(
+    readings: Readings, runs: tuple[Run, ...], stays: Visits, of_recipe: str | int
+) -> tuple[tuple[int, ...], tuple[int, ...]]:
+    """Starting order of each run by code, and the codes of those whose order is chosen, in time order."""
+    stated = {run.name: run.drift_order for run in runs if run.drift_order is not None}
+    wanted = [stated.get(name, of_recipe) for name in readings.run.names]
+    start = tuple(1 if isinstance(one, str) else one for one in wanted)
+    return start, tuple(code for code in stays.run_order.tolist() if wanted[code] == AUTOMATIC)
+
+
+def _visit_counts(stays: Visits, n_stations: int) -> Index:
+    return frozen_index(np.bincount(stays.station, minlength=n_stations))
+
+
+def _scales(
+    readings: Readings, instruments: tuple[Instrument, ...], raw: Column
+) -> tuple[tuple[tuple[str, float], ...], tuple[Array, ...]]:
+    """Relative sd of each doubtful scale, and the readings that answer to it."""
+    doubtful = [
+        (code, one) for code, one in enumerate(instruments_used(readings, instruments)) if one.scale_sd > 0.0
+    ]
+    return (
+        tuple((one.name, one.scale_sd / one.scale) for _, one in doubtful),
+        tuple(frozen(np.where(readings.instrument.code == code, raw.values, 0.0)) for code, _ in doubtful),
+    )
+
+
+def _referred(
+    fit: Adjustment, network: Parts, ties: TieRows, where: Located, counts: Index, wanted: str | None
+) -> StationGravity:
+    labels = where.placement.label
+    datum = datum_stations(
+        network,
+        where.placement.role,
+        where.positions.elevation.values,
+        counts > 0,
+        wanted=labels.index(wanted) if wanted in labels else None,
+    )
+    return referred_gravity(fit, network, ties, datum)
+
+
+def _to_station(where: Located, slope: Column, path: WellPath, sensor: Column) -> Column:
+    """What brings each reading to its station's sensor depth."""
+    placed = where.placement
+    at = np.maximum(placed.station, 0)
+    on_path = ~np.isnan(placed.sensor_depth[at])
+    row_tvd = path.at(np.where(on_path, sensor.values, 0.0))[0]
+    station_tvd = path.at(np.where(on_path, placed.sensor_depth[at], 0.0))[0]
+    drop = np.where(on_path, station_tvd - row_tvd, -placed.off_station)
+    drop = np.where((placed.off_station == 0.0) | (placed.station < 0), 0.0, drop)
+    return computed(
+        "to_station", "m/s2", TO_STATION, Input("drop", constant_column("drop", "m", drop)), Input("slope", slope)
+    )
+
+
+def _vertical_depth_sd(where: Located, depth_sd: float) -> Array:
+    stated = where.placement.elevation_sd
+    along = depth_sd * np.abs(where.positions.cos_inclination.values)
+    return frozen(np.where(np.isnan(stated), along, stated))
+
+
+def _stretch(where: Located, path: WellPath) -> Array:
+    """Vertical drop of each station for a relative change of the depth scale by 1, m; 0 at surveyed places."""
+    depth = np.nan_to_num(where.sensor_depth.values)
+    return frozen(depth * where.positions.cos_inclination.values)
+
+
+def _less_log(density: Column, log_density: Column) -> Column:
+    return computed("density_less_log", "kg/m3", LESS_LOG, Input("density", density), Input("log_density", log_density))
+
+
+def _layers(
+    manner: str,
+    boundaries: str | float,
+    densities: IntervalDensities,
+    errors: IntervalErrors,
+    where: Located,
+    markers: Markers | None,
+    path: WellPath,
+    site: Site,
+    radius: float,
+) -> Layers | None:
+    if manner == "none":
+        return None
+    pairs = densities.pairs
+    edges = layer_boundaries(boundaries, pairs, where, markers, path, site)
+    if edges is None or len(edges.elevation) < 2:
+        return None
+    elevation = where.positions.elevation.values
+    return plain_layers(
+        tops=elevation[pairs.top],
+        bases=elevation[pairs.base],
+        density=densities.density.values,
+        covariance=errors.independent.matrix(),
+        boundaries=edges.elevation,
+        radius=radius + site.geoid_height,
+    )

@@ -1,0 +1,1 @@
+"""What was measured, as frozen values with their checks. Nothing is computed here."""

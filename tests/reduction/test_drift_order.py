@@ -1,0 +1,128 @@
+"""The order of the drift polynomial: the F test itself, what it finds, and how seldom it errs."""
+
+import runpy
+from pathlib import Path
+
+import numpy as np
+import pytest
+from scipy.stats import f as f_distribution
+
+from plumbwell.study.reduce import reduce
+from plumbwell.survey.instrument import Instrument, Run
+
+made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
+made_case, loop = made["made_case"], made["loop"]
+UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
+DEPTH = {name: 60.0 * number for number, name in enumerate("ABCDEF")}
+GRAVITY = {name: 0.08 * MGAL * depth for name, depth in DEPTH.items()}
+METER = Instrument(name="A", reading_floor=2 * UGAL, reseating_sd=4 * UGAL)
+MAKE = {"depth": DEPTH, "gravity": GRAVITY, "counts": (3,)}
+RATE = 0.02 * MGAL / HOUR
+
+
+def curved(size, hours):
+    """Coefficients of a parabola that leaves its chord by `size` at half time."""
+    length = hours * HOUR
+    return (RATE - 4.0 * size / length, 4.0 * size / length**2)
+
+
+def adjusted(rows, **more):
+    """The adjustment of some rows."""
+    return reduce(made_case(rows, instruments=(METER,), **more)).network.adjustment
+
+
+def test_a_quadratic_of_ten_sd_is_found():
+    stops = "ABCADEAFCAEBA"
+    rows = loop(np.random.default_rng(1), stops, drift=curved(40 * UGAL, 6.5), **MAKE)
+    adjustment = adjusted(rows)
+    assert adjustment.orders == (2,)
+    assert [(one.lower, one.higher, one.taken) for one in adjustment.tests] == [(1, 2, True), (2, 3, False)]
+
+
+def test_a_cubic_that_hides_from_the_parabola_is_found_by_the_double_step():
+    stops = "ABACADAEAFABACADA"
+    length = 17 * 1920.0
+    # The odd part about half time only: s (s - 1/2)(s - 1) of the scaled time.
+    cubic = (RATE + 0.5 * 900 * UGAL / length, -1.5 * 900 * UGAL / length**2, 900 * UGAL / length**3)
+    adjustment = adjusted(loop(np.random.default_rng(2), stops, drift=cubic, **MAKE))
+    steps = [(one.lower, one.higher, one.taken) for one in adjustment.tests]
+    assert adjustment.orders == (3,)
+    assert steps in ([(1, 2, False), (1, 3, True)], [(1, 2, True), (2, 3, True)])
+
+
+def test_a_straight_drift_is_seldom_called_curved():
+    raised = 0
+    for seed in range(100):
+        rows = loop(np.random.default_rng(1000 + seed), "ABCADCABDA", **(MAKE | {"counts": (1,)}))
+        raised += adjusted(rows).orders != (1,)
+    assert raised < 5
+
+
+def test_runs_are_tested_one_by_one():
+    stops = "ABCADEAFCAEBA"
+    rows = loop(np.random.default_rng(3), stops, **MAKE)
+    rows += loop(np.random.default_rng(4), stops, run="2", start=86400.0, drift=curved(60 * UGAL, 6.5), **MAKE)
+    rows += loop(np.random.default_rng(5), stops, run="3", start=2 * 86400.0, **MAKE)
+    adjustment = adjusted(rows)
+    assert adjustment.orders == (1, 2, 1)
+    assert [one.run for one in adjustment.tests] == sorted(one.run for one in adjustment.tests)
+
+
+def test_a_run_with_a_given_order_keeps_it():
+    stops = "ABCADEAFCAEBA"
+    rows = loop(np.random.default_rng(6), stops, drift=curved(60 * UGAL, 6.5), **MAKE)
+    rows += loop(np.random.default_rng(7), stops, run="2", start=86400.0, **MAKE)
+    adjustment = adjusted(rows, runs=(Run(name="1", drift_order=1), Run(name="2", drift_order="auto")))
+    assert adjustment.orders == (1, 1)
+    assert {one.run for one in adjustment.tests} == {1}
+    assert adjusted(rows, drift_order=3).orders == (3, 3)
+
+
+@pytest.mark.parametrize(("stops", "tested"), [("ABCABCABC", True), ("ABCABCAB", True), ("ABCABCA", False)])
+def test_no_order_is_tried_with_under_three_degrees_of_freedom(stops, tested):
+    # Nine visits: 9 - 3 stations - 2 powers leave 4 for the parabola, 8 leave 3, 7 leave 2.
+    rows = loop(np.random.default_rng(8), stops, drift=curved(500 * UGAL, 4.0), **MAKE)
+    adjustment = adjusted(rows)
+    assert bool(adjustment.tests) == tested
+
+
+def plain_squares(adjustment, rows, order, weight):
+    """Weighted sum of squares of visit means around stations and a polynomial, the rate prior counted."""
+    visits = adjustment.visits
+    names = sorted({row.station for row in rows})
+    start, end = rows[0].time, rows[-1].time
+    lines, values = [], []
+    for v in range(len(visits)):
+        members = visits.rows[visits.start[v] : visits.start[v + 1]]
+        share = adjustment.noise.weight[visits.start[v] : visits.start[v + 1]]
+        line = np.zeros(len(names) + order)
+        for m, part in zip(members, share, strict=True):
+            past = (rows[m].time - start) / (end - start)
+            line[names.index(rows[m].station)] += part
+            line[len(names) :] += part * past ** np.arange(1, order + 1)
+        lines.append(line * np.sqrt(weight[v]))
+        values.append(adjustment.visit_mean[v] * np.sqrt(weight[v]))
+    sd = METER.drift_rate_sd * (end - start)
+    prior = np.concatenate([np.zeros(len(names)), np.ones(order)]) / sd
+    design = np.vstack([*lines, prior])
+    values = np.array([*values, 0.0])
+    scale = np.linalg.norm(design, axis=0)
+    solution = np.linalg.lstsq(design / scale, values, rcond=None)[0]
+    rest = values - design / scale @ solution
+    return float(np.sum(rest[:-1] ** 2))
+
+
+def test_the_test_statistic_is_the_ratio_it_says():
+    stops = "ABCADEAFCAEBA"
+    rows = loop(np.random.default_rng(9), stops, drift=curved(8 * UGAL, 6.5), **MAKE)
+    automatic, given = adjusted(rows), adjusted(rows, drift_order=2)
+    test = automatic.tests[0]
+    # Weights of the higher order, for both.
+    weight = given.solution.weight
+    low, high = (plain_squares(given, rows, order, weight) for order in (1, 2))
+    freedom = len(stops) - 6 - 2
+    ratio = (low - high) / (high / freedom)
+    assert (test.lower, test.higher, test.freedom) == (1, 2, (1, freedom))
+    assert test.f == pytest.approx(ratio, rel=1e-6)
+    assert test.p == pytest.approx(f_distribution.sf(ratio, 1, freedom), rel=1e-6)
+    assert test.taken == (test.p < 0.01)

@@ -1,0 +1,248 @@
+"""Reading and re-seating noise: the restricted likelihood maximised directly, and the rules for few repeats."""
+
+import runpy
+from dataclasses import replace
+from pathlib import Path
+
+import numpy as np
+import pytest
+from scipy.optimize import minimize_scalar
+
+from plumbwell.study.reduce import reduce
+from plumbwell.survey.instrument import Instrument, Run
+
+made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
+made_case, loop, Row = made["made_case"], made["loop"], made["Row"]
+UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
+DEPTH = {name: 60.0 * number for number, name in enumerate("ABCDEF")}
+GRAVITY = {name: 0.08 * MGAL * depth for name, depth in DEPTH.items()}
+METER = Instrument(name="A", reading_floor=2 * UGAL, reseating_sd=5 * UGAL, drift_rate_sd=0.05 * MGAL / HOUR)
+MAKE = {"depth": DEPTH, "gravity": GRAVITY}
+
+
+def whole_design(rows, adjustment, ties):
+    """Design, variances without re-seating, and values of visit means, tie and rate priors, mGal and hours."""
+    visits = adjustment.visits
+    lines, variances, values = [], [], []
+    runs = sorted({row.run for row in rows})
+    names = sorted({row.station for row in rows})
+    start = {run: min(row.time for row in rows if row.run == run) for run in runs}
+    length = {run: max(row.time for row in rows if row.run == run) - start[run] for run in runs}
+    width = len(names) + 2 * len(runs)
+    for v in range(len(visits)):
+        members = visits.rows[visits.start[v] : visits.start[v + 1]]
+        sd = adjustment.noise.sd[visits.start[v] : visits.start[v + 1]] / MGAL
+        share = sd**-2 / np.sum(sd**-2)
+        line = np.zeros(width)
+        for row, part in zip((rows[m] for m in members), share, strict=True):
+            line[names.index(row.station)] += part
+            line[len(names) + 2 * runs.index(row.run)] += part
+            line[len(names) + 2 * runs.index(row.run) + 1] += part * (row.time - start[row.run]) / HOUR
+        lines.append(line)
+        variances.append(1.0 / np.sum(sd**-2))
+        values.append(sum(rows[m].reading / MGAL * part for m, part in zip(members, share, strict=True)))
+    extra, extra_variance, extra_value = [], [], []
+    for name, (gravity, sd) in ties.items():
+        extra.append(np.eye(width)[names.index(name)])
+        extra_variance.append((sd / MGAL) ** 2)
+        extra_value.append(gravity / MGAL)
+    for n, run in enumerate(runs):
+        assert length[run] > 0.0
+        extra.append(np.eye(width)[len(names) + 2 * n + 1])
+        extra_variance.append((METER.drift_rate_sd / (MGAL / HOUR)) ** 2)
+        extra_value.append(0.0)
+    count = len(lines)
+    design = np.array(lines + extra)
+    # A basis of what the rows determine: without a tie the level is open.
+    _, sizes, right = np.linalg.svd(design)
+    design = design @ right[sizes > 1e-9 * sizes[0]].T
+    return design, np.array(variances + extra_variance), np.array(values + extra_value), count
+
+
+def minus_log_likelihood(u2, design, variances, values, count):
+    """Minus twice the restricted log likelihood, up to a constant (Patterson & Thompson 1971)."""
+    v = variances + np.where(np.arange(len(variances)) < count, u2, 0.0)
+    weighted = design / v[:, None]
+    normal = design.T @ weighted
+    solution = np.linalg.solve(normal, weighted.T @ values)
+    rest = values - design @ solution
+    return np.sum(np.log(v)) + np.linalg.slogdet(normal)[1] + np.sum(rest**2 / v)
+
+
+@pytest.mark.parametrize("seed", range(24))
+def test_reseating_maximises_the_restricted_likelihood(seed):
+    chance = np.random.default_rng(seed)
+    seat = chance.choice([0.0, 0.5, 4.0, 20.0]) * UGAL
+    stops = ["ABCDCBA", "ABACADAEAFA", "ABCDEFEDCBA"][seed % 3]
+    rows = loop(chance, stops, counts=(1, 2, 8), reseating=seat, reading_noise=4 * UGAL, **MAKE)
+    rows += loop(
+        chance, "ADEFEDA", run="2", start=86400.0, counts=(1, 3), reseating=seat, reading_noise=4 * UGAL, **MAKE
+    )
+    ties = {"A": (9.81 / 1e3, 5 * UGAL), "D": (9.81 / 1e3 + GRAVITY["D"], 3 * UGAL)} if seed % 2 else {}
+    adjustment = reduce(made_case(rows, instruments=(METER,), ties=ties, drift_order=1)).network.adjustment
+    found = adjustment.reseating.estimate / MGAL**2
+    parts = whole_design(rows, adjustment, ties)
+    grid = np.concatenate([[0.0], np.geomspace(1e-10, 1e-2, 200)])
+    heights = [minus_log_likelihood(one, *parts) for one in grid]
+    best = int(np.argmin(heights))
+    if best == 0:
+        wanted = 0.0
+    else:
+        near = (np.log(grid[best]) - 0.2, np.log(grid[best]) + 0.2)
+        fine = minimize_scalar(
+            lambda x: minus_log_likelihood(np.exp(x), *parts), bounds=near, method="bounded", options={"xatol": 1e-9}
+        )
+        wanted = np.exp(fine.x)
+    assert minus_log_likelihood(found, *parts) <= min(heights[best], minus_log_likelihood(wanted, *parts)) + 1e-9
+    if best == 0:
+        assert found == 0.0
+    else:
+        assert found == pytest.approx(wanted, rel=1e-4)
+
+
+def test_both_answers_occur_in_those_surveys():
+    kinds = set()
+    for seed in range(8):
+        chance = np.random.default_rng(seed)
+        rows = loop(chance, "ABCDCBA", counts=(3,), reseating=0.0, reading_noise=4 * UGAL, **MAKE)
+        rows += loop(chance, "ADCBA", counts=(3,), reseating=0.0, run="2", start=86400.0, **MAKE)
+        seat = reduce(made_case(rows, instruments=(METER,), drift_order=1)).network.adjustment.reseating
+        kinds.add(seat.estimate == 0.0)
+        assert seat.freedom == 12 - 4 - 3 and not seat.few and seat.t_freedom == 5
+    assert kinds == {True, False}
+
+
+def test_few_degrees_of_freedom_blend_the_estimate_with_the_stated_noise():
+    rows = loop(np.random.default_rng(3), "ABCBA", counts=(4,), **MAKE)
+    seat = reduce(made_case(rows, instruments=(METER,), drift_order=1)).network.adjustment.reseating
+    # Five visits; three stations, one drift: one bias is the datum's.
+    assert (seat.freedom, seat.few, seat.t_freedom) == (1, True, 5)
+    blend = (1 * seat.estimate + 4 * (5 * UGAL) ** 2) / 5
+    np.testing.assert_allclose(seat.variance, blend, rtol=1e-12)
+
+
+@pytest.mark.parametrize(("stops", "freedom", "few"), [("ABCABCABC", 5, False), ("ABCABCAB", 4, True)])
+def test_the_rule_for_few_ends_at_five(stops, freedom, few):
+    rows = loop(np.random.default_rng(4), stops, counts=(2,), **MAKE)
+    results = reduce(made_case(rows, instruments=(METER,), drift_order=1))
+    seat = results.network.adjustment.reseating
+    assert (seat.freedom, seat.few) == (freedom, few)
+    assert results.intervals.dof == (freedom + 4 if few else freedom)
+
+
+def test_no_degree_of_freedom_leaves_the_stated_noise():
+    rows = loop(np.random.default_rng(5), "ABCA", counts=(3,), **MAKE)
+    results = reduce(made_case(rows, instruments=(METER,), drift_order=1))
+    seat = results.network.adjustment.reseating
+    assert (seat.freedom, results.intervals.dof) == (0, 4)
+    np.testing.assert_allclose(seat.variance, (5 * UGAL) ** 2, rtol=1e-14)
+    assert np.isnan(seat.estimate)
+
+
+def test_ties_and_priors_add_no_degree_of_freedom():
+    rows = loop(np.random.default_rng(6), "ABCDCBA", counts=(2,), **MAKE)
+    free = reduce(made_case(rows, instruments=(METER,), drift_order=1)).network.adjustment.reseating
+    ties = {name: (9.81 + GRAVITY[name], 5 * UGAL) for name in "ABD"}
+    tied = reduce(made_case(rows, instruments=(METER,), drift_order=1, ties=ties)).network.adjustment.reseating
+    assert free.freedom == tied.freedom == 7 - 4 - 1
+
+
+def test_single_readings_leave_all_noise_to_the_visits():
+    rows = loop(np.random.default_rng(7), "ABCBA", counts=(1,), reading_sd=(6 * UGAL, 9 * UGAL, 7 * UGAL), **MAKE)
+    adjustment = reduce(made_case(rows, instruments=(METER,), drift_order=1)).network.adjustment
+    np.testing.assert_array_equal(adjustment.noise.sd, 2 * UGAL)
+    assert not adjustment.noise.repeated
+    stated = (5 * UGAL) ** 2 + np.median([row.reading_sd for row in rows]) ** 2
+    blend = (adjustment.reseating.estimate + 4 * stated) / 5
+    np.testing.assert_allclose(adjustment.reseating.variance, blend, rtol=1e-12)
+    bare = [replace(row, reading_sd=np.nan) for row in rows]
+    adjustment = reduce(made_case(bare, instruments=(METER,), drift_order=1)).network.adjustment
+    blend = (adjustment.reseating.estimate + 4 * (5 * UGAL) ** 2) / 5
+    np.testing.assert_allclose(adjustment.reseating.variance, blend, rtol=1e-12)
+
+
+def scatter(rows, sds):
+    """Weighted scatter within visits, over their degrees of freedom; drift taken out by the truth of the maker."""
+    total, freedom = 0.0, 0
+    times = [row.time for row in rows]
+    edges = [0, *(n for n in range(1, len(rows)) if times[n] - times[n - 1] > 900.0), len(rows)]
+    for a, b in zip(edges[:-1], edges[1:], strict=True):
+        values = np.array([row.reading - 0.02 * MGAL / HOUR * row.time for row in rows[a:b]])
+        weight = np.array(sds[a:b]) ** -2.0
+        mean = np.sum(weight * values) / np.sum(weight)
+        total += np.sum(weight * (values - mean) ** 2)
+        freedom += b - a - 1
+    return np.sqrt(total / freedom)
+
+
+def test_reading_noise_is_the_scatter_within_visits():
+    rows = loop(np.random.default_rng(8), "ABCDCBA", counts=(4, 6), reading_noise=7 * UGAL, **MAKE)
+    noise = reduce(made_case(rows, instruments=(METER,), drift_order=1)).network.adjustment.noise
+    assert np.ptp(noise.sd) == 0.0 and np.isnan(noise.scale)
+    assert noise.sd[0] == pytest.approx(scatter(rows, [1.0] * len(rows)), rel=2e-3)
+    assert noise.freedom == len(rows) - 7
+
+
+def test_stated_sds_are_relative_weights():
+    rows = loop(np.random.default_rng(9), "ABCDCBA", counts=(4, 6), reading_sd=(3 * UGAL, 8 * UGAL), **MAKE)
+    scaled = [replace(row, reading_sd=10.0 * row.reading_sd) for row in rows]
+    plain, tenfold = (
+        reduce(made_case(one, instruments=(METER,), drift_order=1)).network.adjustment.noise for one in (rows, scaled)
+    )
+    assert plain.scale == pytest.approx(scatter(rows, [row.reading_sd for row in rows]), rel=2e-3)
+    np.testing.assert_allclose(tenfold.sd, plain.sd, rtol=1e-12)
+    assert tenfold.scale == pytest.approx(plain.scale / 10.0, rel=1e-12)
+    np.testing.assert_allclose(plain.sd, plain.scale * np.array([row.reading_sd for row in rows]), rtol=1e-12)
+
+
+def test_rows_without_a_stated_sd_take_the_median():
+    rows = loop(np.random.default_rng(10), "ABCDCBA", counts=(4,), reading_sd=(3 * UGAL, 8 * UGAL, 9 * UGAL), **MAKE)
+    rows = [replace(row, reading_sd=np.nan if n % 5 == 0 else row.reading_sd) for n, row in enumerate(rows)]
+    noise = reduce(made_case(rows, instruments=(METER,), drift_order=1)).network.adjustment.noise
+    stated = np.array([row.reading_sd for row in rows])
+    filled = np.where(np.isnan(stated), np.nanmedian(stated), stated)
+    np.testing.assert_allclose(noise.sd, noise.scale * filled, rtol=1e-12)
+
+
+def test_no_reading_is_believed_better_than_its_floor():
+    still = loop(np.random.default_rng(11), "ABCDCBA", counts=(4,), reading_noise=0.0, drift=(), **MAKE)
+    noise = reduce(made_case(still, instruments=(METER,), drift_order=1)).network.adjustment.noise
+    np.testing.assert_array_equal(noise.sd, 2 * UGAL)
+    mixed = loop(np.random.default_rng(12), "ABCDCBA", counts=(4,), reading_sd=(0.1 * UGAL, 8 * UGAL), **MAKE)
+    noise = reduce(made_case(mixed, instruments=(METER,), drift_order=1)).network.adjustment.noise
+    stated = np.array([row.reading_sd for row in mixed])
+    np.testing.assert_allclose(noise.sd, np.maximum(2 * UGAL, noise.scale * stated), rtol=1e-12)
+
+
+def test_noise_as_given():
+    rough = Instrument(name="B", reading_floor=6 * UGAL, reseating_sd=9 * UGAL)
+    rows = loop(np.random.default_rng(13), "ABCDCBA", reading_sd=(1 * UGAL, 8 * UGAL), **MAKE)
+    rows += loop(
+        np.random.default_rng(14), "ADCA", run="2", start=86400.0, instrument="B", reading_sd=(3 * UGAL, 11 * UGAL),
+        **MAKE,
+    )
+    adjustment = reduce(
+        made_case(rows, instruments=(METER, rough), drift_order=1, noise="as_given")
+    ).network.adjustment
+    floor = [6 * UGAL if row.instrument == "B" else 2 * UGAL for row in rows]
+    np.testing.assert_allclose(adjustment.noise.sd, np.maximum(floor, [row.reading_sd for row in rows]), rtol=1e-14)
+    seats = [(9 * UGAL) ** 2 if run == 1 else (5 * UGAL) ** 2 for run in adjustment.visits.run]
+    np.testing.assert_allclose(adjustment.reseating.variance, seats, rtol=1e-14)
+
+
+def test_each_visit_has_the_stated_noise_of_its_own_instrument():
+    rough = Instrument(name="B", reading_floor=6 * UGAL, reseating_sd=9 * UGAL)
+    rows = loop(np.random.default_rng(15), "ABA", **MAKE)
+    rows += loop(np.random.default_rng(16), "ABA", run="2", start=86400.0, instrument="B", **MAKE)
+    adjustment = reduce(made_case(rows, instruments=(METER, rough), drift_order=1)).network.adjustment
+    assert adjustment.reseating.freedom == 6 - 2 - 3
+    for variance, run in zip(adjustment.reseating.variance, adjustment.visits.run, strict=True):
+        stated = 9 * UGAL if run == 1 else 5 * UGAL
+        assert variance == pytest.approx((adjustment.reseating.estimate + 4 * stated**2) / 5, rel=1e-12)
+
+
+def test_a_run_of_one_instant_has_no_drift():
+    rows = loop(np.random.default_rng(17), "ABCBA", **MAKE)
+    lone = [Row(time=86400.0, reading=0.0, depth=0.0, station="A", run="2")] * 1
+    adjustment = reduce(made_case([*rows, *lone], instruments=(METER,), runs=(Run(name="2", drift_order=2),)))
+    assert adjustment.network.adjustment.orders == (1, 0)
