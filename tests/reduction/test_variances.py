@@ -20,14 +20,13 @@ METER = Instrument(name="A", reading_floor=2 * UGAL, reseating_sd=5 * UGAL, drif
 MAKE = {"depth": DEPTH, "gravity": GRAVITY}
 
 
-def whole_design(rows, adjustment, ties):
-    """Design, variances without re-seating, and values of visit means, tie and rate priors, mGal and hours."""
+def whole_design(rows, adjustment):
+    """Design, variances without re-seating, and values of the visit means, mGal and hours."""
     visits = adjustment.visits
     lines, variances, values = [], [], []
     runs = sorted({row.run for row in rows})
     names = sorted({row.station for row in rows})
     start = {run: min(row.time for row in rows if row.run == run) for run in runs}
-    length = {run: max(row.time for row in rows if row.run == run) - start[run] for run in runs}
     width = len(names) + 2 * len(runs)
     for v in range(len(visits)):
         members = visits.rows[visits.start[v] : visits.start[v + 1]]
@@ -41,27 +40,16 @@ def whole_design(rows, adjustment, ties):
         lines.append(line)
         variances.append(1.0 / np.sum(sd**-2))
         values.append(sum(rows[m].reading / MGAL * part for m, part in zip(members, share, strict=True)))
-    extra, extra_variance, extra_value = [], [], []
-    for name, (gravity, sd) in ties.items():
-        extra.append(np.eye(width)[names.index(name)])
-        extra_variance.append((sd / MGAL) ** 2)
-        extra_value.append(gravity / MGAL)
-    for n, run in enumerate(runs):
-        assert length[run] > 0.0
-        extra.append(np.eye(width)[len(names) + 2 * n + 1])
-        extra_variance.append((METER.drift_rate_sd / (MGAL / HOUR)) ** 2)
-        extra_value.append(0.0)
-    count = len(lines)
-    design = np.array(lines + extra)
-    # A basis of what the rows determine: without a tie the level is open.
+    design = np.array(lines)
+    # A basis of what the visits determine: the level at least is open.
     _, sizes, right = np.linalg.svd(design)
     design = design @ right[sizes > 1e-9 * sizes[0]].T
-    return design, np.array(variances + extra_variance), np.array(values + extra_value), count
+    return design, np.array(variances), np.array(values)
 
 
-def minus_log_likelihood(u2, design, variances, values, count):
+def minus_log_likelihood(u2, design, variances, values):
     """Minus twice the restricted log likelihood, up to a constant (Patterson & Thompson 1971)."""
-    v = variances + np.where(np.arange(len(variances)) < count, u2, 0.0)
+    v = variances + u2
     weighted = design / v[:, None]
     normal = design.T @ weighted
     solution = np.linalg.solve(normal, weighted.T @ values)
@@ -81,7 +69,7 @@ def test_reseating_maximises_the_restricted_likelihood(seed):
     ties = {"A": (9.81 / 1e3, 5 * UGAL), "D": (9.81 / 1e3 + GRAVITY["D"], 3 * UGAL)} if seed % 2 else {}
     adjustment = reduce(made_case(rows, instruments=(METER,), ties=ties, drift_order=1)).network.adjustment
     found = adjustment.reseating.estimate / MGAL**2
-    parts = whole_design(rows, adjustment, ties)
+    parts = whole_design(rows, adjustment)
     grid = np.concatenate([[0.0], np.geomspace(1e-10, 1e-2, 200)])
     heights = [minus_log_likelihood(one, *parts) for one in grid]
     best = int(np.argmin(heights))
@@ -145,6 +133,30 @@ def test_ties_and_priors_add_no_degree_of_freedom():
     ties = {name: (9.81 + GRAVITY[name], 5 * UGAL) for name in "ABD"}
     tied = reduce(made_case(rows, instruments=(METER,), drift_order=1, ties=ties)).network.adjustment.reseating
     assert free.freedom == tied.freedom == 7 - 4 - 1
+
+
+@pytest.mark.parametrize("stops", ["ABCDEFEDCBA", "ABCDCBA"])
+def test_a_wrong_expectation_of_drift_is_no_noise(stops):
+    # The meter drifts forty times faster than it was expected to: repeats overrule that at once.
+    fast = (2.0 * MGAL / HOUR,)
+    rows = loop(np.random.default_rng(21), stops, counts=(3,), drift=fast, **MAKE)
+    open_meter = replace(METER, drift_rate_sd=100.0 * MGAL / HOUR)
+    expected, free = (
+        reduce(made_case(rows, instruments=(one,), drift_order=1)).network.adjustment for one in (METER, open_meter)
+    )
+    np.testing.assert_allclose(expected.reseating.variance, free.reseating.variance, rtol=1e-3)
+    (slope,) = (one for one in expected.design.unknowns if one.kind == "drift")
+    value, _ = expected.unknown(slope)
+    assert value / expected.basis.length[0] == pytest.approx(fast[0], rel=2e-3)
+
+
+def test_wrong_ties_are_no_noise():
+    rows = loop(np.random.default_rng(22), "ABCDEFEDCBA", counts=(3,), **MAKE)
+    ties = {"A": (9.81, 5 * UGAL), "F": (9.81 + GRAVITY["F"] + 0.3 * MGAL, 5 * UGAL)}
+    free, tied = (
+        reduce(made_case(rows, instruments=(METER,), drift_order=1, ties=one)).network.adjustment for one in ({}, ties)
+    )
+    np.testing.assert_allclose(tied.reseating.variance, free.reseating.variance, rtol=1e-5)
 
 
 def test_single_readings_leave_all_noise_to_the_visits():

@@ -125,7 +125,10 @@ SLAB_DENSITY = Law(
     ),
 )
 LESS_LOG = Law(
-    "density less log", "interval density - log density", "definition", lambda density, log_density: density - log_density
+    "density less log",
+    "interval density - log density",
+    "definition",
+    lambda density, log_density: density - log_density,
 )
 
 
@@ -187,6 +190,7 @@ def interval_densities(
             "density", "kg/m3", DENSITY, *ends("disturbance", left.disturbance), *ends("radius", parts.radius), joined
         ),
         slab=computed(
-            "density_slab", "kg/m3", SLAB_DENSITY, Input("gradient", gradient), Input("free_air_gradient", free_air), joined
+            "density_slab", "kg/m3", SLAB_DENSITY, Input("gradient", gradient),
+            Input("free_air_gradient", free_air), joined,
         ),
     )

@@ -377,8 +377,11 @@ def _check_named_stations(
     """Stations of ties and of the datum are stations of the survey, where all its labels are written."""
     if (readings.use & (readings.station.code < 0)).any():
         return  # rows without a label may found stations whose labels are not known yet
-    known = {*readings.station.names, *(places.station if places is not None else ())}
-    names = ", ".join(f'"{shown(name)}"' for name in sorted(known)[:12])
+    written = {*readings.station.names, *(places.station if places is not None else ())}
+    known = written | {
+        f"{name}b" for name in written
+    }  # the second place of a label, where rows lie far apart
+    names = ", ".join(f'"{shown(name)}"' for name in sorted(written)[:12])
     expected = f"a station of the readings or of places.csv, such as {names}"
     mend = "correct the label; case and blanks count"
     if ties is not None:

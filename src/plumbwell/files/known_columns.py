@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from plumbwell.files.collected import Collected, first_rows
 from plumbwell.files.number_cells import MEND_MISSING, MEND_TEXT, BadCell, numbers_of
-from plumbwell.files.text_table import TextTable, heading_parts
+from plumbwell.files.text_table import FORMULA_MARKS, TextTable, heading_parts
 from plumbwell.survey.column import Array, Column, Origin, constant_column, frozen
 from plumbwell.survey.errors import shown
 from plumbwell.survey.units import Unit, known_labels, unit
@@ -321,5 +321,9 @@ def _refuse_sentinels(
 
 
 def texts(matched: Matched, name: str) -> list[str | None]:
-    """The labels of a column, None where a cell is empty or there is no such column."""
-    return [cell or None for cell in matched.cells(name)]
+    """The labels of a column, None where a cell is empty or there is no such column.
+
+    The apostrophe that our own tables put before a label which a spreadsheet would take for a formula is taken off.
+    """
+    cells = matched.cells(name)
+    return [(cell[1:] if cell[:1] == "'" and cell[1:2] in FORMULA_MARKS else cell) or None for cell in cells]

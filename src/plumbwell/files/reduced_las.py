@@ -17,7 +17,7 @@ from plumbwell.earth.constants import MILLIGAL
 from plumbwell.files.las import las_text
 from plumbwell.study.cautions import CAUTIONS
 from plumbwell.study.results import Results
-from plumbwell.survey.column import Array, Index
+from plumbwell.survey.column import Array, Index, frozen
 
 STEP = 0.5
 MOST_ROWS = 2_000_000
@@ -46,14 +46,14 @@ def reduced_las(results: Results) -> str | None:
     depth, is_measured = las_depth(results)
     pairs = results.intervals.densities.pairs
     ends = np.sort(np.column_stack([depth[pairs.top], depth[pairs.base]]), axis=1)
-    known = np.isfinite(ends).all(axis=1)
+    known = np.isfinite(ends[:, 0]) & np.isfinite(ends[:, 1])
     if not known.any():
         return None
     first, last = float(ends[known, 0].min()), float(ends[known, 1].max())
     start, stop = int(np.ceil(first / STEP - 1e-9)), int(np.floor(last / STEP + 1e-9))
     if stop <= start or stop - start >= MOST_ROWS:
         return None
-    at = np.arange(start, stop + 1) * STEP
+    at = frozen(np.arange(start, stop + 1) * STEP)
     interval = _interval_at(at, np.where(known[:, None], ends, np.nan))
 
     def stepped(values: Array) -> Array:

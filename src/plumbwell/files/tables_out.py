@@ -12,6 +12,7 @@ from collections.abc import Iterable, Sequence
 import numpy as np
 
 from plumbwell.earth.constants import MILLIGAL
+from plumbwell.files.text_table import FORMULA_MARKS
 from plumbwell.files.times import iso
 from plumbwell.study.results import Results
 from plumbwell.study.tables import TABLES, TEXT, TIME, Table, TableColumn
@@ -27,7 +28,7 @@ _DOUBTFUL = re.compile(r"[,\"\r]|(?:^|\n)(?:[=+\-@#]|[^\S\n])|[^\S\n](?:\n|$)")
 
 def cell(text: str) -> str:
     """A text as it stands in a CSV cell: quoted where it must be, a formula disarmed by an apostrophe."""
-    if text[:1] in ("=", "+", "-", "@", "\t", "\r") and text and not NUMBER.fullmatch(text):
+    if text[:1] in FORMULA_MARKS and text and not NUMBER.fullmatch(text):
         text = "'" + text
     if _UNPLAIN.search(text) or text[:1] == "#" or text != text.strip():
         return '"' + text.replace('"', '""') + '"'

@@ -18,6 +18,9 @@ from plumbwell.survey.column import Index, frozen_index
 from plumbwell.survey.errors import shown
 from plumbwell.survey.readings import RawTable
 
+FORMULA_MARKS = ("=", "+", "-", "@", "\t", "\r")
+"""A label that starts so would run as a formula in a spreadsheet."""
+
 MAXIMUM_COLUMNS = 1000
 MAXIMUM_CELLS = 20_000_000  # some 2 GiB once every cell is a text of its own
 

@@ -13,18 +13,17 @@ import numpy as np
 from plumbwell import __version__
 from plumbwell.earth.constants import MILLIGAL
 from plumbwell.plates.figure import write_png, write_svg
+from plumbwell.plates.numbers import number
 from plumbwell.plates.plate import PlateFinding, PlateInterval, PlateStation, SurveyPlate
 from plumbwell.plates.theme import theme_named
 from plumbwell.reduction.positions import well_path
 from plumbwell.reduction.reference_rock import log_depth
+from plumbwell.study.cautions import OTHER_MASSES
+from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
-from plumbwell.survey.column import Array
+from plumbwell.survey.column import Array, Index
 
 GRAM_PER_CM3 = 1000.0
-CAUTION = (
-    "An interpretation with a stated error: other masses could explain it. Verify by drilling or another method "
-    "before anyone relies on it."
-)
 
 
 def _known(value: float, factor: float = 1.0) -> float | None:
@@ -50,30 +49,29 @@ def survey_plate(results: Results) -> SurveyPlate:
         return (of_hole if measured else path.at(of_hole)[0]).tolist()
 
     pairs = intervals.densities.pairs
-    flagged = {
-        number for finding in results.findings if finding.severity != "note" for number in finding.intervals
-    }
+    flagged = {row for finding in results.findings if finding.severity != "note" for row in finding.intervals}
     rows = []
-    for number, (top, base) in enumerate(zip(pairs.top.tolist(), pairs.base.tolist(), strict=True)):
-        sd = _known(intervals.density_sd.values[number], GRAM_PER_CM3)
-        difference = _known(intervals.density_less_log.values[number], GRAM_PER_CM3)
+    for row, (top, base) in enumerate(zip(pairs.top.tolist(), pairs.base.tolist(), strict=True)):
+        sd = _known(intervals.density_sd.values[row], GRAM_PER_CM3)
+        difference = _known(intervals.density_less_log.values[row], GRAM_PER_CM3)
         rows.append(
             PlateInterval(
-                number=number + 1,
+                number=row + 1,
                 top=float(depth[top]),
                 base=float(depth[base]),
-                density=_known(intervals.density.values[number], GRAM_PER_CM3),
+                density=_known(intervals.density.values[row], GRAM_PER_CM3),
                 sd=sd,
-                common_sd=_known(intervals.density_common_sd.values[number], GRAM_PER_CM3),
-                slab=_known(intervals.density_slab.values[number], GRAM_PER_CM3),
-                log=_known(intervals.log_density.values[number], GRAM_PER_CM3),
+                common_sd=_known(intervals.density_common_sd.values[row], GRAM_PER_CM3),
+                slab=_known(intervals.density_slab.values[row], GRAM_PER_CM3),
+                log=_known(intervals.log_density.values[row], GRAM_PER_CM3),
                 difference=difference,
                 difference_sd=sd if difference is not None else None,
                 ratio=difference / sd if difference is not None and sd else None,
-                flagged=number in flagged,
+                flagged=row in flagged,
             )
         )
-    logs, values = [], []
+    logs: list[float] = []
+    values: list[float | None] = []
     for log in survey.logs[:1]:
         logs = shown_depth(log_depth(log, site))
         values = [_known(one, GRAM_PER_CM3) for one in log.density.values.tolist()]
@@ -86,7 +84,7 @@ def survey_plate(results: Results) -> SurveyPlate:
     used = np.flatnonzero(column & np.isfinite(depth))
     return SurveyPlate(
         title=site.name,
-        subtitle=f"{len(used)} stations, {len(rows)} intervals, to {deepest:.0f} m",
+        subtitle=f"{len(used)} stations, {len(rows)} intervals, to {number(deepest, 0)} m",
         depth_label="MD" if measured else "TVD",
         intervals=tuple(rows),
         stations=tuple(
@@ -104,17 +102,20 @@ def survey_plate(results: Results) -> SurveyPlate:
         log_depths=tuple(logs),
         log_values=tuple(values),
         findings=tuple(
-            PlateFinding(severity=finding.severity, depth=_finding_depth(finding, depth, pairs.top), words="")
+            PlateFinding(
+                severity=finding.severity, depth=_finding_depth(finding, depth, pairs.top), words=finding.text
+            )
             for finding in results.findings
             if finding.severity != "note"
         ),
         remarks=_remarks(results),
-        caution=CAUTION,
+        caution=OTHER_MASSES,
         gravity_label="gravity" if results.absolute else "relative gravity",
     )
 
 
-def _finding_depth(finding, depth: Array, top: Array) -> float | None:  # type: ignore[no-untyped-def]
+def _finding_depth(finding: Finding, depth: Array, top: Index) -> float | None:
+    """Depth at which a finding stands: of its first station, or of the top of its first interval."""
     if finding.stations:
         return _known(depth[finding.stations[0]])
     return _known(depth[top[finding.intervals[0]]]) if finding.intervals else None
@@ -127,11 +128,18 @@ def _remarks(results: Results) -> tuple[str, ...]:
     reference = recipe.reference_density
     rock = f"{reference / GRAM_PER_CM3:.3g} g/cm³" if isinstance(reference, float) else f"by {reference}"
     dof = results.intervals.dof
+    common = results.intervals.density_common_sd.values / GRAM_PER_CM3
+    shared = (
+        (f"common to all densities: ± {number(float(np.nanmax(common)), 4)} g/cm³ (1 sd)",)
+        if np.isfinite(common).any()
+        else ()
+    )
     return (
         f"shell form; {recipe.normal_gravity}, {kind} gradient {choice.gradient / MILLIGAL:.5f} mGal/m",
         f"reference rock {rock}",
         "gravity absolute by ties" if results.absolute else "gravity relative to the datum station",
         f"{dof} degrees of freedom",
+        *shared,
         f"Plumbwell {__version__}",
     )
 

@@ -6,6 +6,7 @@ A name stands where the curves in view leave the widest gap. Lengths in px.
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import lru_cache
 from math import ceil, floor
 
 from PySide6.QtCore import QRectF
@@ -73,6 +74,7 @@ def step_extent(track: Track, frame: Frame, *, bands: bool = True) -> CurveRows:
     return rows
 
 
+@lru_cache(maxsize=8)
 def line_extent(track: Track, frame: Frame) -> CurveRows:
     """Return the rows taken by a track's log."""
     rows = CurveRows(frame)

@@ -6,6 +6,7 @@ No painter is asked to clip, since an SVG of the small profile knows no clipping
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import lru_cache
 from math import isfinite
 from typing import TYPE_CHECKING
 
@@ -56,15 +57,16 @@ def inside_pieces(places: Sequence[Place], frame: Frame) -> list[list[Place]]:
     return pieces
 
 
+@lru_cache(maxsize=8)
 def thinned_pieces(
-    depths: Sequence[float], values: Sequence[float | None], track: Track, frame: Frame
-) -> list[list[Place]]:
+    depths: tuple[float, ...], values: tuple[float | None, ...], track: Track, frame: Frame
+) -> tuple[tuple[Place, ...], ...]:
     """Return a log as lines in px: broken at its gaps, and with at most four places in each half px row.
 
     Of the samples that share half a px the first, least, greatest and last are kept, in their order, so no
-    spike is lost.
+    spike is lost. The last few logs are kept: one plate asks for the same pieces several times.
     """
-    pieces: list[list[Place]] = []
+    pieces: list[tuple[Place, ...]] = []
     piece: list[Place] = []
     bin_places: list[Place] = []
     bin_row: int | None = None
@@ -84,7 +86,7 @@ def thinned_pieces(
         if value is None or not isfinite(depth):
             close_bin()
             if len(piece) > 1:
-                pieces.append(piece)
+                pieces.append(tuple(piece))
             piece = []
             bin_row = None
             continue
@@ -96,5 +98,5 @@ def thinned_pieces(
         bin_places.append(place)
     close_bin()
     if len(piece) > 1:
-        pieces.append(piece)
-    return pieces
+        pieces.append(tuple(piece))
+    return tuple(pieces)

@@ -8,8 +8,12 @@ from __future__ import annotations
 import re
 from functools import lru_cache
 
+import numpy as np
+
 _PATH_DATA = re.compile(r'(?<= d=")[^"]*(?=")')
-_COMMAND = re.compile("([MLCZ])([^MLCZ]*)")
+_COMMAND = re.compile("[MLCZ]")
+_SEPARATOR = re.compile("[MLCZ, ]+")
+_PAIRS = {"M": 1, "L": 1, "C": 3, "Z": 0}
 # The painter says these of every group: the unit transform, and a font though no text stands in the file.
 _IDLE = re.compile(
     r' transform="matrix\(1,0,0,1,0,0\)"|\s*font-family="[^"]*" font-size="[^"]*" font-weight="[^"]*" '
@@ -18,7 +22,7 @@ _IDLE = re.compile(
 _EMPTY_GROUP = re.compile(r"<g [^>]*>\s*</g>\s*")
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=65536)
 def _hundredths(value: int) -> str:
     """Return a count of hundredths as the shortest decimal number."""
     whole, rest = divmod(abs(value), 100)
@@ -33,20 +37,36 @@ def _relative(found: re.Match[str]) -> str:
 
     Places are rounded before differences are taken, so that rounding does not add up along a path.
     """
-    written: list[str] = []
-    x = y = start_x = start_y = 0
-    for command, numbers in _COMMAND.findall(found.group()):
-        written.append(command.lower())
-        if command == "Z":
-            x, y = start_x, start_y
+    data = found.group()
+    commands = _COMMAND.findall(data)
+    numbers = np.array(_SEPARATOR.sub(" ", data).split(), dtype=np.float64)
+    places = np.rint(100.0 * numbers).astype(np.int64).reshape(-1, 2)
+    ends: list[int] = []  # for each command with places: the pair at which the pen stood before it, -1 for (0, 0)
+    counts: list[int] = []
+    pen = start = -1
+    seen = 0
+    for command in commands:
+        pairs = _PAIRS[command]
+        if not pairs:
+            pen = start
             continue
-        values = [round(100 * float(text)) for text in numbers.replace(",", " ").split()]
-        steps = [_hundredths(value - (y if index % 2 else x)) for index, value in enumerate(values)]
-        written.append(" ".join(steps).replace(" -", "-"))
-        x, y = values[-2:]
+        ends.append(pen)
+        counts.append(pairs)
+        seen += pairs
+        pen = seen - 1
         if command == "M":
-            start_x, start_y = x, y
-    return "".join(written)
+            start = pen
+    origin = np.vstack([places, np.zeros((1, 2), dtype=np.int64)])
+    before = np.repeat(np.array(ends, dtype=np.intp), np.array(counts, dtype=np.intp))
+    steps = (places - origin[before]).ravel().tolist()
+    texts = [_hundredths(step) for step in steps]
+    written: list[str] = []
+    at = 0
+    for command in commands:
+        after = at + 2 * _PAIRS[command]
+        written.append(command.lower() + " ".join(texts[at:after]))
+        at = after
+    return "".join(written).replace(" -", "-")
 
 
 def compact_svg(content: bytes) -> bytes:

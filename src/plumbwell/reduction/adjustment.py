@@ -169,7 +169,8 @@ def adjusted(
     values = observed[rows] - held
     means = np.add.reduceat(values, visits.start[:-1]) / counts
     stated = terms.reading_sd[rows]
-    rough = _solved(first, np.full(len(visits), 1.0 / float(np.mean(terms.reseating_sd[rows] ** 2))), means, ties)
+    typical = float(np.mean(terms.reseating_sd[rows] ** 2 + terms.reading_floor[rows] ** 2))
+    rough = _solved(first, np.full(len(visits), 1.0 / typical), means, ties)
     drift = border_drift(basis, first, rough.unknown[:, 0], rows)
     noise = reading_noise(
         visits, values - drift, stated=stated, floor=terms.reading_floor[rows], estimate=terms.estimate
@@ -189,7 +190,7 @@ def adjusted(
         one, rank = designed(chosen, regressors)
         if undetermined(one, ties, rank) is not None:
             return None
-        found = reseating(one, mean, noise, ties, rank=rank, stated_variance=u0, estimate=terms.estimate)
+        found = reseating(one, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate)
         weight = 1.0 / (noise.variance + found.variance)
         return Fit(freedom=found.freedom, solution=_solved(one, weight, mean, ties))
 
@@ -200,7 +201,7 @@ def adjusted(
     if automatic:
         orders, tests = chosen_orders(orders, automatic, fit, squares)
     final, rank = designed(orders, regressors)
-    seat = reseating(final, mean, noise, ties, rank=rank, stated_variance=u0, estimate=terms.estimate)
+    seat = reseating(final, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate)
     weight = 1.0 / (noise.variance + seat.variance)
     answers = [visit_means(noise.weight, one[rows], visits.start) for one in responses]
     solution = _solved(final, weight, np.column_stack([mean, *answers]), ties)

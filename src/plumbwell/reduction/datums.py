@@ -9,6 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment, run_bias
 from plumbwell.reduction.network import NO_TIES, Solution, TieRows, border_matrix
@@ -58,7 +59,7 @@ class StationGravity:
 
 
 def datum_stations(
-    parts: Parts, role: tuple[str, ...], elevation: Array, visited: Array, *, wanted: int | None
+    parts: Parts, role: tuple[str, ...], elevation: Array, visited: NDArray[np.bool_], *, wanted: int | None
 ) -> Index:
     """The datum station of each part; -1 where a tie fixes it.
 

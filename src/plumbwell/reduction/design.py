@@ -8,6 +8,7 @@ the observations; a visit's row of the design is the weighted mean of its readin
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
@@ -183,25 +184,27 @@ class VisitRegressors:
 
     Parameters
     ----------
-    powers : (3, v) array
-        Means of time, its square and cube within the run.
-    jumps : (m, v) array
-        Share of each visit's weight at or after each tare.
+    table : (4 + m, v) array
+        Ones, means of time, its square and cube within the run, and the share of each visit's weight at or
+        after each of m tares.
     """
 
-    powers: Array
-    jumps: Array
+    table: Array
+
+    def row(self, unknown: DriftUnknown) -> int:
+        """The row of the table that an unknown multiplies."""
+        return HIGHEST_ORDER + 1 + unknown.tare if unknown.kind == "tare" else unknown.power
 
 
 def visit_regressors(basis: DriftBasis, visits: Visits, row_weight: Array) -> VisitRegressors:
     """Visit means of the regressors; `row_weight` (u,) sums to 1 within each visit, in the order of `visits.rows`."""
     rows = visits.rows
     time = basis.time(rows)
-    powers = [np.add.reduceat(row_weight * time**power, visits.start[:-1]) for power in (1, 2, 3)]
-    jumps = [np.add.reduceat(row_weight * basis.jumps(rows, one), visits.start[:-1]) for one in range(len(basis.tares))]
-    return VisitRegressors(
-        powers=frozen(powers), jumps=frozen(np.array(jumps).reshape(len(basis.tares), len(visits)))
-    )
+    table = [time**power for power in range(HIGHEST_ORDER + 1)]
+    table += [basis.jumps(rows, one) for one in range(len(basis.tares))]
+    means = np.add.reduceat(row_weight * np.array(table), visits.start[:-1], axis=1)
+    means[0] = 1.0
+    return VisitRegressors(table=frozen(means))
 
 
 def design(
@@ -213,7 +216,6 @@ def design(
     orders: tuple[int, ...],
     dropped: tuple[DriftUnknown, ...],
     lost: tuple[DriftUnknown, ...] = (),
-    use_priors: bool = True,
 ) -> Design:
     """The design for given drift orders.
 
@@ -226,8 +228,6 @@ def design(
         Runs without used readings are ignored.
     dropped, lost : tuples of DriftUnknown
         Constants and undetermined unknowns that are held at 0.
-    use_priors : bool
-        False leaves the pseudo-observations of mean drift rates out.
     """
     everything: list[DriftUnknown] = []
     for run in visits.run_order.tolist():
@@ -238,32 +238,31 @@ def design(
             everything.append(DriftUnknown(kind="tare", run=int(basis.tare_run[number]), tare=number))
     away = {*dropped, *lost}
     unknowns = tuple(one for one in everything if one not in away)
+    size = len(unknowns)
     by_run: dict[int, list[int]] = {}
     for number, one in enumerate(unknowns):
         by_run.setdefault(one.run, []).append(number)
-    entry_visit, entry_unknown, entry_value = [], [], []
-    pair_visit, pair_flat, pair_value = [], [], []
-    size = len(unknowns)
-    arranged = np.argsort(visits.run, kind="stable")
-    edges = np.searchsorted(visits.run[arranged], np.arange(len(basis.start) + 1))
+    # For each run its unknowns and their rows in the table of regressors, filled up with none.
+    most = max((len(numbers) for numbers in by_run.values()), default=0)
+    number_of = np.full((len(basis.start), most), -1, dtype=np.intp)
     for run, numbers in by_run.items():
-        mine = arranged[edges[run] : edges[run + 1]]
-        values = [_visit_values(unknowns[number], regressors, mine) for number in numbers]
-        for number, value in zip(numbers, values, strict=True):
-            entry_visit.append(mine)
-            entry_unknown.append(np.full(mine.size, number))
-            entry_value.append(value)
-            for other, other_value in zip(numbers, values, strict=True):
-                pair_visit.append(mine)
-                pair_flat.append(np.full(mine.size, number * size + other))
-                pair_value.append(value * other_value)
-    visit = _joined(entry_visit, np.intp)
-    unknown = _joined(entry_unknown, np.intp)
-    priors = _priors(basis, unknowns, use_priors)
+        number_of[run, : len(numbers)] = numbers
+    row_of = np.array([regressors.row(one) for one in unknowns] + [0], dtype=np.intp)
+    unknown = number_of[visits.run]
+    value = regressors.table[row_of[unknown], np.arange(len(visits))[:, None]]
+    present = unknown >= 0
+    visit = np.nonzero(present)[0]
+    first, second = unknown[:, :, None], unknown[:, None, :]
+    both = (first >= 0) & (second >= 0)
+    pair_visit = np.nonzero(both)[0]
+    pair_flat = (first * size + second)[both]
+    pair_value = (value[:, :, None] * value[:, None, :])[both]
+    unknown, value = unknown[present], value[present]
+    priors = _priors(basis, unknowns)
     prior_matrix, prior_side = np.zeros((size, size)), np.zeros(size)
     for prior in priors:
         factors = prior.factors / prior.sd
-        prior_matrix[np.ix_(prior.unknowns, prior.unknowns)] += factors[:, None] * factors[None, :]
+        prior_matrix[prior.unknowns[:, None], prior.unknowns] += factors[:, None] * factors
         prior_side[prior.unknowns] += factors * (prior.value / prior.sd)
     return Design(
         unknowns=unknowns,
@@ -272,11 +271,11 @@ def design(
         station=visits.station,
         entry_visit=visit,
         entry_unknown=unknown,
-        entry_value=_joined(entry_value, np.float64),
+        entry_value=value,
         entry_flat=visits.station[visit] * size + unknown,
-        pair_visit=_joined(pair_visit, np.intp),
-        pair_flat=_joined(pair_flat, np.intp),
-        pair_value=_joined(pair_value, np.float64),
+        pair_visit=pair_visit,
+        pair_flat=pair_flat,
+        pair_value=pair_value,
         priors=priors,
         prior_matrix=prior_matrix,
         prior_side=prior_side,
@@ -285,19 +284,7 @@ def design(
     )
 
 
-def _joined(parts: list[Array], kind: type) -> Array:
-    return np.concatenate(parts).astype(kind) if parts else np.zeros(0, dtype=kind)
-
-
-def _visit_values(unknown: DriftUnknown, regressors: VisitRegressors, mine: Index) -> Array:
-    if unknown.kind == "bias":
-        return np.ones(mine.size)
-    if unknown.kind == "tare":
-        return regressors.jumps[unknown.tare, mine]
-    return regressors.powers[unknown.power - 1, mine]
-
-
-def _priors(basis: DriftBasis, unknowns: tuple[DriftUnknown, ...], use_priors: bool) -> tuple[Prior, ...]:
+def _priors(basis: DriftBasis, unknowns: tuple[DriftUnknown, ...]) -> tuple[Prior, ...]:
     """Mean drift rate of each run of order 1 or more, and the tares whose size is stated with an sd."""
     priors = []
     drifts: dict[int, list[int]] = {}
@@ -316,7 +303,7 @@ def _priors(basis: DriftBasis, unknowns: tuple[DriftUnknown, ...], use_priors: b
                 )
             )
     for run, numbers in drifts.items():
-        if use_priors and basis.rate_sd[run] < np.inf:
+        if basis.rate_sd[run] < np.inf:
             # The mean rate is the drift at the run's last used reading (scaled time 1) over its length.
             priors.append(
                 Prior(

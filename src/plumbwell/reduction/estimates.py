@@ -209,7 +209,9 @@ def estimates(
     )
     drift = weighed(
         "drift", "m/s2", np.where(present, adjustment.border_drift + adjustment.held + shift, np.nan),
-        Weighing("drift and tares", "polynomial of the run at the reading's time, and tares before it", SOURCE, of_drift),
+        Weighing(
+            "drift and tares", "polynomial of the run at the reading's time, and tares before it", SOURCE, of_drift
+        ),
         freed, ties, priors, Input("known_drift", held),
     )
     visit_effect = weighed(

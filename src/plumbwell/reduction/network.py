@@ -62,13 +62,6 @@ class Solution:
     unknown: Array
     residual: Array
 
-    def fitted_border(self, unknown: Array) -> Array:
-        """What the border unknowns (q,) put on each visit, (v,)."""
-        one = self.design
-        return np.bincount(
-            one.entry_visit, one.entry_value * unknown[one.entry_unknown], minlength=len(self.weight)
-        )
-
     def variance_of_fit(self) -> Array:
         """a C a^T of each visit: the variance of its estimate, (v,)."""
         one = self.design
@@ -99,42 +92,53 @@ def border_matrix(
     on_border = np.bincount(
         design.entry_flat, weight[design.entry_visit] * design.entry_value, minlength=n_stations * size
     ).reshape(n_stations, size)
-    matrix = np.bincount(
-        design.pair_flat, weight[design.pair_visit] * design.pair_value, minlength=size * size
-    ).reshape(size, size)
+    own = np.bincount(design.pair_flat, weight[design.pair_visit] * design.pair_value, minlength=size * size)
     safe = np.where(total > 0.0, total, 1.0)
     mean = on_border / safe[:, None]
-    matrix = matrix - on_border.T @ mean
+    matrix = own.reshape(size, size) - on_border.T @ mean
     return (matrix + design.prior_matrix if priors else matrix), safe, mean
 
 
 NO_TIES = TieRows(station=np.zeros(0, dtype=np.intp), value=np.zeros(0), weight=np.zeros(0))
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class Rank:
-    """Rank of the visits' design, stations and border together, priors and ties not counted; how many it lacks."""
+    """What the visits alone determine, priors and ties not counted.
+
+    Parameters
+    ----------
+    rank : int
+        Rank of the visits' design, stations and border together.
+    lacking : int
+        How many directions of the border the visits leave open.
+    pins : (q, q) array
+        Holds those directions when it is added to the border matrix at weights near 1; moves nothing else.
+    """
 
     rank: int
     lacking: int
+    pins: Array
 
 
 def rank_of_visits(design: Design) -> Rank:
     """What the visits alone determine."""
     visited = int(np.count_nonzero(np.bincount(design.station)))
-    values, _ = spectrum(design, NO_TIES, priors=False)
-    known = int(np.count_nonzero(values > RANK_TOLERANCE))
-    return Rank(rank=visited + known, lacking=design.size - known)
+    values, vectors, scale = spectrum(design, NO_TIES, priors=False)
+    known = values > RANK_TOLERANCE
+    pinned = vectors[:, ~known] / scale[:, None]
+    count = int(np.count_nonzero(known))
+    return Rank(rank=visited + count, lacking=design.size - count, pins=pinned @ pinned.T)
 
 
-def spectrum(design: Design, ties: TieRows, *, priors: bool) -> tuple[Array, Array]:
-    """Eigenvalues and vectors of the border matrix at unit weights, its unknowns scaled to their own size.
+def spectrum(design: Design, ties: TieRows, *, priors: bool) -> tuple[Array, Array, Array]:
+    """Eigenvalues and vectors of the border matrix at unit weights, its unknowns scaled to their own size; the scale.
 
     Priors, when they count, count as much as one visit: rank is asked for, not strength.
     """
     size = design.size
     if size == 0:
-        return np.zeros(0), np.zeros((0, 0))
+        return np.zeros(0), np.zeros((0, 0)), np.zeros(0)
     ones = TieRows(station=ties.station, value=ties.value, weight=np.ones(len(ties.station)))
     matrix, _, _ = border_matrix(design, np.ones(len(design.station)), ones, priors=False)
     own = np.bincount(design.pair_flat, design.pair_value, minlength=size * size)[:: size + 1]
@@ -145,7 +149,7 @@ def spectrum(design: Design, ties: TieRows, *, priors: bool) -> tuple[Array, Arr
         factors = factors / np.linalg.norm(factors)
         matrix[np.ix_(prior.unknowns, prior.unknowns)] += factors[:, None] * factors[None, :]
     values, vectors = np.linalg.eigh(0.5 * (matrix + matrix.T))
-    return values, vectors
+    return values, vectors, scale
 
 
 def solve(design: Design, weight: Array, observed: Array, ties: TieRows) -> Solution:

@@ -89,8 +89,8 @@ def network_parts(basis: DriftBasis, visits: Visits, ties: TieRows, *, n_station
         if runs:
             dropped.append(DriftUnknown(kind="bias", run=runs[0]))
             continue
-        tare = next(one for one in free if of_tare[one] == number)
-        dropped.append(DriftUnknown(kind="tare", run=int(basis.tare_run[tare]), tare=tare))
+        later = next(one for one in free if of_tare[one] == number)
+        dropped.append(DriftUnknown(kind="tare", run=int(basis.tare_run[later]), tare=later))
     return Parts(
         of_station=part[:n_stations],
         count=len(order),
@@ -109,7 +109,7 @@ def undetermined(design: Design, ties: TieRows, rank: Rank) -> DriftUnknown | No
     """
     if rank.lacking == 0:
         return None
-    values, vectors = spectrum(design, ties, priors=True)
+    values, vectors, _ = spectrum(design, ties, priors=True)
     if values.size == 0 or values[0] > RANK_TOLERANCE:
         return None
     share = np.abs(vectors[:, 0])

@@ -7,12 +7,12 @@ alone gives none at all in a third of surveys with one degree of freedom.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from plumbwell.reduction.design import Design
-from plumbwell.reduction.network import Rank, TieRows, solve
+from plumbwell.reduction.network import NO_TIES, Rank, solve
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array
 
@@ -134,7 +134,6 @@ def reseating(
     design: Design,
     observed: Array,
     noise: ReadingNoise,
-    ties: TieRows,
     *,
     rank: Rank,
     stated_variance: Array,
@@ -148,7 +147,6 @@ def reseating(
     observed : (v,) array
         Visit means, m/s2.
     noise : ReadingNoise
-    ties : TieRows
     rank : Rank
         Of the visits' design.
     stated_variance : (v,) array
@@ -169,7 +167,7 @@ def reseating(
         return Reseating(
             variance=stated_variance, estimate=np.nan, freedom=0, few=True, t_freedom=STATED_FREEDOM
         )
-    found = restricted_variance(design, observed, noise.variance, ties, freedom=freedom)
+    found = restricted_variance(design, observed, noise.variance, rank=rank)
     if freedom >= ENOUGH_FREEDOM:
         return Reseating(
             variance=np.full(len(observed), found), estimate=found, freedom=freedom, few=False, t_freedom=freedom
@@ -180,36 +178,36 @@ def reseating(
     )
 
 
-def restricted_variance(
-    design: Design, observed: Array, reading_variance: Array, ties: TieRows, *, freedom: int
-) -> float:
-    """The re-seating variance that maximises the restricted likelihood; 0 where it grows towards 0.
+def restricted_variance(design: Design, observed: Array, reading_variance: Array, *, rank: Rank) -> float:
+    """The re-seating variance that maximises the restricted likelihood of the visits; 0 where it grows towards 0.
 
-    The maximum lies where sum (r_v / v_v)^2 = sum (1 - h_v / v_v) / v_v, r the residual of a visit, v its
+    Ties and priors do not count: where they contradict the visits, that is not re-seating noise. The maximum lies
+    where sum (r_v / v_v)^2 = sum (1 - h_v / v_v) / v_v, r the residual of a visit, v its
     variance, h the variance of its estimate (Patterson & Thompson 1971). The logarithm of the ratio of the two sides
     falls by nearly 1 for each unit of log(v), exactly so when all visits have one reading noise; a secant in that
     variable, kept within its bracket, closes in on the root.
 
     Parameters
     ----------
-    design, ties
-        As in `network.solve`.
+    design : Design
     observed, reading_variance : (v,) arrays
-    freedom : int
-        Degrees of freedom of the visits, at least 1.
+        Visit means m/s2, and their variance by reading noise.
+    rank : Rank
+        Of the visits' design; at least one degree of freedom is left.
     """
     values = observed[:, None]
     typical = float(np.mean(reading_variance))
+    alone = replace(design, priors=(), prior_matrix=rank.pins, prior_side=np.zeros(design.size))
 
     def excess(variance: float) -> float:
-        weight = 1.0 / (reading_variance + variance)
-        solution = solve(design, weight, values, ties)
-        left = float(np.sum((weight * solution.residual[:, 0]) ** 2))
+        weight = typical / (reading_variance + variance)
+        solution = solve(alone, weight, values, NO_TIES)
+        left = float(np.sum((weight * solution.residual[:, 0]) ** 2)) / typical
         right = float(np.sum(weight * (1.0 - weight * solution.variance_of_fit())))
         return float(np.log(left / right)) if left > 0.0 and right > 0.0 else -np.inf
 
-    even = solve(design, np.full(len(observed), 1.0 / typical), values, ties)
-    x = float(np.log(max(even.sum_of_squares() / freedom, 1.0) * typical))
+    even = solve(alone, np.ones(len(observed)), values, NO_TIES).sum_of_squares() / (len(observed) - rank.rank)
+    x = float(np.log(max(even, typical)))
     least = float(np.log(typical))
     low, high = least, np.inf
     before: tuple[float, float] | None = None

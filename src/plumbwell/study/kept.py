@@ -27,7 +27,7 @@ def same(one: Any, other: Any) -> bool:
     if isinstance(one, SCALARS):
         return bool(one == other)
     if isinstance(one, tuple):
-        return len(one) == len(other) and all(same(a, b) for a, b in zip(one, other, strict=True))
+        return len(one) == len(other) and all(a is b or same(a, b) for a, b in zip(one, other, strict=True))
     return type(one).__eq__ is not object.__eq__ and not hasattr(one, "__array__") and bool(one == other)
 
 
@@ -39,7 +39,7 @@ class Kept:
 
     def __call__(self, step: Callable[..., T], *inputs: Any, **settings: Any) -> T:
         """The result of `step(*inputs, **settings)`."""
-        key = (*inputs, *settings.items())
+        key = (tuple(settings), *inputs, *settings.values())
         held = self._held.setdefault(step, [])
         for place, (inputs_before, result) in enumerate(held):
             if same(inputs_before, key):

@@ -53,6 +53,7 @@ from plumbwell.survey.places import Markers, Ties
 from plumbwell.survey.readings import Readings
 from plumbwell.survey.recipe import Recipe
 from plumbwell.survey.site import Site
+from plumbwell.survey.survey import Survey
 
 AUTOMATIC = "auto"
 
@@ -62,7 +63,7 @@ def quiet(share: float, what: str) -> None:
 
 
 def reduce(
-    case: Case,
+    case: Case | Survey,
     *,
     recipe: Recipe | None = None,
     kept: Kept | None = None,
@@ -72,7 +73,8 @@ def reduce(
 
     Parameters
     ----------
-    case : Case
+    case : Case or Survey
+        A survey stands for the case of its own recipe.
     recipe : Recipe or None
         None: the case's own.
     kept : Kept or None
@@ -90,6 +92,7 @@ def reduce(
         The survey can be read but not reduced: no used reading belongs to a station.
     """
     keep = Kept() if kept is None else kept
+    case = Case(survey=case) if isinstance(case, Survey) else case
     survey, chosen = case.survey, case.chosen if recipe is None else recipe
     timing: dict[str, float] = {}
     started = perf_counter()

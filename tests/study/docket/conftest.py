@@ -87,7 +87,11 @@ class Invented:
         heads = list(dict.fromkeys(key for row in rows for key in row))
         lines = [",".join(heads), *(",".join(row.get(key, "") for key in heads) for row in rows)]
         text = TOML.format(site=site, instrument=instrument, tables=tables, data=data, recipe=recipe)
-        for name, content in {"readings.csv": "\n".join(lines) + "\n", "survey.toml": text, **(files or {})}.items():
+        for name, content in {
+            "readings.csv": "\n".join(lines) + "\n",
+            "survey.toml": text,
+            **(files or {}),
+        }.items():
             (self.folder / name).write_text(content, encoding="utf-8")
         return reduce(Case(survey=read_survey(self.folder)))
 

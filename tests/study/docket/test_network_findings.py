@@ -1,7 +1,12 @@
 """What the docket says about the network: each kind where it is due, and a near miss."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
+
+from plumbwell.study.case import Case
+from plumbwell.study.reduce import reduce
 
 
 def test_a_clean_loop_raises_notes_only(invented, no_others):
@@ -66,9 +71,7 @@ def test_a_tied_loop_has_its_repeat(invented, found):
 
 
 def test_as_many_unknowns_as_visits_leave_the_noise_to_the_instrument(invented, found):
-    results = invented.survey(
-        invented.visits("ABCDA"), instrument='applied = ["tide"]\nreseating_sd = 0.007'
-    )
+    results = invented.survey(invented.visits("ABCDA"), instrument='applied = ["tide"]\nreseating_sd = 0.007')
     (one,) = found(results, "noise_untold")
     assert one.severity == "error" and "the stated one, 7.0 µGal a visit" in one.text
     assert not found(results, "few_degrees_of_freedom")
@@ -128,11 +131,12 @@ def test_a_tare_before_its_run_has_no_effect(invented, found):
     assert "from 2026-05-04 08:00:00 UTC to 2026-05-04 09:42:00 UTC" in one.text
 
 
-def test_a_tie_nobody_can_place_is_told(invented, found):
-    ties = "station,gravity [mGal],gravity_sd [mGal]\nZ,980000.0,0.01\n"
-    results = invented.survey(data='ties = "ties.csv"', files={"ties.csv": ties})
+def test_a_tie_whose_readings_are_all_out_of_use_is_told(invented, found):
+    rows = [{**row, "use": "no" if row["station"] == "D" else "yes"} for row in invented.visits()]
+    ties = "station,gravity [mGal],gravity_sd [mGal]\nD,980000.0,0.01\n"
+    results = invented.survey(rows, data='ties = "ties.csv"', files={"ties.csv": ties})
     (one,) = found(results, "tie_unknown_station")
-    assert one.severity == "look" and one.text.startswith("Z: no station of this survey")
+    assert one.severity == "look" and one.text.startswith("D: no used reading and no place says where")
     assert found(results, "relative_gravity")
 
 
@@ -156,7 +160,9 @@ def test_a_tie_at_a_read_station_is_used_in_silence(invented, found):
 
 
 def test_a_datum_station_that_is_none_is_told(invented, found):
-    (one,) = found(invented.survey(recipe='tide = "none"\ndatum_station = "Q"'), "datum_station_unknown")
+    results = invented.survey()
+    asked = replace(results.recipe, datum_station="Q")
+    (one,) = found(reduce(Case(survey=results.survey), recipe=asked), "datum_station_unknown")
     assert one.severity == "look" and one.text.endswith("no station of this survey: gravity counts from A.")
 
 

@@ -139,8 +139,7 @@ def instruments_tide(results: Results) -> Iterator[Finding]:
         severity="look" if partly else "note",
         place=f"instrument {names}",
         text=text + (", while the other readings get ours." if partly else "."),
-        mend="Give the instrument's correction as tide_in_reading [mGal], so that it can be compared and "
-        "replaced.",
+        mend="Give the instrument's correction as tide_in_reading [mGal], so that it can be compared and replaced.",
         rows=numbers(np.flatnonzero(untold)) if partly else (),
     )
 
@@ -201,8 +200,7 @@ def pressure_refused(results: Results) -> Iterator[Finding]:
             severity="error",
             place=f"run {fact.run}, instrument {fact.instrument}",
             text=f"{text}: this is not the pressure of the free air, and no effect of it was taken out.",
-            mend="Give the pressure of a barometer in the open air and its barometer_elevation, or remove "
-            "the column.",
+            mend="Give the pressure of a barometer in the open air and its barometer_elevation, or remove the column.",
             rows=(fact.largest_row,),
         )
 

@@ -67,8 +67,7 @@ def path_assumed(results: Results) -> Iterator[Finding]:
             code="path_assumed",
             severity="note",
             place="path",
-            text="No deviation survey is named: the hole is taken as vertical, and depth along it as "
-            "vertical depth.",
+            text="No deviation survey is named: the hole is taken as vertical, and depth along it as vertical depth.",
             mend="Name a path in [data], if the hole is not vertical.",
         )
 
@@ -150,5 +149,3 @@ def depth_assumed(results: Results) -> Iterator[Finding]:
             f"{amount(results.recipe.depth_sd, 3)} m (depth_sd).",
             mend="Write depth_sd, or elevation_sd in places.csv, as the depths were measured.",
         )
-
-

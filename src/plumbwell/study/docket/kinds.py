@@ -69,16 +69,15 @@ def docket(results: Results) -> tuple[Finding, ...]:
     Returns
     -------
     tuple of Finding
-        Within a severity those of the whole survey come first, then by their topmost station.
+        Within a severity those of the whole survey come first, then by the first station that they name.
     """
     top = results.intervals.densities.pairs.top
 
     def place(one: Finding) -> tuple[int, int]:
-        highest = min(one.stations) if one.stations else -1
+        first = one.stations[0] if one.stations else -1
         if one.intervals:
-            first = int(top[min(one.intervals)])
-            highest = first if highest < 0 else min(first, highest)
-        return GRAVEST_FIRST[one.severity], highest
+            first = int(top[one.intervals[0]])
+        return GRAVEST_FIRST[one.severity], first
 
     return _capped(sorted((one for kind in KINDS for one in kind(results)), key=place))
 

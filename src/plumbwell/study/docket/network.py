@@ -62,7 +62,7 @@ def _undetermined_runs(results: Results) -> list[int]:
     # A tied part keeps its constant, which the visits alone never determine.
     if deficiency <= int(np.any(parts.tied[parts.of_station[visited]])):
         return []
-    values, vectors = spectrum(one, NO_TIES, priors=False)
+    values, vectors = spectrum(one, NO_TIES, priors=False)[:2]
     own = np.bincount(one.entry_unknown, one.entry_value**2, minlength=one.size)
     scale = 1.0 / np.sqrt(np.where(own > 0.0, own, 1.0))
     null = vectors[:, values <= RANK_TOLERANCE]
@@ -159,8 +159,7 @@ def tie_unvisited(results: Results) -> Iterator[Finding]:
         code="tie_unvisited",
         severity="look",
         place="ties.csv",
-        text=f"No used reading stands at {stations(results, tied)}, which the ties name: gravity stays "
-        "relative.",
+        text=f"No used reading stands at {stations(results, tied)}, which the ties name: gravity stays relative.",
         mend="Compare the labels in ties.csv with those of the readings, or bring in a reading there.",
         stations=numbers(tied),
     )
@@ -194,7 +193,7 @@ def drift_held(results: Results) -> Iterator[Finding]:
                 place=f"run {run(results, code)}",
                 text=f"The drift of run {run(results, code)} is held at "
                 f"{rate(float(fit.basis.rate[code]))} mGal/h without error, since drift_order is 0.",
-                mend="Write drift_order = 1 or \"auto\", if the drift is not known for certain.",
+                mend='Write drift_order = 1 or "auto", if the drift is not known for certain.',
             )
 
 
@@ -205,8 +204,7 @@ def walk_untested(results: Results) -> Iterator[Finding]:
             code="drift_walk_untested",
             severity="note",
             place="recipe, drift_walk",
-            text='drift_walk = "auto" acts as "off" in this version: slow drift beyond the polynomial is '
-            'untested.',
+            text='drift_walk = "auto" acts as "off" in this version: slow drift beyond the polynomial is untested.',
             mend="Look at the residuals against time; raise drift_order where they wander.",
         )
 
@@ -323,8 +321,8 @@ def unplaced_ties(results: Results) -> Iterator[Finding]:
             code="tie_unknown_station",
             severity="look",
             place="ties.csv",
-            text=f"{listed(names)}: no station of this survey has that label, so the tie is not used.",
-            mend="Write the label as in the readings, or give the station a row in places.csv.",
+            text=f"{listed(names)}: no used reading and no place says where that is, so the tie is not used.",
+            mend="Compare the label with the readings, or give the station a row in places.csv.",
         )
 
 

@@ -19,9 +19,7 @@ def masses_left(results: Results) -> Iterator[Finding]:
         else:
             text = f"{what.capitalize()} ({where}): not applied by this version, densities hold their effect."
             mend = "Take the effect out elsewhere, or tell it with the densities."
-        yield Finding(
-            code="not_applied", severity="error", place=f"survey.toml, {where}", text=text, mend=mend
-        )
+        yield Finding(code="not_applied", severity="error", place=f"survey.toml, {where}", text=text, mend=mend)
 
 
 def recipe_left(results: Results) -> Iterator[Finding]:
@@ -52,12 +50,13 @@ def measured_gradient(results: Results) -> Iterator[Finding]:
         text=f"The free-air gradient is the measured one, {amount(measured / unit, 4)} ± "
         f"{amount(sd / unit, 4)} mGal/m: {amount((measured - choice.normal) / unit, 4, signed=True)} mGal/m "
         "beside the normal one at the collar, and this excess is held constant with depth.",
-        mend="See that terrain, openings and bodies were taken out of the measured gradient; else they count "
-        "twice.",
+        mend="See that terrain, openings and bodies were taken out of the measured gradient; else they count twice.",
     )
 
 
 def notes_of_readers(results: Results) -> Iterator[Finding]:
     """What was seen while the files were read."""
     for one in results.survey.notes:
+        if one.code == "equal_times":
+            continue  # The network tells of those that are still in use, with their rows.
         yield Finding(code=one.code, severity=one.severity, place=one.place, text=one.text, mend=one.mend)
