@@ -1,6 +1,7 @@
 """Curves in tracks: cut at the edge, thinned without losing a spike, named where there is room."""
 
 import itertools
+from dataclasses import replace
 
 import pytest
 from PySide6.QtCore import QRectF
@@ -8,9 +9,10 @@ from PySide6.QtGui import QColor, QImage
 
 from plumbwell.plates.axis import Frame
 from plumbwell.plates.fan import draw_fan, interval_ribbons, ribbon_shape, station_ribbons
+from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.naming import draw_curve_names, draw_layer_names, line_extent, step_extent
 from plumbwell.plates.painting import painting
-from plumbwell.plates.polyline import inside_pieces, thinned_pieces
+from plumbwell.plates.polyline import inside_pieces, log_pieces
 from plumbwell.plates.track import Point, Step, Track, draw_selection_band, draw_track
 
 FRAME = Frame(left=100, top=50, right=300, base=450, depth_top=0.0, depth_base=100.0)
@@ -28,23 +30,113 @@ def test_lines_are_cut_at_the_edges_of_the_frame():
     assert inside_pieces([(0, 0), (10, 10)], FRAME) == []
 
 
-def test_a_log_keeps_its_spikes_and_its_gaps():
+def crowded_log():
     depths = [index * 0.001 for index in range(100_000)]
-    values = [2.5] * 100_000
+    values = [2.4 + 0.1 * (-1) ** index for index in range(100_000)]
     values[31_234], values[31_260] = 1.2, 3.3
     for index in range(60_000, 62_000):
         values[index] = None
-    track = Track(
-        title="density", unit="", low=1.0, high=3.5, line_depths=tuple(depths), line_values=tuple(values)
+    return Track(
+        title="density",
+        unit="",
+        low=1.0,
+        high=3.5,
+        line_depths=tuple(depths),
+        line_values=tuple(values),
+        line_name="log",
     )
-    pieces = thinned_pieces(depths, values, track, FRAME)
+
+
+def test_a_crowded_log_keeps_its_spikes_and_its_gaps():
+    track = crowded_log()
+    pieces = log_pieces(track.line_depths, track.line_values, track, FRAME)
     assert len(pieces) == 2
-    xs = [x for piece in pieces for x, _ in piece]
-    assert min(xs) == pytest.approx(track.x(1.2, FRAME))
-    assert max(xs) == pytest.approx(track.x(3.3, FRAME))
-    assert len(xs) < 4 * 2 * 401
-    assert pieces[0][-1][1] < FRAME.y(60.0) < FRAME.y(61.9) < pieces[1][0][1]
-    assert all(a[1] <= b[1] for piece in pieces for a, b in itertools.pairwise(piece))
+    rows = [row for piece in pieces for row in piece.spread]
+    assert min(least for least, _, _ in rows) == pytest.approx(track.x(1.2, FRAME))
+    assert max(most for _, most, _ in rows) == pytest.approx(track.x(3.3, FRAME))
+    assert len(rows) <= 402
+    assert pieces[0].line[-1][1] < FRAME.y(60.0) < FRAME.y(61.9) < pieces[1].line[0][1]
+    assert all(a[1] < b[1] for piece in pieces for a, b in itertools.pairwise(piece.line))
+    means = [x for piece in pieces for x, _ in piece.line]
+    assert means[200] == pytest.approx(track.x(2.4, FRAME), abs=0.5)
+
+
+def test_a_log_with_few_samples_is_drawn_through_each():
+    track = stairs(line_depths=(10.0, 20.0, 30.0, 40.0, 50.0), line_values=(2.0, 2.1, None, 2.3, 2.4))
+    pieces = log_pieces(track.line_depths, track.line_values, track, FRAME)
+    assert [len(piece.line) for piece in pieces] == [2, 2]
+    assert not any(piece.spread for piece in pieces)
+    assert pieces[1].line[0] == (pytest.approx(track.x(2.3, FRAME)), pytest.approx(FRAME.y(40.0)))
+
+
+def test_a_stretch_of_log_within_one_row_has_a_length():
+    values = [2.4] * 5000 + [None] * 40 + [2.5] * 30 + [None] * 40 + [2.4] * 4890
+    depths = [index * 0.01 for index in range(len(values))]
+    track = stairs(line_depths=tuple(depths), line_values=tuple(values))
+    pieces = log_pieces(track.line_depths, track.line_values, track, FRAME)
+    assert len(pieces) == 3
+    assert pieces[1].line[0][1] < pieces[1].line[-1][1]
+
+
+def test_a_crowded_log_buries_neither_staircase_nor_itself(qapp, light):
+    values = [2.3 + 0.1 * (-1) ** index for index in range(10_000)]
+    depths = [index * 0.01 for index in range(10_000)]
+    steps = (Step(top=0.0, base=100.0, value=2.35),)
+    track = stairs(steps=steps, line_depths=tuple(depths), line_values=tuple(values), line_name="log")
+    image = blank(light)
+    with painting(image) as painter:
+        draw_track(painter, track, FRAME, light)
+        boxes = draw_curve_names(painter, track, FRAME, light)
+    row = 250
+    lightness = {
+        name: min(image.pixelColor(int(track.x(value, FRAME)) + near, row).lightness() for near in (0, 1))
+        for name, value in (("step", 2.35), ("mean", 2.3), ("spread", 2.25), ("paper", 2.9))
+    }
+    assert lightness["step"] < 60
+    assert lightness["step"] < lightness["mean"] < lightness["spread"] - 40
+    assert lightness["spread"] < lightness["paper"]
+    assert len(boxes) == 1
+
+
+def test_a_gathered_log_says_that_it_is(qapp, light):
+    said = []
+    for frame in (replace(FRAME, right=380), FRAME):
+        with text_placed() as placed, painting(blank(light)) as painter:
+            draw_curve_names(painter, crowded_log(), frame, light)
+        said += [text.drawn for text in placed]
+    assert said == ["log, mean and range", "log"], "the short name where the long one has no room"
+
+
+def test_gravity_of_unjoined_parts_is_not_joined(qapp, light):
+    points = tuple(Point(depth=20.0 * row, value=2.0 + 0.2 * row, part=row // 3) for row in range(5))
+    track = stairs(steps=(), points=points)
+    image = blank(light)
+    with painting(image) as painter:
+        draw_track(painter, track, FRAME, light)
+
+    def crossed(depth):
+        y = round(FRAME.y(depth))
+        return any(image.pixelColor(x, y) != light.colour("ground") for x in range(100, 300))
+
+    assert [crossed(depth) for depth in (10.0, 30.0, 50.0, 70.0)] == [True, True, False, True]
+
+
+def test_excursions_to_both_sides_are_told_at_one_depth(qapp, light):
+    steps = (Step(top=0.0, base=50.0, value=3.9), Step(top=50.0, base=52.0, value=0.4))
+    with text_placed() as placed, painting(blank(light)) as painter:
+        draw_track(painter, stairs(steps=(*steps, Step(top=52.0, base=100.0, value=2.2))), FRAME, light)
+    assert {text.drawn for text in placed} == {"3.900", "0.400"}
+    steps = (Step(top=0.0, base=4.0, value=3.9), Step(top=4.0, base=6.0, value=0.4))
+    with text_placed() as placed, painting(blank(light)) as painter:
+        draw_track(painter, stairs(steps=steps), FRAME, light)
+    assert {text.drawn for text in placed} == {"3.900", "0.400"}, "side by side, 12 px apart"
+
+
+def test_a_layer_name_does_not_stand_on_the_next_top(qapp, light):
+    markers = [("Upper seam", 10.0), ("Middle seam", 12.0), ("Lower seam", 14.0)]
+    with text_placed() as placed, painting(blank(light)) as painter:
+        draw_layer_names(painter, stairs(), FRAME, light, markers=markers)
+    assert [text.drawn for text in placed] == ["Lower seam"]
 
 
 def stairs(**changes):
@@ -118,10 +210,10 @@ def test_layer_names_stand_under_their_top_and_clear_of_curves(qapp, light):
     ]
     with painting(blank(light)) as painter:
         boxes = draw_layer_names(painter, track, FRAME, light, markers=markers)
-    assert len(boxes) == 4, "the one below the frame is left out, one beside another is moved over"
+    assert len(boxes) == 3, "the one below the frame is left out, and the one with a top running through it"
     assert not any(a.intersects(b) for a, b in itertools.combinations(boxes, 2))
     curve = step_extent(track, FRAME)
-    for box, depth in zip(boxes, (0.0, 40.0, 41.0, 60.0), strict=True):
+    for box, depth in zip(boxes, (0.0, 41.0, 60.0), strict=True):
         assert 4 < box.top() - FRAME.y(depth) < 10
         left, right = curve.between(box.top(), box.bottom())
         assert box.right() < left or box.left() > right

@@ -157,10 +157,11 @@ def loop(
             past = time - start
             sd = float(chance.choice(reading_sd)) if reading_sd else np.nan
             noise = (reading_noise if np.isnan(sd) else sd) * chance.standard_normal()
+            drifted = bias + sum(c * past ** (p + 1) for p, c in enumerate(drift))
             rows.append(
                 Row(
                     time=time,
-                    reading=bias + gravity[stop] + sum(c * past ** (p + 1) for p, c in enumerate(drift)) + effect + noise,
+                    reading=gravity[stop] + drifted + effect + noise,
                     depth=depth[stop],
                     station=stop,
                     run=run,

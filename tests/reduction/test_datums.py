@@ -147,6 +147,20 @@ def test_a_tare_that_parts_a_run_gives_each_stretch_its_datum():
     assert np.ptp(columns.run_bias.values) == 0.0
 
 
+def test_a_tare_in_the_middle_of_a_visit_does_not_part_the_run():
+    # No station is read on both sides but in that visit: its mean cannot tell the jump, which is held and named.
+    rows = rows_of("ABCDEF", counts=(4,), drift=())
+    tares = (Tare(run="1", time=rows[10].time),)
+    results = reduced(rows, tares=tares, drift_order=0)
+    assert results.network.parts.count == 1
+    assert [one.kind for one in results.network.adjustment.design.lost] == ["tare"]
+    # With a return to either side it is told apart from everything else.
+    jumped = rows_of("ABCDEFBDF", counts=(4,), drift=(), reading_noise=0.0, reseating=0.0)
+    jumped = [replace(row, reading=row.reading + 0.1 * MGAL * (row.time >= jumped[10].time)) for row in jumped]
+    results = reduced(jumped, tares=(Tare(run="1", time=jumped[10].time),), drift_order=0)
+    np.testing.assert_allclose(results.stations.gravity.values, [GRAVITY[name] for name in "ABCDEF"], atol=1e-15)
+
+
 def test_unvisited_stations_are_no_datum():
     rows = rows_of("BCB")
     places = {"A": {"depth": 0.0}}

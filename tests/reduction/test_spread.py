@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from plumbwell.reduction.spread import Spread, diagonal_spread, low_rank
+from plumbwell.reduction.spread import Spread, low_rank
 
 CHANCE = np.random.default_rng(5)
 
@@ -27,7 +27,8 @@ def test_matrix_variance_and_pairs_agree():
 def test_a_sum_is_the_sum_of_the_matrices():
     one, other = some(), some(r=2)
     np.testing.assert_allclose((one + other).matrix(), one.matrix() + other.matrix(), rtol=1e-13)
-    parts = diagonal_spread(one.diagonal) + low_rank(one.columns)
+    bare = Spread(diagonal=one.diagonal, columns=np.zeros((7, 0)), signs=np.zeros(0))
+    parts = bare + low_rank(one.columns)
     np.testing.assert_allclose(parts.matrix(), one.matrix(), rtol=1e-14)
 
 

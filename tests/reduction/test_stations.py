@@ -49,7 +49,9 @@ def test_labelled_rows_found_their_stations_first():
 
 def test_bare_rows_of_all_runs_found_in_time_order():
     # The second run was read first: its row founds the station, and the mark is its depth.
-    results = reduced([at(30.2, 9e4, run="1"), at(30.0, 0.0, run="2"), at(80.0, 600.0, run="2"), at(80.0, 9.1e4, run="1")])
+    first, second = ("2", 0.0), ("1", 9e4)
+    rows = [at(30.2, second[1], run=second[0]), at(30.0, first[1], run=first[0])]
+    results = reduced([*rows, *(at(80.0, start + 600.0, run=run) for run, start in (first, second))])
     assert results.stations.label == ("30.00", "80.00")
 
 
@@ -151,6 +153,23 @@ def test_a_tie_at_a_place_that_was_not_read_is_a_station_without_visits():
     assert results.stations.visits.tolist() == [0, 2, 1]
     assert results.stations.gravity.values[0] == pytest.approx(9.81, abs=1e-13)
     assert results.stations.gravity_sd.values[0] == pytest.approx(5 * UGAL, rel=1e-9)
+
+
+def test_rows_out_of_use_join_a_station_that_only_a_tie_names():
+    places = {"pillar": {"elevation": 99.0, "east": 0.0, "north": 0.0, "role": "base"}, "adit": {"depth": 30.0}}
+    rows = [
+        at(10.0, 0.0, "A"), at(60.0, 900.0, "B"), at(10.0, 1800.0, "A"), at(30.1, 2400.0, "adit", use=False),
+        at(np.nan, 3000.0, "pillar", use=False), at(35.0, 3600.0, "adit", use=False),
+    ]  # fmt: skip
+    results = reduced(rows, places=places, ties={"pillar": (9.81, 5 * UGAL), "adit": (9.81, 5 * UGAL)})
+    assert belonging(results)[3:] == ["adit", "pillar", None]
+    assert results.stations.visits.sum() == 3
+
+
+def test_a_row_with_neither_depth_nor_place_belongs_nowhere():
+    rows = [at(10.0, 0.0, "A"), at(60.0, 900.0, "B"), at(10.0, 1800.0, "A")]
+    lost = [Row(time=2400.0, reading=0.0), Row(time=3000.0, reading=0.0, station="A")]
+    assert belonging(reduced([*rows, *lost]))[3:] == [None, None]
 
 
 def test_a_tie_at_an_unknown_place_counts_for_nothing():

@@ -208,8 +208,9 @@ def draw_depth_axis(
         hairline_across(painter, bar + 4, bar + 4 + STATION_TICK, row, theme.colour("ink"))
     numbered = multiples(graduation.numbered, first, last)
     cap = text_height(theme, "small")
-    for depth in numbered:
+    texts = [number(depth, step_decimals(graduation.numbered)) for depth in numbered]
+    numbers_right = bar + 13 + max((text_width(theme, "small", words) for words in texts), default=0.0)
+    for depth, words in zip(numbered, texts, strict=True):
         baseline = min(max(frame.y(depth) + cap / 2, frame.top + cap + 4), frame.base - 1)
-        words = number(depth, step_decimals(graduation.numbered))
-        draw_text(painter, theme, words, x=bar + 13, baseline=baseline, face="small")
+        draw_text(painter, theme, words, x=numbers_right, baseline=baseline, face="small", align="right")
     return numbered

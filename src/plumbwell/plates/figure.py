@@ -6,7 +6,6 @@ clock.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from pathlib import Path
 
 from PySide6.QtCore import QBuffer, QIODevice, QRect, QSize
@@ -14,116 +13,36 @@ from PySide6.QtGui import QImage, QPainter
 from PySide6.QtSvg import QSvgGenerator
 
 from plumbwell.plates.application import drawing_application
-from plumbwell.plates.axis import AXIS_WIDTH, HEAD_HEIGHT, Frame, draw_depth_axis
+from plumbwell.plates.axis import AXIS_WIDTH, Frame, draw_depth_axis
 from plumbwell.plates.fan import draw_fan, interval_ribbons, station_ribbons
 from plumbwell.plates.findings_list import draw_findings_list
-from plumbwell.plates.ledger_excerpt import (
-    LEAST_ROW_HEIGHT,
-    ROW_HEIGHT,
-    Excerpt,
-    column_widths,
-    draw_excerpt,
-    interval_excerpt,
-    station_excerpt,
+from plumbwell.plates.layout import (
+    FAN_WIDTH,
+    FINDINGS_RIGHT,
+    LINE,
+    MARGIN,
+    REMARK_GAP,
+    SCALE_REMARK,
+    TITLE_HEIGHT,
+    Layout,
+    plate_layout,
 )
-from plumbwell.plates.lettering import draw_text, text_width, wrapped
+from plumbwell.plates.ledger_excerpt import Excerpt, draw_excerpt
+from plumbwell.plates.lettering import draw_text, text_width
 from plumbwell.plates.naming import draw_curve_names, draw_layer_names
 from plumbwell.plates.painting import hairline_across, painting
 from plumbwell.plates.plate import SurveyPlate
-from plumbwell.plates.strip import KEY_HEIGHT, draw_strip, draw_tone_key, strip_room
+from plumbwell.plates.strip import KEY_HEIGHT, draw_strip, draw_tone_key
 from plumbwell.plates.survey_tracks import survey_tracks
 from plumbwell.plates.svg_paths import compact_svg
+from plumbwell.plates.svg_text import svg_texts, with_glyphs
 from plumbwell.plates.theme import Theme
 from plumbwell.plates.track import Track, draw_grid, draw_track, draw_track_head
 
-WIDTH, LEAST_HEIGHT, GREATEST_HEIGHT = 1440, 900, 1440
-MARGIN, GAP = 16, 12
-TITLE_HEIGHT = 72
-FAN_WIDTH = 60
-LINE = 18
+GAP = 12
 DEPTH_PAD = 8.0
-SCALE_REMARK = "bars and bands 2 sd"
-REMARK_GAP = 28.0
-LEDGER_WIDTH, LEAST_TRACKS = 560.0, 520.0
 WIDEST_TITLE = 190.0
 METRE = 39.3701 * 96
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Layout:
-    """Where the parts of a plate lie, in px."""
-
-    width: int
-    height: int
-    caution: tuple[str, ...]
-    remarks: tuple[tuple[str, ...], ...]
-    strip_right: float
-    body_top: int
-    body_base: int
-    foot_top: int
-    excerpt: Excerpt | None
-    row_height: int
-
-    @property
-    def head_top(self) -> int:
-        """Return the upper edge of the heads."""
-        return self.body_top - HEAD_HEIGHT
-
-
-def _remark_lines(theme: Theme, remarks: tuple[str, ...], width: float) -> list[tuple[str, ...]]:
-    """Return remarks set in lines, in their order; one too long for a line is broken."""
-    room = width - text_width(theme, "small", SCALE_REMARK) - REMARK_GAP
-    pieces = [piece for remark in remarks for piece in wrapped(theme, "small", remark, room)]
-    lines: list[tuple[str, ...]] = []
-    used = 0.0
-    for piece in pieces:
-        needed = text_width(theme, "small", piece)
-        if lines and used + REMARK_GAP + needed <= room:
-            lines[-1] = (*lines[-1], piece)
-            used += REMARK_GAP + needed
-        else:
-            lines.append((piece,))
-            used = needed
-    return lines or [()]
-
-
-def plate_layout(plate: SurveyPlate, theme: Theme, *, height: int | None = None) -> Layout:
-    """Return the layout of a plate: its size, its lines of text and the ledger it has room for.
-
-    Rows are 24 px high and the plate grows with them up to 1440 px; then rows get lower, to 14 px; beyond
-    that the ledger and fan are left out and the tracks take their room.
-
-    Parameters
-    ----------
-    height : int, optional
-        Height of the plate where it is given from outside.
-    """
-    inner = WIDTH - 2 * MARGIN
-    caution = tuple(wrapped(theme, "text", plate.caution, inner)) if plate.caution else ()
-    remarks = _remark_lines(theme, plate.remarks, inner)
-    above = TITLE_HEIGHT + (len(caution) * 20 + 20 if caution else 0) + HEAD_HEIGHT + 8
-    below = len(remarks) * LINE + 26
-    excerpt = interval_excerpt(plate) if plate.intervals else station_excerpt(plate)
-    most = (height or GREATEST_HEIGHT) - above - below
-    row_height = min(ROW_HEIGHT, most // max(excerpt.rows, 1))
-    shown = excerpt if excerpt.rows and row_height >= LEAST_ROW_HEIGHT else None
-    rows_height = excerpt.rows * row_height if shown else 0
-    if height is None:
-        height = min(max(above + rows_height + below, LEAST_HEIGHT), GREATEST_HEIGHT)
-        if shown is None and excerpt.rows:
-            height = 1200
-    return Layout(
-        width=WIDTH,
-        height=height,
-        caution=caution,
-        remarks=tuple(remarks),
-        strip_right=strip_room(theme, plate),
-        body_top=above,
-        body_base=height - below,
-        foot_top=height - below + 8,
-        excerpt=shown,
-        row_height=row_height,
-    )
 
 
 def _draw_frame_text(painter: QPainter, plate: SurveyPlate, layout: Layout, theme: Theme) -> None:
@@ -163,38 +82,39 @@ def _draw_frame_text(painter: QPainter, plate: SurveyPlate, layout: Layout, them
 def _draw_ledger(
     painter: QPainter, plate: SurveyPlate, excerpt: Excerpt, layout: Layout, frame: Frame, theme: Theme
 ) -> float:
-    """Draw the ledger and the fan, and return the right edge of the fan."""
-    left = layout.strip_right + 16
-    widths = column_widths(excerpt, theme, layout.row_height)
-    tracks_left = layout.width - MARGIN - LEAST_TRACKS - AXIS_WIDTH - FAN_WIDTH
-    spare = max(min(LEDGER_WIDTH, tracks_left - left) - sum(widths), 0.0)
-    widths = [float(int(width + min(spare / len(widths), 14.0))) for width in widths]
+    """Draw the ledger, the findings under it and the fan, and return the right edge of the fan."""
+    top, row_height, right = layout.body_top, layout.row_height, layout.ledger_right
     draw_excerpt(
-        painter, excerpt, theme, left=left, top=layout.body_top, widths=widths, row_height=layout.row_height
+        painter,
+        excerpt,
+        theme,
+        left=layout.ledger_left,
+        top=top,
+        widths=layout.columns,
+        row_height=row_height,
     )
-    fan_left = left + sum(widths)
     if plate.intervals:
         ribbons = interval_ribbons(
             [(i.top, i.base, i.density, i.from_prior) for i in plate.intervals],
-            first_row=layout.body_top,
-            row_height=layout.row_height,
+            first_row=top,
+            row_height=row_height,
         )
     else:
         depths = sorted(station.depth for station in plate.stations)
         ribbons = station_ribbons(
-            depths, [None] * (len(depths) - 1), first_row=layout.body_top, row_height=layout.row_height
+            depths, [None] * (len(depths) - 1), first_row=top, row_height=row_height
         )
     draw_findings_list(
         painter,
-        plate.findings,
+        layout.findings,
         theme,
-        left=left,
-        top=layout.body_top + excerpt.rows * layout.row_height + 24,
-        right=fan_left - 16,
+        left=layout.ledger_left,
+        top=layout.findings_top,
+        right=right - FINDINGS_RIGHT,
         base=layout.body_base,
     )
-    draw_fan(painter, ribbons, frame.across(fan_left, fan_left + FAN_WIDTH), theme)
-    return fan_left + FAN_WIDTH
+    draw_fan(painter, ribbons, frame.across(right, right + FAN_WIDTH), theme)
+    return right + FAN_WIDTH
 
 
 def _track_widths(theme: Theme, tracks: list[Track], total: float) -> list[float]:
@@ -302,7 +222,8 @@ def draw_figure(painter: QPainter, plate: SurveyPlate, size: tuple[int, int], th
         across,
         theme,
         depths=depths,
-        markers=[depth for _, depth in plate.markers],
+        # One in the pad above the first station would lie against the line under the heads.
+        markers=[depth for _, depth in plate.markers if low <= depth <= high],
         ground=low < 0 < high,
     )
     if tracks:
@@ -330,9 +251,9 @@ def svg_bytes(plate: SurveyPlate, theme: Theme) -> bytes:
     generator.setViewBox(QRect(0, 0, width, height))
     generator.setTitle(plate.title)
     generator.setDescription(plate.subtitle)
-    with painting(generator) as painter:
+    with svg_texts() as texts, painting(generator) as painter:
         draw_figure(painter, plate, (width, height), theme)
-    return compact_svg(bytes(buffer.data().data()))
+    return with_glyphs(compact_svg(bytes(buffer.data().data())), texts)
 
 
 # Packs a fifth faster than the default, into a file a twentieth larger.

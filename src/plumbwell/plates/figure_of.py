@@ -13,7 +13,7 @@ import numpy as np
 from plumbwell import __version__
 from plumbwell.earth.constants import MILLIGAL
 from plumbwell.plates.figure import write_png, write_svg
-from plumbwell.plates.numbers import number
+from plumbwell.plates.numbers import counted, number, sd_decimals
 from plumbwell.plates.plate import PlateFinding, PlateInterval, PlateStation, SurveyPlate
 from plumbwell.plates.theme import theme_named
 from plumbwell.reduction.positions import well_path
@@ -24,10 +24,16 @@ from plumbwell.study.results import Results
 from plumbwell.survey.column import Array, Index
 
 GRAM_PER_CM3 = 1000.0
+ROUND_DEPTH = 100.0  # m, from which the depth of the hole is told without decimals
 
 
 def _known(value: float, factor: float = 1.0) -> float | None:
     return float(value) / factor if np.isfinite(value) else None
+
+
+def _sd(value: float) -> float | None:
+    """Standard deviation in mGal; None for a datum station, which is held."""
+    return _known(value, MILLIGAL) or None
 
 
 def survey_plate(results: Results) -> SurveyPlate:
@@ -84,7 +90,8 @@ def survey_plate(results: Results) -> SurveyPlate:
     used = np.flatnonzero(column & np.isfinite(depth))
     return SurveyPlate(
         title=site.name,
-        subtitle=f"{len(used)} stations, {len(rows)} intervals, to {number(deepest, 0)} m",
+        subtitle=f"{counted(len(used), 'station')}, {counted(len(rows), 'interval')}, "
+        f"to {number(deepest, 0 if deepest >= ROUND_DEPTH else 1)} m",
         depth_label="MD" if measured else "TVD",
         intervals=tuple(rows),
         stations=tuple(
@@ -92,9 +99,10 @@ def survey_plate(results: Results) -> SurveyPlate:
                 label=stations.label[one],
                 depth=float(depth[one]),
                 gravity=_known(stations.gravity.values[one], MILLIGAL),
-                gravity_sd=_known(stations.gravity_sd.values[one], MILLIGAL),
+                gravity_sd=_sd(stations.gravity_sd.values[one]),
                 anomaly=_known(stations.anomalies.anomaly.values[one], MILLIGAL),
-                anomaly_sd=_known(stations.gravity_sd.values[one], MILLIGAL),
+                anomaly_sd=_sd(stations.gravity_sd.values[one]),
+                part=int(results.network.parts.of_station[one]),
             )
             for one in used.tolist()
         ),
@@ -126,19 +134,16 @@ def _remarks(results: Results) -> tuple[str, ...]:
     recipe, choice = results.recipe, results.choice
     kind = "normal" if choice.measured is None else "measured"
     reference = recipe.reference_density
-    rock = f"{reference / GRAM_PER_CM3:.3g} g/cm³" if isinstance(reference, float) else f"by {reference}"
+    rock = f"{reference / GRAM_PER_CM3:.6g} g/cm³" if isinstance(reference, float) else f"by {reference}"
     dof = results.intervals.dof
     common = results.intervals.density_common_sd.values / GRAM_PER_CM3
-    shared = (
-        (f"common to all densities: ± {number(float(np.nanmax(common)), 4)} g/cm³ (1 sd)",)
-        if np.isfinite(common).any()
-        else ()
-    )
+    most = float(np.nanmax(common)) if np.isfinite(common).any() else 0.0
+    shared = (f"common to all densities: ± {number(most, sd_decimals(most))} g/cm³ (1 sd)",) if most > 0 else ()
     return (
         f"shell form; {recipe.normal_gravity}, {kind} gradient {choice.gradient / MILLIGAL:.5f} mGal/m",
         f"reference rock {rock}",
         "gravity absolute by ties" if results.absolute else "gravity relative to the datum station",
-        f"{dof} degrees of freedom",
+        f"{dof} degree{'' if dof == 1 else 's'} of freedom",
         *shared,
         f"Plumbwell {__version__}",
     )

@@ -14,7 +14,7 @@ from plumbwell.plates.axis import HEAD_HEIGHT, TITLE_BASELINE, UNIT_BASELINE
 from plumbwell.plates.lettering import draw_text, text_height, text_width
 from plumbwell.plates.numbers import NO_VALUE, column_decimals, number, sd_text
 from plumbwell.plates.painting import draw_mark, hairline_across, whole
-from plumbwell.plates.plate import DENSITY_UNIT, SurveyPlate
+from plumbwell.plates.plate import DENSITY_UNIT, PlateInterval, SurveyPlate
 from plumbwell.plates.theme import Theme
 
 ROW_HEIGHT, LEAST_ROW_HEIGHT = 24, 14
@@ -122,9 +122,13 @@ def interval_excerpt(plate: SurveyPlate) -> Excerpt:
             for interval in intervals
         )
         columns.append(ExcerptColumn(name="ratio", unit="to sd", cells=cells))
-    return Excerpt(
-        columns=tuple(columns), marks=tuple("look" if interval.flagged else None for interval in intervals)
-    )
+    return Excerpt(columns=tuple(columns), marks=tuple(_mark(interval) for interval in intervals))
+
+
+def _mark(interval: PlateInterval) -> str | None:
+    """Return the mark of a row: wherever its ratio stands in amber too, which never is without its shape."""
+    far = interval.ratio is not None and abs(interval.ratio) >= AMBER_RATIO
+    return "look" if interval.flagged or far else None
 
 
 def station_excerpt(plate: SurveyPlate) -> Excerpt:

@@ -10,12 +10,13 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from contextvars import ContextVar
 from dataclasses import dataclass
-from functools import cache
+from functools import cache, lru_cache
 
 from PySide6.QtCore import QPointF, QRectF, Qt
 from PySide6.QtGui import QFont, QFontDatabase, QFontMetricsF, QImage, QPainter, QPainterPath, QTransform
 from PySide6.QtSvg import QSvgGenerator
 
+from plumbwell.plates.svg_text import Glyph, SvgText, gathering_texts, glyphs_of, leave_mark
 from plumbwell.plates.theme import Theme
 from plumbwell.resources import resource
 
@@ -96,6 +97,11 @@ def _outline(semibold: bool, italic: bool, words: str) -> QPainterPath:
     return outline
 
 
+@lru_cache(maxsize=8192)
+def _glyphs(semibold: bool, italic: bool, words: str) -> tuple[Glyph, ...]:
+    return glyphs_of(_font(UNITS_PER_EM, semibold, italic), words)
+
+
 def _placed_outline(
     pixels: int, semibold: bool, italic: bool, words: str, *, x: float, baseline: float
 ) -> QPainterPath:
@@ -118,9 +124,14 @@ def face_font(theme: Theme, face: str) -> QFont:
     return QFont(_font(*_cut(theme, face)))
 
 
+@lru_cache(maxsize=8192)
+def _advance(pixels: int, semibold: bool, italic: bool, words: str) -> float:
+    return _metrics(pixels, semibold, italic).horizontalAdvance(words)
+
+
 def text_width(theme: Theme, face: str, words: str) -> float:
     """Return the width of words in a face, in px."""
-    return _metrics(*_cut(theme, face)).horizontalAdvance(words)
+    return _advance(*_cut(theme, face), words)
 
 
 def text_height(theme: Theme, face: str) -> float:
@@ -220,7 +231,20 @@ def draw_text(
     painter.save()
     painter.setRenderHint(QPainter.RenderHint.Antialiasing, True)
     painter.setRenderHint(QPainter.RenderHint.TextAntialiasing, True)
-    if isinstance(painter.device(), FILE_DEVICES):
+    if isinstance(painter.device(), QSvgGenerator) and gathering_texts():
+        painter.setPen(Qt.PenStyle.NoPen)
+        painter.setBrush(theme.colour(role))
+        pixels, semibold, italic = _cut(theme, face)
+        leave_mark(
+            painter,
+            SvgText(
+                glyphs=_glyphs(semibold, italic, drawn),
+                scale=pixels / UNITS_PER_EM,
+                x=box.left(),
+                baseline=baseline,
+            ),
+        )
+    elif isinstance(painter.device(), FILE_DEVICES):
         outline = _placed_outline(*_cut(theme, face), drawn, x=box.left(), baseline=baseline)
         painter.setPen(Qt.PenStyle.NoPen)
         painter.setBrush(theme.colour(role))

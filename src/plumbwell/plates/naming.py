@@ -9,18 +9,23 @@ from collections.abc import Sequence
 from functools import lru_cache
 from math import ceil, floor
 
+import numpy as np
 from PySide6.QtCore import QRectF
 from PySide6.QtGui import QPainter
 
 from plumbwell.plates.axis import Frame
-from plumbwell.plates.lettering import draw_text, text_box, text_height, text_width
-from plumbwell.plates.polyline import thinned_pieces
+from plumbwell.plates.lettering import draw_text, elided, text_box, text_height, text_width
+from plumbwell.plates.polyline import log_pieces
 from plumbwell.plates.theme import Theme
-from plumbwell.plates.track import Step, Track, held_x, step_rows, touching
+from plumbwell.plates.track import Step, Track, held_x, joined_points, step_rows, touching
 
 Extent = tuple[float, float]
 CLEAR = 6.0
 WIDE_BAND = 40.0
+NEAR_JUMP = 10.0
+LEAST_NAME = 120.0
+# What the line and the paler spread of a log crowded with samples are.
+GATHERED = ", mean and range"
 
 
 class CurveRows:
@@ -28,23 +33,25 @@ class CurveRows:
 
     def __init__(self, frame: Frame) -> None:
         self._first = floor(frame.top)
-        self._rows: list[Extent | None] = [None] * (ceil(frame.base) - self._first + 1)
+        rows = ceil(frame.base) - self._first + 1
+        self._least, self._most = np.full(rows, np.inf), np.full(rows, -np.inf)
+
+    def _rows(self, top: float, base: float) -> slice:
+        return slice(max(floor(top) - self._first, 0), max(ceil(base) - self._first + 1, 0))
 
     def add(self, left: float, right: float, top: float, base: float) -> None:
         """Take the columns from `left` to `right` in the rows from `top` to `base`."""
-        for row in range(
-            max(floor(top) - self._first, 0), min(ceil(base) - self._first + 1, len(self._rows))
-        ):
-            known = self._rows[row]
-            self._rows[row] = (left, right) if known is None else (min(known[0], left), max(known[1], right))
+        rows = self._rows(top, base)
+        np.minimum(self._least[rows], left, out=self._least[rows])
+        np.maximum(self._most[rows], right, out=self._most[rows])
 
     def between(self, top: float, base: float) -> Extent | None:
         """Return the columns taken in the rows from `top` to `base`; None where the curve is absent."""
-        rows = self._rows[max(floor(top) - self._first, 0) : max(ceil(base) - self._first + 1, 0)]
-        known = [row for row in rows if row is not None]
-        if not known:
+        rows = self._rows(top, base)
+        least = float(self._least[rows].min(initial=np.inf))
+        if least == np.inf:
             return None
-        return min(left for left, _ in known), max(right for _, right in known)
+        return least, float(self._most[rows].max())
 
 
 def step_extent(track: Track, frame: Frame, *, bands: bool = True) -> CurveRows:
@@ -62,7 +69,8 @@ def step_extent(track: Track, frame: Frame, *, bands: bool = True) -> CurveRows:
             joined = held_x(track, before.value, frame)
             rows.add(min(x, joined), max(x, joined), upper, upper)
         before = step
-    for first, second in zip(track.points, track.points[1:], strict=False):
+    neighbours = [pair for part in joined_points(track.points) for pair in zip(part, part[1:], strict=False)]
+    for first, second in neighbours:
         (x0, y0), (x1, y1) = (
             (track.x(point.value, frame), frame.y(point.depth)) for point in (first, second)
         )
@@ -78,9 +86,10 @@ def step_extent(track: Track, frame: Frame, *, bands: bool = True) -> CurveRows:
 def line_extent(track: Track, frame: Frame) -> CurveRows:
     """Return the rows taken by a track's log."""
     rows = CurveRows(frame)
-    for piece in thinned_pieces(track.line_depths, track.line_values, track, frame):
-        for (x0, y0), (x1, y1) in zip(piece, piece[1:], strict=False):
-            rows.add(min(x0, x1), max(x0, x1), min(y0, y1), max(y0, y1))
+    for piece in log_pieces(track.line_depths, track.line_values, track, frame):
+        extents = piece.spread or tuple((x, x, y) for x, y in piece.line)
+        for (low, high, y0), (next_low, next_high, y1) in zip(extents, extents[1:], strict=False):
+            rows.add(min(low, next_low), max(high, next_high), min(y0, y1), max(y0, y1))
     return rows
 
 
@@ -104,7 +113,8 @@ def _best_place(
     row = frame.top + cap + 8
     while row < frame.base - 8:
         mine, band, near = (rows.between(row - cap - 3, row + 5) for rows in (own, own_band, other))
-        if mine is not None and band is not None:
+        about = own.between(row - cap - 3 - NEAR_JUMP, row + 5 + NEAR_JUMP)
+        if mine is not None and band is not None and about is not None:
             left, right = max(band[0], mine[0] - WIDE_BAND), min(band[1], mine[1] + WIDE_BAND)
             if near is not None and near[0] > mine[0] - WIDE_BAND:
                 left = min(left, near[0])
@@ -118,7 +128,7 @@ def _best_place(
                     continue
                 gap = mine[0] - frame.left if x < mine[0] else frame.right - mine[1]
                 # Beside a jump of its own curve a name would seem to belong to nothing.
-                room = min(gap, 60.0) - 2 * max(mine[1] - mine[0] - 24.0, 0.0)
+                room = min(gap, 60.0) - 2 * max(about[1] - about[0] - 24.0, 0.0)
                 room -= mine[0] - left if x < mine[0] else right - mine[1]
                 if near is not None:
                     if box.right() + CLEAR > near[0] and box.left() - CLEAR < near[1]:
@@ -144,21 +154,26 @@ def draw_curve_names(
     """
     log = line_extent(track, frame)
     stair, band = step_extent(track, frame, bands=False), step_extent(track, frame)
+    gathered = any(
+        piece.spread for piece in log_pieces(track.line_depths, track.line_values, track, frame)
+    )
+    line_names = (track.line_name + GATHERED, track.line_name) if gathered else (track.line_name,)
     boxes: list[QRectF] = []
-    for role, words, curves in (
-        ("ink", track.step_name, (stair, band, log)),
-        ("log", track.line_name, (log, log, stair)),
+    for role, names, curves in (
+        ("ink", (track.step_name,), (stair, band, log)),
+        ("log", line_names if track.line_name else (), (log, log, stair)),
     ):
-        if not words:
-            continue
-        place = _best_place(words, *curves, frame=frame, theme=theme, taken=[*taken, *boxes])
-        if place is not None:
-            x, baseline = place
-            boxes.append(
-                draw_text(
-                    painter, theme, words, x=x, baseline=baseline, face="small", role=role, knock_out=True
+        # The longer name where it has room, else the shorter.
+        for words in filter(None, names):
+            place = _best_place(words, *curves, frame=frame, theme=theme, taken=[*taken, *boxes])
+            if place is not None:
+                x, baseline = place
+                boxes.append(
+                    draw_text(
+                        painter, theme, words, x=x, baseline=baseline, face="small", role=role, knock_out=True
+                    )
                 )
-            )
+                break
     return boxes
 
 
@@ -173,7 +188,8 @@ def draw_layer_names(
 ) -> list[QRectF]:
     """Draw layer names in italic just under their tops, on the side away from the curves; return their boxes.
 
-    A name that would stand on a curve or another name is left out: the strip has them all.
+    A name that would stand on a curve, on another name or on the next top is left out: the strip has them all.
+    One too long for the room beside the curves is shortened.
     """
     curves = (step_extent(track, frame), line_extent(track, frame))
     boxes: list[QRectF] = []
@@ -184,19 +200,23 @@ def draw_layer_names(
         baseline = frame.y(depth) + cap + 6
         if baseline + 4 > frame.base:
             continue
-        width = text_width(theme, "name", words)
+        if any(0 < frame.y(other) - frame.y(depth) < cap + 8 for _, other in markers):
+            continue
         extents = [extent for curve in curves if (extent := curve.between(baseline - cap - 2, baseline + 4))]
         left = min((extent[0] for extent in extents), default=frame.left)
         right = max((extent[1] for extent in extents), default=frame.left)
         rooms = (frame.right - right, left - frame.left)
         for side in (0, 1) if rooms[0] >= rooms[1] else (1, 0):
+            room = rooms[side] - 12 - CLEAR
+            shown = elided(theme, "name", words, room) if room >= LEAST_NAME else words
+            width = text_width(theme, "name", shown)
             x = frame.left + 6 if side else frame.right - 6 - width
-            box = text_box(theme, "name", words, x=x, baseline=baseline)
-            if width + 12 + CLEAR <= rooms[side] and not any(
+            box = text_box(theme, "name", shown, x=x, baseline=baseline)
+            if width <= room and not any(
                 box.adjusted(-4, -3, 4, 3).intersects(used) for used in [*taken, *boxes]
             ):
                 draw_text(
-                    painter, theme, words, x=x, baseline=baseline, face="name", role="muted", knock_out=True
+                    painter, theme, shown, x=x, baseline=baseline, face="name", role="muted", knock_out=True
                 )
                 boxes.append(box)
                 break

@@ -109,3 +109,8 @@ def with_sd(
 def step_decimals(step: float) -> int:
     """Return the decimals that tell multiples of a step of 1, 2 or 5 x 10^n apart."""
     return max(0, -floor(log10(step) + 1e-9))
+
+
+def counted(count: int, noun: str) -> str:
+    """Return a count and its noun, as "1 station" or "1 440 stations"."""
+    return f"{number(float(count), 0)} {noun if count == 1 else noun + 's'}"

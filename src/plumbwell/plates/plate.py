@@ -55,7 +55,10 @@ class PlateInterval:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class PlateStation:
-    """One station: its label, depth (above ground negative), gravity and what is left of it."""
+    """One station: its label, depth (above ground negative), gravity and what is left of it.
+
+    Gravity of stations with unlike `part` has no common level: no observation joins them.
+    """
 
     label: str
     depth: float
@@ -63,6 +66,7 @@ class PlateStation:
     gravity_sd: float | None = None
     anomaly: float | None = None
     anomaly_sd: float | None = None
+    part: int = 0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

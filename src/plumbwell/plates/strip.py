@@ -208,7 +208,8 @@ def _draw_names(
         top=frame.top + cap / 2,
         base=frame.base - cap / 2,
     )
-    core_right = left + CORE_LEFT + core_width(3.2)
+    # Leaders slant right of the widest core, so that none crosses the free edge.
+    core_right = left + CORE_LEFT + max((_width(interval) for interval in intervals), default=0.0)
     for (words, depth), row in zip(shown, rows, strict=True):
         y = whole(frame.y(depth))
         widths = [_width(i) for i in intervals if i.top - 1e-6 <= depth <= i.base + 1e-6]
@@ -216,8 +217,9 @@ def _draw_names(
         if abs(row - frame.y(depth) - 9) < 0.5:
             hairline_across(painter, start, end, y, theme.colour("strong"))
         else:
-            hairline_across(painter, start, core_right + 2, y, theme.colour("strong"))
-            smooth_line(painter, ((core_right + 2, y + 0.5), (end + 1, row)), theme.colour("strong"), 1)
+            kink = core_right + 6
+            hairline_across(painter, start, kink, y, theme.colour("strong"))
+            smooth_line(painter, ((kink, y + 0.5), (end + 1, row)), theme.colour("strong"), 1)
         inside = window is None or window[0] <= depth <= window[1]
         draw_text(
             painter,

@@ -23,7 +23,7 @@ def _station_track(plate: SurveyPlate, *, anomaly: bool, weight: float) -> Track
             (station.anomaly, station.anomaly_sd) if anomaly else (station.gravity, station.gravity_sd)
         )
         if value is not None:
-            points.append(Point(depth=station.depth, value=value, sd=sd))
+            points.append(Point(depth=station.depth, value=value, sd=sd, part=station.part))
     if not points:
         return None
     values, sds = [point.value for point in points], [point.sd for point in points]

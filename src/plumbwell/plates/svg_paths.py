@@ -6,67 +6,84 @@ Text stands in plates as outlines, so path data is nearly all of a file; written
 from __future__ import annotations
 
 import re
-from functools import lru_cache
 
 import numpy as np
+from numpy.typing import NDArray
 
-_PATH_DATA = re.compile(r'(?<= d=")[^"]*(?=")')
-_COMMAND = re.compile("[MLCZ]")
-_SEPARATOR = re.compile("[MLCZ, ]+")
-_PAIRS = {"M": 1, "L": 1, "C": 3, "Z": 0}
+_PATH_DATA = re.compile(rb'(?<= d=")[^"]*(?=")')
+_PAIRS = {b"M": 1, b"L": 1, b"C": 3, b"Z": 0}
+_PAIRS_OF_CODE = np.array([_PAIRS.get(bytes([code]), 0) for code in range(256)], dtype=np.intp)
+_NOT_NUMBERS = bytes.maketrans(b"MLCZ,", b"     ")
+_NOT_COMMANDS = b"0123456789+-.eE, \t\r\n"
+_MOVE, _CLOSE = ord("M"), ord("Z")
 # The painter says these of every group: the unit transform, and a font though no text stands in the file.
 _IDLE = re.compile(
-    r' transform="matrix\(1,0,0,1,0,0\)"|\s*font-family="[^"]*" font-size="[^"]*" font-weight="[^"]*" '
-    r'font-style="[^"]*"\s*|\s*vector-effect="none"'
+    rb' transform="matrix\(1,0,0,1,0,0\)"|\s*font-family="[^"]*" font-size="[^"]*" font-weight="[^"]*" '
+    rb'font-style="[^"]*"\s*|\s*vector-effect="none"'
 )
-_EMPTY_GROUP = re.compile(r"<g [^>]*>\s*</g>\s*")
+# Stands for path data while the rest is searched; no text of an XML file holds this character.
+_HELD = b"\x00"
+_EMPTY_GROUP = re.compile(rb"<g [^>]*>\s*</g>\s*")
 
 
-@lru_cache(maxsize=65536)
-def _hundredths(value: int) -> str:
-    """Return a count of hundredths as the shortest decimal number."""
-    whole, rest = divmod(abs(value), 100)
-    sign = "-" if value < 0 else ""
-    if not rest:
-        return f"{sign}{whole}"
-    return f"{sign}{whole or ''}.{rest:02d}".rstrip("0")
+def _words_of(hundredths: NDArray[np.int64]) -> NDArray[np.object_]:
+    """Return counts of hundredths, 0 or more, as the shortest decimal numbers."""
+    wholes, rests = np.divmod(hundredths, 100)
+    whole_words = np.array(["", *map(str, range(int(wholes.max(initial=0)) + 1))], dtype=object)
+    rest_words = np.array(["", *(f".{rest:02d}".rstrip("0") for rest in range(1, 100))], dtype=object)
+    return whole_words[np.where((wholes == 0) & (rests > 0), 0, wholes + 1)] + rest_words[rests]
 
 
-def _relative(found: re.Match[str]) -> str:
+def _steps(
+    places: NDArray[np.int64], codes: NDArray[np.uint8], pairs: NDArray[np.intp], begins: NDArray[np.intp]
+) -> NDArray[np.int64]:
+    """Return each place less the place at which the pen stood before its command.
+
+    Parameters
+    ----------
+    places : (p, 2) array
+        Of all paths, one after the other.
+    codes, pairs : (c,) array
+        Commands as letters, and how many places each has.
+    begins : array
+        The first command of each path: before it the pen stands at (0, 0).
+    """
+    last = np.cumsum(pairs) - 1
+    starts = np.maximum.accumulate(np.where(codes == _MOVE, last, -1))
+    # A row of zeros at the end stands for (0, 0), as row -1.
+    pen = np.concatenate([[-1], np.where(codes == _CLOSE, starts, last)[:-1]])
+    pen[begins] = -1
+    origin = np.vstack([places, np.zeros((1, 2), dtype=np.int64)])
+    return places - origin[np.repeat(pen, pairs)]
+
+
+def _relative(paths: list[bytes]) -> list[str]:
     """Return absolute path data in M, L, C and Z as relative data.
 
-    Places are rounded before differences are taken, so that rounding does not add up along a path.
+    All paths of a file are taken at once, since most are short. Places are rounded before differences are
+    taken, so that rounding does not add up along a path.
     """
-    data = found.group()
-    commands = _COMMAND.findall(data)
-    numbers = np.array(_SEPARATOR.sub(" ", data).split(), dtype=np.float64)
+    letters = [path.translate(None, _NOT_COMMANDS) for path in paths]
+    ends = np.cumsum([len(letter) for letter in letters])
+    codes = np.frombuffer(b"".join(letters), dtype=np.uint8)
+    pairs = _PAIRS_OF_CODE[codes]
+    numbers = np.fromstring(b" ".join(paths).translate(_NOT_NUMBERS).decode(), dtype=np.float64, sep=" ")
     places = np.rint(100.0 * numbers).astype(np.int64).reshape(-1, 2)
-    ends: list[int] = []  # for each command with places: the pair at which the pen stood before it, -1 for (0, 0)
-    counts: list[int] = []
-    pen = start = -1
-    seen = 0
-    for command in commands:
-        pairs = _PAIRS[command]
-        if not pairs:
-            pen = start
-            continue
-        ends.append(pen)
-        counts.append(pairs)
-        seen += pairs
-        pen = seen - 1
-        if command == "M":
-            start = pen
-    origin = np.vstack([places, np.zeros((1, 2), dtype=np.int64)])
-    before = np.repeat(np.array(ends, dtype=np.intp), np.array(counts, dtype=np.intp))
-    steps = (places - origin[before]).ravel().tolist()
-    texts = [_hundredths(step) for step in steps]
-    written: list[str] = []
-    at = 0
-    for command in commands:
-        after = at + 2 * _PAIRS[command]
-        written.append(command.lower() + " ".join(texts[at:after]))
-        at = after
-    return "".join(written).replace(" -", "-")
+    steps = _steps(places, codes, pairs, np.concatenate([[0], ends[:-1]])).ravel()
+    # What stands before each number: a blank or the letter of its command, and its sign, which parts as well.
+    negative = steps < 0
+    leads = np.where(negative, "-", " ").astype(object)
+    drawn = np.flatnonzero(pairs)
+    firsts = 2 * (np.cumsum(pairs) - pairs)[drawn]
+    letters_signed = np.array([chr(code) + sign for sign in ("", "-") for code in range(256)], dtype=object)
+    leads[firsts] = letters_signed[(codes[drawn] | 0x20) + 256 * negative[firsts].astype(np.intp)]
+    texts = leads + _words_of(np.abs(steps))
+    closes = np.flatnonzero(codes == _CLOSE)
+    after = 2 * np.cumsum(pairs)[closes] - 1
+    texts[after] = texts[after] + "z"
+    tokens = texts.tolist()
+    cuts = np.concatenate([[0], 2 * np.cumsum(pairs)[ends - 1]]).tolist()
+    return ["".join(tokens[first:last]) for first, last in zip(cuts, cuts[1:], strict=False)]
 
 
 def compact_svg(content: bytes) -> bytes:
@@ -77,5 +94,12 @@ def compact_svg(content: bytes) -> bytes:
     content : bytes
         As written by QSvgGenerator: absolute path data in M, L, C and Z, one curve or line a command.
     """
-    text = _PATH_DATA.sub(_relative, content.decode())
-    return _EMPTY_GROUP.sub("", _IDLE.sub("", text)).encode()
+    paths = _PATH_DATA.findall(content)
+    # What stands around the path data is searched without it: that is a tenth of the file.
+    around = _EMPTY_GROUP.sub(b"", _IDLE.sub(b"", _PATH_DATA.sub(_HELD, content)))
+    if not paths:
+        return around
+    first, *others = around.split(_HELD)
+    return first + b"".join(
+        path.encode() + after for path, after in zip(_relative(paths), others, strict=True)
+    )

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 from statistics import median, quantiles
 
 from PySide6.QtCore import QPointF, QRectF, Qt
-from PySide6.QtGui import QPainter, QPainterPath
+from PySide6.QtGui import QPainter, QPainterPath, QPolygonF
 
 from plumbwell.plates.axis import (
     HEAD_HEIGHT,
@@ -35,10 +35,10 @@ from plumbwell.plates.painting import (
     stroke_shape,
     whole,
 )
-from plumbwell.plates.polyline import inside_pieces, thinned_pieces
+from plumbwell.plates.polyline import inside_pieces, log_pieces
 from plumbwell.plates.theme import Theme
 
-BAND_ALPHA = 38
+BAND_ALPHA, SPREAD_ALPHA = 38, 72
 LEAST_BAND = 3
 MANY_THIN = 20
 DISC_RADIUS, SMALL_RADIUS = 3.0, 2.0
@@ -57,11 +57,12 @@ class Step:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Point:
-    """A station's value: depth, value, standard deviation or None."""
+    """A station's value: depth, value, standard deviation or None; only points of one part are joined."""
 
     depth: float
     value: float
     sd: float | None = None
+    part: int = 0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -78,7 +79,7 @@ class Track:
     steps : tuple of Step
         In order of depth; neighbours that touch are joined.
     points : tuple of Point
-        In the order in which they are joined.
+        In the order in which those of one part are joined.
     line_depths, line_values : tuple
         A log, None where it has a gap.
     decimals : int
@@ -244,6 +245,14 @@ def _shown_steps(track: Track, frame: Frame) -> list[Step]:
     return [step for step in track.steps if step.base > frame.depth_top and step.top < frame.depth_base]
 
 
+def joined_points(points: Sequence[Point]) -> list[list[Point]]:
+    """Return the points of each part, in their order."""
+    parts: dict[int, list[Point]] = {}
+    for point in points:
+        parts.setdefault(point.part, []).append(point)
+    return list(parts.values())
+
+
 def step_rows(step: Step, frame: Frame) -> tuple[int, int]:
     """Return the px rows of a step's top and base, kept inside the frame."""
     return whole(max(frame.y(step.top), frame.top)), whole(min(frame.y(step.base), frame.base))
@@ -299,7 +308,14 @@ def _draw_steps(painter: QPainter, track: Track, frame: Frame, theme: Theme) -> 
 def _draw_points(painter: QPainter, track: Track, frame: Frame, theme: Theme) -> None:
     shown = [point for point in track.points if frame.depth_top <= point.depth <= frame.depth_base]
     places = [(track.x(point.value, frame), frame.y(point.depth)) for point in shown]
-    for piece in inside_pieces(places, frame):
+    lines = [
+        piece
+        for part in joined_points(shown)
+        for piece in inside_pieces(
+            [(track.x(point.value, frame), frame.y(point.depth)) for point in part], frame
+        )
+    ]
+    for piece in lines:
         smooth_line(painter, piece, theme.colour("strong"), 1)
     radius = DISC_RADIUS if len(shown) * 8 <= frame.base - frame.top else SMALL_RADIUS
     crowded = len(shown) * 3 > frame.base - frame.top
@@ -315,7 +331,7 @@ def _draw_points(painter: QPainter, track: Track, frame: Frame, theme: Theme) ->
             band.addRect(QRectF(ends[0], whole(y), ends[1] - ends[0], 1))
         band.setFillRule(Qt.FillRule.WindingFill)
         painter.fillPath(band, theme.colour("ink", BAND_ALPHA))
-        for piece in inside_pieces(places, frame):
+        for piece in lines:
             smooth_line(painter, piece, theme.colour("ink"), 1.2)
         return
     for x, y in places:
@@ -327,8 +343,23 @@ def _draw_points(painter: QPainter, track: Track, frame: Frame, theme: Theme) ->
 
 
 def _draw_line(painter: QPainter, track: Track, frame: Frame, theme: Theme) -> None:
-    for piece in thinned_pieces(track.line_depths, track.line_values, track, frame):
-        for part in inside_pieces(piece, frame):
+    """Draw the log; one crowded with samples as its mean line over its paler spread.
+
+    Drawn sample by sample it would be a block of plum in which neither log nor staircase can be seen.
+    """
+    pieces = log_pieces(track.line_depths, track.line_values, track, frame)
+    spreads = QPainterPath()
+    for piece in pieces:
+        sides = [
+            [QPointF(min(max(row[side], frame.left), frame.right), row[2]) for row in piece.spread]
+            for side in (0, 1)
+        ]
+        if piece.spread:
+            spreads.addPolygon(QPolygonF([*sides[0], *reversed(sides[1])]))
+            spreads.closeSubpath()
+    fill_shape(painter, spreads, theme.colour("log", SPREAD_ALPHA))
+    for piece in pieces:
+        for part in inside_pieces(piece.line, frame):
             smooth_line(painter, part, theme.colour("log"), 1)
 
 
@@ -353,13 +384,15 @@ def _draw_wedges(painter: QPainter, track: Track, frame: Frame, theme: Theme) ->
     """Draw wedges where values leave the scale, with the extreme value; return the boxes of the words."""
     middle = (track.low + track.high) / 2
     taken: list[QRectF] = []
+    rows: list[tuple[int, float]] = []
     for depth, value, role in sorted(_excursions(track), key=lambda found: -abs(found[1] - middle)):
         if not frame.depth_top <= depth <= frame.depth_base:
             continue
         y = min(max(frame.y(depth), frame.top + 8), frame.base - 8)
-        if any(abs(box.center().y() - y) < 18 for box in taken):
-            continue
         side, edge, align = (1, frame.right, "right") if value > track.high else (-1, frame.left, "left")
+        if any(side == other and abs(row - y) < 18 for other, row in rows):
+            continue
+        rows.append((side, y))
         box = draw_text(
             painter,
             theme,

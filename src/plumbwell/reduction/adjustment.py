@@ -12,12 +12,11 @@ from dataclasses import dataclass
 import numpy as np
 
 from plumbwell.reduction.design import (
+    HIGHEST_ORDER,
     Design,
     DriftBasis,
     DriftUnknown,
-    VisitRegressors,
     design,
-    regressor,
     visit_regressors,
 )
 from plumbwell.reduction.drift_order import Fit, OrderTest, chosen_orders
@@ -27,6 +26,8 @@ from plumbwell.reduction.variances import ReadingNoise, Reseating, reading_noise
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index
 from plumbwell.survey.errors import NumericalError
+
+DESIGNS_HELD = 100
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -148,24 +149,19 @@ def adjusted(
     automatic = tuple(run for run in automatic if orders[run] > 0)
     lost: list[DriftUnknown] = []
 
-    made: dict[tuple[int, ...], tuple[Design, Rank]] = {}
 
-    def designed(chosen: tuple[int, ...], regressors: VisitRegressors) -> tuple[Design, Rank]:
-        if chosen not in made:
-            one = design(
-                basis, visits, regressors, n_stations=n_stations, orders=chosen, dropped=parts.dropped, lost=tuple(lost)
-            )
-            made[chosen] = (one, rank_of_visits(one))
-        return made[chosen]
+    def designed(chosen: tuple[int, ...], weight: Array) -> tuple[Design, Rank]:
+        return _designed(
+            basis, visits, weight, n_stations=n_stations, orders=chosen, dropped=parts.dropped, lost=tuple(lost)
+        )
 
     counts = np.diff(visits.start)
     held = basis.held(rows, orders)
-    plain = visit_regressors(basis, visits, np.repeat(1.0 / counts, counts))
-    first, rank = designed(orders, plain)
+    even = np.repeat(1.0 / counts, counts)
+    first, rank = designed(orders, even)
     while (missing := undetermined(first, ties, rank)) is not None:
         lost.append(missing)
-        made.clear()
-        first, rank = designed(orders, plain)
+        first, rank = designed(orders, even)
     values = observed[rows] - held
     means = np.add.reduceat(values, visits.start[:-1]) / counts
     stated = terms.reading_sd[rows]
@@ -175,8 +171,8 @@ def adjusted(
     noise = reading_noise(
         visits, values - drift, stated=stated, floor=terms.reading_floor[rows], estimate=terms.estimate
     )
-    regressors = visit_regressors(basis, visits, noise.weight)
-    made.clear()
+    # Rounding apart the weights within visits are even where all readings are equally good.
+    weighted = even if np.abs(noise.weight - even).max() < 1e-15 else noise.weight
     u0 = stated_reseating(
         noise,
         reseating_sd=terms.reseating_sd[rows][visits.start[:-1]],
@@ -187,7 +183,7 @@ def adjusted(
     mean = visit_means(noise.weight, values, visits.start)
 
     def fit(chosen: tuple[int, ...]) -> Fit | None:
-        one, rank = designed(chosen, regressors)
+        one, rank = designed(chosen, weighted)
         if undetermined(one, ties, rank) is not None:
             return None
         found = reseating(one, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate)
@@ -195,12 +191,12 @@ def adjusted(
         return Fit(freedom=found.freedom, solution=_solved(one, weight, mean, ties))
 
     def squares(chosen: tuple[int, ...], above: Solution) -> float:
-        return _solved(designed(chosen, regressors)[0], above.weight, mean, ties).sum_of_squares()
+        return _without(above, [one.kind == "drift" and one.power > chosen[one.run] for one in above.design.unknowns])
 
     tests: tuple[OrderTest, ...] = ()
     if automatic:
         orders, tests = chosen_orders(orders, automatic, fit, squares)
-    final, rank = designed(orders, regressors)
+    final, rank = designed(orders, weighted)
     seat = reseating(final, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate)
     weight = 1.0 / (noise.variance + seat.variance)
     answers = [visit_means(noise.weight, one[rows], visits.start) for one in responses]
@@ -208,7 +204,7 @@ def adjusted(
     everywhere = np.arange(len(observed))
     whole_held = basis.held(everywhere, orders)
     drift_all = border_drift(basis, final, solution.unknown[:, 0], everywhere)
-    checked = _checked(observed - whole_held, basis, visits, solution, noise, seat, station)
+    checked = _checked(observed - whole_held - drift_all, visits, solution, noise, seat, basis, station)
     floor = np.zeros(n_stations)
     np.maximum.at(floor, station[rows], terms.station_floor[rows])
     bias = run_bias(basis, final, solution.unknown[:, 0])
@@ -229,6 +225,41 @@ def adjusted(
         standardised=checked[2],
         redundancy=checked[3],
     )
+
+
+def _designed(
+    basis: DriftBasis,
+    visits: Visits,
+    weight: Array,
+    *,
+    n_stations: int,
+    orders: tuple[int, ...],
+    dropped: tuple[DriftUnknown, ...],
+    lost: tuple[DriftUnknown, ...],
+) -> tuple[Design, Rank]:
+    """The design of some orders with its rank, found again where the weights within visits are what they were."""
+    made, bytes_of_weight = basis.made, weight.tobytes()
+    if len(made) > DESIGNS_HELD:
+        made.clear()
+    key = (visits, bytes_of_weight, n_stations, orders, dropped, lost)
+    if key not in made:
+        if (visits, bytes_of_weight) not in made:
+            made[visits, bytes_of_weight] = visit_regressors(basis, visits, weight)
+        regressors = made[visits, bytes_of_weight]
+        one = design(basis, visits, regressors, n_stations=n_stations, orders=orders, dropped=dropped, lost=lost)
+        made[key] = (one, rank_of_visits(one))
+    return made[key]  # type: ignore[no-any-return]
+
+
+def _without(above: Solution, left_out: list[bool]) -> float:
+    """Weighted sum of squares of visit residuals when some border unknowns are held at 0, weights kept.
+
+    The solution moves by C e (e^T C e)^-1 x_e, e the unknowns left out, C the covariance, x their estimates.
+    """
+    gone = np.flatnonzero(left_out)
+    moved = above.border[:, gone] @ np.linalg.solve(above.border[gone[:, None], gone], above.unknown[gone, 0])
+    residual = above.residual[:, 0] + above.fitted(moved)
+    return float(above.weight @ residual**2)
 
 
 def _instant(visits: Visits, run: int) -> bool:
@@ -258,69 +289,67 @@ def run_bias(basis: DriftBasis, one: Design, unknown: Array) -> Array:
 
 def border_drift(basis: DriftBasis, one: Design, unknown: Array, rows: Index) -> Array:
     """What the border unknowns (bias, drift, tares) put on the given rows, m/s2."""
-    total = np.zeros(len(rows))
-    run = basis.run[rows]
-    arranged = np.argsort(run, kind="stable")
-    edges = np.searchsorted(run[arranged], np.arange(len(basis.start) + 1))
+    run, time = basis.run[rows], basis.time(rows)
+    coefficient = np.zeros((HIGHEST_ORDER + 1, len(basis.start)))
+    jumps = np.zeros(len(rows))
     for number, what in enumerate(one.unknowns):
-        mine = arranged[edges[what.run] : edges[what.run + 1]]
-        if mine.size:
-            total[mine] += unknown[number] * regressor(basis, what, rows[mine])
-    return total
+        if what.kind == "tare":
+            jumps += unknown[number] * basis.jumps(rows, what.tare)
+        else:
+            coefficient[what.power, what.run] = unknown[number]
+    total = coefficient[HIGHEST_ORDER][run]
+    for power in range(HIGHEST_ORDER - 1, -1, -1):
+        total = total * time + coefficient[power][run]
+    return total + jumps
 
 
 def _checked(
-    values: Array,
-    basis: DriftBasis,
+    level: Array,
     visits: Visits,
     solution: Solution,
     noise: ReadingNoise,
     seat: Reseating,
+    basis: DriftBasis,
     station: Index,
 ) -> tuple[Array, Array, Array, Array]:
-    """Visit effect, residual, standardised residual and redundancy of every row."""
-    n = len(values)
+    """Visit effect, residual, standardised residual and redundancy of every row; `level` is free of bias and drift."""
+    n = len(level)
     effect, standardised, redundancy = (np.full(n, np.nan) for _ in range(3))
     one = solution.design
     gravity, border = solution.gravity[:, 0], solution.border
-    everywhere = np.arange(n)
     predicted = np.where(station >= 0, gravity[np.maximum(station, 0)], np.nan)
-    predicted = predicted + border_drift(basis, one, solution.unknown[:, 0], everywhere)
-    without = np.setdiff1d(np.arange(len(basis.start)), visits.run_order)
-    residual = np.where(np.isin(basis.run, without), np.nan, values - predicted)
-    variance = noise.variance + seat.variance
-    kept = seat.variance / variance
+    rank_of_run = np.full(len(basis.start), -1)
+    rank_of_run[visits.run_order] = np.arange(len(visits.run_order))
+    residual = np.where(rank_of_run[basis.run] >= 0, level - predicted, np.nan)
+    rows = visits.rows
+    visit = np.repeat(np.arange(len(visits)), np.diff(visits.start))
+    share, where, run = noise.weight, station[rows], basis.run[rows]
+    # Regressors of the unknowns of each row's own run, z; their means over its visit; and what the border's
+    # covariance makes of both.
+    unknown = one.of_run[run]
+    z = basis.table(rows)[one.table_row[unknown], np.arange(len(rows))[:, None]] * (unknown >= 0)
+    z_mean = visit_means(share, z, visits.start)[visit]
+    turned, turned_mean = np.empty_like(z), np.empty_like(z)
+    edges = np.searchsorted(rank_of_run[run], np.arange(len(visits.run_order) + 1)).tolist()
+    for code, start, end in zip(visits.run_order.tolist(), edges[:-1], edges[1:], strict=True):
+        own_rows = slice(start, end)
+        numbers = one.of_run[code]
+        block = border[numbers[:, None], numbers] * ((numbers >= 0)[:, None] & (numbers >= 0))
+        turned[own_rows], turned_mean[own_rows] = z[own_rows] @ block, z_mean[own_rows] @ block
     spread = solution.mean @ border
-    at_station = np.einsum("sq,sq->s", spread, solution.mean)
-    visit_of = np.repeat(np.arange(len(visits)), np.diff(visits.start))
-    by_run: dict[int, list[int]] = {run: [] for run in visits.run_order.tolist()}
-    for number, what in enumerate(one.unknowns):
-        by_run[what.run].append(number)
-    for run, numbers in by_run.items():
-        mine = np.flatnonzero(visits.run == run)
-        first, last = int(mine[0]), int(mine[-1]) + 1
-        a, b = int(visits.start[first]), int(visits.start[last])
-        start = visits.start[first : last + 1] - a
-        rows, visit = visits.rows[a:b], visit_of[a:b]
-        z = np.column_stack([regressor(basis, one.unknowns[k], rows) for k in numbers] or [np.zeros((b - a, 0))])
-        z_mean = visit_means(noise.weight[a:b], z, start)[visit - first]
-        block = border[np.ix_(numbers, numbers)]
-        where = station[rows]
-        cross = spread[where][:, numbers]
-        base = 1.0 / solution.total[where] + at_station[where]
-        of_mean = np.einsum("rm,rm->r", z_mean, cross)
-        z_block = z_mean @ block
-        own = np.einsum("rm,rm->r", z_block, z) - np.einsum("rm,rm->r", z, cross) - of_mean + base
-        fit = np.einsum("rm,rm->r", z_block, z_mean) - 2.0 * of_mean + base
-        apart = z - z_mean
-        tilt = np.einsum("rm,mk,rk->r", apart, block, apart)
-        share = noise.weight[a:b]
-        off = visit_means(share, residual[rows], start)[visit - first]
-        effect[rows] = kept[visit] * off
-        residual[rows] -= effect[rows]
-        checked = np.maximum(1.0 - fit / variance[visit], 0.0)
-        sd2 = noise.sd[a:b] ** 2 - noise.variance[visit] + (1.0 - kept[visit]) ** 2 * variance[visit] * checked + tilt
-        enough = sd2 > 1e-9 * noise.sd[a:b] ** 2
-        standardised[rows] = np.where(enough, residual[rows] / np.sqrt(np.where(enough, sd2, 1.0)), np.nan)
-        redundancy[rows] = 1.0 - own * share / variance[visit]
+    at_station = 1.0 / solution.total + np.einsum("sq,sq->s", spread, solution.mean)
+    cross = spread[where[:, None], unknown]
+    base, of_mean = at_station[where], np.einsum("rm,rm->r", z_mean, cross)
+    own = np.einsum("rm,rm->r", turned_mean, z) - np.einsum("rm,rm->r", z, cross) - of_mean + base
+    fit = np.einsum("rm,rm->r", turned_mean, z_mean) - 2.0 * of_mean + base
+    tilt = np.einsum("rm,rm->r", turned - turned_mean, z - z_mean)
+    variance = (noise.variance + seat.variance)[visit]
+    kept = seat.variance[visit] / variance
+    effect[rows] = kept * visit_means(share, residual[rows], visits.start)[visit]
+    residual[rows] -= effect[rows]
+    checked = np.maximum(1.0 - fit / variance, 0.0)
+    sd2 = noise.sd**2 - noise.variance[visit] + (1.0 - kept) ** 2 * variance * checked + tilt
+    enough = sd2 > 1e-9 * noise.sd**2
+    standardised[rows] = np.where(enough, residual[rows] / np.sqrt(np.where(enough, sd2, 1.0)), np.nan)
+    redundancy[rows] = 1.0 - own * share / variance
     return effect, residual, standardised, redundancy

@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 from plumbwell.reduction.adjustment import Adjustment, run_bias
 from plumbwell.reduction.network import NO_TIES, Solution, TieRows, border_matrix
 from plumbwell.reduction.network_parts import Parts
-from plumbwell.reduction.spread import Spread, diagonal_spread, low_rank
+from plumbwell.reduction.spread import Spread, low_rank
 from plumbwell.survey.column import Array, Index
 
 UNDETERMINED = 1e-13  # of a border matrix with unit diagonal: its rounding
@@ -101,29 +101,31 @@ def referred_gravity(adjustment: Adjustment, parts: Parts, ties: TieRows, datum_
     floor = np.where(visited, np.maximum(adjustment.station_floor**2 - own, 0.0), 0.0)
     # Ties are a datum spread over the tied stations: the errors of the visits alone, less what the ties take over
     # of the errors at the tied stations. What visits alone leave open (the level at least) falls out of that.
-    tied = np.unique(ties.station)
+    tied = np.unique(ties.station) if len(ties.station) else ties.station
     taken_over = np.zeros((len(own), len(tied)))
     np.add.at(taken_over.T, np.searchsorted(tied, ties.station), (tie_columns * np.sqrt(ties.weight)).T)
 
     def on_ties(columns: Array) -> Array:
-        return columns - taken_over @ columns[tied]
+        return columns - taken_over @ columns[tied] if len(tied) else columns
 
     at_tied = np.zeros_like(taken_over)
     at_tied[tied, np.arange(len(tied))] = np.sqrt(own[tied])
     own[tied] = 0.0
-    reading = diagonal_spread(own + floor) + low_rank(on_ties(at_tied))
+    reading = Spread(diagonal=own + floor, columns=on_ties(at_tied), signs=np.ones(len(tied)))
     tares = [number for number, one in enumerate(design.unknowns) if one.kind == "tare"]
     others = [number for number, one in enumerate(design.unknowns) if one.kind != "tare"]
-    root = _inverse_root(matrix[np.ix_(others, others)])
+    # Without a tie the solution itself has shown that nothing is left open, however weak a prior may be.
+    least = UNDETERMINED if len(tied) else 0.0
+    root = _inverse_root(matrix[np.ix_(others, others)] if tares else matrix, least)
     drift = low_rank(on_ties(-mean[:, others] @ root))
-    carry = np.zeros((design.size, len(tares)))
+    tare = low_rank(np.zeros((len(own), 0)))
     if tares:
+        carry = np.zeros((design.size, len(tares)))
         across = matrix[np.ix_(others, tares)]
         carry[others] = -root @ (root.T @ across)
         carry[tares] = np.eye(len(tares))
         left = matrix[np.ix_(tares, tares)] + across.T @ carry[others]
-        carry = carry @ _inverse_root(left)
-    tare = low_rank(on_ties(-mean @ carry))
+        tare = low_rank(on_ties(-mean @ carry @ _inverse_root(left, least)))
     bias = run_bias(adjustment.basis, design, solution.unknown[:, 0])
     for run, part in enumerate(parts.of_run.tolist()):
         if part >= 0 and datum_of_part[part] >= 0:
@@ -141,15 +143,15 @@ def referred_gravity(adjustment: Adjustment, parts: Parts, ties: TieRows, datum_
     )
 
 
-def _inverse_root(matrix: Array) -> Array:
-    """A factor L with L L^T the inverse of a symmetric matrix, its unknowns scaled first; directions that it does
-    not determine are left out."""
+def _inverse_root(matrix: Array, least: float) -> Array:
+    """A factor L with L L^T the inverse of a symmetric matrix, its unknowns scaled first; directions whose
+    eigenvalue is not over `least` are left out."""
     if len(matrix) == 0:
         return matrix
     diagonal = np.diagonal(matrix)
     scale = 1.0 / np.sqrt(np.where(diagonal > 0.0, diagonal, 1.0))
     values, vectors = np.linalg.eigh(matrix * scale[:, None] * scale[None, :])
-    known = values > UNDETERMINED
+    known = values > least
     return scale[:, None] * vectors[:, known] / np.sqrt(values[known])
 
 

@@ -7,7 +7,7 @@ the observations; a visit's row of the design is the weighted mean of its readin
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
@@ -46,6 +46,9 @@ class DriftBasis:
     tare_run : (m,) int array
     rate, rate_sd : arrays by run code
         Expected drift rate and its sd, m/s3, of the run's instrument.
+    made : dict
+        What was derived from this basis before, by all that it was derived with: designs ask for no reading, so
+        that a change of the readings' values finds them again.
     """
 
     run: Index
@@ -56,6 +59,7 @@ class DriftBasis:
     tare_run: Index
     rate: Array
     rate_sd: Array
+    made: dict[Any, Any] = field(default_factory=dict, repr=False)
 
     def time(self, rows: Index) -> Array:
         """Time since the run's first used reading over the run's length, one a row."""
@@ -66,6 +70,12 @@ class DriftBasis:
         """1 for rows of the tare's run at or after it, else 0."""
         after = self.utc[rows] >= self.tares[tare].time
         return np.where(after & (self.run[rows] == self.tare_run[tare]), 1.0, 0.0)
+
+    def table(self, rows: Index) -> Array:
+        """Every regressor that any order could use at the given rows, (4 + m, n): powers 0 to 3 of time, m jumps."""
+        time = self.time(rows)
+        powers = [np.ones(len(rows)), time, time * time, time * time * time]
+        return np.array(powers + [self.jumps(rows, one) for one in range(len(self.tares))])
 
     def held(self, rows: Index, orders: tuple[int, ...]) -> Array:
         """Drift that is known: the expected rate of runs of order 0, and tares of stated size, m/s2."""
@@ -130,6 +140,10 @@ class Design:
     n_stations : int
     station : (v,) int array
         Station of each visit.
+    of_run : (runs, k) int array by run code
+        Border unknowns of each run, filled up with -1.
+    table_row : (q + 1,) int array
+        Row of `DriftBasis.table` that each unknown multiplies; the last stands for none.
     entry_visit, entry_unknown, entry_value : (e,) arrays
         Non-zero elements of the visits' rows in the border.
     pair_visit, pair_flat, pair_value : (p,) arrays
@@ -149,6 +163,8 @@ class Design:
     orders: tuple[int, ...]
     n_stations: int
     station: Index
+    of_run: Index
+    table_row: Index
     entry_visit: Index
     entry_unknown: Index
     entry_value: Array
@@ -191,18 +207,10 @@ class VisitRegressors:
 
     table: Array
 
-    def row(self, unknown: DriftUnknown) -> int:
-        """The row of the table that an unknown multiplies."""
-        return HIGHEST_ORDER + 1 + unknown.tare if unknown.kind == "tare" else unknown.power
-
 
 def visit_regressors(basis: DriftBasis, visits: Visits, row_weight: Array) -> VisitRegressors:
     """Visit means of the regressors; `row_weight` (u,) sums to 1 within each visit, in the order of `visits.rows`."""
-    rows = visits.rows
-    time = basis.time(rows)
-    table = [time**power for power in range(HIGHEST_ORDER + 1)]
-    table += [basis.jumps(rows, one) for one in range(len(basis.tares))]
-    means = np.add.reduceat(row_weight * np.array(table), visits.start[:-1], axis=1)
+    means = np.add.reduceat(row_weight * basis.table(visits.rows), visits.start[:-1], axis=1)
     means[0] = 1.0
     return VisitRegressors(table=frozen(means))
 
@@ -229,15 +237,8 @@ def design(
     dropped, lost : tuples of DriftUnknown
         Constants and undetermined unknowns that are held at 0.
     """
-    everything: list[DriftUnknown] = []
-    for run in visits.run_order.tolist():
-        everything.append(DriftUnknown(kind="bias", run=run))
-        everything.extend(DriftUnknown(kind="drift", run=run, power=p) for p in range(1, orders[run] + 1))
-    for number, tare in enumerate(basis.tares):
-        if tare.size is None or tare.size_sd is not None:
-            everything.append(DriftUnknown(kind="tare", run=int(basis.tare_run[number]), tare=number))
     away = {*dropped, *lost}
-    unknowns = tuple(one for one in everything if one not in away)
+    unknowns = tuple(one for one in _all_unknowns(basis, visits, orders) if one not in away)
     size = len(unknowns)
     by_run: dict[int, list[int]] = {}
     for number, one in enumerate(unknowns):
@@ -247,7 +248,8 @@ def design(
     number_of = np.full((len(basis.start), most), -1, dtype=np.intp)
     for run, numbers in by_run.items():
         number_of[run, : len(numbers)] = numbers
-    row_of = np.array([regressors.row(one) for one in unknowns] + [0], dtype=np.intp)
+    tare_rows = HIGHEST_ORDER + 1
+    row_of = np.array([tare_rows + one.tare if one.kind == "tare" else one.power for one in unknowns] + [0])
     unknown = number_of[visits.run]
     value = regressors.table[row_of[unknown], np.arange(len(visits))[:, None]]
     present = unknown >= 0
@@ -269,6 +271,8 @@ def design(
         orders=orders,
         n_stations=n_stations,
         station=visits.station,
+        of_run=number_of,
+        table_row=row_of,
         entry_visit=visit,
         entry_unknown=unknown,
         entry_value=value,
@@ -282,6 +286,17 @@ def design(
         dropped=dropped,
         lost=lost,
     )
+
+
+def _all_unknowns(basis: DriftBasis, visits: Visits, orders: tuple[int, ...]) -> list[DriftUnknown]:
+    everything: list[DriftUnknown] = []
+    for run in visits.run_order.tolist():
+        everything.append(DriftUnknown(kind="bias", run=run))
+        everything.extend(DriftUnknown(kind="drift", run=run, power=p) for p in range(1, orders[run] + 1))
+    for number, tare in enumerate(basis.tares):
+        if tare.size is None or tare.size_sd is not None:
+            everything.append(DriftUnknown(kind="tare", run=int(basis.tare_run[number]), tare=number))
+    return everything
 
 
 def _priors(basis: DriftBasis, unknowns: tuple[DriftUnknown, ...]) -> tuple[Prior, ...]:

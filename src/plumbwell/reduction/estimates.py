@@ -202,7 +202,9 @@ def estimates(
         Weighing("gravity of the station", "weighted mean of readings freed of bias and drift", SOURCE, of_station),
         freed, ties, priors,
     )
-    present = np.isin(basis.run, adjustment.visits.run_order)
+    read = np.zeros(len(basis.start), dtype=bool)
+    read[adjustment.visits.run_order] = True
+    present = read[basis.run]
     run_bias = weighed(
         "run_bias", "m/s2", np.where(present, station_gravity.bias[basis.run], np.nan),
         Weighing("bias of the run", "least-squares constant of the run", SOURCE, of_bias), freed, ties, priors,

@@ -62,6 +62,14 @@ class Solution:
     unknown: Array
     residual: Array
 
+    def fitted(self, unknown: Array) -> Array:
+        """What border unknowns (q,) put on each visit, (v,), when the stations follow them."""
+        one = self.design
+        on_visit = np.bincount(
+            one.entry_visit, one.entry_value * unknown[one.entry_unknown], minlength=len(self.weight)
+        )
+        return on_visit - (self.mean @ unknown)[one.station]
+
     def variance_of_fit(self) -> Array:
         """a C a^T of each visit: the variance of its estimate, (v,)."""
         one = self.design
@@ -171,27 +179,25 @@ def solve(design: Design, weight: Array, observed: Array, ties: TieRows) -> Solu
         When the border is not positive definite.
     """
     matrix, total, mean = border_matrix(design, weight, ties)
-    n_stations, size, columns = design.n_stations, design.size, observed.shape[1]
-    weighted = weight[:, None] * observed
-    at_station = np.empty((n_stations, columns))
-    at_border = np.empty((size, columns))
-    for column in range(columns):
-        at_station[:, column] = np.bincount(design.station, weighted[:, column], minlength=n_stations)
-        at_border[:, column] = np.bincount(
-            design.entry_unknown, weighted[design.entry_visit, column] * design.entry_value, minlength=size
-        )
-    if len(ties.station):
-        at_station[:, 0] += np.bincount(ties.station, ties.weight * ties.value, minlength=n_stations)
-    at_border[:, 0] += design.prior_side
     border = _inverse(matrix)
-    unknown = border @ (at_border - mean.T @ at_station)
-    gravity = at_station / total[:, None] - mean @ unknown
-    fitted = gravity[design.station]
-    residual = observed - fitted
-    for column in range(columns):
-        residual[:, column] -= np.bincount(
-            design.entry_visit, design.entry_value * unknown[design.entry_unknown, column], minlength=len(weight)
+    gravity, unknown, residual = [], [], []
+    for column, values in enumerate(observed.T):
+        weighted = weight * values
+        at_station = np.bincount(design.station, weighted, minlength=design.n_stations)
+        at_border = 1.0 * np.bincount(
+            design.entry_unknown, weighted[design.entry_visit] * design.entry_value, minlength=design.size
         )
+        if column == 0:
+            at_border += design.prior_side
+            np.add.at(at_station, ties.station, ties.weight * ties.value)
+        answer = border @ (at_border - at_station @ mean)
+        level = at_station / total - mean @ answer
+        on_visit = np.bincount(
+            design.entry_visit, design.entry_value * answer[design.entry_unknown], minlength=len(weight)
+        )
+        gravity.append(level)
+        unknown.append(answer)
+        residual.append(values - level[design.station] - on_visit)
     return Solution(
         design=design,
         ties=ties,
@@ -200,9 +206,9 @@ def solve(design: Design, weight: Array, observed: Array, ties: TieRows) -> Solu
         mean=mean,
         border=border,
         border_matrix=matrix,
-        gravity=gravity,
-        unknown=unknown,
-        residual=residual,
+        gravity=np.column_stack(gravity),
+        unknown=np.column_stack(unknown),
+        residual=np.column_stack(residual),
     )
 
 
@@ -210,9 +216,10 @@ def _inverse(matrix: Array) -> Array:
     """Inverse of a symmetric positive definite matrix, its unknowns scaled to a unit diagonal first."""
     if len(matrix) == 0:
         return matrix
-    scale = 1.0 / np.sqrt(np.diagonal(matrix))
-    if not np.all(np.isfinite(scale)):
+    diagonal = matrix.diagonal()
+    if not (diagonal > 0.0).all():
         raise np.linalg.LinAlgError("the border of the network is not positive definite")
+    scale = 1.0 / np.sqrt(diagonal)
     root = np.linalg.cholesky(matrix * scale[:, None] * scale[None, :])
     inverse = np.linalg.inv(root) * scale[None, :]
     return inverse.T @ inverse

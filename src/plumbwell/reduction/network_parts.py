@@ -49,33 +49,22 @@ def network_parts(basis: DriftBasis, visits: Visits, ties: TieRows, *, n_station
     by_run: dict[int, list[int]] = {}
     for number in sorted(free, key=lambda one: basis.tares[one].time):
         by_run.setdefault(int(basis.tare_run[number]), []).append(number)
-    # Nodes: stations, then for each run its stretch before the first free tare, then one a free tare.
-    parent = np.arange(n_stations + n_runs + len(basis.tares) + 1)
-    all_ties = len(parent) - 1
-
-    def root(node: int) -> int:
-        while parent[node] != node:
-            parent[node] = parent[parent[node]]
-            node = int(parent[node])
-        return node
-
-    def join(a: int, b: int) -> None:
-        parent[max(root(a), root(b))] = min(root(a), root(b))
-
-    stretch = n_stations + visits.run
+    # Nodes: stations, then for each run its stretch before the first free tare, then one a free tare, then the ties.
+    all_ties = n_stations + n_runs + len(basis.tares)
+    # A visit that a tare falls into hangs on both stretches.
+    stretch, late = n_stations + visits.run, n_stations + visits.run
     for run, numbers in by_run.items():
         for number in numbers:
-            after = (visits.run == run) & (visits.last >= basis.tares[number].time)
-            stretch = np.where(after, n_stations + n_runs + number, stretch)
-    for pair in {*zip(visits.station.tolist(), stretch.tolist(), strict=True)}:
-        join(*pair)
-    for station in ties.station.tolist():
-        join(station, all_ties)
-    roots = np.array([root(node) for node in range(len(parent))])
+            mine, node = visits.run == run, n_stations + n_runs + number
+            stretch = np.where(mine & (visits.first >= basis.tares[number].time), node, stretch)
+            late = np.where(mine & (visits.last >= basis.tares[number].time), node, late)
+    one = np.concatenate([visits.station, visits.station, ties.station])
+    other = np.concatenate([stretch, late, np.full(len(ties.station), all_ties)])
+    roots = _joined(one, other, all_ties + 1)
     order: dict[int, int] = {}
-    for node in [*visits.station.tolist(), *ties.station.tolist()]:
-        order.setdefault(int(roots[node]), len(order))
-    part = np.array([order.get(int(one), -1) for one in roots])
+    for node in roots[one].tolist():
+        order.setdefault(node, len(order))
+    part = np.array([order.get(node, -1) for node in roots.tolist()])
     tied = np.zeros(len(order), dtype=bool)
     tied[part[ties.station]] = True
     of_run = np.where(np.isin(np.arange(n_runs), visits.run_order), part[n_stations : n_stations + n_runs], -1)
@@ -99,6 +88,19 @@ def network_parts(basis: DriftBasis, visits: Visits, ties: TieRows, *, n_station
         of_run=of_run,
         of_tare=of_tare,
     )
+
+
+def _joined(one: Index, other: Index, count: int) -> Index:
+    """For each of `count` nodes the lowest of those that edges from `one` to `other` join it to."""
+    lowest = np.arange(count)
+    while True:
+        before = lowest.copy()
+        np.minimum.at(lowest, other, lowest[one])
+        np.minimum.at(lowest, one, lowest[other])
+        # What a node points to may itself point lower: long chains of runs settle in few rounds.
+        lowest = lowest[lowest]
+        if np.array_equal(lowest, before):
+            return lowest
 
 
 def undetermined(design: Design, ties: TieRows, rank: Rank) -> DriftUnknown | None:

@@ -36,11 +36,12 @@ class Spread:
 
     def referred(self, datum: Index) -> Spread:
         """The spread of each quantity less its datum's; `datum` (n,) names the quantity, -1 where nothing is taken."""
-        if np.all(datum < 0):
-            return self
         taken = datum >= 0
-        columns = self.columns.copy()
-        columns[taken] -= self.columns[datum[taken]]
+        if not taken.any():
+            return self
+        columns = self.columns - np.where(taken[:, None], self.columns[datum], 0.0)
+        if not self.diagonal.any():
+            return Spread(diagonal=self.diagonal, columns=columns, signs=self.signs)
         diagonal = self.diagonal.copy()
         own = np.unique(datum[taken])
         shared = np.zeros((len(diagonal), own.size))
@@ -61,11 +62,6 @@ class Spread:
             columns=np.hstack([self.columns, other.columns]),
             signs=np.concatenate([self.signs, other.signs]),
         )
-
-
-def diagonal_spread(diagonal: Array) -> Spread:
-    """A spread without correlation."""
-    return Spread(diagonal=diagonal, columns=np.zeros((len(diagonal), 0)), signs=np.zeros(0))
 
 
 def low_rank(columns: Array, signs: Array | None = None) -> Spread:

@@ -27,6 +27,7 @@ from plumbwell.survey.instrument import Run
 from plumbwell.survey.places import Places, Ties
 from plumbwell.survey.readings import Readings
 
+NOWHERE = (np.nan, np.nan, np.nan)  # east, north, elevation of a station on the path
 ABOVE_ROUNDING = 1e-9  # m; depths come as decimal fractions, whose differences carry rounding
 
 
@@ -210,60 +211,59 @@ def placement(
         )
 
     # A label that is given is taken, so that a second place never borrows the name of another station.
-    names = readings.station.names
-    label_code = readings.station.code[order]
-    labelled = order[label_code >= 0]
-    rows_of: dict[int, list[int]] = {}
-    for row, code in zip(labelled.tolist(), readings.station.code[labelled].tolist(), strict=True):
-        rows_of.setdefault(code, []).append(row)
+    names, code_of = readings.station.names, readings.station.code
+    labelled = order[code_of[order] >= 0]
     stations.taken.update(names)
     lowered = depth.copy()
-    for code, rows_list in rows_of.items():
-        rows = np.array(rows_list)
-        name, place = names[code], place_of.get(names[code])
+    on_path = {} if places is None else dict(zip(places.station, np.isfinite(places.depth.values), strict=True))
+    surveyed_code = np.array([not on_path.get(name, True) for name in names], dtype=bool)
+    # A row that has neither depth nor place belongs nowhere.
+    active = labelled[used[labelled]]
+    active = active[~np.isnan(depth[active]) | surveyed_code[code_of[active]]]
+    founder = np.full(len(names), -1)
+    founder[code_of[active[::-1]]] = active[::-1]
+    labelled = labelled[founder[code_of[labelled]] >= 0]
+    beyond = np.abs(depth[labelled] - depth[founder[code_of[labelled]]]) > near
+    scattered = {*code_of[labelled[beyond & used[labelled]]].tolist()}
+    number_of = np.full(len(names), -1)
+    seen, at_first = np.unique(code_of[labelled], return_index=True)
+    for code in seen[np.argsort(at_first)].tolist():
+        name, first = names[code], int(founder[code])
+        place = place_of.get(name)
         role = "column" if place is None else places.role[place]  # type: ignore[union-attr]
-        active = rows[used[rows]]
-        if active.size == 0:
-            continue
-        if place is not None and np.isnan(places.depth.values[place]):  # type: ignore[union-attr]
-            first = active[0]
-            east, north, elevation, sd = surveyed(place)
-            stations.taken.discard(name)
-            number = stations.found(
-                name, role, int(first), np.nan, np.nan, east, north, elevation + above[first], sd
+        stations.taken.discard(name)
+        if surveyed_code[code]:
+            east, north, elevation, sd = surveyed(place_of[name])
+            number_of[code] = stations.found(
+                name, role, first, np.nan, np.nan, east, north, elevation + above[first], sd
             )
-            station[rows] = number
+            rows = labelled[code_of[labelled] == code]
             lowered[rows] = above[first] - above[rows]
             continue
-        sd = surveyed(place)[3] if place is not None else np.nan
-        founded: list[tuple[int, float]] = []
-        left = active
-        while left.size:
-            first = left[0]
-            if not founded:
-                stations.taken.discard(name)
-            number = stations.found(
-                name, role, int(first), mark[first], depth[first], np.nan, np.nan, np.nan, sd
-            )
-            if founded:
-                seconds.append(
-                    SecondPlace(
-                        label=name,
-                        second=stations.label[number],
-                        depth=founded[0][1],
-                        second_depth=float(depth[first]),
-                        row=int(first),
-                    )
-                )
+        sd = np.nan if place is None else surveyed(place)[3]
+        number_of[code] = number = stations.found(name, role, first, mark[first], depth[first], *NOWHERE, sd)
+        if code not in scattered:
+            continue
+        founded = [(number, float(depth[first]))]
+        left = active[code_of[active] == code]
+        while (left := left[np.abs(depth[left] - founded[-1][1]) > near]).size:
+            first = int(left[0])
+            number = stations.found(name, role, first, mark[first], depth[first], *NOWHERE, sd)
             founded.append((number, float(depth[first])))
-            here = np.abs(depth[left] - depth[first]) <= near
-            station[left[here]] = number
-            left = left[~here]
-        for row in rows[~used[rows]].tolist():
-            for number, at in founded:
-                if abs(depth[row] - at) <= near or np.isnan(depth[row]):
-                    station[row] = number
-                    break
+            seconds.append(
+                SecondPlace(
+                    label=name,
+                    second=stations.label[number],
+                    depth=founded[0][1],
+                    second_depth=founded[-1][1],
+                    row=first,
+                )
+            )
+        for row in labelled[beyond & (code_of[labelled] == code)].tolist():
+            station[row] = next((one for one, at in founded[1:] if abs(depth[row] - at) <= near), -1)
+    lost = np.isnan(depth[labelled]) & used[labelled] & ~surveyed_code[code_of[labelled]]
+    joins = labelled[~beyond & ~lost]
+    station[joins] = number_of[code_of[joins]]
     unplaced: list[str] = []
     if ties is not None:
         for name in ties.station:
@@ -276,7 +276,14 @@ def placement(
             assert places is not None
             at = float(places.depth.values[place])
             stations.taken.discard(name)
-            stations.found(name, places.role[place], -1, at, at, *surveyed(place))
+            number = stations.found(name, places.role[place], -1, at, at, *surveyed(place))
+            if name in names:
+                # Rows of that label are all out of use: they join where they can.
+                rows = np.flatnonzero(code_of == names.index(name))
+                rows = rows[~(np.abs(depth[rows] - at) > near)]
+                station[rows] = number
+                if np.isnan(at):
+                    lowered[rows] = -above[rows]
     _join_by_depth(stations, station, readings, order=order, mark=mark, depth=depth, near=near)
     values = np.array(stations.values, dtype=float).reshape(len(stations.label), 6)
     on_path = ~np.isnan(values[:, 1])
@@ -314,7 +321,7 @@ def _join_by_depth(
     near: float,
 ) -> None:
     """Rows without a label join the nearest station on the path within `near`, or found one."""
-    bare = order[readings.station.code[order] < 0]
+    bare = order[(readings.station.code[order] < 0) & ~np.isnan(depth[order])]
     if bare.size == 0:
         return
     standing = sorted((values[1], number) for number, values in enumerate(stations.values) if not np.isnan(values[1]))
@@ -336,12 +343,11 @@ def _join_by_depth(
             number = nearest(at)
             if number < 0:
                 number = stations.found(
-                    f"{mark[row]:.2f}", "column", row, mark[row], at, np.nan, np.nan, np.nan, np.nan
+                    f"{mark[row]:.2f}", "column", row, mark[row], at, *NOWHERE, np.nan
                 )
                 insort(standing, (at, number))
                 known.clear()
             known[at] = number
         station[row] = number
     for row in bare[~active].tolist():
-        if not np.isnan(depth[row]):
-            station[row] = nearest(float(depth[row]))
+        station[row] = nearest(float(depth[row]))
