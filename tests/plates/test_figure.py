@@ -18,6 +18,7 @@ from plumbwell.plates.figure import (
     write_png,
     write_svg,
 )
+from plumbwell.plates.ledger_excerpt import interval_excerpt
 from plumbwell.plates.lettering import ELLIPSIS, FAMILY, plate_family, text_placed
 from plumbwell.plates.plate import PlateFinding, PlateStation, SurveyPlate
 from plumbwell.plates.survey_tracks import survey_tracks
@@ -246,6 +247,7 @@ def test_the_svg_parses_and_holds_neither_bitmaps_nor_fonts(odd_plate):
     root = ElementTree.fromstring(svg_bytes(odd_plate, theme))
     tags = {element.tag.rpartition("}")[2] for element in root.iter()}
     assert root.attrib["viewBox"] == "0 0 {} {}".format(*figure_size(odd_plate, theme))
+    assert (root.attrib["width"], root.attrib["height"]) == tuple(map(str, figure_size(odd_plate, theme)))
     assert not tags & {"image", "text", "font", "linearGradient", "script"}
     assert {"path", "rect", "title"} <= tags
 
@@ -272,14 +274,63 @@ def test_the_log_is_shown_whole_unless_it_is_wild(invented, light):
     assert "0.010" in [text.drawn for text in _drawn(spiked, light)[1]]
 
 
-def test_findings_that_do_not_fit_are_counted(invented, light):
-    findings = tuple(
-        PlateFinding(severity="look", depth=10.0 * n, words=f"Finding number {n}.") for n in range(30)
+def _findings(count):
+    return tuple(
+        PlateFinding(severity="error" if n == 3 else "look", depth=10.0 * n, words=f"Finding number {n}.")
+        for n in range(count)
     )
-    words = [text.drawn for text in _drawn(invented(20, findings=findings), light)[1]]
+
+
+def test_the_plate_grows_until_every_finding_is_told(invented, light):
+    plate = invented(30, findings=_findings(8))
+    image, placed = _drawn(plate, light)
+    assert figure_size(invented(30, findings=()), light)[1] < image.height() <= 1440
+    words = [text.drawn for text in placed]
+    assert sum(word.startswith("Finding number") for word in words) == 8
+    assert not any(word.endswith(" more") for word in words)
+
+
+def test_findings_that_do_not_fit_are_counted(invented, light):
+    words = [text.drawn for text in _drawn(invented(20, findings=_findings(40)), light)[1]]
     told = sum(word.startswith("Finding number") for word in words)
-    assert 2 <= told < 30
-    assert f"{30 - told} more" in words
+    assert 2 <= told < 40
+    assert f"{40 - told} more" in words
+
+
+@pytest.mark.parametrize("rows", [52, 400], ids=["below a long ledger", "without a ledger"])
+def test_findings_without_any_room_are_counted_at_the_foot(invented, light, rows):
+    words = [text.drawn for text in _drawn(invented(rows, findings=_findings(8)), light)[1]]
+    assert not any(word.startswith("Finding") for word in words)
+    assert "8 findings, 1 error" in words
+
+
+def test_a_ratio_in_amber_has_its_mark(invented, light):
+    plate = invented(3)
+    rows = tuple(
+        replace(row, flagged=False, ratio=ratio)
+        for row, ratio in zip(plate.intervals, (2.9, -3.0, None), strict=True)
+    )
+    excerpt = interval_excerpt(replace(plate, intervals=rows))
+    assert excerpt.marks == (None, "look", None)
+
+
+def test_a_top_above_the_first_station_is_not_drawn_against_the_head_line(invented, light):
+    plate = invented(20)
+    first = plate.depth_range[0]
+    image, _ = _drawn(replace(plate, markers=(("Above", first - 1.0),)), light)
+    without, _ = _drawn(replace(plate, markers=()), light)
+    top = plate_layout(plate, light).body_top
+    right = range(image.width() - 200, image.width())
+    assert all(
+        image.pixelColor(x, y) == without.pixelColor(x, y) for y in range(top, top + 8) for x in right
+    )
+
+
+def test_depth_numbers_end_at_one_column(invented, light):
+    placed = _drawn(invented(60), light)[1]
+    body = [text for text in placed if text.words in ("200", "400", "800", "1\u00a0000", "1\u00a0200")]
+    rights = {round(text.needed.right(), 2) for text in body if text.needed.left() > 600}
+    assert len(rights) == 1
 
 
 def test_a_file_that_cannot_be_written_is_an_error(invented, light, tmp_path):

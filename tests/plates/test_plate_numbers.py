@@ -2,7 +2,15 @@
 
 import pytest
 
-from plumbwell.plates.numbers import column_decimals, constant, number, sd_decimals, step_decimals, with_sd
+from plumbwell.plates.numbers import (
+    column_decimals,
+    constant,
+    counted,
+    number,
+    sd_decimals,
+    step_decimals,
+    with_sd,
+)
 
 
 @pytest.mark.parametrize(
@@ -75,3 +83,8 @@ def test_value_and_standard_deviation_stand_together():
 )
 def test_neighbouring_ticks_can_be_told_apart(step, decimals):
     assert step_decimals(step) == decimals
+
+
+def test_one_of_a_kind_is_not_many():
+    assert [counted(count, "station") for count in (0, 1, 2)] == ["0 stations", "1 station", "2 stations"]
+    assert counted(1440, "row") == "1\u00a0440 rows"

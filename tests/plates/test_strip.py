@@ -141,3 +141,25 @@ def test_the_layer_that_the_depths_begin_in_is_named_at_their_beginning(qapp, li
         drawn(plate, light)
     names = [text.drawn for text in placed if text.drawn.isalpha()]
     assert names == ["Till", "Marl"]
+
+
+def test_no_sliver_is_left_between_a_top_and_the_station_beside_it(qapp, light):
+    plate = replace(layers(2.0, 2.9), markers=(("Marrow Shale", 99.1),))
+    image = drawn(plate, light)
+    edge, ground = CORE_LEFT + round(core_width(2.0)), QColor(light.roles["ground"])
+    row = round(FRAME.y(100.0))
+    assert image.pixelColor(CORE_LEFT + 2, row) == ground
+    assert image.pixelColor(CORE_LEFT + 2, row - 1) == light.tone(2.0)
+    assert image.pixelColor(edge, row - 1) == QColor(light.roles["ink"])
+
+
+def test_leaders_of_crowded_names_spread_beside_the_core(qapp, light):
+    plate = replace(layers(2.0, 2.4), markers=tuple((f"Seam {n}", 100.0 + 2 * n) for n in range(8)))
+    image = drawn(plate, light)
+    ground = QColor(light.roles["ground"])
+    start = CORE_LEFT + round(core_width(2.4)) + 7
+    rows = [
+        [y for y in range(60, 220) if image.pixelColor(x, y) != ground] for x in (start + 4, 120)
+    ]
+    reach = [found[-1] - found[0] for found in rows]
+    assert reach[1] > reach[0] + 20, "they slant apart over the whole way from the core to the names"

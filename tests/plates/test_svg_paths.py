@@ -1,13 +1,19 @@
 """SVG files made small show the same."""
 
+import xml.etree.ElementTree as ElementTree
+
 import pytest
-from PySide6.QtCore import QByteArray, QRectF
+from PySide6.QtCore import QBuffer, QByteArray, QIODevice, QRectF
 from PySide6.QtGui import QImage
-from PySide6.QtSvg import QSvgRenderer
+from PySide6.QtSvg import QSvgGenerator, QSvgRenderer
 
 from plumbwell.plates.figure import figure_image, svg_bytes
+from plumbwell.plates.lettering import draw_text
 from plumbwell.plates.painting import painting
 from plumbwell.plates.svg_paths import compact_svg
+from plumbwell.plates.svg_text import SvgText, leave_mark
+
+SVG, LINK = "{http://www.w3.org/2000/svg}", "{http://www.w3.org/1999/xlink}href"
 
 
 @pytest.mark.parametrize(
@@ -47,3 +53,24 @@ def test_the_svg_shows_what_the_image_shows(invented, light):
     ours, theirs = bytes(image.constBits()), bytes(grey.constBits())
     apart = sum(abs(a - b) > 40 for a, b in zip(ours, theirs, strict=True))
     assert apart < 0.004 * len(ours)
+
+
+def test_each_glyph_is_written_once_and_used(invented, light):
+    root = ElementTree.fromstring(svg_bytes(invented(20), light))
+    paths = {path.attrib["id"]: path.attrib["d"] for path in root.iter(f"{SVG}path") if "id" in path.attrib}
+    used = [use.attrib[LINK].removeprefix("#") for use in root.iter(f"{SVG}use")]
+    assert set(used) == set(paths)
+    assert len(set(paths.values())) == len(paths) < len(used) / 5
+    assert not any("-90000" in path.attrib["d"] for path in root.iter(f"{SVG}path")), "no mark is left"
+
+
+def test_a_text_outside_a_file_keeps_its_outlines(qapp, light):
+    buffer = QBuffer()
+    buffer.open(QIODevice.OpenModeFlag.WriteOnly)
+    generator = QSvgGenerator()
+    generator.setOutputDevice(buffer)
+    with painting(generator) as painter:
+        draw_text(painter, light, "2.431", x=10, baseline=20)
+    assert len(bytes(buffer.data().data())) > 2000
+    with pytest.raises(RuntimeError, match="svg_texts"):
+        leave_mark(painter, SvgText(glyphs=(), scale=1.0, x=0.0, baseline=0.0))

@@ -7,6 +7,9 @@ import numpy as np
 import pytest
 from scipy.stats import f as f_distribution
 
+from plumbwell.reduction.added_columns import sum_of_squares_with
+from plumbwell.reduction.design import design, visit_regressors
+from plumbwell.reduction.network import NO_TIES, solve
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run
 
@@ -126,3 +129,39 @@ def test_the_test_statistic_is_the_ratio_it_says():
     assert test.f == pytest.approx(ratio, rel=1e-6)
     assert test.p == pytest.approx(f_distribution.sf(ratio, 1, freedom), rel=1e-6)
     assert test.taken == (test.p < 0.01)
+
+
+@pytest.mark.parametrize("higher", [2, 3])
+def test_columns_added_to_a_solution_leave_what_solving_anew_leaves(higher):
+    """The quick comparison that surveys of many degrees of freedom take, at the same weights, prior included."""
+    rows = loop(np.random.default_rng(3), "ABCADEAFCAEBA", drift=curved(40 * UGAL, 6.5), **MAKE)
+    results = reduce(made_case(rows, instruments=(METER,), drift_order=1))
+    fit, parts = results.network.adjustment, results.network.parts
+    visits, weight = fit.visits, fit.noise.weight
+    regressors = visit_regressors(fit.basis, visits, weight)
+    whole = design(
+        fit.basis, visits, regressors, n_stations=len(results.stations), orders=(higher,), dropped=parts.dropped
+    )
+    anew = solve(whole, fit.solution.weight, fit.visit_mean[:, None], NO_TIES).sum_of_squares()
+    time = fit.basis.time(visits.rows)
+    powers = np.column_stack([time**power for power in range(2, higher + 1)])
+    columns = np.add.reduceat(weight[:, None] * powers, visits.start[:-1], axis=0)
+    factors = np.full(higher - 1, 1.0 / fit.basis.length[0])
+    quick = sum_of_squares_with(
+        fit.solution, np.arange(len(visits)), columns, prior=fit.design.priors[0], factors=factors
+    )
+    assert quick == pytest.approx(anew, rel=1e-9)
+    assert quick < 0.5 * fit.solution.sum_of_squares()
+    same = fit.basis.time(visits.rows[visits.start[:-1]])[:, None] * 0.0 + 1.0
+    assert sum_of_squares_with(fit.solution, np.arange(len(visits)), same, prior=None, factors=np.zeros(1)) is None
+
+
+def test_many_runs_are_tested_one_by_one_against_one_solution():
+    """Forty runs of which one is curved, over three hundred degrees of freedom: that one is raised."""
+    rows = []
+    for run in range(40):
+        drift = curved(60 * UGAL, 6.5) if run == 7 else (RATE, 0.0)
+        rows += loop(np.random.default_rng(100 + run), "ABCADEAFCAEBA", run=f"r{run}", drift=drift, **MAKE)
+    adjustment = adjusted(rows)
+    assert adjustment.reseating.freedom > 300
+    assert adjustment.orders[7] == 2 and sum(order > 1 for order in adjustment.orders) <= 4

@@ -145,7 +145,7 @@ def plain_layers(
     # Layers that each interval crosses: the first and the last, by the boundaries within it.
     first = np.searchsorted(-boundaries, -tops[given] + SLIVER, side="right") - 1
     last = np.searchsorted(-boundaries, -bases[given] - SLIVER, side="left") - 1
-    if np.array_equal(first, last) and len(np.unique(first)) == len(first):
+    if np.array_equal(first, last) and bool((np.diff(np.sort(first)) > 0).all()):
         return _alike(given, first, tops, bases, density, covariance, boundaries)
     resolution, groups = np.zeros(number), []
     for rows in _groups(first, last):
@@ -202,10 +202,14 @@ def _alike(
     """Layers that hold one interval each: they take its density, and nothing is solved."""
     number = len(boundaries) - 1
     values, resolution, source = np.full(number, np.nan), np.zeros(number), np.full(number, -1, dtype=np.intp)
-    spread = np.full((number, number), np.nan)
     values[layer], resolution[layer], source[layer] = density[given], 1.0, given
-    spread[np.ix_(layer, layer)] = covariance[np.ix_(given, given)]
-    residual = np.where(np.isin(np.arange(len(density)), given), 0.0, np.nan)
+    if number == len(density) and np.array_equal(layer, given):
+        spread = covariance.copy()
+    else:
+        spread = np.full((number, number), np.nan)
+        spread[np.ix_(layer, layer)] = covariance[np.ix_(given, given)]
+    residual = np.full(len(density), np.nan)
+    residual[given] = 0.0
 
     def weights(one: int) -> Array:
         if source[one] < 0:

@@ -6,6 +6,7 @@ clock.
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 
 from PySide6.QtCore import QBuffer, QIODevice, QRect, QSize
@@ -43,6 +44,7 @@ GAP = 12
 DEPTH_PAD = 8.0
 WIDEST_TITLE = 190.0
 METRE = 39.3701 * 96
+_SIZE = re.compile(rb'width="[^"]*mm" height="[^"]*mm"')
 
 
 def _draw_frame_text(painter: QPainter, plate: SurveyPlate, layout: Layout, theme: Theme) -> None:
@@ -253,7 +255,9 @@ def svg_bytes(plate: SurveyPlate, theme: Theme) -> bytes:
     generator.setDescription(plate.subtitle)
     with svg_texts() as texts, painting(generator) as painter:
         draw_figure(painter, plate, (width, height), theme)
-    return with_glyphs(compact_svg(bytes(buffer.data().data())), texts)
+    content = with_glyphs(compact_svg(bytes(buffer.data().data())), texts)
+    # In px, since millimetres are written too coarsely for a whole number of px.
+    return _SIZE.sub(f'width="{width}" height="{height}"'.encode(), content, count=1)
 
 
 # Packs a fifth faster than the default, into a file a twentieth larger.

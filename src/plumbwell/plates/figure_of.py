@@ -90,8 +90,13 @@ def survey_plate(results: Results) -> SurveyPlate:
     used = np.flatnonzero(column & np.isfinite(depth))
     return SurveyPlate(
         title=site.name,
-        subtitle=f"{counted(len(used), 'station')}, {counted(len(rows), 'interval')}, "
-        f"to {number(deepest, 0 if deepest >= ROUND_DEPTH else 1)} m",
+        subtitle=", ".join(
+            [
+                counted(len(used), "station"),
+                *([counted(len(rows), "interval")] if rows else []),
+                f"to {number(deepest, 0 if deepest >= ROUND_DEPTH else 1)} m",
+            ]
+        ),
         depth_label="MD" if measured else "TVD",
         intervals=tuple(rows),
         stations=tuple(

@@ -45,6 +45,7 @@ NAME_SPACING = 16
 KEY_HEIGHT = 62
 KEY_LOW, KEY_HIGH = 1.8, 3.2
 UNKNOWN_DENSITY = 2.2
+SLIVER = 1.5
 
 
 def core_width(density: float) -> float:
@@ -67,6 +68,20 @@ def _number_inset(theme: Theme, first: float, last: float) -> float:
 def _width(interval: PlateInterval) -> float:
     """Return the width of the core in an interval, in whole px; a middling one where no density is known."""
     return float(whole(core_width(UNKNOWN_DENSITY if interval.density is None else interval.density)))
+
+
+def _layer_row(
+    intervals: Sequence[PlateInterval], frame: Frame, depth: float
+) -> tuple[int, list[PlateInterval]]:
+    """Return the px row of a top and the intervals that meet there.
+
+    A station is seldom read just at a top; one a px from it stands for it, so that no sliver is left between.
+    """
+    y = frame.y(depth)
+    edges = [edge for interval in intervals for edge in (interval.top, interval.base)]
+    nearest = min(edges, key=lambda edge: abs(frame.y(edge) - y), default=depth)
+    at = nearest if abs(frame.y(nearest) - y) <= SLIVER else depth
+    return whole(frame.y(at)), [i for i in intervals if i.top - 1e-6 <= at <= i.base + 1e-6]
 
 
 def _draw_depths(painter: QPainter, frame: Frame, theme: Theme, graduation: Graduation, left: float) -> None:
@@ -125,10 +140,10 @@ def _draw_core(
     for line in ink:
         painter.fillRect(line, theme.colour("ink"))
     for depth in tops:
-        meeting = [i for i in intervals if i.top - 1e-6 <= depth <= i.base + 1e-6 and i.density is not None]
-        if meeting and intervals[0].top < depth < intervals[-1].base:
-            narrow = min(_width(interval) for interval in meeting)
-            hairline_across(painter, core, core + narrow, frame.y(depth), theme.colour("ground"))
+        row, meeting = _layer_row(intervals, frame, depth)
+        known = [_width(interval) for interval in meeting if interval.density is not None]
+        if known and whole(frame.y(intervals[0].top)) < row < whole(frame.y(intervals[-1].base)):
+            hairline_across(painter, core, core + min(known), row, theme.colour("ground"))
 
 
 def _draw_openings(painter: QPainter, frame: Frame, theme: Theme, left: float, *, plate: SurveyPlate) -> None:
@@ -211,8 +226,8 @@ def _draw_names(
     # Leaders slant right of the widest core, so that none crosses the free edge.
     core_right = left + CORE_LEFT + max((_width(interval) for interval in intervals), default=0.0)
     for (words, depth), row in zip(shown, rows, strict=True):
-        y = whole(frame.y(depth))
-        widths = [_width(i) for i in intervals if i.top - 1e-6 <= depth <= i.base + 1e-6]
+        y, meeting = _layer_row(intervals, frame, depth)
+        widths = [_width(interval) for interval in meeting]
         start, end = left + CORE_LEFT + max(widths, default=0.0) + 4, left + NAMES_LEFT - 4
         if abs(row - frame.y(depth) - 9) < 0.5:
             hairline_across(painter, start, end, y, theme.colour("strong"))

@@ -11,7 +11,6 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 from plumbwell.reduction.design import HIGHEST_ORDER
-from plumbwell.reduction.network import Solution
 
 CHANCE = 0.01
 LEAST_FREEDOM = 3
@@ -31,18 +30,18 @@ class OrderTest:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Fit:
-    """What the test needs of one choice of orders: its degrees of freedom and its own solution."""
+class Comparison:
+    """Weighted sums of squares of the visits by the lower and the higher order, and degrees of freedom of the higher."""
 
+    low: float
+    high: float
     freedom: int
-    solution: Solution
 
 
 def chosen_orders(
     start: tuple[int, ...],
     automatic: tuple[int, ...],
-    fit: Callable[[tuple[int, ...]], Fit | None],
-    sum_of_squares: Callable[[tuple[int, ...], Solution], float],
+    compare: Callable[[tuple[int, ...], int, int], Comparison | None],
 ) -> tuple[tuple[int, ...], tuple[OrderTest, ...]]:
     """The orders that the F tests keep, run by run.
 
@@ -52,10 +51,9 @@ def chosen_orders(
         Orders to start from: 1 for automatic runs, the given ones for others.
     automatic : tuple of int
         Run codes to be tested, in time order.
-    fit : callable
-        Orders -> the fit with its own variance components, or None where the order is not determined.
-    sum_of_squares : callable
-        (orders, solution whose weights hold) -> weighted sum of squares of visit means.
+    compare : callable
+        (orders, run code, higher order of that run) -> both fits compared with the weights of the higher one, or
+        None where the higher order is not determined.
     """
     from scipy.special import fdtrc
 
@@ -63,21 +61,15 @@ def chosen_orders(
     tests: list[OrderTest] = []
 
     def test(run: int, lower: int, higher: int) -> bool:
-        trial = orders.copy()
-        trial[run] = higher
-        above = fit(tuple(trial))
-        if above is None or above.freedom < LEAST_FREEDOM:
+        found = compare(tuple(orders), run, higher)
+        if found is None or found.freedom < LEAST_FREEDOM or found.high <= 0.0:
             return False
         steps = higher - lower
-        s_low = sum_of_squares(tuple(orders), above.solution)
-        s_high = above.solution.sum_of_squares()
-        if s_high <= 0.0:
-            return False
-        f = max(s_low - s_high, 0.0) / steps / (s_high / above.freedom)
-        p = float(fdtrc(steps, above.freedom, f))
+        f = max(found.low - found.high, 0.0) / steps / (found.high / found.freedom)
+        p = float(fdtrc(steps, found.freedom, f))
         tests.append(
             OrderTest(
-                run=run, lower=lower, higher=higher, f=f, freedom=(steps, above.freedom), p=p, taken=p < CHANCE
+                run=run, lower=lower, higher=higher, f=f, freedom=(steps, found.freedom), p=p, taken=p < CHANCE
             )
         )
         return p < CHANCE

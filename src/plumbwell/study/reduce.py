@@ -107,13 +107,13 @@ def reduce(
     readings, site, instruments = survey.readings, survey.site, survey.instruments
     utc = keep(utc_time, readings, instruments)
     depths = keep(row_depths, readings, survey.runs, survey.places)
-    placed = keep(
+    placed = keep.settled(
         placement, readings, depths, survey.places, survey.ties, utc=utc.values, same_place=chosen.same_place
     )
     path = keep(well_path, survey.path, north_correction=site.north_correction)
     where = keep(located, placed, depths, path, site)
     station = where.placement.station
-    stays = keep(visits, readings, station, utc=utc.values, visit_gap=chosen.visit_gap)
+    stays = keep.settled(visits, readings, station, utc=utc.values, visit_gap=chosen.visit_gap)
     if len(stays) == 0:
         raise SurveyError("no reading in use belongs to a station: nothing can be reduced")
     done("stations", 0.1)
@@ -151,7 +151,7 @@ def reduce(
     noise = keep(_noise_terms, readings, instruments, estimate=chosen.noise == "estimate")
     orders = keep(_orders, readings, survey.runs, stays, chosen.drift_order)
     counts = keep(_visit_counts, stays, len(where.placement.label))
-    pairs = keep(
+    pairs = keep.settled(
         interval_pairs, where.positions, where.placement.role, network.of_station, counts,
         min_thickness=chosen.min_thickness,
     )
