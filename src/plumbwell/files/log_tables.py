@@ -262,7 +262,8 @@ def _column(
 
 def _check_densities(curves: _Curves, curve: _Curve, column: Column, collected: Collected) -> None:
     out = (column.values <= 0.0) | (column.values > DENSEST)
-    marks = np.isin(curve.values, NULL_MARKS)  # told of already
+    # Marks of what is missing were told of already.
+    marks = np.isin(column.values if curve.values is None else curve.values, NULL_MARKS)
     rows = np.flatnonzero(out & ~marks).tolist()
     if rows:
         lines = [int(curves.lines[row]) for row in rows]

@@ -8,9 +8,11 @@ from datetime import date, datetime, time, tzinfo
 from typing import Any
 
 from plumbwell.files.collected import Collected
+from plumbwell.files.label_texts import unfit_label
 from plumbwell.files.statements import LogStatement, NamedFile, Statements, TareStatement
 from plumbwell.files.times import EXPECTED, ZoneUnknown, times_of, zone
 from plumbwell.files.toml_tables import TomlTable, finite, parse_toml, written
+from plumbwell.survey.errors import shown
 from plumbwell.survey.instrument import Instrument, Run
 from plumbwell.survey.recipe import (
     KEYS,
@@ -27,7 +29,8 @@ FILE = "survey.toml"
 FORMAT = "plumbwell-survey/1"
 MILLIGAL = 1e-5
 MILLIGAL_PER_HOUR = MILLIGAL / 3600.0
-YEAR = 366 * 86400.0  # s
+DAY = 86400.0  # s; a clock farther off is a wrong date
+LONGEST_NAME = 1000  # characters of the path of a file
 LOWEST, HIGHEST = -12000.0, 9000.0  # m: deepest sea floor and hole, highest ground
 TABLES = ("readings", "places", "ties", "path", "markers", "tide", "ocean_loading")
 NOT_APPLIED = ("openings", "bodies", "gradients")
@@ -193,13 +196,15 @@ def _instruments(top: TomlTable) -> tuple[tuple[Instrument, ...], dict[str, Name
     instruments, calibrations = [], {}
     for name in under.values:
         table = under.table(name)
+        if (wrong := unfit_label(name)) is not None:
+            under.problem(shown(name), found=wrong.found, expected=wrong.expected, mend=wrong.mend)
         kind = table.text("kind", "gravimeter", choices=("gravimeter", "gradiometer")) or "gravimeter"
         if (file := _named_file(table, "calibration")) is not None:
             calibrations[name] = file
         numbers: dict[str, Any] = {
             "scale": table.number("scale", 1.0, least=0.0, most=1e6, above=True),
             "scale_sd": table.number("scale_sd", 0.0, least=0.0),
-            "clock_ahead": table.number("clock_ahead", 0.0, unit="s", least=-YEAR, most=YEAR),
+            "clock_ahead": table.number("clock_ahead", 0.0, unit="s", least=-DAY, most=DAY),
         }
         for key, factor, least in (
             ("reading_floor", MILLIGAL, True),
@@ -300,7 +305,7 @@ def _tares(top: TomlTable, local: tzinfo | None) -> tuple[TareStatement, ...]:
 
 
 def _named_file(table: TomlTable, key: str) -> NamedFile | None:
-    name = table.text(key)
+    name = table.text(key, longest=LONGEST_NAME)
     return None if name is None else NamedFile(key=table.place(key), name=name, row=table.row(key))
 
 
@@ -377,6 +382,10 @@ def _recipe(table: TomlTable) -> tuple[Recipe, frozenset[str]]:
                 expected="one of the keys of [recipe]",
                 mend=f'write "{near}", if that is meant, or remove the key' if near else "remove the key",
             )
+            continue
+        wrong = unfit_label(value) if isinstance(value, str) else None
+        if wrong is not None:
+            table.problem(key, found=wrong.found, expected=wrong.expected, mend=wrong.mend)
             continue
         try:
             changed[key] = from_written(key, value)

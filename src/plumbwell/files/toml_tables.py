@@ -14,6 +14,7 @@ from difflib import get_close_matches
 from typing import Any
 
 from plumbwell.files.collected import Collected
+from plumbwell.files.label_texts import MAXIMUM_LABEL, unfit_label
 from plumbwell.files.paths import UnfitFile, text_of
 from plumbwell.files.text_table import physical_lines
 from plumbwell.survey.errors import shown
@@ -23,6 +24,9 @@ _KEY = re.compile(
     r"\s*((?:[A-Za-z0-9_\-]+|\"[^\"]*\"|'[^']*')(?:\s*\.\s*(?:[A-Za-z0-9_\-]+|\"[^\"]*\"|'[^']*'))*)\s*="
 )
 _PART = re.compile(r"\"([^\"]*)\"|'([^']*)'|([^\s.\"']+)")
+MISSPELT = 0.8
+"""Likeness (Ratcliff and Metzener 1988) from which an unknown key is a known one misspelt."""
+
 _PLACE = re.compile(r"\s*\(at (?:line (\d+), column (\d+)|end of document)\)")
 
 Lines = dict[tuple[str, ...], int]
@@ -172,15 +176,25 @@ class TomlTable:
         if number is None or number < least or number > most or (above and number == least):
             expected = "a number" + (f" in {unit}" if unit else "")
             if math.isfinite(least) and math.isfinite(most):
-                expected += f" from {least:g} to {most:g}"
+                expected += f" above {least:g}, at most {most:g}" if above else f" from {least:g} to {most:g}"
             elif math.isfinite(least):
                 expected += f" above {least:g}" if above else f" of {least:g} or more"
             self.wrong(key, expected, mend)
             return default
         return number
 
-    def text(self, key: str, default: str | None = None, *, choices: tuple[str, ...] = ()) -> str | None:
-        """A text, not empty, one of the choices if there are any; the default when missing or wrong."""
+    def text(
+        self,
+        key: str,
+        default: str | None = None,
+        *,
+        choices: tuple[str, ...] = (),
+        longest: int = MAXIMUM_LABEL,
+    ) -> str | None:
+        """A text, not empty, one of the choices if there are any; the default when missing or wrong.
+
+        A text with control characters, or of more than `longest` characters, is a problem.
+        """
         if not self.has(key):
             return default
         value = self.values[key]
@@ -188,7 +202,12 @@ class TomlTable:
         if not isinstance(value, str) or not value.strip() or (choices and value not in choices):
             self.wrong(key, words or "a text in quotes")
             return default
-        return value if choices else value.strip()
+        if choices:
+            return value
+        if (wrong := unfit_label(value.strip(), longest)) is not None:
+            self.problem(key, found=wrong.found, expected=wrong.expected, mend=wrong.mend)
+            return default
+        return value.strip()
 
     def texts(self, key: str, *, choices: tuple[str, ...] = ()) -> tuple[str, ...]:
         """A list of texts; empty when it is missing or wrong."""
@@ -235,21 +254,39 @@ class TomlTable:
         return TomlTable(values, title, path, file=self.file, lines=self.lines, collected=self.collected)
 
     def tell_unknown(self, also: Iterable[str] = ()) -> None:
-        """Tell of every key that nobody asked for, with the nearest known one."""
-        known = self.asked | set(also)
-        for key in self.values:
+        """Tell of every key or table that nobody asked for; one that is spelt nearly like a known one is a problem."""
+        known = sorted(self.asked | set(also))
+        for key, value in self.values.items():
             if key in known:
                 continue
-            near = get_close_matches(key.lower(), sorted(known), n=1, cutoff=0.6)
+            title = self._title_of(key, value)
+            what = f'the key "{shown(key)}"' + (f" in {self.title}" if self.title else " outside any table")
+            if title is not None:
+                what = f"the table {title}"
+            if near := get_close_matches(key.lower(), known, n=1, cutoff=MISSPELT):
+                self.problem(
+                    key,
+                    found=f"{what}, which is not known",
+                    expected=f'"{near[0]}", if that is meant' if title is None else f"[{near[0]}], if that is meant",
+                    mend="correct its spelling, or remove it, since it would have no effect",
+                )
+                continue
             place = self.file if self.row(key) is None else f"{self.file}, row {self.row(key)}"
-            where = f"in {self.title}" if self.title else "outside any table"
             self.collected.note(
                 "unknown_key",
                 "look",
                 f"{place}, {shown(self.place(key))}",
-                f'the key "{shown(key)}" {where} is not known and has no effect',
-                f'perhaps "{near[0]}" is meant' if near else "remove it, or correct its spelling",
+                f"{what} is not known and has no effect",
+                "remove it, or correct its spelling",
             )
+
+    def _title_of(self, key: str, value: Any) -> str | None:
+        """A table's title as it is written, [a.b] or [[a]]; None for a plain key."""
+        dotted = shown(".".join((*self.path, key)))
+        if isinstance(value, dict):
+            return f"[{dotted}]"
+        tables = isinstance(value, list) and bool(value) and all(isinstance(one, dict) for one in value)
+        return f"[[{dotted}]]" if tables else None
 
 
 def finite(value: Any) -> float | None:

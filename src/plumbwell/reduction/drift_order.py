@@ -31,7 +31,7 @@ class OrderTest:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Comparison:
-    """Weighted sums of squares of the visits by the lower and the higher order, and degrees of freedom of the higher."""
+    """Weighted sums of squares of the visits by the lower and higher order, and degrees of freedom of the higher."""
 
     low: float
     high: float

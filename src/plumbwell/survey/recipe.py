@@ -100,7 +100,7 @@ KEYS: dict[str, RecipeKey] = {
             source="Heiskanen & Moritz 1967 (Bruns)",
         ),
         RecipeKey(
-            key="gradient_sd", label="Sd of the normal gradient", unit="mGal/m", factor=MILLIGAL, least=0.0,
+            key="gradient_sd", label="Sd of the normal gradient", unit="mGal/m", factor=MILLIGAL, least=0.0, most=0.01,
             what="sd of the normal gradient as a model of the local one; common to all intervals",
             source="common practice",
         ),
@@ -189,7 +189,7 @@ KEYS: dict[str, RecipeKey] = {
         ),
         RecipeKey(
             key="layer_boundaries", label="Layer boundaries", words=("auto", "stations", "markers"), unit="m",
-            factor=1.0, least=0.0, above=True,
+            factor=1.0, least=0.1,
             what="where layers part: markers if any, else stations; or a step in m", source="common practice",
         ),
         RecipeKey(
@@ -235,22 +235,26 @@ def expected_of(key: str) -> str:
     if key == "datum_station":
         return "the label of a station"
     if key == "free_air":
-        return '"normal" or { gradient = ..., sd = ... } in mGal/m'
+        return '"normal" or { gradient = 0.3072, sd = 0.0004 } in mGal/m, gradient above 0 and under 1, sd 0 to 0.1'
     parts = [f'"{word}"' if isinstance(word, str) else str(word) for word in one.words]
     if one.factor is not None:
         number = "a number" + (f" in {one.unit}" if one.unit else "")
         if one.least > -math.inf:
             number += f" {'above' if one.above else 'from'} {one.least:g}"
         if one.most < math.inf:
-            number += f" to {one.most:g}"
+            number += f"{', at most' if one.above else ' to'} {one.most:g}"
         parts.append(number)
     return ", ".join(parts[:-1]) + " or " + parts[-1] if len(parts) > 1 else parts[0]
 
 
 def _number(value: Any) -> float | None:
-    if isinstance(value, bool) or not isinstance(value, (int, float)) or not math.isfinite(value):
+    if isinstance(value, bool) or not isinstance(value, (int, float)):
         return None
-    return float(value)
+    try:
+        number = float(value)
+    except OverflowError:
+        return None
+    return number if math.isfinite(number) else None
 
 
 def from_written(key: str, value: Any) -> Any:
@@ -275,7 +279,9 @@ def from_written(key: str, value: Any) -> Any:
         raise ValueError(expected_of(key))
     if key == "free_air" and isinstance(value, dict):
         gradient, sd = _number(value.get("gradient")), _number(value.get("sd"))
-        if set(value) != {"gradient", "sd"} or gradient is None or sd is None or not 0.0 < gradient < 1.0 or sd < 0.0:
+        if gradient is None or sd is None or set(value) != {"gradient", "sd"}:
+            raise ValueError(expected_of(key))
+        if not 0.0 < gradient < 1.0 or not 0.0 <= sd <= 0.1:
             raise ValueError(expected_of(key))
         return (gradient * MILLIGAL, sd * MILLIGAL)
     if not isinstance(value, bool) and value in one.words and not isinstance(value, float):
