@@ -7,6 +7,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from plumbwell.reduction.design import DriftUnknown
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Tare
 
@@ -148,12 +149,17 @@ def test_a_tare_that_parts_a_run_gives_each_stretch_its_datum():
 
 
 def test_a_tare_in_the_middle_of_a_visit_does_not_part_the_run():
-    # No station is read on both sides but in that visit: its mean cannot tell the jump, which is held and named.
+    # No station is read on both sides but in that visit: its readings before and after tell the jump.
     rows = rows_of("ABCDEF", counts=(4,), drift=())
-    tares = (Tare(run="1", time=rows[10].time),)
-    results = reduced(rows, tares=tares, drift_order=0)
-    assert results.network.parts.count == 1
-    assert [one.kind for one in results.network.adjustment.design.lost] == ["tare"]
+    rows = [replace(row, reading=row.reading + 0.1 * MGAL * (row.time >= rows[10].time)) for row in rows]
+    results = reduced(rows, tares=(Tare(run="1", time=rows[10].time),), drift_order=0)
+    fit = results.network.adjustment
+    assert results.network.parts.count == 1 and fit.design.lost == ()
+    size, sd = fit.unknown(DriftUnknown(kind="tare", run=0, tare=0))
+    assert abs(size - 0.1 * MGAL) < 4 * sd
+    # Two readings before it and two after, no re-seating between: e of one reading, and nothing of u.
+    assert sd == pytest.approx(fit.noise.sd[0], rel=1e-9)
+    assert fit.noise.sd[0] < 6 * UGAL  # the jump is no reading noise
     # With a return to either side it is told apart from everything else.
     jumped = rows_of("ABCDEFBDF", counts=(4,), drift=(), reading_noise=0.0, reseating=0.0)
     jumped = [replace(row, reading=row.reading + 0.1 * MGAL * (row.time >= jumped[10].time)) for row in jumped]

@@ -155,6 +155,11 @@ B = Instrument(
 )
 
 
+def next_stop(rows, n):
+    """Time of the first reading of the stop after row n: a jump there breaks no visit."""
+    return next(row.time for row in rows[n:] if row.station != rows[n].station)
+
+
 def scenario(name):
     """Rows and statements of one small network: (rows, keywords, orders, parts, tied)."""
     chance = np.random.default_rng(sum(map(ord, name)))
@@ -188,8 +193,8 @@ def scenario(name):
             return both, {"tares": tares}, {"1": 1, "2": 1}, all_six, [False]
         case "stated tare":
             tares = (
-                Tare(run="1", time=plain[8].time, size=20 * UGAL, size_sd=5 * UGAL),
-                Tare(run="2", time=second[9].time),
+                Tare(run="1", time=next_stop(plain, 8), size=20 * UGAL, size_sd=5 * UGAL),
+                Tare(run="2", time=next_stop(second, 9)),
             )
             return both, {"tares": tares}, {"1": 1, "2": 1}, all_six, [False]
         case "held tare":

@@ -11,7 +11,7 @@ import numpy as np
 
 from plumbwell.files.collected import Collected
 from plumbwell.files.log_tables import read_log
-from plumbwell.files.paths import MEBIBYTE, UnfitFile, inside, named_bytes, plain_bytes
+from plumbwell.files.paths import MEBIBYTE, MISSING_MEND, UnfitFile, inside, named_bytes, plain_bytes
 from plumbwell.files.readings_table import read_readings
 from plumbwell.files.side_tables import (
     read_calibration,
@@ -23,7 +23,7 @@ from plumbwell.files.side_tables import (
 )
 from plumbwell.files.statements import NamedFile, Statements
 from plumbwell.files.survey_toml import FILE, read_statements
-from plumbwell.files.text_table import TextTable, read_table
+from plumbwell.files.text_table import TextTable, plain_name, read_table
 from plumbwell.files.times import iso
 from plumbwell.survey.errors import InputError, Problem, SurveyError, shown
 from plumbwell.survey.instrument import Calibration, Instrument, Tare
@@ -32,6 +32,7 @@ from plumbwell.survey.readings import Readings
 from plumbwell.survey.survey import InputFile, Survey
 
 USUAL = ("places", "ties", "path", "markers", "openings", "bodies", "gradients")
+LONGEST_PATH = 300  # characters of a path as typed
 ROWS_ARE = {"tide": "tide values", "ocean_loading": "loading values", "path": "path points"}
 
 
@@ -130,34 +131,33 @@ def read_survey(path: str | os.PathLike[str]) -> Survey:
 
 def _open(path: str | os.PathLike[str]) -> tuple[Path, bytes]:
     """The resolved survey folder and the bytes of its survey.toml."""
-    file = FILE
+    file = shown(path, LONGEST_PATH)
+    mend = "name the folder that holds survey.toml; plumbwell new DIR writes one to start from"
     try:
         given = Path(path)
         named = given.name.lower() == FILE and not given.is_dir()
         folder = (given.parent if named else given).resolve()
         if named or folder.is_dir():
+            file = FILE
             return folder, plain_bytes(inside(folder, FILE), largest=MEBIBYTE)
-        file, found = shown(given.name or given), "no such folder"
-        if folder.exists():
-            found = "a file that is not survey.toml"
-        refused = UnfitFile(found, "a survey folder", "name the folder that holds survey.toml")
+        found = "a file that is not survey.toml" if folder.exists() else "no such folder"
+        refused = UnfitFile(found, "a survey folder", mend)
     except UnfitFile as unfit:
         refused = unfit
+        if unfit.mend == MISSING_MEND:
+            file = shown(given if named else given / FILE, LONGEST_PATH)
+            refused.mend = f"put the file there; or {mend}"
     except (OSError, ValueError):
-        found = f'"{shown(path)}", which cannot be opened'
-        refused = UnfitFile(found, "a survey folder", "name the folder that holds survey.toml")
-    raise InputError(
-        [
-            Problem(
-                file=file,
-                row=refused.row,
-                column=None,
-                found=refused.found,
-                expected=refused.expected,
-                mend=refused.mend,
-            )
-        ]
+        refused = UnfitFile("a name that cannot be opened", "a survey folder", mend)
+    problem = Problem(
+        file=file,
+        row=refused.row,
+        column=None,
+        found=refused.found,
+        expected=refused.expected,
+        mend=refused.mend,
     )
+    raise InputError([problem])
 
 
 def _check_unread(folder: Path, statements: Statements, collected: Collected) -> None:
@@ -214,9 +214,19 @@ def _calibrated(
 
 
 def _check_stations(readings: Readings, places: Places | None, unread: bool, collected: Collected) -> None:
-    """A used row without a depth needs a station, and one that places.csv has."""
+    """Rows are in use, and a used row without a depth needs a station, one that places.csv has."""
+    if not readings.use.any():
+        collected.problem(
+            readings.raw.file,
+            None,
+            "use",
+            found="no reading in use belongs to a station",
+            expected="rows in use, each with a depth or a station",
+            mend="write yes under use in the rows that count",
+        )
     heading = "depth [m]" if readings.depth.origin is None else shown(readings.depth.origin.heading)
     known = set(places.station) if places is not None else set()
+    alike = {plain_name(name): name for name in known}
     placed = np.array([cell != "" for cell in _cells(readings)], dtype=bool)
     for row in np.flatnonzero(readings.use & ~placed).tolist():
         station = readings.station[row]
@@ -237,10 +247,35 @@ def _check_stations(readings: Readings, places: Places | None, unread: bool, col
                 found=f'no depth for the station "{shown(station)}"'
                 + ("" if places is None else ", which places.csv does not have"),
                 expected="a depth, or a row of places.csv for the station",
-                mend=f'write the depth, or give "{shown(station)}" a row in places.csv, named under [data]',
+                mend=_alike_mend(station, alike)
+                or f'write the depth, or give "{shown(station)}" a row in places.csv, named under [data]',
             )
         if collected.full(readings.raw.file):
             break
+    if places is not None:
+        _tell_places_alike(readings, places, collected)
+
+
+def _tell_places_alike(readings: Readings, places: Places, collected: Collected) -> None:
+    """Stations of the readings whose labels differ from that of a place only by case or blanks are told."""
+    alike = {plain_name(name): name for name in places.station}
+    for name in readings.station.names:
+        place = alike.get(plain_name(name), name)
+        if place != name and place not in readings.station.names and name not in places.station:
+            collected.note(
+                "labels_alike",
+                "look",
+                f"{readings.raw.file}, station",
+                f'the station "{shown(name)}" and the place "{shown(place)}" differ only by case or blanks and count '
+                "as two",
+                "write them alike, if they are the same place",
+            )
+
+
+def _alike_mend(name: str, alike: dict[str, str]) -> str | None:
+    """How to mend a label that differs from a known one only by case or blanks; None where there is none."""
+    near = alike.get(plain_name(name))
+    return None if near is None else f'write "{shown(near)}", which differs only by case or blanks, if that is meant'
 
 
 def _cells(readings: Readings) -> tuple[str, ...]:
@@ -383,6 +418,7 @@ def _check_named_stations(
     }  # the second place of a label, where rows lie far apart
     names = ", ".join(f'"{shown(name)}"' for name in sorted(written)[:12])
     expected = f"a station of the readings or of places.csv, such as {names}"
+    alike = {plain_name(name): name for name in sorted(written)}
     mend = "correct the label; case and blanks count"
     if ties is not None:
         assert ties.gravity.origin is not None
@@ -394,7 +430,7 @@ def _check_named_stations(
                     "station",
                     found=f'"{shown(name)}"',
                     expected=expected,
-                    mend=mend,
+                    mend=_alike_mend(name, alike) or mend,
                 )
     datum = statements.recipe.datum_station
     if datum is not None and datum not in known:
@@ -404,7 +440,7 @@ def _check_named_stations(
             "[recipe] datum_station",
             found=f'"{shown(datum)}"',
             expected=expected,
-            mend=mend,
+            mend=_alike_mend(datum, alike) or mend,
         )
 
 

@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from plumbwell.files.collected import Collected, first_rows
+from plumbwell.files.label_texts import unfit_label
 from plumbwell.files.number_cells import MEND_MISSING, MEND_TEXT, BadCell, numbers_of
 from plumbwell.files.text_table import FORMULA_MARKS, TextTable, heading_parts
 from plumbwell.survey.column import Array, Column, Origin, constant_column, frozen
@@ -242,10 +243,11 @@ def measured(
             if cells[row] == ""
         ]
     report_bad(matched, name, bad, expected, counted, collected)
+    marks = _refuse_sentinels(matched, name, values, counted, collected, required=required and use is not None)
     low = (values < least) | (above & (values == least))
     si = values * written.factor + written.offset
     reach = REACH_OF_DEPTH if name == "depth" else REACH[written.dimension]
-    for row in np.flatnonzero(counted & (low | (np.abs(si) > reach))).tolist():
+    for row in np.flatnonzero(counted & ~marks & (low | (np.abs(si) > reach))).tolist():
         most = (reach - written.offset) / written.factor
         expected = f"a number above {least:g}" if above else f"a number of {least:g} or more"
         collected.problem(
@@ -256,7 +258,6 @@ def measured(
             expected=expected if low[row] else f"a number of at most {most:.6g} {written.label} in size",
             mend="correct the value, or the unit in the heading" if not low[row] else "correct the value",
         )
-    _refuse_sentinels(matched, name, values, counted, collected, required=required and use is not None)
     return Column(key=name, unit=written.dimension, values=frozen(si), origin=matched.origin(name))
 
 
@@ -296,27 +297,59 @@ def _refuse_sentinels(
     collected: Collected,
     *,
     required: bool,
-) -> None:
-    """Marks for a missing value (-999.25 ...) that repeat, far from all other values, are problems."""
+) -> NDArray[np.bool_]:
+    """Marks for a missing value (-999.25 ...), far from all other values, are problems; True in their rows.
+
+    A negative mark need not repeat.
+    """
+    refused = np.zeros(len(values), dtype=bool)
     known = values[counted & ~np.isnan(values)]
     if not np.isin(known, SENTINELS).any():
-        return
+        return refused
     others = known[~np.isin(known, SENTINELS)]
     if not len(others):
-        return
+        return refused
     low, high = float(others.min()), float(others.max())
     reach = max(high - low, 1e-3 * max(abs(low), abs(high)))
     for mark in SENTINELS:
         rows = np.flatnonzero(counted & (values == mark)).tolist()
-        if len(rows) > 1 and not low - reach <= mark <= high + reach:
+        if len(rows) > (mark > 0.0) and not low - reach <= mark <= high + reach:
+            refused[rows] = True
             lines = [int(matched.table.lines[row]) for row in rows]
+            many = f" in {len(rows)} rows ({first_rows(lines)})" if len(rows) > 1 else ""
             collected.problem(
                 matched.table.file,
                 lines[0],
                 matched.heading(name),
-                found=f"{mark:g} in {len(rows)} rows ({first_rows(lines)}), far from all other values",
+                found=f"{mark:g}{many}, far from all other values",
                 expected="an empty cell where there is no value",
-                mend="empty these cells, or set use = no in these rows" if required else "empty these cells",
+                mend=_empty_mend(len(rows), required),
+            )
+    return refused
+
+
+def _empty_mend(rows: int, required: bool) -> str:
+    cells, where = ("this cell", "this row") if rows == 1 else ("these cells", "these rows")
+    return f"empty {cells}, or set use = no in {where}" if required else f"empty {cells}"
+
+
+def refuse_unfit(
+    matched: Matched, name: str, collected: Collected, *, use: NDArray[np.bool_] | None = None
+) -> None:
+    """Labels with control characters, or without end, are problems in rows that count."""
+    unfit = {cell: wrong for cell in set(matched.cells(name)) if (wrong := unfit_label(cell)) is not None}
+    if not unfit:
+        return
+    for row, cell in enumerate(matched.cells(name)):
+        if cell in unfit and (use is None or use[row]):
+            wrong = unfit[cell]
+            collected.problem(
+                matched.table.file,
+                int(matched.table.lines[row]),
+                matched.heading(name),
+                found=wrong.found,
+                expected=wrong.expected,
+                mend=wrong.mend,
             )
 
 

@@ -23,7 +23,8 @@ latitude = 51.3170          # deg, geodetic, WGS84, north positive
 longitude = 6.0480          # deg, east positive
 ground_elevation = 64.20    # m above sea level: ground above the collar; rock counts from it
 collar_elevation = 64.20    # m above sea level: where the hole starts; depth and path count from it
-depth_datum_height = 1.10   # m, zero of measured depth above the collar (rig floor, top of casing)
+depth_datum_height = 1.10   # m, height above the collar of the depth datum, the point from which depth is
+                            # measured (rig floor, top of casing)
 geoid_height = 46.0         # m, ellipsoidal height less elevation
 # water_depth = 0.0         # m of sea or lake above the ground at the collar
 north = "true"              # of azimuths in path.csv: "true", "grid" or "magnetic"
@@ -32,15 +33,24 @@ north = "true"              # of azimuths in path.csv: "true", "grid" or "magnet
 [instrument.A]              # as many as were used; the column `instrument` of readings.csv names one
 kind = "gravimeter"
 applied = []                # what readings hold already: "tide", "tilt", "temperature", "pressure", "drift"
-# calibration = "calibration_A.csv"   # counter [counts], gravity [mGal]; needed when readings are in counts
 # scale = 1.0               # factor on every reading
 # scale_sd = 0.0            # its standard deviation
 # clock_ahead = 0.0         # s, instrument clock less UTC
 # reading_floor = 0.002     # mGal, no single reading is believed better
-# reseating_sd = 0.003      # mGal, used where the survey cannot tell it
+# reseating_sd = 0.003      # mGal, how well a reading comes back when the instrument is set up anew at the
+                            # same place (re-seating); used where the survey cannot tell it
 # station_floor = 0.001     # mGal, no station is believed better
-drift_rate = 0.02           # mGal/h expected
+drift_rate = 0.02           # mGal/h expected; drift is the slow change of the reading while gravity stays
 drift_rate_sd = 0.02        # mGal/h, how far a run's mean drift rate may be from it
+
+# An instrument whose readings are counts of a dial or counter needs its calibration table:
+# [instrument.B]
+# kind = "gravimeter"
+# calibration = "calibration_B.csv"   # in this folder, straight from row to row. Its lines are like
+#                                     #   counter [counts],gravity [mGal]
+#                                     #   3000,3164.12
+#                                     #   3100,3269.57
+# and the column of readings.csv is then reading [counts] instead of reading [mGal].
 
 [[run]]                     # one trip of the instrument; optional
 name = "1"                  # as in the column `run` of readings.csv
@@ -48,17 +58,21 @@ instrument = "A"
 # depth_shift = 0.0         # m, added to every depth of the run
 # drift_order = "auto"      # 0, 1, 2, 3 or "auto"; over the recipe's
 
-# [[tare]]                  # a jump of the instrument that you know of
+# [[tare]]                  # tare: a sudden jump of the instrument's zero (a knock) that you know of
 # run = "1"
-# time = "2026-09-14T09:12:00Z"   # it counts from the first reading at or after this time
+# time = "2026-09-14T09:12:00Z"   # it counts from the first reading at or after this time; size and size_sd
+#                                 # in mGal where they are known, else the survey finds them
 
 [data]                      # a file that is named must be there; remove a line for what you do not have
 readings = "readings.csv"
 places = "places.csv"
 path = "path.csv"
-markers = "markers.csv"
+markers = "markers.csv"     # its densities act only with reference_density = "markers" under [recipe]
 # ties = "ties.csv"         # station, gravity [mGal], gravity_sd [mGal]: makes gravity absolute
-time_zone = "UTC"           # of times without one: an IANA name such as "Europe/Oslo", or an offset
+time_zone = "UTC"           # of times written without a zone: "UTC", an offset such as "+01:00", or the name
+                            # of a place such as "Europe/Oslo" for a watch that shows local time, summer time
+                            # included. A local time that the change of the clocks gives twice or never is
+                            # refused: write those rows with their offset, 2026-10-25T02:30:00+02:00
 barometer_elevation = 65.30 # m above sea level, or "station" when the barometer goes down with the tool
 
 # [[log]]                   # a density log to compare with
@@ -75,14 +89,17 @@ reference_density = "markers"  # g/cm3 of the rock between ground and station; "
 # tide = "ephemeris"        # "ephemeris", "longman", "table" (then tide = "tide.csv" in [data]) or "none"
 # tide_factor = 1.16        # on the tide of a rigid Earth
 # pressure_admittance = -0.3   # uGal/hPa
-# drift_order = "auto"      # "auto", 0, 1, 2 or 3
+# drift_order = "auto"      # "auto", 0, 1, 2 or 3: order of the polynomial in time that is each run's drift
+# drift_walk = "auto"       # slow wander of the drift beyond its polynomial: "auto" or "off"; in this version
+                            # both leave it out, and "auto" says so among the findings
 # noise = "estimate"        # "estimate" from the survey, or "as_given" by the instrument
-# datum_station = "D1"      # where relative gravity is 0; default: the highest station of the column
+# datum_station = "D1"      # datum: the station where relative gravity is 0; default: the column's highest
 # datum_sd = 50             # mGal, of the unknown absolute level, used only without a tie
 # depth_scale_sd = 0        # relative sd of the depth scale, common to all intervals
 # same_place = 0.25         # m, readings nearer to one another are one station
 # min_thickness = 0.5       # m, stations nearer to one another make no interval
-# visit_gap = 15            # min, a longer pause ends a visit
+# visit_gap = 15            # min; a visit is a series of readings at one place without moving the instrument;
+                            # a longer pause ends it
 # layers = "plain"          # "plain" or "none"
 # layer_boundaries = "auto" # "auto" (markers if any, else stations), "stations", "markers", or a step in m
 """
@@ -91,6 +108,7 @@ PLACES = """\
 # Surveyed places that are not simply a depth in the hole: levels, tunnels, base stations.
 # east [m], north [m] count from the collar, elevation [m] from sea level. role: column (default) takes
 # part in intervals; base is in the network only. Instead of a position a place may have a depth [m].
+# A station that stands here is where this file says: its depth in readings.csv is then not used.
 station,east [m],north [m],elevation [m],elevation_sd [m],role,note
 PAD,6.40,-3.10,64.45,0.01,base,concrete pad beside the collar
 """
@@ -117,11 +135,16 @@ Ashen Lime,217.0,2.46
 """
 
 READINGS = """\
-# Readings in the order in which they were taken.
-# time: ISO 8601 with its zone (Z is UTC). run: label of the trip. station: label of the place; rows with the
-# same label are the same place. depth [m]: measured depth of the mark from the depth datum, downward
-# positive; empty where places.csv has the station. reading [mGal]; or [counts], with a calibration table.
-# use: yes, no or empty (yes); a row that is not used stays here, with its reason in the note.
+# Readings in the order in which they were taken, a row each.
+# time           ISO 8601 with its zone (Z is UTC, +02:00 is two hours ahead of it), or without one for local
+#                times in the time_zone of survey.toml
+# run            label of the trip
+# station        label of the place; rows with the same label are the same place
+# depth [m]      measured depth of the mark from the depth datum, downward positive; empty where places.csv
+#                has the station, since the position given there counts and not a depth given here
+# reading [mGal] or reading [counts], which needs a calibration table
+# pressure [hPa] of the air, where the barometer stands
+# use            yes, no or empty (yes); a row that is not used stays here, with its reason in the note
 # More columns where you have them: visit, instrument, reading_sd [mGal], tide_in_reading [mGal],
 # sensor_offset [m] (sensor above the mark is positive), tilt_x [arcsec], tilt_y [arcsec], temperature [degC].
 time,run,station,depth [m],reading [mGal],pressure [hPa],use,note
@@ -223,9 +246,12 @@ def write_new_survey(folder: Path) -> tuple[str, ...]:
     name = shown(folder)
     try:
         target = folder.resolve()
-        taken = target.exists() and (not target.is_dir() or any(target.iterdir()))
+        is_there, is_folder = target.exists(), target.is_dir()
+        taken = is_folder and any(target.iterdir())
     except (ValueError, RuntimeError) as error:
         raise UnfitTarget(f'The folder "{name}" cannot be made: {error}.') from None
+    if is_there and not is_folder:
+        raise UnfitTarget(f'"{name}" is a file; name a new folder, nothing is overwritten.')
     if taken:
         raise UnfitTarget(
             f'"{name}" is there already and not empty; name a new folder, nothing is overwritten.'

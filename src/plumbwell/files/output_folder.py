@@ -1,7 +1,8 @@
 """A folder of outputs that is never half written: files are finished aside, then moved into place together.
 
-Aside is a hidden folder beside the target, on the same file system. When moving fails midway, what stood in
-the target before is put back. Only files of our own that an earlier run wrote are ever removed.
+Aside is a hidden folder beside the target, or in it where nothing beside it will do. When moving fails midway,
+what stood in the target before is put back. Only files of our own that an earlier run wrote are ever replaced
+or removed.
 """
 
 from __future__ import annotations
@@ -13,6 +14,8 @@ from collections.abc import Iterator, Mapping
 from contextlib import contextmanager, suppress
 from pathlib import Path
 
+from plumbwell.files.paths import UnfitFile, plain_bytes
+from plumbwell.files.stops import held
 from plumbwell.survey.errors import PlumbwellError, shown
 
 SUMMARY = "summary.json"
@@ -21,6 +24,7 @@ SUMMARY_FORMAT = "plumbwell-summary/1"
 SURVEY = "survey.toml"
 DAY = 86400.0
 FORMER = "before"
+INSIDE = ".plumbwell.part-"
 LARGEST_SUMMARY = 64 * 1024 * 1024
 
 
@@ -41,19 +45,22 @@ def check_target(target: Path, *, survey: Path | None) -> Path:
     Raises
     ------
     UnfitTarget
-        When it is a file, the survey folder, inside the survey folder, or another survey folder.
+        When it is a file, the top of a file system, the survey folder, inside the survey folder, another
+        survey folder, or holds files that have the names of outputs and are not ours.
     """
     name = shown(target)
     try:
         folder = target.resolve()
+        base = None if survey is None else survey.resolve()
         is_folder, is_there = folder.is_dir(), folder.exists()
         holds_survey = (folder / SURVEY).exists()
     except (OSError, ValueError, RuntimeError) as error:
         raise UnfitTarget(f'The output folder "{name}" cannot be opened: {error}.') from None
     if is_there and not is_folder:
         raise UnfitTarget(f'"{name}" is a file; name a folder for the outputs.')
-    if survey is not None:
-        base = survey.resolve()
+    if folder == folder.parent:
+        raise UnfitTarget(f'"{name}" is the top of the file system; name a folder of its own for the outputs.')
+    if base is not None:
         base = base.parent if base.is_file() else base
         if folder == base or base in folder.parents:
             where = "is the survey folder itself" if folder == base else "lies inside the survey folder"
@@ -63,6 +70,13 @@ def check_target(target: Path, *, survey: Path | None) -> Path:
             )
     if holds_survey:
         raise UnfitTarget(f'The folder "{name}" holds a survey.toml; name a folder that holds no survey.')
+    if taken := others_files(folder):
+        which, them = ("a file", "it") if len(taken) == 1 else ("files", "them")
+        raise UnfitTarget(
+            f'The folder "{name}" holds {which} named like outputs that no earlier run is known to have written '
+            f"(its {SUMMARY} does not list {them}): {', '.join(taken)}. Nothing is overwritten: name another "
+            f"folder, or move {them} elsewhere."
+        )
     return folder
 
 
@@ -78,20 +92,40 @@ def output_folder(target: Path) -> Iterator[Path]:
     Raises
     ------
     OSError
-        When the disk refuses; the target is then as it was.
+        When the disk refuses; the target is then as it was, and the error names it.
     """
-    made = _made_folders(target.parent)
-    aside = _hidden_folder(target)
-    try:
-        yield aside
-        _move(aside, target)
-    except BaseException:
+    with held() as stops:
+        made: list[Path] = []
+        aside = None
+        try:
+            aside = _hidden_folder(target, made)
+            with stops.let_through():
+                yield aside
+            _move(aside, target)
+        except BaseException as error:
+            if aside is not None:
+                _remove(aside)
+            for folder in reversed(made):
+                with suppress(OSError):
+                    folder.rmdir()
+            if isinstance(error, OSError) and error.errno is not None:
+                raise OSError(error.errno, error.strerror, _as_asked(error.filename, target)) from error
+            raise
         _remove(aside)
-        for folder in reversed(made):
-            with suppress(OSError):
-                folder.rmdir()
-        raise
-    _remove(aside)
+
+
+def _as_asked(name: object, target: Path) -> str:
+    """The file of an error as the person knows it: in the target, not in the hidden folder."""
+    if not isinstance(name, str | os.PathLike):
+        return str(target)
+    path, hidden = Path(name), (INSIDE, _beside(target))
+    if path.name.startswith(hidden):
+        return str(target)
+    return str(target / path.name if path.parent.name.startswith(hidden) else path)
+
+
+def _beside(target: Path) -> str:
+    return f".{target.name}.part-"
 
 
 def write_texts(folder: Path, texts: Mapping[str, str]) -> None:
@@ -100,33 +134,76 @@ def write_texts(folder: Path, texts: Mapping[str, str]) -> None:
         (folder / name).write_text(text, encoding="utf-8", newline="")
 
 
-def _made_folders(folder: Path) -> list[Path]:
-    """Make a folder with its parents; the ones that were missing, from the outermost on."""
-    missing = [one for one in (folder, *folder.parents) if not one.exists()][::-1]
-    folder.mkdir(parents=True, exist_ok=True)
-    return missing
+def _make_folder(folder: Path, made: list[Path]) -> None:
+    """Make a folder with its parents; the ones that were missing go to `made`, from the outermost on."""
+    for one in (*reversed(folder.parents), folder):
+        if not one.is_dir():
+            one.mkdir(exist_ok=True)
+            made.append(one)
 
 
-def _hidden_folder(target: Path) -> Path:
-    """A new folder beside the target that nobody else uses; left-overs of killed runs go after a day."""
-    stem = f".{target.name}.part-"
+def _hidden_folder(target: Path, made: list[Path]) -> Path:
+    """A new folder that nobody else uses, from which files can be moved into the target.
+
+    It lies beside the target. Where that cannot be (the parent is not ours to write to, the target is a mount
+    of its own, its name is too long to be lengthened) it lies inside, and the target is made for it.
+    """
+    _clear_left_overs(target.parent, _beside(target))
+    _clear_left_overs(target, INSIDE)
+    _make_folder(target.parent, made)
     with suppress(OSError):
-        for other in target.parent.glob(f"{_escaped(stem)}*"):
-            if other.is_dir() and time.time() - other.stat().st_mtime > DAY:
-                _remove(other)
+        aside = _new_folder(target.parent, _beside(target))
+        if not target.exists() or _can_move(aside, target):
+            return aside
+        aside.rmdir()
+    _make_folder(target, made)
+    return _new_folder(target, INSIDE)
+
+
+def _new_folder(parent: Path, stem: str) -> Path:
     number = 0
     while True:
-        aside = target.parent / f"{stem}{os.getpid()}-{number}"
+        folder = parent / f"{stem}{os.getpid()}-{number}"
         try:
-            aside.mkdir(mode=0o700)
+            folder.mkdir(mode=0o700)
         except FileExistsError:
             number += 1
             continue
-        return aside
+        return folder
 
 
-def _escaped(text: str) -> str:
-    return "".join(f"[{one}]" if one in "*?[" else one for one in text)
+def _can_move(folder: Path, target: Path) -> bool:
+    """Whether the system moves things from here into the target: tried with the empty folder, there and back."""
+    probe = target / f"{INSIDE}{os.getpid()}-{folder.name.rpartition('-')[2]}"
+    try:
+        os.rename(folder, probe)
+    except OSError:
+        return False
+    os.rename(probe, folder)
+    return True
+
+
+def _clear_left_overs(parent: Path, stem: str) -> None:
+    """Remove hidden folders of runs that were killed: at once where the process is gone, else after a day."""
+    with suppress(OSError):
+        for other in parent.iterdir():
+            if other.name.startswith(stem) and other.is_dir() and not other.is_symlink():
+                process = other.name[len(stem) :].partition("-")[0]
+                if not _may_live(process) or time.time() - other.stat().st_mtime > DAY:
+                    _remove(other)
+
+
+def _may_live(process: str) -> bool:
+    """Whether the process of a number may still be at work; where the system cannot be asked, it may."""
+    if os.name != "posix" or not process.isascii() or not process.isdigit():
+        return True
+    try:
+        os.kill(int(process), 0)
+    except (ProcessLookupError, OverflowError):
+        return False
+    except OSError:
+        return True
+    return True
 
 
 def _move(aside: Path, target: Path) -> None:
@@ -179,14 +256,19 @@ def _put_back(former: Path, path: Path) -> None:
             path.unlink(missing_ok=True)
 
 
+def others_files(folder: Path) -> list[str]:
+    """Names of what stands in a folder under the name of an output without being ours, in their order."""
+    ours = outputs_of(folder)
+    return sorted(name for name in EVER_WRITTEN if name not in ours and os.path.lexists(folder / name))
+
+
 def outputs_of(folder: Path) -> list[str]:
     """Names of the files that the last run wrote into a folder, as its summary.json lists them."""
-    summary = folder / SUMMARY
     try:
-        if summary.stat().st_size > LARGEST_SUMMARY:
-            return []
-        told = json.loads(summary.read_bytes())
-    except (OSError, ValueError, RecursionError):
+        told = json.loads(
+            plain_bytes(folder / SUMMARY, largest=LARGEST_SUMMARY, longest_line=LARGEST_SUMMARY)
+        )
+    except (UnfitFile, OSError, ValueError, RecursionError):
         return []
     if (
         not isinstance(told, dict)

@@ -20,6 +20,8 @@ MEBIBYTE = 1 << 20
 MAXIMUM_FILE = 256 * MEBIBYTE
 MAXIMUM_LINE = MEBIBYTE
 
+MISSING_MEND = "put the file there, or correct or remove its name"
+
 _LINE_END = re.compile(rb"[\r\n]")
 _RESERVED = re.compile(r"(?i)(con|prn|aux|nul|com[1-9]|lpt[1-9])(\..*)?")
 _BEGINNINGS = (
@@ -78,12 +80,17 @@ def inside(folder: Path, name: str) -> Path:
             "rename the file: no name such as CON or NUL, no dot or blank at the end",
         )
     path = folder.joinpath(*parts)
+    linked_out = UnfitFile(
+        f'"{shown(name)}", a link that leads out of the survey folder',
+        "a file that lies inside the survey folder",
+        "copy the file itself into the survey folder, in place of the link",
+    )
     try:
         real = path.resolve(strict=True)
         mode = real.stat().st_mode
     except FileNotFoundError:
         if path.is_symlink() and not path.resolve().is_relative_to(folder):
-            raise outside from None
+            raise linked_out from None
         raise UnfitFile(
             "no such file", f'the file "{shown(name)}" in the survey folder', _nearest(path)
         ) from None
@@ -95,15 +102,17 @@ def inside(folder: Path, name: str) -> Path:
             "check the name and the rights of the file",
         ) from None
     if not real.is_relative_to(folder):
-        raise outside
+        raise linked_out
     if not stat.S_ISREG(mode):
-        raise _not_plain(mode)
+        raise _not_plain(mode, "a link to " if path.is_symlink() else "")
     return real
 
 
-def _not_plain(mode: int) -> UnfitFile:
-    kind = "a folder" if stat.S_ISDIR(mode) else "not a plain file (a pipe, socket or device)"
-    return UnfitFile(kind, "a plain file", "name a file that holds the data")
+def _not_plain(mode: int, link: str = "") -> UnfitFile:
+    kind = "a folder" if stat.S_ISDIR(mode) else "a pipe, socket or device"
+    if not link and not stat.S_ISDIR(mode):
+        kind = f"not a plain file ({kind})"
+    return UnfitFile(f"{link}{kind}", "a plain file", "name a file that holds the data")
 
 
 def _nearest(path: Path) -> str:
@@ -114,7 +123,7 @@ def _nearest(path: Path) -> str:
         alike = []
     if alike:
         return f'the folder holds "{shown(alike[0])}": write the name exactly so'
-    return "put the file there, or correct or remove its name"
+    return MISSING_MEND
 
 
 def plain_bytes(path: Path, *, largest: int = MAXIMUM_FILE, longest_line: int = MAXIMUM_LINE) -> bytes:

@@ -10,10 +10,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from plumbwell.files.collected import Collected, first_rows
-from plumbwell.files.known_columns import Known, Matched, match_columns, measured, report_bad, texts
+from plumbwell.files.known_columns import Known, Matched, match_columns, measured, refuse_unfit, report_bad, texts
 from plumbwell.files.number_cells import BadCell
 from plumbwell.files.statements import Statements
-from plumbwell.files.text_table import TextTable
+from plumbwell.files.text_table import TextTable, plain_name
 from plumbwell.files.times import EXPECTED, Times, times_of
 from plumbwell.survey.column import Column, Labels, frozen, labels
 from plumbwell.survey.errors import shown
@@ -54,6 +54,8 @@ def read_readings(table: TextTable, statements: Statements, collected: Collected
     """The readings of a table, or None when a required column is missing or a heading is wrong."""
     matched = match_columns(table, COLUMNS, collected)
     use = _use(matched, collected)
+    for name in ("run", "instrument", "station", "visit"):
+        refuse_unfit(matched, name, collected, use=use)
     run = labels([text or DEFAULT_RUN for text in texts(matched, "run")])
     instrument = _instruments(matched, run, use, statements, collected)
     time = read_times(matched, statements, collected, use=use) if matched.has("time") else None
@@ -213,7 +215,7 @@ def _tell_instruments(
 
 
 def _tell_labels(table: TextTable, station: Labels, collected: Collected) -> None:
-    """Station labels that differ only by case, or hold characters that cannot be seen, are told."""
+    """Station labels that differ only by case or blanks, or hold characters that cannot be seen, are told."""
     seen: dict[str, str] = {}
     for name in station.names:
         if not name.isprintable():
@@ -224,13 +226,13 @@ def _tell_labels(table: TextTable, station: Labels, collected: Collected) -> Non
                 f'the station "{shown(name)}" has characters that cannot be seen',
                 "write the label anew",
             )
-        first = seen.setdefault(name.casefold(), name)
+        first = seen.setdefault(plain_name(name), name)
         if first != name:
             collected.note(
                 "labels_alike",
                 "look",
                 table.file,
-                f'the stations "{shown(first)}" and "{shown(name)}" differ only by case and count as two',
+                f'the stations "{shown(first)}" and "{shown(name)}" differ only by case or blanks and count as two',
                 "write them alike, if they are the same place",
             )
 

@@ -7,10 +7,11 @@ from dataclasses import replace
 import numpy as np
 
 from plumbwell.files.collected import Collected, first_rows
-from plumbwell.files.known_columns import Known, Matched, match_columns, measured, texts
+from plumbwell.files.known_columns import Known, Matched, match_columns, measured, refuse_unfit, texts
 from plumbwell.files.readings_table import read_times
 from plumbwell.files.statements import Statements
 from plumbwell.files.text_table import TextTable, heading_parts
+from plumbwell.reduction.positions import dogleg
 from plumbwell.survey.column import Column, Index, Origin, frozen, frozen_index
 from plumbwell.survey.errors import shown
 from plumbwell.survey.instrument import Calibration
@@ -43,6 +44,7 @@ MARKERS = (
 )
 CALIBRATION = (Known("counter", ("counts",), required=True), Known("gravity", ("m/s2",), required=True))
 DENSEST = 10000.0  # kg/m3
+STRAIGHT_BACK = 1e-6  # rad; a bend nearer to 180 deg than this has no arc
 
 
 def _complete(matched: Matched, known: tuple[Known, ...]) -> bool:
@@ -104,6 +106,7 @@ def read_places(table: TextTable, collected: Collected) -> Places | None:
 def _named(matched: Matched, name: str, collected: Collected, *, once: bool = False) -> tuple[str, ...]:
     """Labels that every row must have, each only once when asked."""
     table = matched.table
+    refuse_unfit(matched, name, collected)
     seen: dict[str, int] = {}
     for row, text in enumerate(texts(matched, name)):
         line = _line(table, row)
@@ -167,6 +170,7 @@ def read_path(table: TextTable, collected: Collected) -> Path | None:
             expected="an inclination from 0 (down) through 90 (level) to 180 (up) deg",
             mend="correct the value, or check that inclination and azimuth are not exchanged",
         )
+    _refuse_turns(table, depth, inclination, azimuth, collected)
     climbing = [_line(table, row) for row in np.flatnonzero(inclination.values > np.pi / 2).tolist()]
     if climbing:
         collected.note(
@@ -205,6 +209,29 @@ def read_path(table: TextTable, collected: Collected) -> Path | None:
             "nothing, if it is so",
         )
     return Path(depth=depth, inclination=inclination, azimuth=azimuth)
+
+
+def _refuse_turns(
+    table: TextTable, depth: Column, inclination: Column, azimuth: Column, collected: Collected
+) -> None:
+    """Two points between which the hole turns back on itself are a problem: no one arc joins them."""
+    if not all(np.isfinite(one.values).all() for one in (depth, inclination, azimuth)):
+        return
+    turn = dogleg(
+        inclination_1=inclination.values[:-1],
+        azimuth_1=azimuth.values[:-1],
+        inclination_2=inclination.values[1:],
+        azimuth_2=azimuth.values[1:],
+    )
+    for row in np.flatnonzero(turn > np.pi - STRAIGHT_BACK).tolist():
+        collected.problem(
+            table.file,
+            _line(table, row + 1),
+            None,
+            found=f"a path that turns straight back between {depth.values[row]:g} and {depth.values[row + 1]:g} m",
+            expected="a hole that bends by less than 180 deg from point to point",
+            mend="correct inclination or azimuth, or write a point between the two",
+        )
 
 
 def _must_rise(

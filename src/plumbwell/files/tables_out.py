@@ -1,7 +1,8 @@
 """Output tables as CSV text: UTF-8, comma, one line feed a row, headings as `study.tables` names them.
 
 Numbers have up to 12 significant digits, covariances 17; what is not known is an empty cell. A text that a
-spreadsheet would run as a formula gets an apostrophe in front.
+spreadsheet would run as a formula gets an apostrophe in front; control characters but tab and line end, which
+a terminal would obey, are written as escapes.
 """
 
 from __future__ import annotations
@@ -22,12 +23,14 @@ MOST_WHOLE = 1000
 """Rows up to which a covariance is written whole."""
 
 NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
+_CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f\u2028\u2029]")
 _UNPLAIN = re.compile(r"[,\"\r\n]")
-_DOUBTFUL = re.compile(r"[,\"\r]|(?:^|\n)(?:[=+\-@#]|[^\S\n])|[^\S\n](?:\n|$)")
+_DOUBTFUL = re.compile(_CONTROL.pattern + r"|[,\"\r]|(?:^|\n)(?:[=+\-@#]|[^\S\n])|[^\S\n](?:\n|$)")
 
 
 def cell(text: str) -> str:
-    """A text as it stands in a CSV cell: quoted where it must be, a formula disarmed by an apostrophe."""
+    """A text as it stands in a CSV cell: quoted where it must be, a formula disarmed, no control characters."""
+    text = _CONTROL.sub(lambda found: found[0].encode("unicode_escape").decode(), text)
     if text[:1] in FORMULA_MARKS and text and not NUMBER.fullmatch(text):
         text = "'" + text
     if _UNPLAIN.search(text) or text[:1] == "#" or text != text.strip():

@@ -21,6 +21,9 @@ from plumbwell.survey.readings import RawTable
 FORMULA_MARKS = ("=", "+", "-", "@", "\t", "\r")
 """A label that starts so would run as a formula in a spreadsheet."""
 
+EMPTY_ROW = ',; \t"'
+"""A row of these characters only has no value."""
+
 MAXIMUM_COLUMNS = 1000
 MAXIMUM_CELLS = 20_000_000  # some 2 GiB once every cell is a text of its own
 
@@ -38,7 +41,7 @@ class TextTable:
         Headings, cells (blanks around them gone) and physical lines.
     header_line : int
     physical, comments, blanks : int
-        Physical lines of the file, and how many of them are comments and blank:
+        Physical lines of the file, and how many of them are comments and blank or without a value:
         rows + comments + blanks + 1 header = physical.
     """
 
@@ -149,6 +152,12 @@ def read_table(data: bytes, *, file: str, rows_are: str, collected: Collected) -
             mend="write the rows under the header, or name the file that holds them",
         )
         return None
+    rows_before = len(kept)
+    numbers, kept = _without_empty(numbers, kept, file=file, collected=collected)
+    blanks += rows_before - len(kept)
+    if len(kept) == 1:
+        return None
+    cut = not text.endswith(("\n", "\r"))
     width = len(headings)
     if width == 1 and (mark := next((one for one in (";", "\t") if one in headings[0]), None)):
         collected.problem(
@@ -166,12 +175,12 @@ def read_table(data: bytes, *, file: str, rows_are: str, collected: Collected) -
         if rows is None:
             return None
         headings, rows = _without_trailing(headings, rows, file=file, collected=collected)
-        if not _fits(headings, rows, numbers, file=file, collected=collected):
+        if not _fits(headings, rows, numbers, cut=cut, file=file, collected=collected):
             return None
         columns = [_stripped(column) for column in zip(*rows, strict=True)]
-    elif not _fits(headings, [], numbers, file=file, collected=collected):
+    elif not _fits(headings, [], numbers, cut=cut, file=file, collected=collected):
         return None
-    if not text.endswith(("\n", "\r")):
+    if cut:
         collected.note(
             "no_last_line_end",
             "note",
@@ -207,6 +216,30 @@ def _rows_of(lines: list[str]) -> tuple[list[int], list[str], int, int]:
         numbers.append(number)
         kept.append(line)
     return numbers, kept, comments, blanks
+
+
+def _without_empty(
+    numbers: list[int], kept: list[str], *, file: str, collected: Collected
+) -> tuple[list[int], list[str]]:
+    """Numbers and texts of the rows without those that hold nothing but commas, each of which is a problem."""
+    empty = {
+        place
+        for place, line in enumerate(kept)
+        if place and line[0] in EMPTY_ROW and not line.strip(EMPTY_ROW)
+    }
+    for place in sorted(empty):
+        collected.problem(
+            file,
+            numbers[place],
+            None,
+            found="an empty row, commas without values",
+            expected="a value in each row",
+            mend="remove the row",
+        )
+    if not empty:
+        return numbers, kept
+    left = [place for place in range(len(kept)) if place not in empty]
+    return [numbers[place] for place in left], [kept[place] for place in left]
 
 
 def _even_columns(kept: list[str], width: int) -> list[tuple[str, ...]] | None:
@@ -327,9 +360,18 @@ def _without_trailing(
 
 
 def _fits(
-    headings: list[str], rows: list[list[str]], numbers: list[int], *, file: str, collected: Collected
+    headings: list[str],
+    rows: list[list[str]],
+    numbers: list[int],
+    *,
+    cut: bool,
+    file: str,
+    collected: Collected,
 ) -> bool:
-    """True when headings are named and different and every row has as many cells as the header."""
+    """True when headings are named and different and every row has as many cells as the header.
+
+    `cut`: the last line of the file has no line end, so that a short last row may be half a row.
+    """
     width, fits = len(headings), True
     seen: dict[str, int] = {}
     for position, heading in enumerate(headings, start=1):
@@ -359,13 +401,17 @@ def _fits(
         fits = False
         for row, number in zip(rows, numbers[1:], strict=True):
             if len(row) != width:
+                half = cut and len(row) < width and number == numbers[-1]
                 collected.problem(
                     file,
                     number,
                     None,
-                    found=f"{len(row)} cell{'s' if len(row) != 1 else ''}",
+                    found=f"{len(row)} cell{'s' if len(row) != 1 else ''}"
+                    + (" and no line end" if half else ""),
                     expected=f"{width}, as the header has",
-                    mend=_ragged_mend(row, width),
+                    mend="the file may be cut off or still being written: copy it anew, or complete the last row"
+                    if half
+                    else _ragged_mend(row, width),
                 )
                 if collected.full(file):
                     break

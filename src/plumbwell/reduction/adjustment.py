@@ -12,6 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from plumbwell.reduction.added_columns import sum_of_squares_with
+from plumbwell.reduction.broken_visits import contrasts, unbroken_stretches
 from plumbwell.reduction.design import (
     HIGHEST_ORDER,
     Design,
@@ -19,6 +20,7 @@ from plumbwell.reduction.design import (
     DriftUnknown,
     design,
     visit_regressors,
+    with_priors,
 )
 from plumbwell.reduction.drift_order import Comparison, OrderTest, chosen_orders
 from plumbwell.reduction.network import Rank, Solution, TieRows, rank_of_visits, solve
@@ -152,28 +154,39 @@ def adjusted(
     )
     automatic = tuple(run for run in automatic if orders[run] > 0)
     lost: list[DriftUnknown] = []
+    unbroken = unbroken_stretches(basis, visits)
+    sd = terms.reading_floor[rows]
 
     def designed(chosen: tuple[int, ...], weight: Array) -> tuple[Design, Rank]:
-        return _designed(
+        one, rank = _designed(
             basis, visits, weight, n_stations=n_stations, orders=chosen, dropped=parts.dropped, lost=tuple(lost)
         )
+        if len(unbroken) > len(visits.start):
+            one = with_priors(one, contrasts(one, basis, visits, unbroken, values, 1.0 / sd**2))
+        return one, rank
 
     counts = np.diff(visits.start)
     held = basis.held(rows, orders)
+    values = observed[rows] - held
     even = np.repeat(1.0 / counts, counts)
     first, rank = designed(orders, even)
     while (missing := undetermined(first, ties, rank)) is not None:
         lost.append(missing)
         first, rank = designed(orders, even)
-    values = observed[rows] - held
     means = np.add.reduceat(values, visits.start[:-1]) / counts
     stated = terms.reading_sd[rows]
     typical = float(np.mean(terms.reseating_sd[rows] ** 2 + terms.reading_floor[rows] ** 2))
     rough = _solved(first, np.full(len(visits), 1.0 / typical), means, ties)
     drift = border_drift(basis, first, rough.unknown[:, 0], rows)
     noise = reading_noise(
-        visits, values - drift, stated=stated, floor=terms.reading_floor[rows], estimate=terms.estimate
+        visits,
+        values - drift,
+        unbroken=unbroken,
+        stated=stated,
+        floor=terms.reading_floor[rows],
+        estimate=terms.estimate,
     )
+    sd = noise.sd
     # Rounding apart the weights within visits are even where all readings are equally good.
     weighted = even if np.abs(noise.weight - even).max() < 1e-15 else noise.weight
     u0 = stated_reseating(

@@ -7,7 +7,7 @@ the observations; a visit's row of the design is the weighted mean of its readin
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
@@ -260,13 +260,7 @@ def design(
     pair_flat = (first * size + second)[both]
     pair_value = (value[:, :, None] * value[:, None, :])[both]
     unknown, value = unknown[present], value[present]
-    priors = _priors(basis, unknowns)
-    prior_matrix, prior_side = np.zeros((size, size)), np.zeros(size)
-    for prior in priors:
-        factors = prior.factors / prior.sd
-        prior_matrix[prior.unknowns[:, None], prior.unknowns] += factors[:, None] * factors
-        prior_side[prior.unknowns] += factors * (prior.value / prior.sd)
-    return Design(
+    none = Design(
         unknowns=unknowns,
         orders=orders,
         n_stations=n_stations,
@@ -280,12 +274,23 @@ def design(
         pair_visit=pair_visit,
         pair_flat=pair_flat,
         pair_value=pair_value,
-        priors=priors,
-        prior_matrix=prior_matrix,
-        prior_side=prior_side,
+        priors=(),
+        prior_matrix=np.zeros((size, size)),
+        prior_side=np.zeros(size),
         dropped=dropped,
         lost=lost,
     )
+    return with_priors(none, _priors(basis, unknowns))
+
+
+def with_priors(one: Design, priors: tuple[Prior, ...]) -> Design:
+    """The design with more pseudo-observations of its border unknowns."""
+    matrix, side = one.prior_matrix.copy(), one.prior_side.copy()
+    for prior in priors:
+        factors = prior.factors / prior.sd
+        matrix[prior.unknowns[:, None], prior.unknowns] += factors[:, None] * factors
+        side[prior.unknowns] += factors * (prior.value / prior.sd)
+    return replace(one, priors=one.priors + priors, prior_matrix=matrix, prior_side=side)
 
 
 def _all_unknowns(basis: DriftBasis, visits: Visits, orders: tuple[int, ...]) -> list[DriftUnknown]:

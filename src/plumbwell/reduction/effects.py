@@ -13,7 +13,13 @@ import numpy as np
 
 from plumbwell.earth.ellipsoid import mean_curvature
 from plumbwell.earth.free_air import measured_gradient_excess
-from plumbwell.earth.normal_gravity import gradient_at_height, gravity_on_ellipsoid, height_change, normal_system
+from plumbwell.earth.normal_gravity import (
+    gradient_at_height,
+    gravity_at_height,
+    gravity_on_ellipsoid,
+    height_change,
+    normal_system,
+)
 from plumbwell.earth.shells import shell_term
 from plumbwell.reduction.positions import Positions
 from plumbwell.reduction.reference_rock import ReferenceLayers
@@ -88,6 +94,14 @@ NORMAL_GRAVITY = Law(
     "Somigliana 1929; NIMA TR8350.2; Moritz 2000; Cassinis 1930",
     lambda latitude, system: gravity_on_ellipsoid(system, latitude=latitude),
 )
+AT_STATION = Law(
+    "normal gravity at the station",
+    "gamma(phi, h)",
+    "Heiskanen & Moritz 1967, ch. 2 and 6; Li & Goetze 2001, Geophysics 66, 1660-1668",
+    lambda latitude, elevation, geoid_height, system, form: gravity_at_height(
+        system, latitude=latitude, height=np.asarray(elevation) + geoid_height, form=form
+    ),
+)
 FREE_AIR = Law(
     "free-air change",
     "gamma(phi, h) - gamma(phi, 0) - (F_measured - F)(h - h_collar)",
@@ -155,6 +169,16 @@ def normal_gravity(positions: Positions, choice: FreeAirChoice) -> Column:
     system = Setting(key="normal_gravity", value=choice.system, origin="recipe")
     return computed(
         "normal_gravity", "m/s2", NORMAL_GRAVITY, Input("latitude", positions.latitude), Input("system", system)
+    )
+
+
+def normal_at_station(positions: Positions, site: Site, *, system: str, form: str) -> Column:
+    """Normal gravity at every station, m/s2: what a tilted meter there reads too little of."""
+    return computed(
+        "normal_at_station", "m/s2", AT_STATION, Input("latitude", positions.latitude),
+        Input("elevation", positions.elevation), _geoid(site),
+        Input("system", Setting(key="normal_gravity", value=system, origin="recipe")),
+        Input("form", Setting(key="height_form", value=form, origin="recipe")),
     )
 
 

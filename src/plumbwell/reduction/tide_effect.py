@@ -68,14 +68,33 @@ def utc_time(readings: Readings, instruments: tuple[Instrument, ...]) -> Column:
 
 
 def between(time: Any, series: TimeSeries) -> Any:
-    """A time series at given times, linear between its rows; NaN outside its span.
+    """A time series at given times, by the cubic through the four rows around; NaN outside its span.
+
+    Straight lines through the hourly rows of a tide err by 3 µGal where it bends; the cubic by less than 0.1 µGal.
 
     Parameters
     ----------
     time : float or (n,), UTC s since 2000-01-01
     series : TimeSeries
+        With fewer than four rows the parabola or the line through all of them.
+
+    Notes
+    -----
+    Lagrange's polynomial: sum over rows of value times the product of (t - t_j)/(t_i - t_j), j other than i.
     """
-    return np.interp(time, series.time.values, series.value.values, left=np.nan, right=np.nan)
+    rows, values = series.time.values, series.value.values
+    time = np.asarray(time, dtype=np.float64)
+    points = min(4, len(rows))
+    first = np.clip(np.searchsorted(rows, time, side="right") - 2, 0, len(rows) - points)
+    nodes = [rows[first + one] for one in range(points)]
+    total = np.zeros(time.shape)
+    for one in range(points):
+        share = np.ones(time.shape)
+        for other in range(points):
+            if other != one:
+                share = share * (time - nodes[other]) / (nodes[one] - nodes[other])
+        total = total + share * values[first + one]
+    return np.where((time < rows[0]) | (time > rows[-1]), np.nan, total)
 
 
 def _at_known(utc: Any, modelled: Callable[[Array], Any]) -> Array:
@@ -104,13 +123,13 @@ MODELS = {
 }
 TABLE = Law(
     "tide of the table",
-    "the tide table at the time of the reading, linear between its rows",
+    "the tide table at the time of the reading, cubic through the four rows around",
     "the survey's tide table",
     lambda utc, table: _at_known(utc, lambda time: between(time, table)),
 )
 LOADING = Law(
     "loading",
-    "the loading series at the time of the reading, linear between its rows",
+    "the loading series at the time of the reading, cubic through the four rows around",
     "the survey's loading table",
     lambda utc, loading: _at_known(utc, lambda time: between(time, loading)),
 )
@@ -195,7 +214,7 @@ def tide(
     factor : float
         On the modelled tide: the gravimetric factor, or 1 for a tide table, which holds its own.
     loading : TimeSeries or None
-        Added, linear in time. Outside the span of a table the correction is NaN.
+        Added, cubic in time. Outside the span of a table the correction is NaN.
     """
     if modelled is None:
         return computed("tide", "m/s2", NONE, Input("time", readings.time))

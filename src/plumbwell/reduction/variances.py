@@ -14,7 +14,7 @@ import numpy as np
 from plumbwell.reduction.design import Design
 from plumbwell.reduction.network import NO_TIES, Rank, solve
 from plumbwell.reduction.visits import Visits
-from plumbwell.survey.column import Array
+from plumbwell.survey.column import Array, Index
 
 ENOUGH_FREEDOM = 5
 STATED_FREEDOM = 4
@@ -50,7 +50,9 @@ class ReadingNoise:
     freedom: int
 
 
-def reading_noise(visits: Visits, deviation: Array, *, stated: Array, floor: Array, estimate: bool) -> ReadingNoise:
+def reading_noise(
+    visits: Visits, deviation: Array, *, unbroken: Index, stated: Array, floor: Array, estimate: bool
+) -> ReadingNoise:
     """Reading noise from the scatter within visits, or as stated.
 
     Parameters
@@ -58,6 +60,8 @@ def reading_noise(visits: Visits, deviation: Array, *, stated: Array, floor: Arr
     visits : Visits
     deviation : (u,) array
         Used readings freed of drift, m/s2, in the order of `visits.rows`.
+    unbroken : (g + 1,) int array
+        Where each stretch of a visit that no tare breaks starts in `visits.rows`.
     stated : (u,) array
         Stated sd of each reading, NaN where there is none, m/s2.
     floor : (u,) array
@@ -67,7 +71,7 @@ def reading_noise(visits: Visits, deviation: Array, *, stated: Array, floor: Arr
     """
     first = visits.start[:-1]
     counts = np.diff(visits.start)
-    freedom = int(np.sum(counts - 1))
+    freedom = int(np.sum(np.diff(unbroken) - 1))
     known = stated[~np.isnan(stated)]
     relative = np.where(np.isnan(stated), np.median(known) if known.size else np.nan, stated)
     scale = np.nan
@@ -78,8 +82,9 @@ def reading_noise(visits: Visits, deviation: Array, *, stated: Array, floor: Arr
     else:
         shape = relative if known.size else np.ones(len(deviation))
         weight = 1.0 / shape**2
-        mean = np.add.reduceat(weight * deviation, first) / np.add.reduceat(weight, first)
-        off = deviation - np.repeat(mean, counts)
+        begin = unbroken[:-1]
+        mean = np.add.reduceat(weight * deviation, begin) / np.add.reduceat(weight, begin)
+        off = deviation - np.repeat(mean, np.diff(unbroken))
         found = float(np.sqrt(np.sum(weight * off**2) / freedom))
         sd = np.maximum(floor, found * shape)
         if known.size:
@@ -161,7 +166,7 @@ def reseating(
             estimate=np.nan,
             freedom=freedom,
             few=freedom < ENOUGH_FREEDOM,
-            t_freedom=freedom if freedom >= ENOUGH_FREEDOM else freedom + STATED_FREEDOM,
+            t_freedom=freedom if freedom > 0 else STATED_FREEDOM,
         )
     if freedom == 0:
         return Reseating(

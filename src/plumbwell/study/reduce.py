@@ -21,7 +21,14 @@ from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
 from plumbwell.reduction.calibration import calibrated, instruments_used
 from plumbwell.reduction.datums import StationGravity, datum_stations, referred_gravity
 from plumbwell.reduction.design import drift_basis
-from plumbwell.reduction.effects import anomalies, free_air_choice, known_parts, normal_gravity, reference_shell
+from plumbwell.reduction.effects import (
+    anomalies,
+    free_air_choice,
+    known_parts,
+    normal_at_station,
+    normal_gravity,
+    reference_shell,
+)
 from plumbwell.reduction.estimates import OBSERVED, TO_STATION, estimates
 from plumbwell.reduction.located import Located, located
 from plumbwell.reduction.network import TieRows
@@ -134,7 +141,9 @@ def reduce(
         factor=1.0 if chosen.tide == "table" else chosen.tide_factor,
     )
     at_station = keep(_rows_at, station)
-    tilted = keep(tilt, readings, instruments, gravity=normal, station_rows=at_station)
+    tilted = keep(
+        _tilt, readings, instruments, where, site, at_station, system=chosen.normal_gravity, form=chosen.height_form
+    )
     pressure = keep(
         _pressure, readings, instruments, where, at_station, admittance=chosen.pressure_admittance,
         barometer=survey.barometer_elevation, ground=site.ground_elevation,
@@ -240,6 +249,20 @@ def reduce(
 
 def _rows_at(station: Index) -> Index:
     return frozen_index(np.maximum(station, 0))
+
+
+def _tilt(
+    readings: Readings,
+    instruments: tuple[Instrument, ...],
+    where: Located,
+    site: Site,
+    rows: Index,
+    *,
+    system: str,
+    form: str,
+) -> Column:
+    gravity = normal_at_station(where.positions, site, system=system, form=form)
+    return tilt(readings, instruments, gravity=gravity, station_rows=rows)
 
 
 def _still(number: int) -> Column:

@@ -14,12 +14,12 @@ MAXIMUM_RANGES = 8
 """Ranges of rows that a gathered problem lists."""
 
 
-def shown(text: object) -> str:
+def shown(text: object, most: int = MAXIMUM_SHOWN) -> str:
     """Text of a cell as it may stand in a message: control characters escaped, at most 80 characters."""
     escaped = str(text)
     if not escaped.isprintable():
         escaped = "".join(c if c.isprintable() else c.encode("unicode_escape").decode() for c in escaped)
-    return escaped if len(escaped) <= MAXIMUM_SHOWN else escaped[: MAXIMUM_SHOWN - 1] + "…"
+    return escaped if len(escaped) <= most else escaped[: most - 1] + "…"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
