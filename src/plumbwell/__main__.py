@@ -2,7 +2,10 @@
 
 import sys
 
-from plumbwell.cli import main
+try:
+    from plumbwell.cli import main
 
-if __name__ == "__main__":
-    sys.exit(main())
+    if __name__ == "__main__":
+        sys.exit(main())
+except KeyboardInterrupt:
+    sys.exit(130)

@@ -55,17 +55,19 @@ def test_no_survey_toml(tmp_path: Path) -> None:
     with pytest.raises(InputError) as caught:
         read_survey(tmp_path)
     assert str(caught.value) == (
-        'survey.toml: found no such file; expected the file "survey.toml" in the survey folder; '
-        "to mend: put the file there, or correct or remove its name"
+        f'{tmp_path / "survey.toml"}: found no such file; expected the file "survey.toml" in the survey folder; '
+        "to mend: put the file there; or name the folder that holds survey.toml; plumbwell new DIR writes one to "
+        "start from"
     )
 
 
-def test_no_such_folder(tmp_path: Path) -> None:
+def test_no_such_folder_is_told_as_it_was_typed(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.chdir(tmp_path)
     with pytest.raises(InputError) as caught:
-        read_survey(tmp_path / "nowhere")
+        read_survey("far/nowhere")
     assert str(caught.value) == (
-        "nowhere: found no such folder; expected a survey folder; to mend: name the folder that holds "
-        "survey.toml"
+        "far/nowhere: found no such folder; expected a survey folder; to mend: name the folder that holds "
+        "survey.toml; plumbwell new DIR writes one to start from"
     )
 
 
@@ -162,10 +164,19 @@ def test_link_that_leads_outside(
     except OSError:
         pytest.skip("this system does not let a plain user make links")
     assert told(TOML + 'path = "path.csv"\n') == (
-        'survey.toml, row 11, [data] path: found "path.csv"; expected a path that stays inside the survey '
-        "folder; "
-        f"to mend: {OUTSIDE_MEND}"
+        'survey.toml, row 11, [data] path: found "path.csv", a link that leads out of the survey folder; expected a '
+        "file that lies inside the survey folder; to mend: copy the file itself into the survey folder, in place of "
+        "the link"
     )
+
+
+def test_a_link_to_a_folder_inside_is_called_a_link(told: Told, tmp_path: Path) -> None:
+    (tmp_path / "paths").mkdir()
+    try:
+        (tmp_path / "path.csv").symlink_to(tmp_path / "paths")
+    except OSError:
+        pytest.skip("this system does not let a plain user make links")
+    assert "found a link to a folder; expected a plain file" in told(TOML + 'path = "path.csv"\n')
 
 
 def test_folder_in_place_of_a_file(told: Told, tmp_path: Path) -> None:
@@ -226,5 +237,63 @@ def test_gradients_without_readings_are_refused_in_a_sentence(tmp_path: Path) ->
 def test_datum_station_that_is_not_in_the_survey(told: Told) -> None:
     assert told(TOML + '\n[recipe]\ndatum_station = "a"\n') == (
         'survey.toml, row 13, [recipe] datum_station: found "a"; expected a station of the readings or of '
-        'places.csv, such as "A", "B"; to mend: correct the label; case and blanks count'
+        'places.csv, such as "A", "B"; to mend: write "A", which differs only by case or blanks, if that is meant'
     )
+    assert told(TOML + '\n[recipe]\ndatum_station = "Q"\n').endswith(
+        "to mend: correct the label; case and blanks count"
+    )
+
+
+@pytest.mark.parametrize(
+    ("written", "place", "found", "expected"),
+    [
+        ("[recipes]\nlayers = 1", "row 12, recipes", "the table [recipes], which is not known", "[recipe]"),
+        ("[[logg]]\nfile = 1", "row 12, logg", "the table [[logg]], which is not known", "[log]"),
+        ("[instruments.A]\nscale = 1", "instruments", "the table [instruments], which is not known", "[instrument]"),
+        (
+            "[instrument.A]\nclock_ahaed = 1",
+            "row 13, [instrument.A] clock_ahaed",
+            'the key "clock_ahaed" in [instrument.A], which is not known',
+            '"clock_ahead"',
+        ),
+    ],
+)
+def test_a_misspelt_table_or_key_is_no_note(told: Told, written: str, place: str, found: str, expected: str) -> None:
+    text = told(TOML + "\n" + written + "\n")
+    assert text.startswith("survey.toml, ") and f"{place}: found {found}; expected {expected}, if that is meant" in text
+    assert text.endswith("; to mend: correct its spelling, or remove it, since it would have no effect")
+    assert "\n" not in text
+
+
+@pytest.mark.parametrize(
+    ("table", "key", "value", "expected"),
+    [
+        ("instrument.A", "scale", "0", "a number above 0, at most 1e+06"),
+        ("instrument.A", "clock_ahead", "86401", "a number in s from -86400 to 86400"),
+        ("recipe", "min_thickness", "0", "a number in m above 0, at most 1000"),
+        ("recipe", "gradient_sd", "0.5", "a number in mGal/m from 0 to 0.01"),
+        ("recipe", "layer_boundaries", "0.05", '"auto", "stations", "markers" or a number in m from 0.1'),
+        (
+            "recipe",
+            "free_air",
+            "{ gradient = 0.3072 }",
+            '"normal" or { gradient = 0.3072, sd = 0.0004 } in mGal/m, gradient above 0 and under 1, sd 0 to 0.1',
+        ),
+    ],
+)
+def test_values_beyond_their_limits(told: Told, table: str, key: str, value: str, expected: str) -> None:
+    text = told(TOML + f"\n[{table}]\n{key} = {value}\n")
+    place = f"survey.toml, row 13, [{table}] {key}"
+    assert text == f"{place}: found {value}; expected {expected}; to mend: correct the value"
+
+
+def test_a_whole_number_beyond_every_size(told: Told) -> None:
+    assert told(TOML + "\n[recipe]\ndepth_sd = 1" + "0" * 400 + "\n").startswith(
+        "survey.toml, row 13, [recipe] depth_sd: found a whole number of more than 30 digits; expected a number in m"
+    )
+
+
+@pytest.mark.parametrize("name", ["Hollow\\u001b[31m", "Hollow\\nFell", "H" * 201])
+def test_a_site_name_that_cannot_stand_on_a_line(told: Told, name: str) -> None:
+    text = told(TOML.replace("Hollow Fell 1", name))
+    assert text.startswith("survey.toml, row 4, [site] name: found ") and "\x1b" not in text and len(text) < 300

@@ -84,8 +84,14 @@ def test_several_densities_are_told_and_none_is_taken(tmp_path: Path) -> None:
 
 def test_a_stated_curve_or_correction_settles_it(tmp_path: Path) -> None:
     text = _las(["100 2.5 0.02", "101 2.6 0.01"], "DRHO.G/CC :\n")
-    log, _ = _log(tmp_path, text, density="drho")
-    assert log is not None and log.density.values.tolist() == [20.0, 10.0]
+    log, _ = _log(tmp_path, text, density="rhob")
+    assert log is not None and log.density.values.tolist() == [2500.0, 2600.0]
+    log, collected = _log(tmp_path, text, density="drho")
+    assert log is None
+    assert [str(one) for one in collected.problems] == [
+        "hole.las, DRHO.G/CC: found densities whose median is 0.015 g/cm3; expected a median of 0.8 to 6 g/cm3; "
+        "to mend: name the density curve as density in the [[log]] of this file, or correct its unit"
+    ]
     log, _ = _log(tmp_path, text, correction="DRHO")
     assert log is not None and log.curve == "RHOB"
     assert log.correction is not None and log.correction.values.tolist() == [20.0, 10.0]
@@ -124,11 +130,29 @@ def test_a_stated_curve_or_correction_settles_it(tmp_path: Path) -> None:
             "to mend: correct the null value in the header, or these values",
         ),
         (
-            _las(["100 2500", "101 2.6"]),
+            _las(["100 2500", "101 2.6", "102 2.6"]),
             None,
             "hole.las, row 13, RHOB.G/CC: found the density 2500 (1 such, row 13); expected densities above "
             "0, at most "
             "10 g/cm3; to mend: correct the unit of the curve, or write the null value where the log is bad",
+        ),
+        (
+            _las(["100 2500", "101 2600", "102 2600"]),
+            None,
+            "hole.las, RHOB.G/CC: found densities whose median is 2600 g/cm3; expected a median of 0.8 to 6 g/cm3; "
+            "to mend: write the unit kg/m3 at the curve, which would fit; or name another curve",
+        ),
+        (
+            _las(["100 2.5", "101 2.6"]).replace("G/CC", "K/M3"),
+            None,
+            "hole.las, RHOB.K/M3: found densities whose median is 0.00255 g/cm3; expected a median of 0.8 to 6 "
+            "g/cm3; to mend: write the unit g/cm3 at the curve, which would fit; or name another curve",
+        ),
+        (
+            "gamma log\n" + _las(["100 2.5", "101 2.6"]),
+            None,
+            "hole.las, row 1: found text before the first section: gamma log; expected a LAS file, which begins with "
+            "~V; to mend: check that this is a LAS 2.0 file",
         ),
         (
             _las(["100 sand", "101 2.6"]),

@@ -34,7 +34,7 @@ def test_every_file_says_that_it_is_explained_or_invented():
 
 def test_recipe_keys_that_are_shown_exist_and_their_values_may_stand():
     shown = dict(re.findall(r"^#? ?(\w+) = (.+?)(?:\s+#.*)?$", FILES["survey.toml"].split("[recipe]")[1], re.M))
-    assert set(shown) == set(KEYS) - {"terrain_tolerance", "out_of_table", *UNAVAILABLE} | {"layers"}
+    assert set(shown) == set(KEYS) - {"terrain_tolerance", "out_of_table", *UNAVAILABLE} | {"layers", "drift_walk"}
     for key, text in shown.items():
         from_written(key, tomllib.loads(f"value = {text}")["value"])
 
@@ -58,6 +58,55 @@ def test_an_empty_folder_serves_and_a_full_one_is_refused_untouched(tmp_path):
     assert sorted(os.listdir(empty)) == sorted(FILES)
     with pytest.raises(UnfitTarget, match='full" is there already and not empty'):
         write_new_survey(full)
-    with pytest.raises(UnfitTarget, match="nothing is overwritten"):
+    with pytest.raises(UnfitTarget, match='thing" is a file; name a new folder, nothing is overwritten'):
         write_new_survey(full / "thing")
     assert os.listdir(full) == ["thing"]
+
+
+@pytest.mark.parametrize("walk", ["auto", "off"])
+def test_what_it_says_of_the_drift_walk_is_so(tmp_path, walk):
+    write_new_survey(tmp_path / "mine")
+    toml = tmp_path / "mine" / "survey.toml"
+    toml.write_text(toml.read_text("utf-8").replace('# drift_walk = "auto"', f'drift_walk = "{walk}"'), "utf-8")
+    codes = [one.code for one in reduce(Case(survey=read_survey(tmp_path / "mine"))).findings]
+    assert codes.count("drift_walk_untested") == (walk == "auto")
+
+
+def test_a_place_outranks_the_depth_of_a_reading_as_it_says(tmp_path):
+    write_new_survey(tmp_path / "mine")
+    before = reduce(Case(survey=read_survey(tmp_path / "mine"))).stations.located.positions.elevation.values
+    readings = tmp_path / "mine" / "readings.csv"
+    readings.write_text(readings.read_text("utf-8").replace(",PAD,,", ",PAD,77,"), "utf-8")
+    after = reduce(Case(survey=read_survey(tmp_path / "mine"))).stations.located.positions.elevation.values
+    assert (before == after).all()
+
+
+def test_the_commented_counter_instrument_works_when_it_is_opened(tmp_path):
+    write_new_survey(tmp_path / "mine")
+    toml, readings = tmp_path / "mine" / "survey.toml", tmp_path / "mine" / "readings.csv"
+    text = toml.read_text("utf-8")
+    rows = re.findall(r"^# +#   (counter .*|\d+,[\d.]+)$", text, re.M)
+    (tmp_path / "mine" / "calibration_B.csv").write_text("\n".join(rows) + "\n", "utf-8")
+    opened = re.sub(r"^# (\[instrument\.B\]|calibration = )", r"\1", text, flags=re.M)
+    opened = opened.replace('# kind = "gravimeter"\ncal', 'kind = "gravimeter"\ncal').replace(
+        'instrument = "A"', 'instrument = "B"'
+    )
+    toml.write_text(opened, "utf-8")
+    readings.write_text(
+        re.sub(r",31(\d\d)\.(\d{3}),1", r",30\1.\2,1", readings.read_text("utf-8")).replace(
+            "reading [mGal],pressure", "reading [counts],pressure"
+        ),
+        "utf-8",
+    )
+    results = reduce(Case(survey=read_survey(tmp_path / "mine")))
+    assert len(results.intervals) == 11
+    rise = results.stations.gravity.values[-1] - results.stations.gravity.values[1]
+    assert rise / 1e-5 == pytest.approx(1.0545 * 36.325, abs=0.05)
+
+
+def test_words_of_the_trade_are_explained_and_clocks_are_told():
+    toml, text = FILES["survey.toml"], " ".join(" ".join(FILES.values()).replace("#", " ").split())
+    told = ("tare: a sudden jump", "(re-seating)", "a visit is a series", "datum: the station", "depth datum, the")
+    assert [words for words in told if words not in text] == []
+    assert "summer time included" in text and "+02:00" in toml
+    assert 'act only with reference_density = "markers"' in text

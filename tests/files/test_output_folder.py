@@ -2,6 +2,8 @@
 
 import errno
 import os
+import subprocess
+import sys
 import time
 from pathlib import Path
 
@@ -153,15 +155,121 @@ def test_without_links_the_former_files_are_copied(target, monkeypatch):
     assert content(target) == before
 
 
-def test_left_overs_of_killed_runs_go_after_a_day_and_others_stay(target, tmp_path):
-    old, young, other = (tmp_path / name for name in (".out.part-1-0", ".out.part-2-0", ".outer.part-3-0"))
-    for folder in (old, young, other):
+def test_left_overs_of_killed_runs_go_at_once_and_those_of_running_ones_after_a_day(target, tmp_path):
+    process = subprocess.Popen([sys.executable, "-c", ""])
+    process.wait()
+    alive = os.getppid()
+    dead, inside = tmp_path / f".out.part-{process.pid}-0", target / f".plumbwell.part-{process.pid}-3"
+    young, old = tmp_path / f".out.part-{alive}-0", tmp_path / f".out.part-{alive}-1"
+    other, strange = tmp_path / f".outer.part-{process.pid}-0", tmp_path / ".out.part-mine"
+    for folder in (dead, inside, old, young, other, strange):
         folder.mkdir()
         (folder / "stations.csv").write_text("half")
     for folder in (old, other):
         os.utime(folder, (time.time() - 2 * 86400,) * 2)
     write_new(target)
-    assert not old.exists() and young.exists() and other.exists()
+    assert not dead.exists() and not inside.exists() and not old.exists()
+    assert young.exists() and other.exists() and strange.exists()
+
+
+def refusing(real, refuses):
+    """A function of the system that refuses some paths."""
+
+    def call(path, *args, **kwargs):
+        refuses(Path(path), *args)
+        return real(path, *args, **kwargs)
+
+    return call
+
+
+def not_beside(path, *_):
+    if ".part-" in path.name and not path.name.startswith(".plumbwell"):
+        raise PermissionError(errno.EACCES, "Permission denied", str(path))
+
+
+def across_mounts(path, to, *_):
+    if path.parent != Path(to).parent and not path.parent.name.startswith(".plumbwell"):
+        raise OSError(errno.EXDEV, "Invalid cross-device link", str(path))
+
+
+def where_it_is(target):
+    with output_folder(target) as aside:
+        write_texts(aside, NEW)
+        return aside.parent
+
+
+@pytest.mark.parametrize("what", ["mkdir", "mount"])
+def test_where_nothing_can_stand_beside_the_target_the_hidden_folder_is_inside(target, tmp_path, monkeypatch, what):
+    if what == "mkdir":
+        monkeypatch.setattr(module.os, "mkdir", refusing(os.mkdir, not_beside))
+    else:
+        monkeypatch.setattr(module.os, "rename", refusing(os.rename, across_mounts))
+        monkeypatch.setattr(module.os, "replace", refusing(os.replace, across_mounts))
+    assert where_it_is(target) == target
+    assert content(target)["stations.csv"] == "new stations"
+    assert os.listdir(tmp_path) == ["out"]
+    assert not [name for name in os.listdir(target) if name.startswith(".")]
+
+
+def test_a_name_that_cannot_be_lengthened_serves_and_leaves_nothing_when_it_fails(tmp_path):
+    target = tmp_path / ("n" * 250)
+    with pytest.raises(RuntimeError), output_folder(target):
+        raise RuntimeError("midway")
+    assert os.listdir(tmp_path) == []
+    assert where_it_is(target) == target
+    assert sorted(os.listdir(target)) == sorted(NEW)
+
+
+def test_an_error_names_the_target_and_not_the_hidden_folder(target):
+    with pytest.raises(FileNotFoundError) as caught, output_folder(target) as aside:
+        (aside / "figure.svg").read_text()
+    assert caught.value.filename == str(target / "figure.svg")
+    with pytest.raises(OSError, match="name too long") as caught, output_folder(target / ("x" * 300)):
+        pass
+    assert caught.value.filename == str(target / ("x" * 300))
+
+
+@pytest.mark.parametrize("kind", ["file", "folder", "dangling link"])
+def test_a_persons_own_file_with_the_name_of_an_output_is_never_overwritten(target, kind):
+    own = target / "intervals.csv"
+    if kind == "file":
+        own.write_text("mine")
+    elif kind == "folder":
+        own.mkdir()
+    else:
+        own.symlink_to(target / "nowhere")
+    with pytest.raises(UnfitTarget, match="holds a file named like outputs .*: intervals.csv. Nothing is overwritten"):
+        check_target(target, survey=None)
+    (target / "summary.json").write_text('{"mine": true}')
+    with pytest.raises(UnfitTarget, match="files .*: intervals.csv, layers.csv, stations.csv, summary.json. "):
+        check_target(target, survey=None)
+
+
+def test_a_folder_with_our_own_outputs_serves_again(target):
+    assert check_target(target, survey=None) == target
+
+
+@pytest.mark.parametrize("kind", ["pipe", "device", "huge"])
+def test_a_summary_that_never_ends_is_not_ours_and_does_not_hang(target, kind):
+    summary = target / "summary.json"
+    summary.unlink()
+    if kind == "pipe":
+        if not hasattr(os, "mkfifo"):
+            pytest.skip("no pipes with names here")
+        os.mkfifo(summary)
+    elif kind == "device":
+        summary.symlink_to("/dev/zero")
+    else:
+        with open(summary, "wb") as file:
+            file.truncate(module.LARGEST_SUMMARY + 1)
+    assert outputs_of(target) == []
+    with pytest.raises(UnfitTarget, match="summary.json"):
+        check_target(target, survey=None)
+
+
+def test_the_top_of_the_file_system_is_refused():
+    with pytest.raises(UnfitTarget, match="top of the file system"):
+        check_target(Path(Path.cwd().anchor), survey=None)
 
 
 def test_two_runs_at_once_do_not_share_a_hidden_folder(target):

@@ -243,13 +243,14 @@ def test_named_but_unread_file_must_be_there(folder: Path) -> None:
         _read(folder, data='bodies = "bodies.csv"')
 
 
-def test_unknown_keys_and_misspelt_columns_want_a_look(folder: Path) -> None:
+def test_unknown_keys_tables_and_misspelt_columns_want_a_look(folder: Path) -> None:
     text = READINGS.replace("gamma [API]", "sensor_ofset [m]")
     (folder / "readings.csv").write_text(text, encoding="utf-8")
-    survey = _read(folder, site="latitud = 5")
+    survey = _read(folder, site="rig = 5", more="[crew]\nlead = 1\n")
+    looks = {note.place: note for note in survey.notes if note.severity == "look"}
+    assert looks["survey.toml, row 10, [site] rig"].text == 'the key "rig" in [site] is not known and has no effect'
+    assert looks["survey.toml, row 26, crew"].text == "the table [crew] is not known and has no effect"
     looks = {note.code: note for note in survey.notes if note.severity == "look"}
-    assert looks["unknown_key"].mend == 'perhaps "latitude" is meant'
-    assert looks["unknown_key"].place == "survey.toml, row 10, [site] latitud"
     assert looks["unknown_column"].mend == "if it is meant so, rename it to sensor_offset [m]"
 
 
@@ -307,3 +308,14 @@ def test_a_pipe_is_refused_without_waiting(folder: Path) -> None:
     os.mkfifo(folder / "path.csv")
     with pytest.raises(InputError, match="found not a plain file"):
         _read(folder, data='path = "path.csv"')
+
+
+def test_labels_that_differ_by_blanks_or_from_a_place_are_told(folder: Path) -> None:
+    text = READINGS.replace('"A, again"', "a").replace(",B,", ",p 1,")
+    (folder / "readings.csv").write_text(text, encoding="utf-8")
+    survey = _read(folder, data='places = "places.csv"', places="station,depth [m]\nP1,3\n")
+    told = [note.text for note in survey.notes if note.code == "labels_alike"]
+    assert told == [
+        'the stations "A" and "a" differ only by case or blanks and count as two',
+        'the station "p 1" and the place "P1" differ only by case or blanks and count as two',
+    ]

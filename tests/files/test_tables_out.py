@@ -218,3 +218,10 @@ def test_a_label_like_a_formula_comes_back_as_it_was(tmp_path):
     rows = f"2026-05-04T08:00:00Z,{written},1.0,5000.0\n2026-05-04T09:00:00Z,'quoted,9.0,5001.0\n"
     (tmp_path / "readings.csv").write_text("time,station,depth [m],reading [mGal]\n" + rows, "utf-8")
     assert read_survey(tmp_path).readings.station.names == ("=SUM(A1)", "'quoted")
+
+
+def test_control_characters_are_escaped_and_line_ends_and_tabs_stay():
+    texts = ["winch \x1b[31mred\x07", "two\nlines\tand a tab", "next\x85line\u2028sep\x7f", "plain"]
+    cells = list(text_cells(texts))
+    assert cells == ["winch \\x1b[31mred\\x07", '"two\nlines\tand a tab"', "next\\x85line\\u2028sep\\x7f", "plain"]
+    assert list(text_cells(["a\x1bb", "c"])) == ["a\\x1bb", "c"]

@@ -10,10 +10,12 @@ from plumbwell.density.interval import Pairs
 from plumbwell.reduction.located import Located
 from plumbwell.reduction.positions import WellPath
 from plumbwell.survey.column import Array
+from plumbwell.survey.errors import SurveyError
 from plumbwell.survey.places import Markers
 from plumbwell.survey.site import Site
 
 NEAR = 1e-6  # m; boundaries nearer to one another than this are one
+MOST_LAYERS = 5000  # that a step may make
 SEARCH_STEP = 1.0  # m of measured depth between the points in which a vertical depth is looked up
 
 
@@ -40,6 +42,11 @@ def layer_boundaries(
     markers : Markers or None
     path : WellPath
     site : Site
+
+    Raises
+    ------
+    SurveyError
+        When a step makes more than 5000 layers.
     """
     if len(pairs.top) == 0:
         return None
@@ -50,6 +57,12 @@ def layer_boundaries(
     inner = Boundaries(elevation=np.zeros(0), depth=np.zeros(0))
     if isinstance(manner, float):
         datum = site.datum_elevation
+        if (count := (ends[0] - ends[1]) / manner) > MOST_LAYERS:
+            raise SurveyError(
+                f"layer_boundaries = {manner:g} m in [recipe] makes {count:.0f} layers between the first "
+                f"and the last station; at most {MOST_LAYERS} are made: write a step of "
+                f"{np.ceil((ends[0] - ends[1]) / MOST_LAYERS * 10.0) / 10.0:.1f} m or more."
+            )
         first, last = (datum - ends[0]) / manner, (datum - ends[1]) / manner
         tvd = np.arange(np.ceil(first), np.floor(last) + 1.0) * manner
         inner = Boundaries(elevation=datum - tvd, depth=_depth_of(tvd, path, ends, site))

@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from plumbwell.earth.shells import difference_of_cubes
 from plumbwell.survey.column import Array, Column, Index, Input, Weighing, frozen, weighed
 from plumbwell.survey.errors import NumericalError
 
@@ -90,14 +91,8 @@ def volume_shares(*, tops: Array, bases: Array, boundaries: Array, radius: float
     upper = np.minimum(tops[:, None], boundaries[None, :-1])
     lower = np.maximum(bases[:, None], boundaries[None, 1:])
     thickness = upper - lower
-    volume = np.where(thickness > SLIVER, _cubes(radius, upper, lower), 0.0)
-    return volume / _cubes(radius, tops, bases)[:, None]
-
-
-def _cubes(radius: float, upper: Array, lower: Array) -> Array:
-    """Difference of the cubes of two radii, from the difference of their elevations."""
-    outer, inner = radius + upper, radius + lower
-    return (upper - lower) * (outer * outer + outer * inner + inner * inner)
+    volume = np.where(thickness > SLIVER, difference_of_cubes(radius + upper, radius + lower), 0.0)
+    return volume / difference_of_cubes(radius + tops, radius + bases)[:, None]
 
 
 def plain_layers(

@@ -27,3 +27,6 @@ MICROGAL = 1e-8
 
 EOTVOS = 1e-9
 """One eotvos, s-2, exact."""
+
+GRAM_PER_CM3 = 1000.0
+"""1 g/cm3 in kg m-3, exact."""

@@ -22,8 +22,8 @@ CAP_RADIUS = 6_371_000.0
 """Radius of the sphere that cap lies on, m (LaFehr 1991)."""
 
 
-def _cubes(upper: Any, lower: Any) -> Any:
-    """upper^3 - lower^3 without the loss of digits of the plain difference."""
+def difference_of_cubes(upper: Any, lower: Any) -> Any:
+    """upper^3 - lower^3 without the loss of digits of the plain difference; m3 for radii in m."""
     return (upper - lower) * (upper * upper + upper * lower + lower * lower)
 
 
@@ -73,9 +73,9 @@ def shell_term(
     outer = radius + upper
     inner = radius + within
     # Mass over 4 pi/3 from the ground down to each top, then the rest within the station's own layer.
-    whole = np.concatenate(((0.0,), np.cumsum(densities[:-1] * _cubes(outer[:-1], outer[1:]))))
+    whole = np.concatenate(((0.0,), np.cumsum(densities[:-1] * difference_of_cubes(outer[:-1], outer[1:]))))
     layer = np.searchsorted(-upper[1:], -within)
-    above = whole[layer] + densities[layer] * _cubes(outer[layer], inner)
+    above = whole[layer] + densities[layer] * difference_of_cubes(outer[layer], inner)
     return above * (-FOUR_PI_G / 3.0) / (inner * inner)
 
 
@@ -105,7 +105,7 @@ def interval_density(
     # delta_t r_t^2 - delta_b r_b^2, from the small differences.
     by_anomaly = np.subtract(top_anomaly, base_anomaly) * top_radius**2
     by_radius = np.multiply(base_anomaly, top_radius - base_radius) * (top_radius + base_radius)
-    return (3.0 / FOUR_PI_G) * (by_anomaly + by_radius) / _cubes(top_radius, base_radius)
+    return (3.0 / FOUR_PI_G) * (by_anomaly + by_radius) / difference_of_cubes(top_radius, base_radius)
 
 
 def interval_density_derivatives(
@@ -142,7 +142,7 @@ def interval_density_derivatives(
     """
     top_radius = np.asarray(top_radius, dtype=float)
     base_radius = np.asarray(base_radius, dtype=float)
-    volume = _cubes(top_radius, base_radius)
+    volume = difference_of_cubes(top_radius, base_radius)
     density = interval_density(
         top_anomaly=top_anomaly, base_anomaly=base_anomaly, top_radius=top_radius, base_radius=base_radius
     )
@@ -234,7 +234,7 @@ def spherical_cap(
     cube = edge * (edge_near**2 + edge_near * edge_far + edge_far**2) / 3.0
     ring = cube / r**2 + c * product / r + (2.0 * c * c - 1.0) * edge - r * c * s2 * logarithm
     middle = np.clip(r, lower, upper)
-    full = (_cubes(middle, lower) - _cubes(upper, middle)) / (3.0 * r**2)
+    full = (difference_of_cubes(middle, lower) - difference_of_cubes(upper, middle)) / (3.0 * r**2)
     return TWO_PI_G * np.asarray(density, dtype=float) * np.sign(height_of_rock) * (ring + full)
 
 

@@ -19,7 +19,7 @@ from numpy.typing import ArrayLike
 
 from plumbwell.files.collected import Collected
 from plumbwell.files.las_header import HeaderLine, Sections, sections_of
-from plumbwell.files.las_rows import RUN_TOGETHER, rows_of
+from plumbwell.files.las_rows import RUN_TOGETHER, even_columns, rows_of
 from plumbwell.files.paths import UnfitFile, plain_bytes, text_of
 from plumbwell.files.text_table import physical_lines
 from plumbwell.survey.column import Array, Index, frozen, frozen_index
@@ -119,6 +119,8 @@ def las_of(data: bytes, *, file: str, collected: Collected) -> LasFile | None:
         text = text[:end]
     before = len(collected.problems)
     sections = sections_of(physical_lines(text), file=file, collected=collected)
+    if len(collected.problems) > before:
+        return None  # what else is missing follows from that
     version, wrap, null = _stated(sections, file, collected)
     names = sections.headers.get("C", [])
     if not names:
@@ -150,11 +152,13 @@ def las_of(data: bytes, *, file: str, collected: Collected) -> LasFile | None:
         )
     if len(collected.problems) > before:
         return None
-    rows = rows_of(sections, len(names), wrap=wrap, file=file, collected=collected)
-    if rows is None:
-        return None
-    lines = frozen_index(np.array([line for line, _ in rows], dtype=np.intp))
-    columns = list(zip(*(cells for _, cells in rows), strict=True))
+    even = None if wrap else even_columns(sections, len(names))
+    if even is None:
+        rows = rows_of(sections, len(names), wrap=wrap, file=file, collected=collected)
+        if rows is None:
+            return None
+        even = [line for line, _ in rows], list(zip(*(cells for _, cells in rows), strict=True))
+    lines, columns = frozen_index(np.array(even[0], dtype=np.intp)), even[1]
     curves = _curves(names, columns, lines, null, file, collected)
     well = sections.headers.get("W", [])
     if version < 2.0:

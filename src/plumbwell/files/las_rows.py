@@ -17,6 +17,19 @@ _DECIMAL_COMMA = re.compile(r"[+-]?\d+,\d+")
 Row = tuple[int, list[str]]
 
 
+def even_columns(sections: Sections, width: int) -> tuple[list[int], list[tuple[str, ...]]] | None:
+    """Physical lines and columns of data whose every line holds a value a curve, parted by blanks; else None.
+
+    A long log is read so without a list a row.
+    """
+    lines, texts = [line for line, _ in sections.data], [text for _, text in sections.data]
+    joined = "\n".join(texts)
+    if "," in joined or any(len(text.split()) != width for text in texts):
+        return None
+    cells = joined.split()
+    return lines, [tuple(cells[place::width]) for place in range(width)]
+
+
 def rows_of(
     sections: Sections, width: int, *, wrap: bool, file: str, collected: Collected
 ) -> list[Row] | None:

@@ -22,10 +22,12 @@ from plumbwell.files.text_table import heading_parts, read_table
 from plumbwell.survey.column import Array, Column, Index, Origin, frozen, frozen_index
 from plumbwell.survey.errors import shown
 from plumbwell.survey.log import DensityLog
-from plumbwell.survey.units import known_labels, unit
+from plumbwell.survey.units import LABELS, known_labels, unit
 
 DENSITY, LENGTH = "kg/m3", "m"
 DENSEST = 10000.0  # kg/m3
+LIGHTEST, HEAVIEST = 800.0, 6000.0  # kg/m3, limits of the median of a log of rock
+GRAM_PER_CM3 = 1000.0
 DEPTHS = ("dept", "depth", "md")
 NULL_MARKS = (-999.25, -999.0, -9999.0, -9999.25, -99999.0)
 
@@ -263,7 +265,11 @@ def _column(
 def _check_densities(curves: _Curves, curve: _Curve, column: Column, collected: Collected) -> None:
     out = (column.values <= 0.0) | (column.values > DENSEST)
     # Marks of what is missing were told of already.
-    marks = np.isin(column.values if curve.values is None else curve.values, NULL_MARKS)
+    written = column.values if curve.values is None else curve.values
+    marks = np.isin(written, NULL_MARKS)
+    known = written[~marks & ~np.isnan(written)]
+    if known.size and _refuse_median(curves, curve, float(np.median(known)), collected):
+        return
     rows = np.flatnonzero(out & ~marks).tolist()
     if rows:
         lines = [int(curves.lines[row]) for row in rows]
@@ -275,6 +281,27 @@ def _check_densities(curves: _Curves, curve: _Curve, column: Column, collected: 
             expected="densities above 0, at most 10 g/cm3",
             mend="correct the unit of the curve, or write the null value where the log is bad",
         )
+
+
+def _refuse_median(curves: _Curves, curve: _Curve, median: float, collected: Collected) -> bool:
+    """A curve whose median no rock has is a problem that says which unit would fit; True when it is."""
+    factors = {factor: label for label, (factor, _) in reversed(LABELS[DENSITY].items())}
+    factor = unit(curve.label, DENSITY).factor
+    if LIGHTEST <= median * factor <= HEAVIEST:
+        return False
+    fitting = [label for other, label in factors.items() if LIGHTEST <= median * other <= HEAVIEST]
+    mend = "name the density curve as density in the [[log]] of this file, or correct its unit"
+    if fitting:
+        mend = f"write the unit {' or '.join(sorted(fitting))} at the curve, which would fit; or name another curve"
+    collected.problem(
+        curves.file,
+        None,
+        shown(curve.heading),
+        found=f"densities whose median is {median * factor / GRAM_PER_CM3:.4g} g/cm3",
+        expected=f"a median of {LIGHTEST / GRAM_PER_CM3:g} to {HEAVIEST / GRAM_PER_CM3:g} g/cm3",
+        mend=mend,
+    )
+    return True
 
 
 def _rising(columns: dict[str, Column], file: str, collected: Collected) -> dict[str, Column]:

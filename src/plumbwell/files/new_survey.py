@@ -67,7 +67,7 @@ instrument = "A"
 readings = "readings.csv"
 places = "places.csv"
 path = "path.csv"
-markers = "markers.csv"     # its densities act only with reference_density = "markers" under [recipe]
+markers = "markers.csv"     # its densities act only with reference_density = "markers", far below
 # ties = "ties.csv"         # station, gravity [mGal], gravity_sd [mGal]: makes gravity absolute
 time_zone = "UTC"           # of times written without a zone: "UTC", an offset such as "+01:00", or the name
                             # of a place such as "Europe/Oslo" for a watch that shows local time, summer time

@@ -55,7 +55,8 @@ def check_target(target: Path, *, survey: Path | None) -> Path:
         is_folder, is_there = folder.is_dir(), folder.exists()
         holds_survey = (folder / SURVEY).exists()
     except (OSError, ValueError, RuntimeError) as error:
-        raise UnfitTarget(f'The output folder "{name}" cannot be opened: {error}.') from None
+        reason = getattr(error, "strerror", None) or str(error)
+        raise UnfitTarget(f'The output folder "{name}" cannot be opened: {reason}.') from None
     if is_there and not is_folder:
         raise UnfitTarget(f'"{name}" is a file; name a folder for the outputs.')
     if folder == folder.parent:

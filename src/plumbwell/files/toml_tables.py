@@ -130,8 +130,10 @@ class TomlTable:
 
     def row(self, key: str | None = None) -> int | None:
         """Physical line of a key, else of the table's first line, else None."""
-        if key is not None and (*self.path, key) in self.lines:
-            return self.lines[(*self.path, key)]
+        if key is not None:
+            for place in ((*self.path, key), (*self.path, key, "0")):
+                if place in self.lines:
+                    return self.lines[place]
         return self.lines.get(self.path)
 
     def place(self, key: str) -> str:
@@ -248,7 +250,7 @@ class TomlTable:
                 mend=f"write [{key}] over its keys",
             )
             value = {}
-        return self._under(value, f"[{'.'.join((*self.path, key))}]", (*self.path, key))
+        return self._under(value, f"[{shown('.'.join((*self.path, key)))}]", (*self.path, key))
 
     def _under(self, values: dict[str, Any], title: str, path: tuple[str, ...]) -> TomlTable:
         return TomlTable(values, title, path, file=self.file, lines=self.lines, collected=self.collected)

@@ -11,7 +11,7 @@ from pathlib import Path
 import numpy as np
 
 from plumbwell import __version__
-from plumbwell.earth.constants import MILLIGAL
+from plumbwell.earth.constants import GRAM_PER_CM3, MILLIGAL
 from plumbwell.plates.figure import write_png, write_svg
 from plumbwell.plates.numbers import counted, number, sd_decimals
 from plumbwell.plates.plate import PlateFinding, PlateInterval, PlateStation, SurveyPlate
@@ -23,7 +23,6 @@ from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Array, Index
 
-GRAM_PER_CM3 = 1000.0
 ROUND_DEPTH = 100.0  # m, from which the depth of the hole is told without decimals
 
 

@@ -14,7 +14,7 @@ from plumbwell.survey.column import Array, Index, frozen, frozen_index
 
 
 def unbroken_stretches(basis: DriftBasis, visits: Visits) -> Index:
-    """Where each stretch of a visit that no tare of unknown size breaks starts in `visits.rows`, and the end, (g + 1,)."""
+    """Where each stretch of a visit that no tare of unknown size breaks starts in `visits.rows`, and the end."""
     unknown = [n for n, tare in enumerate(basis.tares) if tare.size is None or tare.size_sd is not None]
     if not unknown:
         return visits.start

@@ -164,5 +164,5 @@ class Results:
 
     @property
     def absolute(self) -> bool:
-        """True when ties fix the gravity of every station."""
-        return bool((self.network.gravity.datum < 0).all())
+        """True when a tie fixes the gravity of stations that were read."""
+        return bool(((self.network.gravity.datum < 0) & (self.stations.visits > 0)).any())

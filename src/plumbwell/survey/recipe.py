@@ -11,8 +11,7 @@ from dataclasses import dataclass, fields, replace
 from difflib import get_close_matches
 from typing import Any
 
-MILLIGAL = 1e-5
-GRAM_PER_CM3 = 1000.0
+from plumbwell.earth.constants import GRAM_PER_CM3, MILLIGAL
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

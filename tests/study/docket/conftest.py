@@ -13,7 +13,7 @@ from plumbwell.study.finding import Finding
 from plumbwell.study.reduce import reduce
 from plumbwell.study.results import Results
 
-DEPTHS = {"A": 20.0, "B": 70.0, "C": 120.0, "D": 170.0}
+DEPTHS = {"A": 20.0, "B": 70.0, "C": 120.0, "D": 170.0, "E": 220.0}
 LOOP = "ABCDCBADBCA"
 START = datetime(2026, 5, 4, 8, 0, tzinfo=UTC)
 SLOPE = 0.3086 - 0.08387 * 2.4

@@ -182,6 +182,21 @@ def test_equal_times_in_a_run_want_a_look(invented, found):
     assert one.severity == "look" and one.place == "readings.csv, row 6" and one.rows == (4,)
 
 
+def test_copied_rows_are_called_copies(invented, found):
+    rows = invented.visits()
+    results = invented.survey([*rows, dict(rows[7]), dict(rows[2])])
+    (one,) = found(results, "rows_twice")
+    assert one.severity == "look" and one.place == "readings.csv, rows 36 and 35" and set(one.rows) == {33, 34}
+    assert one.text.startswith("2 readings stand twice, with the time, station, depth and reading of another row")
+    assert not found(results, "equal_times")
+
+
+def test_a_row_of_the_same_time_with_another_reading_is_no_copy(invented, found):
+    rows = invented.visits()
+    results = invented.survey([*rows, {**rows[7], "reading [mGal]": "4004.0"}, dict(rows[2])])
+    assert len(found(results, "rows_twice")[0].rows) == 1 and len(found(results, "equal_times")[0].rows) == 1
+
+
 def test_equal_times_of_two_runs_are_two_instruments(invented, found):
     rows = invented.visits() + invented.visits(run="2")
     assert not found(invented.survey(rows), "equal_times")
@@ -218,3 +233,13 @@ def test_single_visits_are_counted_and_named(invented, found):
     assert one.severity == "note" and one.text.startswith("1 of 4 stations stands on a single visit (D)")
     assert one.stations == (3,)
     assert not found(invented.survey(), "single_visit")
+
+
+def test_a_long_label_is_cut_and_one_that_cannot_be_seen_is_spelt_out(invented, found):
+    rows = [{**row, "station": {"A": "A" * 150, "B": "B\u200b"}.get(row["station"], row["station"])} for row in
+            invented.visits("ABCDACDAC")]  # fmt: skip
+    results = invented.survey(rows)
+    (one,) = found(results, "relative_gravity")
+    assert one.place == "A" * 79 + "…" and "A" * 80 not in one.text
+    (one,) = found(results, "single_visit")
+    assert "(B\\u200b)" in one.text and one.stations == (1,)

@@ -61,3 +61,40 @@ def test_a_reference_by_a_log_from_the_ground_to_the_bottom_tells_nothing(invent
     recipe = 'tide = "none"\nreference_density = "log"'
     results = invented.survey(tables=LOG, files=log(0, 180), recipe=recipe)
     assert not [one for one in results.findings if one.code.startswith("reference_")]
+
+
+def test_most_intervals_far_from_the_log_want_a_look(invented, found):
+    rows = invented.visits("ABCDEDCBAECA")
+    heavy = {"log.csv": log(0, 230)["log.csv"].replace("2.400", "2.900")}
+    results = invented.survey(rows, tables=LOG, files=heavy)
+    (one,) = found(results, "log_disagrees")
+    assert one.severity == "look" and one.intervals == (0, 1, 2, 3)
+    assert one.text.startswith(
+        "4 of 4 intervals differ from the log by more than 0.3 g/cm³ and 10 sd, in the median by \u22120.5"
+    )
+
+
+def test_a_log_that_fits_or_differs_a_little_is_silent(invented, found):
+    rows = invented.visits("ABCDEDCBAECA")
+    for text in ("2.400", "2.650"):
+        other = {"log.csv": log(0, 230)["log.csv"].replace("2.400", text)}
+        assert not found(invented.survey(rows, tables=LOG, files=other), "log_disagrees")
+
+
+def test_three_intervals_are_too_few_to_accuse_a_log(invented, found):
+    heavy = {"log.csv": log(0, 180)["log.csv"].replace("2.400", "2.900")}
+    assert not found(invented.survey(tables=LOG, files=heavy), "log_disagrees")
+
+
+def test_intervals_without_one_density_are_an_error(invented, found):
+    rows = [{key: cell for key, cell in row.items() if key != "depth [m]"} for row in invented.visits()]
+    places = "station,east [m],north [m],elevation [m]\nA,0,0,480\nB,300,0,479\nC,600,0,478\nD,900,0,{low}\n"
+    results = invented.survey(rows, data='places = "places.csv"', files={"places.csv": places.format(low=477)})
+    (one,) = found(results, "no_density")
+    assert one.severity == "error" and one.intervals == (0, 1, 2)
+    assert one.text == (
+        "None of the 3 intervals has a density: the stations stand side by side, not under one another. Nothing is "
+        "told of the rock."
+    )
+    results = invented.survey(rows, data='places = "places.csv"', files={"places.csv": places.format(low=400)})
+    assert not found(results, "no_density")

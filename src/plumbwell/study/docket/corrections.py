@@ -25,6 +25,7 @@ from plumbwell.study.docket.wording import (
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Array
+from plumbwell.survey.errors import shown
 
 ALLOWED = 1.0 * MICROGAL
 """Rms by which two tides of one kind may differ: ephemerides, heights, times to the minute."""
@@ -129,7 +130,7 @@ def instruments_tide(results: Results) -> Iterator[Finding]:
     if not number:
         return
     partly = number < np.count_nonzero(mine)
-    names = listed([readings.instrument.names[one] for one in np.flatnonzero(applied).tolist()])
+    names = listed([shown(readings.instrument.names[one]) for one in np.flatnonzero(applied).tolist()])
     text = (
         f"{counted(number, 'reading holds', 'readings hold')} the tide correction of the "
         f"instrument ({names}) itself, which is not given: ours is not added there"
@@ -183,11 +184,11 @@ def pressure_refused(results: Results) -> Iterator[Finding]:
     for fact in results.pressure.facts:
         if fact.reason not in ("far", "rises"):
             continue
-        where = f"The pressures of instrument {fact.instrument} in run {fact.run}"
+        where = f"The pressures of instrument {shown(fact.instrument)} in run {shown(fact.run)}"
         if fact.reason == "far":
             text = (
                 f"{where} are up to {amount(fact.largest / HECTOPASCAL, 1, signed=True)} hPa from the "
-                f"standard of that height (row {amount(line(results, fact.largest_row), 0)}), more than "
+                f"standard of that height (row {line(results, fact.largest_row)}), more than "
                 f"{LARGEST_DEPARTURE / HECTOPASCAL:g} hPa"
             )
         else:
@@ -198,7 +199,7 @@ def pressure_refused(results: Results) -> Iterator[Finding]:
         yield Finding(
             code="pressure_not_air",
             severity="error",
-            place=f"run {fact.run}, instrument {fact.instrument}",
+            place=f"run {shown(fact.run)}, instrument {shown(fact.instrument)}",
             text=f"{text}: this is not the pressure of the free air, and no effect of it was taken out.",
             mend="Give the pressure of a barometer in the open air and its barometer_elevation, or remove the column.",
             rows=(fact.largest_row,),
@@ -222,8 +223,8 @@ def pressure_partly(results: Results) -> Iterator[Finding]:
         yield Finding(
             code="pressure_partly_given",
             severity="look",
-            place=f"run {fact.run}; {lines(results, rows)}",
-            text=f"{counted(rows.size, 'reading')} of run {fact.run} {'has' if rows.size == 1 else 'have'} "
+            place=f"run {shown(fact.run)}; {lines(results, rows)}",
+            text=f"{counted(rows.size, 'reading')} of run {shown(fact.run)} {'has' if rows.size == 1 else 'have'} "
             f"no pressure and get no correction, while those beside them get up to {gravity(step)}.",
             mend="Fill in the missing pressures, or remove them all.",
             rows=numbers(rows),
@@ -263,8 +264,8 @@ def applied_before(results: Results) -> Iterator[Finding]:
             yield Finding(
                 code="applied_by_instrument",
                 severity="note",
-                place=f"instrument {one.name}",
-                text=f"The readings of instrument {one.name} hold its own correction{'s' if both else ''} "
+                place=f"instrument {shown(one.name)}",
+                text=f"The readings of instrument {shown(one.name)} hold its own correction{'s' if both else ''} "
                 f"for {' and '.join(held)}; what {'they leave' if both else 'it leaves'} is estimated as "
                 "drift like any other.",
                 mend="Nothing; drift_rate and drift_rate_sd are then those of what is left.",

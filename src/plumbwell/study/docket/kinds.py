@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Iterator
 
-from plumbwell.study.docket import corrections, depths, network, outliers, rock, stated
+from plumbwell.study.docket import corrections, depths, gravity_with_depth, network, outliers, rock, stated, ties
 from plumbwell.study.docket.wording import listed
 from plumbwell.study.finding import SEVERITIES, Finding
 from plumbwell.study.results import Results
@@ -18,6 +18,8 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     network.rank_lost,
     network.no_repeat,
     depths.second_places,
+    depths.places_disagree,
+    rock.no_density,
     corrections.pressure_refused,
     network.few_freedom,
     network.equal_times,
@@ -25,6 +27,13 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     network.tie_unvisited,
     network.unplaced_ties,
     network.tares_outside,
+    ties.tie_far,
+    ties.ties_disagree,
+    depths.above_ground,
+    depths.places_far,
+    gravity_with_depth.gravity_with_depth,
+    rock.log_disagrees,
+    depths.one_thick,
     corrections.tide_disagrees,
     corrections.no_tide,
     corrections.instruments_tide,

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 import numpy as np
+from numpy.typing import NDArray
 
 from plumbwell.reduction.design import DriftUnknown
 from plumbwell.reduction.network import NO_TIES, RANK_TOLERANCE, spectrum
@@ -25,14 +26,15 @@ from plumbwell.study.docket.wording import (
 )
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
+from plumbwell.survey.column import Index
+from plumbwell.survey.errors import shown
 
 UNTOUCHED = 1e-6
 """Share of a mean drift that lies where no visit looks; less is rounding."""
 
 
 def single_station(results: Results) -> Iterator[Finding]:
-    """No interval at all: one station, all of the column within the least thickness, or none in the "
-    "column."""
+    """No interval at all: one station, all of the column within the least thickness, or none in the column."""
     if len(results.intervals) or results.network.parts.count > 1:
         return
     column = [n for n, role in enumerate(results.stations.role) if role == "column"]
@@ -262,7 +264,7 @@ def datum_station(results: Results) -> Iterator[Finding]:
             code="datum_station_unknown",
             severity="look",
             place="recipe, datum_station",
-            text=f'datum_station is "{wanted}", which is no station of this survey: {instead}.',
+            text=f'datum_station is "{shown(wanted)}", which is no station of this survey: {instead}.',
             mend="Write the label of a station as it stands in the readings.",
         )
     elif datum[results.stations.label.index(wanted)] < 0:
@@ -270,7 +272,7 @@ def datum_station(results: Results) -> Iterator[Finding]:
             code="datum_station_unused",
             severity="note",
             place="recipe, datum_station",
-            text=f'datum_station "{wanted}" has no effect: a tie fixes gravity there.',
+            text=f'datum_station "{shown(wanted)}" has no effect: a tie fixes gravity there.',
             mend="Nothing; or remove the ties, if gravity is to count from it.",
         )
 
@@ -292,25 +294,53 @@ def tares_outside(results: Results) -> Iterator[Finding]:
         yield Finding(
             code="tare_outside",
             severity="look",
-            place=f"run {tare.run}",
-            text=f"The tare of run {tare.run} at {moment(tare.time)} has no effect: {span}.",
+            place=f"run {shown(tare.run)}",
+            text=f"The tare of run {shown(tare.run)} at {moment(tare.time)} has no effect: {span}.",
             mend="Correct its time or its run, or remove it.",
         )
 
 
 def equal_times(results: Results) -> Iterator[Finding]:
-    """Used readings with the time of the one before them in their run."""
+    """Used readings with the time of the one before them in their run: copies of a row, and others."""
     rows = results.network.visits.equal_times
-    if rows.size:
+    if not rows.size:
+        return
+    copies = _copies(results, rows)
+    twice = rows[copies]
+    if twice.size:
+        yield Finding(
+            code="rows_twice",
+            severity="look",
+            place=lines(results, twice),
+            text=f"{counted(twice.size, 'reading stands', 'readings stand')} twice, with the time, station, depth and "
+            "reading of another row: copied, or exported twice? Each counts as a reading of its own and makes "
+            "the noise look smaller.",
+            mend="Remove the copies, or take them out of use.",
+            rows=numbers(twice),
+        )
+    left = rows[~copies]
+    if left.size:
         yield Finding(
             code="equal_times",
             severity="look",
-            place=lines(results, rows),
-            text=f"{counted(rows.size, 'reading bears', 'readings bear')} the same time as the one before in "
+            place=lines(results, left),
+            text=f"{counted(left.size, 'reading bears', 'readings bear')} the same time as the one before in "
             "the same run: their order, and the drift between them, is not known.",
             mend="Correct the times, or take the doubles out of use.",
-            rows=numbers(rows),
+            rows=numbers(left),
         )
+
+
+def _copies(results: Results, rows: Index) -> NDArray[np.bool_]:
+    """True for the rows whose run, time, station, depth and reading a used row before them has too."""
+    readings = results.survey.readings
+    used = np.flatnonzero(readings.use & np.isin(readings.time.values, readings.time.values[rows]))
+    depth = np.nan_to_num(readings.depth.values[used], nan=np.inf)
+    columns = (readings.run.code, readings.time.values, readings.station.code, readings.reading.values)
+    keys = zip(*(one[used].tolist() for one in columns), depth.tolist(), strict=True)
+    first: dict[object, int] = {}
+    copied = {row for row, key in zip(used.tolist(), keys, strict=True) if first.setdefault(key, row) != row}
+    return np.array([row in copied for row in rows.tolist()], dtype=bool)
 
 
 def unplaced_ties(results: Results) -> Iterator[Finding]:
@@ -321,7 +351,8 @@ def unplaced_ties(results: Results) -> Iterator[Finding]:
             code="tie_unknown_station",
             severity="look",
             place="ties.csv",
-            text=f"{listed(names)}: no used reading and no place says where that is, so the tie is not used.",
+            text=f"{listed([shown(one) for one in names])}: no used reading and no place says where that is, so "
+            "the tie is not used.",
             mend="Compare the label with the readings, or give the station a row in places.csv.",
         )
 

@@ -13,6 +13,7 @@ from math import expm1, inf, log1p
 import numpy as np
 
 from plumbwell.reduction.calibration import instruments_used
+from plumbwell.study.docket.ties import accused
 from plumbwell.study.docket.wording import (
     amount,
     counted,
@@ -105,7 +106,12 @@ def beside_the_rest(ratio: Array, *, freedom: float, variance: Array, least: Arr
 
 
 def outliers(results: Results) -> Iterator[Finding]:
-    """Visits that disagree with the rest of the network, readings that disagree with their visit."""
+    """Visits that disagree with the rest of the network, readings that disagree with their visit.
+
+    While ties contradict one another none is accused: they bend the network, and all would be.
+    """
+    if accused(results).size:
+        return
     fit, visits = results.network.adjustment, results.network.visits
     one, noise, counts = fit.solution, fit.noise, np.diff(visits.start)
     redundancy = 1.0 - one.weight * one.variance_of_fit()
@@ -224,7 +230,7 @@ def _readings(results: Results, rows: Index, ratio: Array) -> Iterator[Finding]:
             code="reading_disagrees",
             severity="look",
             place=f"{station(results, where)}; {lines(results, [row])}",
-            text=f"The reading of row {amount(line(results, row), 0)} at {depth(results, where)} (visit "
+            text=f"The reading of row {line(results, row)} at {depth(results, where)} (visit "
             f"{visit + 1}) lies {gravity(float(residual[row]), signed=True)} "
             f"({amount(abs(float(ratio[number])), 1)} sd) off the others of its visit.",
             mend="Look at its cell and its note; take it out of use with a reason, if the instrument had not settled.",

@@ -7,15 +7,21 @@ from collections.abc import Iterator
 import numpy as np
 
 from plumbwell.reduction.reference_rock import END_THICKNESS
-from plumbwell.study.docket.wording import amount, counted, density, interval, listed, numbers
+from plumbwell.study.docket.wording import amount, counted, density, interval, interval_names, listed, numbers
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
+from plumbwell.survey.errors import shown
 
 LIGHTEST, HEAVIEST = 500.0, 6000.0
 """kg/m3; what lies outside is no rock as it stands in the ground."""
 
 BEYOND_DOUBT = 3.0
 """Standard deviations by which a density must lie outside."""
+
+LEAST_COMPARED = 4
+LOG_APART = 300.0
+"""kg/m3; by so much, and so many standard deviations, most densities differ from a log that is wrong."""
+LOG_RATIO = 10.0
 
 WORST = 5
 
@@ -54,6 +60,54 @@ def density_outside(results: Results) -> Iterator[Finding]:
         )
 
 
+def no_density(results: Results) -> Iterator[Finding]:
+    """Intervals, and none of them with a density: nothing could be computed."""
+    value = results.intervals.density.values
+    if not value.size or not np.isnan(value).all():
+        return
+    text = f"None of the {value.size} intervals has a density"
+    if value.size == 1:
+        text = "The one interval has no density"
+    if not results.intervals.densities.pairs.joined.any():
+        text += ": the stations stand side by side, not under one another"
+    yield Finding(
+        code="no_density",
+        severity="error",
+        place="intervals",
+        text=f"{text}. Nothing is told of the rock.",
+        mend="See the positions in places.csv and the roles; densities need stations at different heights, one "
+        "below the other.",
+        intervals=tuple(range(value.size)),
+    )
+
+
+def log_disagrees(results: Results) -> Iterator[Finding]:
+    """Most densities differ from the log by far more than their error: something is wrong for all of them."""
+    if not results.survey.logs:
+        return
+    one = results.intervals
+    apart = one.density_less_log.values
+    compared = np.flatnonzero(np.isfinite(apart))
+    if compared.size < LEAST_COMPARED:
+        return
+    sd = np.hypot(one.density_sd.values, one.density_common_sd.values)[compared]
+    apart = apart[compared]
+    far = np.abs(apart) > np.maximum(LOG_APART, LOG_RATIO * sd)
+    if 2 * np.count_nonzero(far) <= compared.size:
+        return
+    yield Finding(
+        code="log_disagrees",
+        severity="look",
+        place="log",
+        text=f"{np.count_nonzero(far)} of {compared.size} intervals differ from the log by more than "
+        f"{density(LOG_APART, 1)} and {LOG_RATIO:g} sd, in the median by {density(float(np.median(apart)), 2)} "
+        "(density less log).",
+        mend="See the unit and the curve of the log, its datum_height and depth_shift, and the units of depth and "
+        "reading; a mass near the hole does this too.",
+        intervals=numbers(compared[far]),
+    )
+
+
 def log_uncovered(results: Results) -> Iterator[Finding]:
     """Intervals for which the logs give no mean density."""
     one = results.intervals
@@ -65,13 +119,13 @@ def log_uncovered(results: Results) -> Iterator[Finding]:
     thickness = one.densities.thickness.values[bare]
     open_part = (thickness * (1.0 - np.nan_to_num(one.log_coverage.values[bare]))).tolist()
     words = [
-        f"{one.from_station[n]} to {one.to_station[n]} ({amount(metres, 1)} m)"
+        f"{interval_names(results, n)} ({amount(metres, 1)} m)"
         for n, metres in zip(bare[:WORST].tolist(), open_part[:WORST], strict=True)
     ] + [""] * (bare.size - WORST)
     yield Finding(
         code="log_uncovered",
         severity="note",
-        place=f"{one.from_station[bare[0]]} to {one.to_station[bare[-1]]}",
+        place=f"{shown(one.from_station[bare[0]])} to {shown(one.to_station[bare[-1]])}",
         text=f"{counted(bare.size, 'interval has', 'intervals have')} no log density, since the log leaves "
         f"{amount(sum(open_part), 1)} m of them uncovered: {listed(words, WORST)}.",
         mend="Nothing; or bring in a log that covers them, or lower minimum_coverage.",

@@ -9,6 +9,7 @@ import numpy as np
 
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Index
+from plumbwell.survey.errors import shown
 
 MICROGAL = 1e-8
 MILLIGAL = 1e-5
@@ -54,10 +55,10 @@ def counted(number: int, one: str, many: str = "") -> str:
 
 def listed(names: Sequence[str], most: int = LISTED) -> str:
     """Names parted by commas, the last by "and"; what is too much is counted."""
-    shown = list(names[:most])
+    words = list(names[:most])
     if len(names) > most:
-        shown.append(f"{amount(len(names) - most, 0)} more")
-    return shown[0] if len(shown) == 1 else ", ".join(shown[:-1]) + " and " + shown[-1]
+        words.append(f"{amount(len(names) - most, 0)} more")
+    return words[0] if len(words) == 1 else ", ".join(words[:-1]) + " and " + words[-1]
 
 
 def numbers(of: Iterable[int] | Index) -> tuple[int, ...]:
@@ -73,23 +74,31 @@ def depth(results: Results, station: int) -> str:
     return f"elevation {amount(float(results.stations.located.positions.elevation.values[station]), 1)} m"
 
 
+def label(results: Results, number: int) -> str:
+    """The label of a station, fit for a message."""
+    return shown(results.stations.label[number])
+
+
 def station(results: Results, number: int) -> str:
     """A station with its depth: `TB-03, 66.0 m`."""
-    return f"{results.stations.label[number]}, {depth(results, number)}"
+    return f"{label(results, number)}, {depth(results, number)}"
 
 
 def stations(results: Results, of: Index | Sequence[int], most: int = LISTED) -> str:
     """The labels of stations, the first few by name."""
-    labels = results.stations.label
-    return listed([labels[one] for one in of[:most]] + [""] * (len(of) - most), most)
+    return listed([label(results, int(one)) for one in of[:most]] + [""] * (len(of) - most), most)
 
 
 def interval(results: Results, number: int) -> str:
     """An interval with its depths: `TB-03 to TB-04, 66.0 m to 91.0 m`."""
-    pairs, one = results.intervals.densities.pairs, results.intervals
+    pairs = results.intervals.densities.pairs
     top, base = int(pairs.top[number]), int(pairs.base[number])
-    names = f"{one.from_station[number]} to {one.to_station[number]}"
-    return f"{names}, {depth(results, top)} to {depth(results, base)}"
+    return f"{interval_names(results, number)}, {depth(results, top)} to {depth(results, base)}"
+
+
+def interval_names(results: Results, number: int) -> str:
+    """The stations of an interval: `TB-03 to TB-04`."""
+    return f"{shown(results.intervals.from_station[number])} to {shown(results.intervals.to_station[number])}"
 
 
 def line(results: Results, row: int) -> int:
@@ -99,10 +108,10 @@ def line(results: Results, row: int) -> int:
 
 def lines(results: Results, rows: Index | Sequence[int]) -> str:
     """Rows of the readings by file and physical line: `readings.csv, rows 12 and 13`."""
-    first = [amount(line(results, int(row)), 0) for row in rows[:LISTED]] + [""] * (len(rows) - LISTED)
+    first = [str(line(results, int(row))) for row in rows[:LISTED]] + [""] * (len(rows) - LISTED)
     return f"{results.survey.readings.raw.file}, {'row' if len(rows) == 1 else 'rows'} {listed(first)}"
 
 
 def run(results: Results, code: int) -> str:
     """The label of a run."""
-    return results.survey.readings.run.names[code]
+    return shown(results.survey.readings.run.names[code])
