@@ -129,7 +129,7 @@ def _failed(error: Exception, *, writes: bool) -> int:
 
     if isinstance(error, InputError):
         lines = [f"The survey cannot be read: {counted(len(error.problems), 'problem')}."]
-        for one in error.problems:
+        for one in error.blocks:
             place = (one.file, f"row {one.row}" if one.row is not None else None, one.column)
             lines += ["", visible(", ".join(part for part in place if part is not None))]
             lines += wrapped(one.found, "  found:    ")

@@ -48,7 +48,7 @@ def test_depths_are_multiples_of_half_a_metre_within_the_stations(well):
     text = reduced_las(well)
     las = lasio.read(text)
     depth = las["DEPT"]
-    located = well.stations.located.sensor_depth.values
+    located = well.stations.located.mark_depth.values
     role = np.array(well.stations.role)
     first, last = np.nanmin(located[role == "column"]), np.nanmax(located[role == "column"])
     assert np.all(depth * 2 == np.round(depth * 2)) and np.all(np.diff(depth) == 0.5)
@@ -60,7 +60,7 @@ def test_depths_are_multiples_of_half_a_metre_within_the_stations(well):
 
 def test_density_is_that_of_the_interval_that_holds_the_depth(well):
     las = lasio.read(reduced_las(well))
-    located = dict(zip(well.stations.label, well.stations.located.sensor_depth.values.tolist(), strict=True))
+    located = dict(zip(well.stations.label, well.stations.located.mark_depth.values.tolist(), strict=True))
     density, sd = column(well, "intervals", "density"), column(well, "intervals", "density_sd")
     seen = 0
     for number, (top, base) in enumerate(zip(well.intervals.from_station, well.intervals.to_station, strict=True)):
@@ -74,7 +74,7 @@ def test_density_is_that_of_the_interval_that_holds_the_depth(well):
 def test_anomaly_is_straight_between_stations(well):
     las = lasio.read(reduced_las(well))
     rows = [row for row, role in enumerate(well.stations.role) if role == "column"]
-    depth = well.stations.located.sensor_depth.values[rows]
+    depth = well.stations.located.mark_depth.values[rows]
     anomaly = column(well, "stations", "anomaly")[rows]
     assert las["ANOM"] == pytest.approx(np.interp(las["DEPT"], depth, anomaly), abs=6e-6)
 
@@ -89,7 +89,7 @@ def test_log_density_follows_its_interval_and_is_null_without_a_log(well):
 
 def test_surveyed_levels_have_vertical_depth_and_the_file_says_so(tmp_path):
     results = reduced(MINE)
-    assert np.isnan(results.stations.located.sensor_depth.values).all()
+    assert np.isnan(results.stations.located.mark_depth.values).all()
     text = reduced_las(results)
     las = lasio.read(text)
     assert las.curves["DEPT"].descr == "VERTICAL DEPTH OF THE SENSOR BELOW THE DATUM"

@@ -127,7 +127,7 @@ def test_the_sample_well_finds_the_drift_and_tare_that_were_put_in(well):
 def test_variance_components_and_chi_square_are_in_mgal_and_fit(shaft):
     told = summary(shaft, outputs=[])
     parts = told["variance_components"]
-    assert parts["reading"] is None, "no visit has two readings"
+    assert parts["reading"] == 0.002, "no visit has two readings: the floor holds"
     assert 0.005 < parts["reseating"] < 0.015 and parts["dof"] == 19 and parts["walk"] is None
     # With the re-seating noise estimated from them the visits' squares sum to about their freedom.
     assert told["chi_square"]["dof"] == 19
@@ -139,7 +139,7 @@ def test_reading_noise_is_told_where_visits_repeat_readings(well):
     assert 0.001 < summary(well, outputs=[])["variance_components"]["reading"] < 0.006
 
 
-def test_what_one_pass_cannot_tell_is_null(tmp_path):
+def test_what_one_pass_cannot_tell_is_what_the_instrument_states(tmp_path):
     (tmp_path / "survey.toml").write_text(ONE_PASS, "utf-8")
     rows = [f"2026-05-04T0{hour}:00:00Z,{30.0 * hour},{3000 + 3.1 * hour:.3f}" for hour in range(1, 5)]
     (tmp_path / "readings.csv").write_text("\n".join(["time,depth [m],reading [mGal]", *rows]) + "\n", "utf-8")
@@ -147,7 +147,7 @@ def test_what_one_pass_cannot_tell_is_null(tmp_path):
     told = json.loads(text, parse_constant=lambda word: pytest.fail(word))
     assert told["chi_square"] == {"value": None, "dof": 0, "p": None}
     assert told["variance_components"] == {
-        "reading": None, "reading_scale": None, "reseating": None, "walk": None, "dof": 0
+        "reading": 0.002, "reading_scale": None, "reseating": 0.003, "walk": None, "dof": 0
     }  # fmt: skip
 
 

@@ -319,3 +319,13 @@ def test_labels_that_differ_by_blanks_or_from_a_place_are_told(folder: Path) -> 
         'the stations "A" and "a" differ only by case or blanks and count as two',
         'the station "p 1" and the place "P1" differ only by case or blanks and count as two',
     ]
+
+
+@pytest.mark.parametrize(("easting", "told"), [(500_000.0, False), (500_020.0, True)])
+def test_map_coordinates_are_compared_with_latitude_and_longitude(folder: Path, easting: float, told: bool) -> None:
+    """On the central meridian of UTM zone 30 (3 deg W), at 54.5 deg N; 20 m beside it is over 5 m off."""
+    site = f'horizontal_crs = "EPSG:32630"\neasting = {easting}\nnorthing = 6039154.23\n'
+    (folder / "survey.toml").write_text(TOML.format(site=site, data="", more=""), encoding="utf-8")
+    survey = read_survey(folder)
+    assert ("position_differs" in {note.code for note in survey.notes}) is told
+    assert dict(survey.site.carried)["horizontal_crs"] == "EPSG:32630"

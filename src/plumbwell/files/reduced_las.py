@@ -1,7 +1,7 @@
 """reduced.las: interval density, its sd, log density and anomaly against depth, every half metre.
 
-Density is that of the interval that holds the depth; the anomaly is straight between stations. Depth is the
-sensor's measured depth, or its vertical depth below the datum where no column station lies on the path.
+Density is that of the interval that holds the depth; the anomaly is straight between stations. Depth is the mark's
+measured depth, as in the tables, or vertical depth below the datum where no column station lies on the path.
 """
 
 from __future__ import annotations
@@ -18,6 +18,7 @@ from plumbwell.files.las import las_text
 from plumbwell.study.cautions import CAUTIONS
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Array, Index, frozen
+from plumbwell.survey.site import Site
 
 STEP = 0.5
 MOST_ROWS = 2_000_000
@@ -29,7 +30,7 @@ def las_depth(results: Results) -> tuple[Array, bool]:
     Vertical depth below the datum where fewer than two column stations have a measured depth.
     """
     located = results.stations.located
-    measured = located.sensor_depth.values
+    measured = located.mark_depth.values
     column = np.array([role == "column" for role in results.stations.role])
     if np.count_nonzero(np.isfinite(measured[column])) >= 2:
         return measured, True
@@ -60,7 +61,7 @@ def reduced_las(results: Results) -> str | None:
         return np.where(interval >= 0, values[np.maximum(interval, 0)], np.nan) / 1000.0
 
     intervals = results.intervals
-    kind = "MEASURED DEPTH OF THE SENSOR" if is_measured else "VERTICAL DEPTH OF THE SENSOR BELOW THE DATUM"
+    kind = "MEASURED DEPTH OF THE MARK" if is_measured else "VERTICAL DEPTH OF THE SENSOR BELOW THE DATUM"
     return las_text(
         well=_well(results),
         curves=[
@@ -73,7 +74,7 @@ def reduced_las(results: Results) -> str | None:
         parameters=_parameters(results),
         other=[
             f"Written by Plumbwell {__version__}. Densities hold from station to station.",
-            "DEPT is the measured depth of the sensor from the depth datum."
+            "DEPT is measured depth from the depth datum, the mark's as in intervals.csv; the sensor is off by its offset."
             if is_measured
             else "DEPT is vertical depth below the depth datum: the stations have no measured depth.",
             *(line for caution in CAUTIONS for line in wrap(caution, 100)),
@@ -135,5 +136,17 @@ def _parameters(results: Results) -> list[tuple[str, str, str, str]]:
         ("EGRD", "M", f"{site.ground_elevation:.3f}", "ELEVATION OF THE GROUND"),
         ("FREE", "MGAL/M", f"{results.choice.gradient / MILLIGAL:.6f}", "FREE-AIR GRADIENT"),
         ("RREF", "G/CM3" if not isinstance(reference, str) else "", stated, "REFERENCE DENSITY"),
+        *((name, "", text, what) for name, what, text in _carried(site)),
         ("ABSG", "", "YES" if results.absolute else "NO", "GRAVITY IS TIED TO A KNOWN VALUE"),
     ]
+
+
+def _carried(site: Site) -> list[tuple[str, str, str]]:
+    """Mnemonic, meaning and text of what survey.toml only carries."""
+    names = {
+        "vertical_datum": ("VDAT", "VERTICAL DATUM"),
+        "horizontal_crs": ("HCRS", "COORDINATE REFERENCE SYSTEM"),
+        "easting": ("EAST", "EASTING OF THE COLLAR"),
+        "northing": ("NORT", "NORTHING OF THE COLLAR"),
+    }
+    return [(*names[key], text) for key, text in site.carried if key in names]

@@ -186,19 +186,16 @@ def tares(results: Results) -> list[dict[str, Any]]:
 
 
 def variance_components(results: Results) -> dict[str, Any]:
-    """Noise of the survey as sds in mGal; None where neither the survey nor the instrument tells.
+    """Noise that the weights rest on, as sds in mGal, whether estimated or as the instrument states.
 
     `reading` is the median sd of a single reading, `reading_scale` the factor on stated sds, `reseating` the
-    root of the visits' mean re-seating variance.
+    root of the visits' mean re-seating variance; `dof` 0 says that the survey could not tell it.
     """
     noise, seat = results.network.adjustment.noise, results.network.adjustment.reseating
-    as_given = results.recipe.noise == "as_given"
-    told = noise.repeated or as_given
-    seated = seat.freedom > 0 or as_given
     return {
-        "reading": _number(float(np.median(noise.sd)), MILLIGAL) if told else None,
+        "reading": _number(float(np.median(noise.sd)), MILLIGAL),
         "reading_scale": _number(noise.scale),
-        "reseating": _number(math.sqrt(float(np.mean(seat.variance))), MILLIGAL) if seated else None,
+        "reseating": _number(math.sqrt(float(np.mean(seat.variance))), MILLIGAL),
         "walk": None,
         "dof": seat.freedom,
     }

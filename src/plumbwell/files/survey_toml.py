@@ -7,7 +7,9 @@ from dataclasses import replace
 from datetime import date, datetime, time, tzinfo
 from typing import Any
 
+from plumbwell.earth.constants import MILLIGAL
 from plumbwell.files.collected import Collected
+from plumbwell.files.grids import apart, geodetic_position
 from plumbwell.files.label_texts import unfit_label
 from plumbwell.files.statements import LogStatement, NamedFile, Statements, TareStatement
 from plumbwell.files.times import EXPECTED, ZoneUnknown, times_of, zone
@@ -27,7 +29,7 @@ from plumbwell.survey.site import Site
 
 FILE = "survey.toml"
 FORMAT = "plumbwell-survey/1"
-MILLIGAL = 1e-5
+NEAR_ENOUGH = 5.0  # m, between map coordinates and latitude and longitude
 MILLIGAL_PER_HOUR = MILLIGAL / 3600.0
 DAY = 86400.0  # s; a clock farther off is a wrong date
 LONGEST_NAME = 1000  # characters of the path of a file
@@ -106,6 +108,41 @@ def _check_format(top: TomlTable) -> None:
         )
 
 
+def _check_position(
+    table: TomlTable, carried: dict[str, str], latitude: float | None, longitude: float | None
+) -> None:
+    """Compare map coordinates with latitude and longitude, when all are there."""
+    if not {"horizontal_crs", "easting", "northing"} <= set(carried) or latitude is None or longitude is None:
+        return
+    system = carried["horizontal_crs"]
+    place = f"{FILE}, [site] easting, northing"
+    try:
+        other = geodetic_position(
+            system, easting=float(carried["easting"]), northing=float(carried["northing"])
+        )
+    except ValueError as error:
+        table.problem(
+            "horizontal_crs",
+            found=f"{shown(system)}, in which easting and northing have no position ({shown(error)})",
+            expected='a coordinate reference system such as "EPSG:32630" that holds easting and northing',
+            mend="correct it, or remove horizontal_crs, easting and northing",
+        )
+        return
+    distance = apart(
+        latitude=math.radians(latitude), longitude=math.radians(longitude),
+        other_latitude=other[0], other_longitude=other[1],
+    )
+    if distance > NEAR_ENOUGH:
+        table.collected.note(
+            "position_differs",
+            "look",
+            place,
+            f"In {shown(system)} easting and northing lie {distance:,.0f} m from latitude and longitude".replace(",", " ")
+            + f" (at {math.degrees(other[0]):.6f}, {math.degrees(other[1]):.6f} deg).",
+            "Correct one of the two; the reduction uses latitude and longitude.",
+        )
+
+
 def _site(table: TomlTable) -> Site | None:
     """The site, None when latitude, longitude or ground elevation is missing or wrong."""
     latitude = table.number("latitude", unit="deg", least=-90.0, most=90.0, mend=_exchanged(table.values))
@@ -147,14 +184,7 @@ def _site(table: TomlTable) -> Site | None:
     carried += [
         (key, f"{value:.12g}") for key in ("easting", "northing") if (value := table.number(key)) is not None
     ]
-    if {"horizontal_crs", "easting", "northing"} <= {key for key, _ in carried}:
-        table.collected.note(
-            "position_unchecked",
-            "note",
-            f"{FILE}, [site] easting, northing",
-            "easting and northing are carried to the outputs, not compared with latitude and longitude",
-            "compare them yourself",
-        )
+    _check_position(table, dict(carried), latitude, longitude)
     name = table.text("name", "")
     table.tell_unknown()
     if latitude is None or longitude is None or ground is None or collar is None:

@@ -200,3 +200,16 @@ def test_drift_and_temperature_in_the_reading_are_told(invented, found):
     (one,) = found(results, "applied_by_instrument")
     assert one.severity == "note" and "its own corrections for drift and temperature" in one.text
     assert not found(invented.survey(), "applied_by_instrument")
+
+
+def test_a_loading_table_that_goes_with_no_tide_is_told(invented, found):
+    hours = [f"2026-05-04T{hour:02d}:00:00Z,0.0{hour % 3}" for hour in range(6, 14)]
+    files = {"loading.csv": "\n".join(["time,tide [mGal]", *hours]) + "\n"}
+    data = 'ocean_loading = "loading.csv"'
+    (one,) = found(invented.survey(data=data, files=files), "loading_unused")
+    assert one.severity == "look" and 'since tide = "none"' in one.text
+    (one,) = found(invented.survey(data=data, files=files, recipe=OURS), "loading_unused")
+    assert "holds its instrument's own tide" in one.text
+    ours = invented.survey(data=data, files=files, recipe=OURS, instrument="applied = []")
+    assert not found(ours, "loading_unused") and found(ours, "permanent_tide")
+    assert not found(invented.survey(recipe=OURS), "permanent_tide")  # no reading gets a tide of ours

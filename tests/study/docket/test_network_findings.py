@@ -243,3 +243,9 @@ def test_a_long_label_is_cut_and_one_that_cannot_be_seen_is_spelt_out(invented, 
     assert one.place == "A" * 79 + "…" and "A" * 80 not in one.text
     (one,) = found(results, "single_visit")
     assert "(B\\u200b)" in one.text and one.stations == (1,)
+
+
+def test_a_high_order_that_few_repeats_leave_open_is_no_missing_repeat(invented, found):
+    results = invented.survey(invented.visits("ABAB"), recipe='tide = "none"\ndrift_order = 3')
+    assert not found(results, "no_repeat")
+    assert [one.severity for one in found(results, "noise_untold")] == ["error"]

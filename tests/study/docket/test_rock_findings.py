@@ -98,3 +98,10 @@ def test_intervals_without_one_density_are_an_error(invented, found):
     )
     results = invented.survey(rows, data='places = "places.csv"', files={"places.csv": places.format(low=400)})
     assert not found(results, "no_density")
+
+
+def test_layers_within_one_interval_cannot_be_told_apart(invented, found):
+    recipe = 'tide = "none"\nlayer_boundaries = {}'
+    (one,) = found(invented.survey(recipe=recipe.format("1.0")), "layers_untold")
+    assert one.severity == "note" and "layers have no density" in one.text
+    assert not found(invented.survey(recipe=recipe.format('"stations"')), "layers_untold")

@@ -19,7 +19,7 @@ def test_openings_that_are_not_applied_are_an_error(invented, found):
     results = invented.survey(data='openings = "openings.csv"', files={"openings.csv": OPENINGS})
     (one,) = found(results, "not_applied")
     assert one.severity == "error" and one.place == "survey.toml, [data] openings"
-    assert one.text == "Openings ([data] openings): not applied by this version, densities hold their effect."
+    assert one.text == "Openings ([data] openings) not applied by this version: densities hold their effect."
 
 
 def test_each_thing_left_aside_has_a_finding_of_its_own(invented, found):

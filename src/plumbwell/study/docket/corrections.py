@@ -167,7 +167,7 @@ def no_tide(results: Results) -> Iterator[Finding]:
 
 def permanent_tide(results: Results) -> Iterator[Finding]:
     """The part of the tide that never changes and is taken out with the rest."""
-    if results.recipe.tide in ("ephemeris", "longman"):
+    if results.recipe.tide in ("ephemeris", "longman") and np.any(results.readings.tide.values):
         size = results.recipe.tide_factor * float(permanent_part(results.survey.site.latitude))
         yield Finding(
             code="permanent_tide",
@@ -177,6 +177,22 @@ def permanent_tide(results: Results) -> Iterator[Finding]:
             f"{gravity(size, signed=True)} on every reading that gets it. It changes no density.",
             mend="Nothing; give it back when gravity is compared with values that keep the permanent tide.",
         )
+
+
+def loading_unused(results: Results) -> Iterator[Finding]:
+    """A loading table that is named and not added, since no reading gets a tide of ours."""
+    if results.survey.loading is None:
+        return
+    if results.recipe.tide != "none" and np.any(results.readings.tide.values):
+        return
+    why = 'tide = "none"' if results.recipe.tide == "none" else "every reading holds its instrument's own tide"
+    yield Finding(
+        code="loading_unused",
+        severity="look",
+        place="survey.toml, [data] ocean_loading",
+        text=f"The loading table is not added to any reading, since {why}: it goes with a tide of ours.",
+        mend="Choose a tide in the recipe, or bring in the tide_in_reading column; else take the table out of [data].",
+    )
 
 
 def pressure_refused(results: Results) -> Iterator[Finding]:

@@ -207,6 +207,7 @@ def path_ends(results: Results) -> Iterator[Finding]:
         end = float(path.depth.values[-1])
         last = float(np.max(results.stations.located.mark_depth.values[beyond]))
         far = last - end > max(BEYOND, BEYOND_SHARE * end)
+        pairs = results.intervals.densities.pairs
         yield Finding(
             code="path_extrapolated",
             severity="look" if far else "note",
@@ -217,6 +218,7 @@ def path_ends(results: Results) -> Iterator[Finding]:
             mend="Bring in the deviation survey to the bottom of the hole"
             + ("; or correct the depth, if it is mistyped." if far else "."),
             stations=numbers(beyond),
+            intervals=numbers(np.flatnonzero(np.isin(pairs.base, beyond) | np.isin(pairs.top, beyond))),
         )
 
 

@@ -39,6 +39,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     corrections.instruments_tide,
     corrections.tilt_partly,
     corrections.pressure_partly,
+    corrections.loading_unused,
     outliers.outliers,
     depths.crosses_ground,
     depths.far_apart,
@@ -57,6 +58,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     depths.path_ends,
     depths.close_stations,
     rock.log_uncovered,
+    rock.layers_untold,
     rock.reference_from_log,
     stated.notes_of_readers,
 )

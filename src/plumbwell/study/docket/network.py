@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from plumbwell.reduction.design import DriftUnknown
 from plumbwell.reduction.network import NO_TIES, RANK_TOLERANCE, spectrum
+from plumbwell.reduction.visits import Visits
 from plumbwell.study.docket.wording import (
     GRAM_PER_CM3,
     MILLIGAL,
@@ -80,10 +81,19 @@ def _undetermined_runs(results: Results) -> list[int]:
     ]
 
 
+def _comes_back(visits: Visits, code: int) -> bool:
+    """True for a run that reads some station again after another one."""
+    stations = visits.station[visits.run == code]
+    stops = stations[np.concatenate([[True], stations[1:] != stations[:-1]])] if len(stations) else stations
+    return len(np.unique(stops)) < len(stops)
+
+
 def no_repeat(results: Results) -> Iterator[Finding]:
     """Runs without a repeat separated in time: their drift rests on what the instrument states."""
     basis, visits = results.network.adjustment.basis, results.network.visits
     for code in _undetermined_runs(results):
+        if _comes_back(visits, code):
+            continue  # what is open then is a higher order, and `rank_lost` names it
         stated = f"{rate(float(basis.rate[code]))} ± {rate(float(basis.rate_sd[code]))} mGal/h"
         yield Finding(
             code="no_repeat",

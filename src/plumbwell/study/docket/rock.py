@@ -175,3 +175,20 @@ def reference_from_log(results: Results) -> Iterator[Finding]:
             "climbs there.",
             mend="Nothing, if the hole climbs.",
         )
+
+
+def layers_untold(results: Results) -> Iterator[Finding]:
+    """Layers that the intervals reach and cannot tell from one another."""
+    layers = results.layers
+    if layers is None:
+        return
+    untold = int(np.count_nonzero(np.isnan(layers.density) & (layers.resolution > 0.0)))
+    if untold:
+        yield Finding(
+            code="layers_untold",
+            severity="note",
+            place="recipe, layer_boundaries",
+            text=f"{untold} of {len(layers.density)} layers have no density: two or more boundaries lie within one "
+            "interval, and the stations cannot tell the layers between them apart.",
+            mend="Choose fewer boundaries, or boundaries at stations.",
+        )

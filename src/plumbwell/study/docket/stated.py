@@ -13,12 +13,11 @@ from plumbwell.survey.recipe import UNAVAILABLE, available_of, is_unavailable
 def masses_left(results: Results) -> Iterator[Finding]:
     """What the folder names and this version does not take into account."""
     for what, where in results.survey.not_applied:
+        text = f"{what.capitalize()} ({where}) not applied by this version: densities hold their effect."
+        mend = "Take the effect out elsewhere, or tell it with the densities."
         if what == "gradients":
-            text = "The gradients are not used by this version: it reduces gravimeter readings only."
+            text = f"Gradients ({where}) not applied by this version: densities rest on gravity alone."
             mend = "Nothing; the densities from gravity stand without them."
-        else:
-            text = f"{what.capitalize()} ({where}): not applied by this version, densities hold their effect."
-            mend = "Take the effect out elsewhere, or tell it with the densities."
         yield Finding(code="not_applied", severity="error", place=f"survey.toml, {where}", text=text, mend=mend)
 
 
