@@ -48,3 +48,9 @@ def no_thread_left() -> Iterator[None]:
         if time.monotonic() > deadline:
             pytest.fail(f"threads left over: {sorted(thread.name for thread in left)}")
         time.sleep(0.01)
+
+
+@pytest.fixture(scope="session", autouse=True)
+def one_application(qapp: object) -> object:
+    """The one application of the whole run, able to hold widgets, made before any test draws."""
+    return qapp

@@ -74,7 +74,7 @@ def reduced_las(results: Results) -> str | None:
         parameters=_parameters(results),
         other=[
             f"Written by Plumbwell {__version__}. Densities hold from station to station.",
-            "DEPT is measured depth from the depth datum, the mark's as in intervals.csv; the sensor is off by its offset."
+            "DEPT is measured depth from the depth datum: the mark's, as in intervals.csv."
             if is_measured
             else "DEPT is vertical depth below the depth datum: the stations have no measured depth.",
             *(line for caution in CAUTIONS for line in wrap(caution, 100)),

@@ -137,8 +137,8 @@ def _check_position(
             "position_differs",
             "look",
             place,
-            f"In {shown(system)} easting and northing lie {distance:,.0f} m from latitude and longitude".replace(",", " ")
-            + f" (at {math.degrees(other[0]):.6f}, {math.degrees(other[1]):.6f} deg).",
+            f"In {shown(system)} easting and northing lie {distance:.0f} m from latitude and longitude"
+            f" (at {math.degrees(other[0]):.6f}, {math.degrees(other[1]):.6f} deg).",
             "Correct one of the two; the reduction uses latitude and longitude.",
         )
 
