@@ -189,6 +189,13 @@ def install(extra, environment):
     return 0
 
 
+def compile_package():
+    """Compile the package where that is wanting, so that no start has to: some environments forbid Python to keep it."""
+    import compileall
+
+    compileall.compile_dir(os.path.join(ROOT, "src", "plumbwell"), quiet=2)
+
+
 # --- Qt's system libraries ------------------------------------------------------------------------------
 
 
@@ -299,6 +306,7 @@ def app(environment):
     status = install("", environment)
     if status:
         return status
+    compile_package()
     if not check_qt_libraries(environment):
         print("Without these libraries the tables are written, but no figure.")
     sample = sample_survey()
@@ -334,6 +342,7 @@ def test(arguments, environment):
     status = install("test", environment)
     if status:
         return status
+    compile_package()
     if not check_qt_libraries(environment):
         print("The tests draw, and cannot without these libraries.", file=sys.stderr)
         return 1

@@ -276,6 +276,14 @@ def figure_image(plate: SurveyPlate, theme: Theme, scale: float = 2) -> QImage:
     return image
 
 
+def packed_png(image: QImage) -> bytes:
+    """Return an image as a PNG; packing lets other threads go on."""
+    buffer = QBuffer()
+    buffer.open(QIODevice.OpenModeFlag.WriteOnly)
+    image.save(buffer, "PNG", PACKING)  # type: ignore[call-overload]
+    return bytes(buffer.data().data())
+
+
 def write_svg(path: Path, plate: SurveyPlate, theme: Theme) -> None:
     """Write a survey's plate as an SVG.
 
@@ -295,7 +303,4 @@ def write_png(path: Path, plate: SurveyPlate, theme: Theme, scale: float = 2) ->
     OSError
         The file cannot be written.
     """
-    buffer = QBuffer()
-    buffer.open(QIODevice.OpenModeFlag.WriteOnly)
-    figure_image(plate, theme, scale).save(buffer, "PNG", PACKING)  # type: ignore[call-overload]
-    path.write_bytes(bytes(buffer.data().data()))
+    path.write_bytes(packed_png(figure_image(plate, theme, scale)))
