@@ -190,7 +190,7 @@ def install(extra, environment):
 
 
 def compile_package():
-    """Compile the package where that is wanting, so that no start has to: some environments forbid Python to keep it."""
+    """Compile the package where that is wanting: some environments forbid Python to keep what it compiles."""
     import compileall
 
     compileall.compile_dir(os.path.join(ROOT, "src", "plumbwell"), quiet=2)
