@@ -1,17 +1,14 @@
 """Which stations make intervals, and how their densities answer to what is done to the readings."""
 
-import runpy
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 
+from made_surveys import loop, made_case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, loop, Row = made["made_case"], made["loop"], made["Row"]
 UGAL, MGAL = 1e-8, 1e-5
 FOUR_PI_G = 4.0 * np.pi * 6.67430e-11
 METER = Instrument(name="A", reading_floor=2 * UGAL, reseating_sd=4 * UGAL)

@@ -1,19 +1,16 @@
 """Errors of interval densities against finite differences of the whole reduction."""
 
-import runpy
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 
+from made_surveys import loop, made_case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.column import constant_column
 from plumbwell.survey.instrument import Instrument
 from plumbwell.survey.places import Path as WellTrace
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, loop = made["made_case"], made["loop"]
 UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
 FOUR_PI_G = 4.0 * np.pi * 6.67430e-11
 METER = Instrument(name="A", reading_floor=2 * UGAL, reseating_sd=4 * UGAL, scale_sd=2e-4)

@@ -9,45 +9,9 @@ import pytest
 
 from plumbwell.files.folder import read_survey
 from plumbwell.survey.errors import InputError
-
-TOML = """\
-format = "plumbwell-survey/1"
-
-[site]
-name = "Hollow Fell 1"
-latitude = 54.5
-longitude = -3.0
-ground_elevation = 180.0
-
-[data]
-readings = "readings.csv"
-"""
-READINGS = """\
-time,station,depth [m],reading [mGal]
-2026-05-04T09:00:00Z,A,100.0,4000.010
-2026-05-04T09:20:00Z,B,120.0,4001.900
-2026-05-04T09:40:00Z,A,100.0,4000.020
-"""
+from small_folder import READINGS, TOML
 
 Told = Callable[..., str]
-
-
-@pytest.fixture
-def told(tmp_path: Path) -> Told:
-    """Writes a survey folder and returns the text of the error that reading it raises."""
-
-    def tell(toml: str = TOML, readings: str | bytes | None = READINGS, **tables: str) -> str:
-        (tmp_path / "survey.toml").write_text(toml, encoding="utf-8")
-        if readings is not None:
-            data = readings if isinstance(readings, bytes) else readings.encode()
-            (tmp_path / "readings.csv").write_bytes(data)
-        for name, text in tables.items():
-            (tmp_path / f"{name}.csv").write_text(text, encoding="utf-8")
-        with pytest.raises(InputError) as caught:
-            read_survey(tmp_path)
-        return str(caught.value)
-
-    return tell
 
 
 def test_one_cause_in_many_rows_is_one_block_and_the_problems_stay_whole(tmp_path: Path) -> None:

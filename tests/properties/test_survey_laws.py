@@ -1,21 +1,18 @@
 """What must not matter, and what must matter just so: laws that hold for any survey."""
 
-import runpy
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from made_surveys import loop, made_case
 from plumbwell.files.folder import read_survey
 from plumbwell.study.case import Case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument
 
-made = runpy.run_path(str(Path(__file__).with_name("made_surveys.py")))
-made_case, loop = made["made_case"], made["loop"]
 UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
 METER = Instrument(name="A", reading_floor=0.001 * UGAL, reseating_sd=4 * UGAL, station_floor=0.0)
 FEW = settings(max_examples=15)

@@ -12,19 +12,16 @@ A levelled or measured difference enters as a run of two readings, each with hal
 without the prior on drift.
 """
 
-import runpy
 from math import inf, sqrt
-from pathlib import Path
 
 import numpy as np
 import pytest
 from scipy.special import ndtri
 
+from made_surveys import Row, made_case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, Row = made["made_case"], made["Row"]
 MGAL, UGAL, HOUR = 1e-5, 1e-8, 3600.0
 METER = Instrument(name="A", reading_floor=1e-20, reseating_sd=0.0, station_floor=0.0, drift_rate_sd=inf)
 

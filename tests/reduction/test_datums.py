@@ -1,18 +1,15 @@
 """Datum stations, ties as datum, and parts of the network that nothing joins."""
 
-import runpy
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 
+from made_surveys import loop, made_case
 from plumbwell.reduction.design import DriftUnknown
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Tare
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, loop = made["made_case"], made["loop"]
 UGAL, MGAL = 1e-8, 1e-5
 LABELS = "ABCDEFGH"
 DEPTH = {name: 70.0 * number for number, name in enumerate(LABELS)}

@@ -1,20 +1,17 @@
 """The order of the drift polynomial: the F test itself, what it finds, and how seldom it errs."""
 
-import runpy
-from pathlib import Path
 
 import numpy as np
 import pytest
 from scipy.stats import f as f_distribution
 
+from made_surveys import loop, made_case
 from plumbwell.reduction.added_columns import sum_of_squares_with
 from plumbwell.reduction.design import design, visit_regressors
 from plumbwell.reduction.network import NO_TIES, solve
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, loop = made["made_case"], made["loop"]
 UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
 DEPTH = {name: 60.0 * number for number, name in enumerate("ABCDEF")}
 GRAVITY = {name: 0.08 * MGAL * depth for name, depth in DEPTH.items()}

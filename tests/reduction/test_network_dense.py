@@ -3,18 +3,15 @@
 The noise components are taken from the result under test; all else is built anew from the plain rows.
 """
 
-import runpy
 from dataclasses import dataclass, replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 
+from made_surveys import loop, made_case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run, Tare
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, loop, Row = made["made_case"], made["loop"], made["Row"]
 UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
 AGREEMENT = 1e-9
 LABELS = "ABCDEFGHIJ"

@@ -1,18 +1,15 @@
 """Which station a reading belongs to, and what brings it there: the rules one by one."""
 
-import runpy
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 
+from made_surveys import Row, made_case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run
 from plumbwell.survey.site import Site
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, loop, Row = made["made_case"], made["loop"], made["Row"]
 UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
 METER = Instrument(name="A")
 

@@ -1,18 +1,15 @@
 """Reading and re-seating noise: the restricted likelihood maximised directly, and the rules for few repeats."""
 
-import runpy
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 from scipy.optimize import minimize_scalar
 
+from made_surveys import Row, loop, made_case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, loop, Row = made["made_case"], made["loop"], made["Row"]
 UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
 DEPTH = {name: 60.0 * number for number, name in enumerate("ABCDEF")}
 GRAVITY = {name: 0.08 * MGAL * depth for name, depth in DEPTH.items()}

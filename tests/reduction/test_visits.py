@@ -1,16 +1,13 @@
 """Visits: what ends one and what does not."""
 
-import runpy
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 
+from made_surveys import Row, made_case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, Row = made["made_case"], made["Row"]
 MINUTE = 60.0
 METER = Instrument(name="A")
 

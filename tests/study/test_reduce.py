@@ -1,18 +1,15 @@
 """The whole chain on small surveys: what a person would see go wrong first."""
 
-import runpy
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 
+from made_surveys import loop, made_case
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.errors import SurveyError
 from plumbwell.survey.instrument import Instrument
 
-made = runpy.run_path(str(Path(__file__).parents[1] / "properties" / "made_surveys.py"))
-made_case, loop, Row = made["made_case"], made["loop"], made["Row"]
 UGAL, MGAL = 1e-8, 1e-5
 DEPTH = {name: 50.0 * number for number, name in enumerate("ABCDE")}
 GRAVITY = {name: 0.09 * MGAL * depth for name, depth in DEPTH.items()}

@@ -1,1 +1,0 @@
-"""What a shape attracts: prisms, cylinders, spheres, polygons, passages, meshes, terrain."""
