@@ -20,11 +20,11 @@ TIES = {"A": (9.81, 5 * UGAL), "E": (9.81 + GRAVITY["E"], 8 * UGAL)}
 
 
 def trace(degrees):
-    """A hole that turns away from the vertical below 100 m, to the east, where latitude does not change."""
+    """A hole that turns away from the vertical below 100 m, to the north-north-east: latitude changes along it."""
     return WellTrace(
         depth=constant_column("depth", "m", [0.0, 100.0, 400.0]),
         inclination=constant_column("inclination", "rad", np.deg2rad([0.0, 0.0, degrees])),
-        azimuth=constant_column("azimuth", "rad", np.deg2rad([90.0, 90.0, 90.0])),
+        azimuth=constant_column("azimuth", "rad", np.deg2rad([20.0, 20.0, 20.0])),
     )
 
 

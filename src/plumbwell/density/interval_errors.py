@@ -87,6 +87,28 @@ def through(spread: Spread, top: Index, base: Index, by_top: Array, by_base: Arr
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class AlongHole:
+    """What an error of a station's depth moves, (s,) each.
+
+    Parameters
+    ----------
+    sd : array
+        Of the station's own depth, m along the hole; of its elevation where that is stated.
+    depth : array
+        Measured depth of the sensor, m: how far a change of the depth scale by 1 moves it; 0 at surveyed places.
+    cosine : array
+        Drop per m of it.
+    pull : array
+        Increase of normal gravity by the change of latitude, per m of it, s-2.
+    """
+
+    sd: Array
+    depth: Array
+    cosine: Array
+    pull: Array
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class CommonTerms:
     """Sds of what all intervals share.
 
@@ -153,8 +175,7 @@ def interval_errors(
     *,
     elevation: Array,
     collar_elevation: float,
-    vertical_depth_sd: Array,
-    stretch: Array,
+    along: AlongHole,
     common: CommonTerms,
 ) -> IntervalErrors:
     """Errors of the interval densities by origin.
@@ -168,10 +189,7 @@ def interval_errors(
     elevation : (s,) array
         m above sea level.
     collar_elevation : float
-    vertical_depth_sd : (s,) array
-        Sd of each station's height by its own depth error, m.
-    stretch : (s,) array
-        Vertical drop of each station for a relative change of the depth scale by 1, m.
+    along : AlongHole
     common : CommonTerms
     """
     pairs = densities.pairs
@@ -189,14 +207,15 @@ def interval_errors(
     def of_gravity(spread: Spread) -> ChainSpread:
         return through(spread, top, base, by_top, by_base, follower)
 
-    heights = Spread(
-        diagonal=vertical_depth_sd**2, columns=np.zeros((len(elevation), 0)), signs=np.zeros(0)
-    )
+    # Down the hole a station goes lower, and in a deviated one to another latitude; its gravity stays.
+    top_down = by_top_height * along.cosine[top] + by_top * along.pull[top]
+    base_down = by_base_height * along.cosine[base] + by_base * along.pull[base]
+    depths = Spread(diagonal=along.sd**2, columns=np.zeros((len(elevation), 0)), signs=np.zeros(0))
     spreads = {
         "reading": of_gravity(gravity.reading),
         "drift": of_gravity(gravity.drift),
         "tare": of_gravity(gravity.tare),
-        "depth": through(heights, top, base, by_top_height, by_base_height, follower),
+        "depth": through(depths, top, base, top_down, base_down, follower),
     }
 
     def shared(change: Array) -> Array:
@@ -209,9 +228,8 @@ def interval_errors(
     for number, (name, sd) in enumerate(common.scale_sd):
         factors[f"scale {name}"] = sd * shared(gravity.responses[:, number])
     if common.depth_scale_sd > 0.0:
-        # A longer depth scale lowers the stations while their gravity stays.
-        lowered = by_top_height * stretch[top] + by_base_height * stretch[base]
-        factors["depth scale"] = -common.depth_scale_sd * lowered
+        moved = top_down * along.depth[top] + base_down * along.depth[base]
+        factors["depth scale"] = -common.depth_scale_sd * moved
     if not tied.all():
         factors["datum"] = common.datum_sd * shared(np.where(tied, 0.0, 1.0))
     for number in range(gravity.ties.shape[1]):

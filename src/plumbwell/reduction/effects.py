@@ -11,7 +11,7 @@ from typing import Any
 
 import numpy as np
 
-from plumbwell.earth.ellipsoid import mean_curvature
+from plumbwell.earth.ellipsoid import mean_curvature, principal_radii
 from plumbwell.earth.free_air import measured_gradient_excess
 from plumbwell.earth.normal_gravity import (
     gradient_at_height,
@@ -23,7 +23,7 @@ from plumbwell.earth.normal_gravity import (
 from plumbwell.earth.shells import shell_term
 from plumbwell.reduction.positions import Positions
 from plumbwell.reduction.reference_rock import ReferenceLayers
-from plumbwell.survey.column import Column, Index, Input, Law, Setting, computed, constant_column, frozen_index
+from plumbwell.survey.column import Array, Column, Index, Input, Law, Setting, computed, constant_column, frozen_index
 from plumbwell.survey.site import Site
 
 
@@ -180,6 +180,23 @@ def normal_at_station(positions: Positions, site: Site, *, system: str, form: st
         Input("system", Setting(key="normal_gravity", value=system, origin="recipe")),
         Input("form", Setting(key="height_form", value=form, origin="recipe")),
     )
+
+
+def northward_pull(system: str, *, latitude: Array, height: float) -> Array:
+    """Increase of normal gravity per m to the north, (s,), s-2: 0.8145 sin 2 phi mGal/km.
+
+    Parameters
+    ----------
+    system : str
+    latitude : (s,) array
+        rad.
+    height : float
+        Of the hole, m: the length of an arc of latitude grows with it.
+    """
+    step = 1e-5
+    upper, lower = (gravity_on_ellipsoid(system, latitude=latitude + way * step) for way in (1, -1))
+    meridian, _ = principal_radii(latitude, normal_system(system).ellipsoid)
+    return (upper - lower) / (2.0 * step) / (meridian + height)
 
 
 def reference_shell(positions: Positions, site: Site, choice: FreeAirChoice, layers: ReferenceLayers) -> Column:

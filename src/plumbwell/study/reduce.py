@@ -13,7 +13,7 @@ from time import perf_counter
 import numpy as np
 
 from plumbwell.density.interval import LESS_LOG, IntervalDensities, interval_densities, interval_pairs
-from plumbwell.density.interval_errors import CommonTerms, IntervalErrors, interval_errors
+from plumbwell.density.interval_errors import AlongHole, CommonTerms, IntervalErrors, interval_errors
 from plumbwell.density.layer_boundaries import layer_boundaries
 from plumbwell.density.layers import Layers, plain_layers
 from plumbwell.density.log_mean import log_integrals, log_mean_columns
@@ -27,6 +27,7 @@ from plumbwell.reduction.effects import (
     known_parts,
     normal_at_station,
     normal_gravity,
+    northward_pull,
     reference_shell,
 )
 from plumbwell.reduction.estimates import OBSERVED, TO_STATION, estimates
@@ -191,8 +192,7 @@ def reduce(
         interval_errors, densities, gravity, parts, left,
         elevation=where.positions.elevation.values,
         collar_elevation=site.collar_elevation,
-        vertical_depth_sd=keep(_vertical_depth_sd, where, chosen.depth_sd),
-        stretch=keep(_stretch, where, path),
+        along=keep(_along_hole, where, path, site, system=chosen.normal_gravity, depth_sd=chosen.depth_sd),
         common=CommonTerms(
             gradient_sd=chosen.gradient_sd if choice.measured is None else choice.measured[1],
             scale_sd=scales[0],
@@ -389,16 +389,18 @@ def _to_station(where: Located, slope: Column, path: WellPath, sensor: Column) -
     )
 
 
-def _vertical_depth_sd(where: Located, depth_sd: float) -> Array:
-    stated = where.placement.elevation_sd
-    along = depth_sd * np.abs(where.positions.cos_inclination.values)
-    return frozen(np.where(np.isnan(stated), along, stated))
-
-
-def _stretch(where: Located, path: WellPath) -> Array:
-    """Vertical drop of each station for a relative change of the depth scale by 1, m; 0 at surveyed places."""
-    depth = np.nan_to_num(where.sensor_depth.values)
-    return frozen(depth * where.positions.cos_inclination.values)
+def _along_hole(where: Located, path: WellPath, site: Site, *, system: str, depth_sd: float) -> AlongHole:
+    """What depth errors move at each station."""
+    depth, stated = where.sensor_depth.values, where.placement.elevation_sd
+    plumb = ~np.isnan(stated) | np.isnan(depth)
+    northward = (path.at(depth + 0.5)[2] - path.at(depth - 0.5)[2]) if len(path.depth) else np.zeros(len(depth))
+    pull = northward_pull(system, latitude=where.positions.latitude.values, height=site.collar_elevation)
+    return AlongHole(
+        sd=frozen(np.where(np.isnan(stated), depth_sd, stated)),
+        depth=frozen(np.nan_to_num(depth)),
+        cosine=frozen(np.where(plumb, 1.0, where.positions.cos_inclination.values)),
+        pull=frozen(np.where(plumb, 0.0, pull * northward)),
+    )
 
 
 def _less_log(density: Column, log_density: Column) -> Column:

@@ -249,3 +249,19 @@ def test_a_high_order_that_few_repeats_leave_open_is_no_missing_repeat(invented,
     results = invented.survey(invented.visits("ABAB"), recipe='tide = "none"\ndrift_order = 3')
     assert not found(results, "no_repeat")
     assert [one.severity for one in found(results, "noise_untold")] == ["error"]
+
+
+def test_what_a_person_reads_of_one_station_and_of_one_pass(invented, found):
+    """The whole of both texts, since that is all a person has at the well."""
+    (one,) = found(invented.survey(invented.visits("AAA")), "single_station")
+    assert (one.text, one.mend) == (
+        "There is one station only in the column: gravity is given, a density needs two depths.",
+        "Bring in readings at a second depth, or correct depths and roles of the stations.",
+    )
+    (one,) = found(invented.survey(invented.visits("ABCD")), "no_repeat")
+    assert (one.text, one.mend) == (
+        "Run 1 has no repeat separated in time that tells its drift from gravity: the drift is the stated one, "
+        "0 ± 0.05 mGal/h (drift_rate, drift_rate_sd), and its error is in the densities.",
+        "Bring in a second visit of a station of this run, or of one that a well-tied run shares with it; else see "
+        "that drift_rate_sd of the instrument is honest.",
+    )
