@@ -41,8 +41,8 @@ class Layers:
         Elevations of the boundaries.
     density, sd : (m,), kg/m3
         NaN where no data reach, or where the data cannot tell the layer from its neighbours.
-    covariance : (m, m), (kg/m3)2
-        NaN in the rows and columns of such layers.
+    covariance : callable
+        Makes the (m, m) covariance, (kg/m3)2; NaN in the rows and columns of such layers.
     resolution : (m,)
         Diagonal of the resolution matrix of the solution of least norm: 1 for every layer with a density,
         less where layers cannot be told apart, 0 where no data reach.
@@ -62,7 +62,7 @@ class Layers:
     base: Array
     density: Array
     sd: Array
-    covariance: Array
+    covariance: Callable[[], Array]
     resolution: Array
     conditional: NDArray[np.bool_]
     residual: Array
@@ -96,7 +96,14 @@ def volume_shares(*, tops: Array, bases: Array, boundaries: Array, radius: float
 
 
 def plain_layers(
-    *, tops: Array, bases: Array, density: Array, covariance: Array, boundaries: Array, radius: float
+    *,
+    tops: Array,
+    bases: Array,
+    density: Array,
+    variance: Array,
+    covariance: Callable[[], Array],
+    boundaries: Array,
+    radius: float,
 ) -> Layers:
     """Densities of layers by generalised least squares of interval densities.
 
@@ -106,7 +113,10 @@ def plain_layers(
         Elevations of the ends of the intervals, in any order; they may overlap and leave gaps.
     density : (n,), kg/m3
         NaN: an interval without one.
-    covariance : (n, n), (kg/m3)2
+    variance : (n,), (kg/m3)2
+        Diagonal of the covariance.
+    covariance : callable
+        Makes the (n, n) covariance, (kg/m3)2; not called where the layers are the intervals.
         Of the independent errors; it may be singular, or zero (then all intervals count alike).
     boundaries : (m + 1,), m
         Elevations, descending.
@@ -130,18 +140,16 @@ def plain_layers(
     if len(boundaries) < 2 or np.any(np.diff(boundaries) >= 0.0):
         raise ValueError("layers need two or more boundaries, descending")
     tops, bases, density = (np.asarray(one, dtype=np.float64) for one in (tops, bases, density))
-    boundaries, covariance = (
-        np.asarray(boundaries, dtype=np.float64),
-        np.asarray(covariance, dtype=np.float64),
-    )
+    boundaries = np.asarray(boundaries, dtype=np.float64)
     inside = (tops <= boundaries[0] + SLIVER) & (bases >= boundaries[-1] - SLIVER)
-    given = np.flatnonzero(np.isfinite(density) & np.isfinite(np.diagonal(covariance)) & inside)
+    given = np.flatnonzero(np.isfinite(density) & np.isfinite(variance) & inside)
     number = len(boundaries) - 1
     # Layers that each interval crosses: the first and the last, by the boundaries within it.
     first = np.searchsorted(-boundaries, -tops[given] + SLIVER, side="right") - 1
     last = np.searchsorted(-boundaries, -bases[given] - SLIVER, side="left") - 1
     if np.array_equal(first, last) and bool((np.diff(np.sort(first)) > 0).all()):
-        return _alike(given, first, tops, bases, density, covariance, boundaries)
+        return _alike(given, first, tops, bases, density, variance, covariance, boundaries)
+    whole_covariance = covariance()
     resolution, groups = np.zeros(number), []
     for rows in _groups(first, last):
         layers = np.arange(first[rows].min(), last[rows].max() + 1)
@@ -161,21 +169,22 @@ def plain_layers(
     weight = np.zeros((number, len(density)))
     for group in groups:
         rows = group.rows
-        noise = covariance[np.ix_(rows, rows)] if whole else np.diagonal(covariance)[rows]
+        noise = whole_covariance[np.ix_(rows, rows)] if whole else variance[rows]
         estimator, whiten = _estimator(group.equations, noise)
         told = estimator @ density[rows]
         values[group.layers] = group.basis @ told
         weight[np.ix_(group.layers, rows)] = group.basis @ estimator
         residual[rows] = density[rows] - group.equations @ told
         misfit += float(np.sum(whiten(residual[rows]) ** 2))
-    spread = weight[:, given] @ covariance[np.ix_(given, given)] @ weight[:, given].T
+    spread = weight[:, given] @ whole_covariance[np.ix_(given, given)] @ weight[:, given].T
     unknown = resolution < ESTIMABLE
     resolution[~unknown] = 1.0
     values[unknown], spread[unknown, :], spread[:, unknown], weight[unknown] = (np.nan,) * 4
     return _layers(
         boundaries,
         values,
-        spread,
+        np.diagonal(spread),
+        lambda: spread,
         resolution,
         _ends(tops, bases, boundaries),
         residual,
@@ -191,18 +200,22 @@ def _alike(
     tops: Array,
     bases: Array,
     density: Array,
-    covariance: Array,
+    variance: Array,
+    covariance: Callable[[], Array],
     boundaries: Array,
 ) -> Layers:
     """Layers that hold one interval each: they take its density, and nothing is solved."""
     number = len(boundaries) - 1
     values, resolution, source = np.full(number, np.nan), np.zeros(number), np.full(number, -1, dtype=np.intp)
     values[layer], resolution[layer], source[layer] = density[given], 1.0, given
-    if number == len(density) and np.array_equal(layer, given):
-        spread = covariance.copy()
-    else:
-        spread = np.full((number, number), np.nan)
-        spread[np.ix_(layer, layer)] = covariance[np.ix_(given, given)]
+    of_layer = np.full(number, np.nan)
+    of_layer[layer] = variance[given]
+
+    def spread() -> Array:
+        whole = np.full((number, number), np.nan)
+        whole[np.ix_(layer, layer)] = covariance()[np.ix_(given, given)]
+        return whole
+
     residual = np.full(len(density), np.nan)
     residual[given] = 0.0
 
@@ -215,14 +228,15 @@ def _alike(
 
     conditional = _ends(tops, bases, boundaries)
     return _layers(
-        boundaries, values, spread, resolution, conditional, residual, misfit=0.0, dof=0, weights=weights
+        boundaries, values, of_layer, spread, resolution, conditional, residual, misfit=0.0, dof=0, weights=weights
     )
 
 
 def _layers(
     boundaries: Array,
     values: Array,
-    spread: Array,
+    variance: Array,
+    covariance: Callable[[], Array],
     resolution: Array,
     conditional: NDArray[np.bool_],
     residual: Array,
@@ -236,8 +250,8 @@ def _layers(
         top=frozen(boundaries[:-1]),
         base=frozen(boundaries[1:]),
         density=frozen(values),
-        sd=frozen(np.sqrt(np.maximum(np.diagonal(spread), 0.0))),
-        covariance=frozen(spread),
+        sd=frozen(np.sqrt(np.maximum(variance, 0.0))),
+        covariance=covariance,
         resolution=frozen(resolution),
         conditional=conditional,
         residual=frozen(residual),

@@ -429,7 +429,8 @@ def _layers(
         tops=elevation[pairs.top],
         bases=elevation[pairs.base],
         density=densities.density.values,
-        covariance=errors.independent.matrix(),
+        variance=errors.independent.variance(),
+        covariance=errors.independent.matrix,
         boundaries=edges.elevation,
         radius=radius + site.geoid_height,
     )
