@@ -127,7 +127,7 @@ def test_old_pythons_print_the_sentence_and_nothing_else(python):
 
 def test_what_would_mislead_is_dropped_and_where_packages_come_from_is_kept(bootstrap):
     kept = {
-        "PIP_INDEX_URL": "https://index.invalid/simple",
+        "PIP_INDEX_URL": "https://packages.invalid/simple",
         "PIP_EXTRA_INDEX_URL": "a",
         "PIP_FIND_LINKS": "b",
         "PIP_NO_INDEX": "1",

@@ -98,6 +98,26 @@ def test_feet_written_as_metres_are_found_by_the_markers(invented):
     assert one.text.endswith("If the depths are feet, written as metres, it is 2.10 g/cm³, which fits.")
 
 
+@pytest.mark.parametrize(
+    "recipe", ['tide = "none"', 'tide = "none"\nreference_density = 2.75'], ids=["nothing stated", "stated"]
+)
+def test_feet_written_as_metres_are_noted_where_nothing_stated_finds_them(invented, recipe):
+    results = invented.survey(of_rock(invented, 2.7, depth=1.0 / 0.3048), recipe=recipe)
+    assert not plausible(results)
+    (one,) = (one for one in results.findings if one.code == "density_as_of_feet")
+    assert (one.severity, one.intervals) == ("note", (0, 1, 2))
+    # 3.680 - (3.680 - 2.7) x 0.3048 = 3.381
+    assert one.text.startswith("The median density of the 3 intervals is 3.38 g/cm³, and little rock but ore ")
+    assert one.text.endswith("If the depths are feet, written as metres, it is 2.70 g/cm³.")
+
+
+def test_ore_that_is_stated_is_not_taken_for_feet(invented):
+    ore = of_rock(invented, 3.4)
+    stated = invented.survey(ore, recipe='tide = "none"\nreference_density = 3.3')
+    for results in (stated, marked(invented, ore, 3.4), invented.survey(of_rock(invented, 2.95))):
+        assert "density_as_of_feet" not in {one.code for one in results.findings}
+
+
 def test_metres_written_as_feet_are_found_by_the_stated_reference(invented):
     recipe = 'tide = "none"\nreference_density = 2.4'
     (one,) = plausible(invented.survey(of_rock(invented, 2.4, depth=0.3048), recipe=recipe))

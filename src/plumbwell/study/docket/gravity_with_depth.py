@@ -37,6 +37,12 @@ FAR_FROM_NUMBER, FAR_FROM_MARKERS = 750.0, 600.0
 EXPLAINED = 300.0
 """kg/m3; another unit of depth explains densities that it brings so near to what is expected."""
 
+HEAVY = 3150.0
+"""kg/m3; rock of 2.0 to 3.0 g/cm3 is heavier than this, where its depths are feet written as metres."""
+
+LIGHT_AS_FEET, HEAVY_AS_FEET = 2000.0, 3000.0
+"""kg/m3; what most rocks lie between."""
+
 
 def gravity_with_depth(results: Results) -> Iterator[Finding]:
     """Gravity that does not change with depth, falls downward, or changes as in no such rock."""
@@ -113,15 +119,18 @@ def _falling(results: Results, known: Index, falls: NDArray[np.bool_], turning: 
 
 
 def _far_from_expected(results: Results, known: Index, turning: float) -> Iterator[Finding]:
+    if far_ties(results).size:
+        return
     expected = _expected(results)
-    if expected is None or far_ties(results).size:
-        return
-    what, rock, far = expected
     median = _median(results.intervals.density.values[known])
-    if abs(median - rock) <= far:
-        return
     # The gradient of gravity is that of the stated depths times what a stated metre should be.
     as_feet, as_metres = (turning - (turning - median) * factor for factor in (1.0 / FOOT, FOOT))
+    if expected is None or abs(median - expected[1]) <= expected[2]:
+        heavy_is_expected = expected is not None and abs(median - expected[1]) <= EXPLAINED
+        if not heavy_is_expected and median > HEAVY and LIGHT_AS_FEET <= as_feet <= HEAVY_AS_FEET:
+            yield _as_of_feet(known, median, as_feet)
+        return
+    what, rock, _far = expected
     if abs(as_feet - rock) <= EXPLAINED:
         explains = f"If the depths are feet, written as metres, it is {density(as_feet, 2)}, which fits."
     elif abs(as_metres - rock) <= EXPLAINED:
@@ -140,6 +149,19 @@ def _far_from_expected(results: Results, known: Index, turning: float) -> Iterat
         f"{density(rock, 2)}. {explains}",
         mend="See the units of depth and reading, scale and calibration; or state the density of the rock that is "
         "there.",
+        intervals=numbers(known),
+    )
+
+
+def _as_of_feet(known: Index, median: float, as_feet: float) -> Finding:
+    """A note only: ore is as heavy, and nothing stated speaks against it."""
+    return Finding(
+        code="density_as_of_feet",
+        severity="note",
+        place="intervals",
+        text=f"The median density of the {counted(known.size, 'interval')} is {density(median, 2)}, and little rock "
+        f"but ore is so heavy. If the depths are feet, written as metres, it is {density(as_feet, 2)}.",
+        mend="See that the depths or elevations are in the unit that the heading of their column names.",
         intervals=numbers(known),
     )
 
