@@ -14,10 +14,11 @@ from pathlib import Path
 import pytest
 from hypothesis import settings
 
+from plumbwell.study.results import Results
+from reduced_surveys import CHECKOUT, SHAFT, WELL, reduced
+
 settings.register_profile("house", derandomize=True, max_examples=50, deadline=None, database=None)
 settings.load_profile("house")
-
-CHECKOUT = Path(__file__).resolve().parents[1]
 
 
 @pytest.fixture(scope="session")
@@ -54,3 +55,15 @@ def no_thread_left() -> Iterator[None]:
 def one_application(qapp: object) -> object:
     """The one application of the whole run, able to hold widgets, made before any test draws."""
     return qapp
+
+
+@pytest.fixture(scope="session")
+def shaft() -> Results:
+    """The real shaft, reduced."""
+    return reduced(SHAFT)
+
+
+@pytest.fixture(scope="session")
+def well() -> Results:
+    """The sample well, reduced."""
+    return reduced(WELL)

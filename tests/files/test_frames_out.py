@@ -1,24 +1,13 @@
 """Data frames hold what the CSV files hold, at full precision."""
 
 import io
-from pathlib import Path
 
 import numpy as np
 import pandas as pd
 import pytest
 
-from plumbwell.files.folder import read_survey
 from plumbwell.files.frames import frame, frames
 from plumbwell.files.tables_out import csv_texts
-from plumbwell.study.case import Case
-from plumbwell.study.reduce import reduce
-
-SHAFT = Path(__file__).resolve().parents[1] / "data" / "reiche_zeche_shaft"
-
-
-@pytest.fixture(scope="module")
-def shaft():
-    return reduce(Case(survey=read_survey(SHAFT)))
 
 
 def test_frames_have_the_headings_and_values_of_the_files(shaft):

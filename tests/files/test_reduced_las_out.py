@@ -1,34 +1,15 @@
 """reduced.las as another reader finds it (lasio), against the interval table."""
 
 from dataclasses import replace
-from pathlib import Path
 
 import lasio
 import numpy as np
 import pytest
 
-from plumbwell.files.folder import read_survey
 from plumbwell.files.reduced_las import reduced_las
 from plumbwell.study.case import Case
 from plumbwell.study.reduce import reduce
-from plumbwell.study.tables import TABLES
-
-CHECKOUT = Path(__file__).resolve().parents[2]
-WELL = CHECKOUT / "sample_surveys" / "tolly_bank_well"
-MINE = CHECKOUT / "sample_surveys" / "quernlow_shaft"
-
-
-def reduced(folder):
-    return reduce(Case(survey=read_survey(folder)))
-
-
-@pytest.fixture(scope="module")
-def well():
-    return reduced(WELL)
-
-
-def column(results, table, name):
-    return TABLES[table].column(name).values(results)
+from reduced_surveys import CHECKOUT, MINE, column, reduced
 
 
 def test_header_says_step_null_and_place(well):

@@ -5,23 +5,18 @@ import json
 from dataclasses import replace
 from datetime import datetime
 from hashlib import sha256
-from pathlib import Path
 
 import numpy as np
 import pytest
 
 from plumbwell import __version__
-from plumbwell.files.folder import read_survey
 from plumbwell.files.summary import summary, summary_text
 from plumbwell.study.case import Case
 from plumbwell.study.finding import Finding
 from plumbwell.study.reduce import reduce
 from plumbwell.study.tables import TABLES
 from plumbwell.survey.recipe import KEYS
-
-CHECKOUT = Path(__file__).resolve().parents[2]
-SHAFT = CHECKOUT / "tests" / "data" / "reiche_zeche_shaft"
-WELL = CHECKOUT / "sample_surveys" / "tolly_bank_well"
+from reduced_surveys import WELL, reduced
 
 ONE_PASS = """\
 format = "plumbwell-survey/1"
@@ -33,20 +28,6 @@ ground_elevation = 100.0
 [data]
 readings = "readings.csv"
 """
-
-
-def reduced(folder):
-    return reduce(Case(survey=read_survey(folder)))
-
-
-@pytest.fixture(scope="module")
-def shaft():
-    return reduced(SHAFT)
-
-
-@pytest.fixture(scope="module")
-def well():
-    return reduced(WELL)
 
 
 def test_keys_are_those_of_the_contract(shaft):

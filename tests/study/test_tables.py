@@ -3,20 +3,15 @@
 import csv
 import shutil
 from dataclasses import replace
-from pathlib import Path
 
 import numpy as np
 import pytest
 
-from plumbwell.files.folder import read_survey
 from plumbwell.study.case import Case
 from plumbwell.study.finding import Finding
 from plumbwell.study.reduce import reduce
 from plumbwell.study.tables import TABLES, TEXT, TIME
-
-CHECKOUT = Path(__file__).resolve().parents[2]
-SHAFT = CHECKOUT / "tests" / "data" / "reiche_zeche_shaft"
-WELL = CHECKOUT / "sample_surveys" / "tolly_bank_well"
+from reduced_surveys import SHAFT, column, reduced
 
 HEADINGS = {
     "stations": [
@@ -43,24 +38,6 @@ HEADINGS = {
         "standardised", "hours_between",
     ],
 }  # fmt: skip
-
-
-def reduced(folder):
-    return reduce(Case(survey=read_survey(folder)))
-
-
-@pytest.fixture(scope="module")
-def shaft():
-    return reduced(SHAFT)
-
-
-@pytest.fixture(scope="module")
-def well():
-    return reduced(WELL)
-
-
-def column(results, table, name):
-    return TABLES[table].column(name).values(results)
 
 
 def test_headings_are_those_of_the_contract_in_its_order():
