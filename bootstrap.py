@@ -1,6 +1,6 @@
 """Set Plumbwell up in its checkout and run it.
 
-    python3 bootstrap.py app            reduce a sample survey and say where the results are
+    python3 bootstrap.py app            open the window on a sample survey; without a display reduce it
     python3 bootstrap.py test [ARGS]    run all checks and tests; ARGS go to pytest
 
 Everything is installed into ``.venv`` beside this file; nothing else on the machine is changed, except that
@@ -282,27 +282,8 @@ def sample_survey():
     return None
 
 
-def open_folder(path, environment):
-    """Show a folder on the desktop; a desktop without an opener is no error."""
-    try:
-        if os.name == "nt":
-            os.startfile(path)
-        else:
-            opener = "open" if sys.platform == "darwin" else "xdg-open"
-            subprocess.Popen(
-                [opener, path],
-                env=environment,
-                stdin=subprocess.DEVNULL,
-                stdout=subprocess.DEVNULL,
-                stderr=subprocess.DEVNULL,
-                start_new_session=True,
-            )
-    except OSError:
-        print("(No program was found here that opens a folder.)")
-
-
 def app(environment):
-    """Reduce a sample survey and say where the results are. Exit status."""
+    """Open the window on a sample survey; without a display reduce it and say where the results are. Exit status."""
     status = install("", environment)
     if status:
         return status
@@ -313,6 +294,9 @@ def app(environment):
     if sample is None:
         print("There is no survey in %s" % os.path.join(ROOT, "sample_surveys"), file=sys.stderr)
         return 1
+    if has_display(environment) and not qt_misses(True, environment):
+        print("plumbwell open %s" % sample.replace(os.sep, "/"))
+        return run([venv_program("plumbwell"), "open", sample], environment)
     for name in FIGURES:
         # A figure of an earlier run must not be shown as one of this run.
         if os.path.exists(os.path.join(OUTPUT, name)):
@@ -332,8 +316,6 @@ def app(environment):
             break
     else:
         print("Figure: none was written; the docket in summary.json says why.")
-    if has_display(environment):
-        open_folder(OUTPUT, environment)
     return 0
 
 

@@ -32,6 +32,7 @@ def own_home(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Path]:
     """An empty home, so that no test reads or writes the user's own files."""
     home = tmp_path_factory.mktemp("home")
     with pytest.MonkeyPatch.context() as patch:
+        patch.delenv("PLUMBWELL_HOME", raising=False)
         for name in ("HOME", "USERPROFILE"):
             patch.setenv(name, str(home))
         for name in ("XDG_DATA_HOME", "XDG_CONFIG_HOME", "XDG_CACHE_HOME", "APPDATA", "LOCALAPPDATA"):

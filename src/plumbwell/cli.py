@@ -1,4 +1,4 @@
-"""The command line: `plumbwell reduce`, `plumbwell check`, `plumbwell new`.
+"""The command line: `plumbwell` and `plumbwell open` show the window; `reduce`, `check` and `new` do without.
 
 Exit status: 0 done; 1 the input is wrong or the disk refuses; 2 wrong usage; 3 done as far as possible, with
 an error-grade finding; 130 stopped by Ctrl-C, 143 by the system. What cannot be printed changes none of these.
@@ -16,7 +16,6 @@ TYPE_CHECKING = False  # the module `typing` is not worth loading for a name
 if TYPE_CHECKING:
     import argparse
     from collections.abc import Callable, Iterable, Sequence
-    from pathlib import Path
 
     from plumbwell.files.stops import Stops
     from plumbwell.study.results import Results
@@ -39,7 +38,16 @@ def parser() -> argparse.ArgumentParser:
         f"{DEBUG}=1 in the environment shows where an unforeseen error arose.",
     )
     top.add_argument("--version", action="version", version=f"plumbwell {__version__}")
-    commands = top.add_subparsers(dest="command", metavar="COMMAND", required=True)
+    top.set_defaults(act=_open, folder=None)
+    commands = top.add_subparsers(dest="command", metavar="COMMAND")
+    window = commands.add_parser(
+        "open",
+        help="open the window on a survey folder; without a command it opens on the doors",
+        description="Open the window on a survey folder. Nothing is written into the survey folder: what is left out, "
+        "noted or set in the window is kept in your own data folder, and lies on top of what was measured.",
+    )
+    window.add_argument("folder", metavar="FOLDER", nargs="?", help="the survey folder, or its survey.toml")
+    window.set_defaults(act=_open)
     reduce = commands.add_parser(
         "reduce",
         help="reduce a survey folder and write tables, summary, LAS file and figure",
@@ -108,7 +116,7 @@ def _act(arguments: argparse.Namespace, stops: Stops) -> int:
     act: Callable[[argparse.Namespace, Stops], int] = arguments.act
     try:
         for name, text in (("FOLDER", arguments.folder), ("DIR", getattr(arguments, "out", "."))):
-            if not text.strip():
+            if text is not None and not text.strip():
                 from plumbwell.files.terminal import say
 
                 name = "DIR" if arguments.command == "new" else name
@@ -159,6 +167,39 @@ def _failed(error: Exception, *, writes: bool) -> int:
     return INPUT_WRONG
 
 
+def _open(arguments: argparse.Namespace, stops: Stops) -> int:
+    from pathlib import Path
+
+    from plumbwell.files.stops import held
+    from plumbwell.files.terminal import say
+    from plumbwell.files.user_folders import data_folder
+
+    missing = no_display()
+    if missing is not None:
+        say(missing, sys.stderr)
+        return USAGE_WRONG
+    with held():
+        try:
+            from plumbwell.desk.start import run
+        except (ImportError, OSError) as error:
+            say(f"The window cannot be shown, because a library is missing: {error}. `plumbwell reduce` works "
+                "without it.", sys.stderr)  # fmt: skip
+            return INPUT_WRONG
+    return run(None if arguments.folder is None else Path(arguments.folder), data_folder())
+
+
+def no_display() -> str | None:
+    """Why no window can be shown here, in a sentence; None where one can."""
+    if sys.platform != "linux" or any(
+        os.environ.get(name) for name in ("QT_QPA_PLATFORM", "DISPLAY", "WAYLAND_DISPLAY")
+    ):
+        return None
+    return (
+        "There is no display here (neither DISPLAY nor WAYLAND_DISPLAY is set), so no window can be shown. "
+        "`plumbwell reduce FOLDER --out DIR` does the same work without one."
+    )
+
+
 def _reduce(arguments: argparse.Namespace, stops: Stops) -> int:
     from pathlib import Path
 
@@ -166,12 +207,10 @@ def _reduce(arguments: argparse.Namespace, stops: Stops) -> int:
 
     with held():
         from plumbwell.files.folder import read_survey
-        from plumbwell.files.output_folder import SUMMARY, check_target, output_folder, write_texts
-        from plumbwell.files.reduced_las import reduced_las
+        from plumbwell.files.output_folder import check_target
         from plumbwell.files.report_lines import docket_lines
-        from plumbwell.files.summary import summary_text
-        from plumbwell.files.tables_out import csv_notes, csv_texts
         from plumbwell.files.terminal import ProgressLine, say
+        from plumbwell.plates.outputs import write_outputs
         from plumbwell.study.case import Case
         from plumbwell.study.reduce import reduce
 
@@ -181,55 +220,18 @@ def _reduce(arguments: argparse.Namespace, stops: Stops) -> int:
         line.tell(0.0, "reading the files")
         survey = read_survey(arguments.folder)
         results = reduce(Case(survey=survey), progress=line.tell)
-        line.tell(1.0, "writing tables")
-        texts, notes = csv_texts(results), csv_notes(results)
-        las = reduced_las(results)
-        if las is None:
-            notes.append("reduced.las is not written: no interval reaches over two half metres of depth")
-        else:
-            texts["reduced.las"] = las
-        with output_folder(target) as aside:
-            write_texts(aside, texts)
-            line.tell(1.0, "drawing the figure")
-            # The drawing library ends the process when a stop meets it while it is loaded or at work.
-            with held():
-                results = _with_figures(results, aside)
-            names = sorted(one.name for one in aside.iterdir())
-            write_texts(aside, {SUMMARY: summary_text(results, outputs=[*names, SUMMARY], notes=notes)})
-            stops.raise_noted()
+        written = write_outputs(
+            results, target, progress=lambda _, what: line.tell(1.0, what), before_moving=stops.raise_noted
+        )
     finally:
         line.clear()
+    results = written.results
     graver = [one for one in results.findings if one.severity == "error"]
     if not arguments.quiet:
-        _report(results, arguments, [*names, SUMMARY], notes)
+        _report(results, arguments, written.names, written.notes)
     elif graver:
         say("\n".join(docket_lines(graver)), sys.stderr)
     return DONE_WITH_ERRORS if graver else DONE
-
-
-def _with_figures(results: Results, folder: Path) -> Results:
-    """Draw the figures; where the drawing libraries are missing, a finding says so."""
-    try:
-        from plumbwell.plates.figure_of import write_figures
-    except (ImportError, OSError) as error:
-        import re
-        from dataclasses import replace
-
-        from plumbwell.study.finding import Finding
-
-        named = re.search(r"lib[\w.+-]+\.(?:so[\w.]*|dylib)|[\w.+-]+\.dll|(?<=No module named ')[\w.]+", str(error))
-        library = named[0] if named else str(error)
-        finding = Finding(
-            code="figure_not_drawn",
-            severity="error",
-            place="figure.svg, figure.png",
-            text=f"The figures could not be drawn, because the library {library} is missing; everything else "
-            "is written.",
-            mend=f"Install {library} by the system's own means, then run again.",
-        )
-        return replace(results, findings=(finding, *results.findings))
-    write_figures(results, folder)
-    return results
 
 
 def _check(arguments: argparse.Namespace, stops: Stops) -> int:

@@ -150,7 +150,6 @@ def test_a_survey_that_cannot_be_reduced_is_told_in_a_sentence(survey, tmp_path,
 @pytest.mark.parametrize(
     "words",
     [
-        [],
         ["reduce"],
         ["reduce", "x"],
         ["reduced", "x"],
@@ -164,6 +163,25 @@ def test_wrong_usage_has_status_2_and_shows_the_usage(words, capsys):
     assert main(words) == 2
     out, err = capsys.readouterr()
     assert err.startswith("usage: plumbwell") and out == ""
+
+
+@pytest.mark.parametrize("words", [[], ["open"], ["open", "x"]])
+@pytest.mark.skipif(sys.platform != "linux", reason="elsewhere a window can always be shown")
+def test_without_a_display_the_window_is_refused_with_what_works_instead(words, monkeypatch, capsys):
+    for name in ("QT_QPA_PLATFORM", "DISPLAY", "WAYLAND_DISPLAY"):
+        monkeypatch.delenv(name, raising=False)
+    assert main(words) == 2
+    out, err = capsys.readouterr()
+    assert "no display here" in err and "plumbwell reduce" in err.replace("\n", " ") and out == ""
+
+
+@pytest.mark.parametrize(("words", "folder"), [([], None), (["open"], None), (["open", "x"], "x")])
+def test_the_window_is_opened_on_the_folder_that_is_named(words, folder, monkeypatch, tmp_path):
+    opened = []
+    monkeypatch.setenv("PLUMBWELL_HOME", str(tmp_path))
+    monkeypatch.setattr("plumbwell.desk.start.run", lambda path, home: opened.append((path, home)) or 0)
+    assert main(words) == 0
+    assert opened == [(None if folder is None else Path(folder), tmp_path)]
 
 
 @pytest.mark.parametrize("word", ["--help", "--version"])
@@ -318,4 +336,4 @@ def test_progress_is_one_line_on_a_terminal_and_wiped_at_the_end(plain_figures, 
     err = capsys.readouterr().err
     assert "\n" not in err and err.endswith("\r")
     shown = [line.strip() for line in err.split("\r") if line.strip()]
-    assert shown[0] == "0%  reading the files" and "60%  network" in shown and shown[-1] == "100%  drawing the figure"
+    assert shown[0] == "0%  reading the files" and "60%  network" in shown and shown[-1] == "100%  writing the summary"

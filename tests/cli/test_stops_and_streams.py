@@ -136,7 +136,7 @@ def test_a_stop_that_a_callback_swallows_is_met_at_the_next_step(monkeypatch, tm
         del thing
         return {}
 
-    monkeypatch.setattr("plumbwell.files.tables_out.csv_texts", loses_it)
+    monkeypatch.setattr("plumbwell.plates.outputs.csv_texts", loses_it)
     assert main(["reduce", str(SHAFT), "--out", str(tmp_path / "out")]) == 130
     assert capsys.readouterr().err == "\nStopped. Nothing was left half written.\n"
     assert os.listdir(tmp_path) == []

@@ -20,13 +20,14 @@ OUTSIDE = {
     "study": {"numpy"},
     "files": {"numpy", "openpyxl", "defusedxml"},
     "plates": {"numpy", "PySide6.QtCore", "PySide6.QtGui", "PySide6.QtSvg"},
-    "desk": {"numpy", "PySide6", "pyqtgraph"},
+    "desk": {"numpy", "PySide6"},
     "cli": set(),
 }
 # The same for single files, and for what may only be imported inside a function.
 IN_FILE = {
     "plumbwell.files.frames": {"pandas"},
     "plumbwell.files.grids": {"tifffile", "pyproj"},
+    "plumbwell.files.survey_toml_edits": {"tomlkit"},
 }
 IN_FUNCTION = {
     "reduction": {"scipy"},

@@ -5,6 +5,7 @@ import random
 
 import pytest
 
+from plumbwell.plates.log_curve import LogCurve
 from plumbwell.plates.plate import PlateFinding, PlateInterval, PlateStation, SurveyPlate
 from plumbwell.plates.theme import theme_named
 
@@ -87,8 +88,7 @@ def make_plate(intervals, *, span=1440.0, log=True, log_samples=1500, markers=Tr
         "intervals": tuple(rows),
         "stations": tuple(stations),
         "markers": tuple((name, top * span) for name, top, _ in LAYERS) if markers else (),
-        "log_depths": tuple(log_depths),
-        "log_values": tuple(log_values),
+        "log": LogCurve.of(log_depths, log_values) if log else None,
         "findings": (
             PlateFinding(
                 severity="look", depth=0.54 * span, words="Lighter in the log: the caliper shows a wide hole."

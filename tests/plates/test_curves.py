@@ -3,17 +3,22 @@
 import itertools
 from dataclasses import replace
 
+import numpy as np
 import pytest
 from PySide6.QtCore import QRectF
 from PySide6.QtGui import QColor, QImage
 
 from plumbwell.plates.axis import Frame
+from plumbwell.plates.curve_rows import line_extent, step_extent
 from plumbwell.plates.fan import draw_fan, interval_ribbons, ribbon_shape, station_ribbons
 from plumbwell.plates.lettering import text_placed
-from plumbwell.plates.naming import draw_curve_names, draw_layer_names, line_extent, step_extent
+from plumbwell.plates.log_curve import LogCurve
+from plumbwell.plates.naming import draw_curve_names, draw_layer_names
 from plumbwell.plates.painting import painting
 from plumbwell.plates.polyline import inside_pieces, log_pieces
-from plumbwell.plates.track import Point, Step, Track, draw_selection_band, draw_track
+from plumbwell.plates.track import Point, Step, Track
+from plumbwell.plates.track_curves import draw_track
+from plumbwell.plates.track_marks import draw_selection_bands
 
 FRAME = Frame(left=100, top=50, right=300, base=450, depth_top=0.0, depth_base=100.0)
 
@@ -25,9 +30,17 @@ def blank(theme):
 
 
 def test_lines_are_cut_at_the_edges_of_the_frame():
-    pieces = inside_pieces([(0, 100), (200, 100), (200, 600), (250, 600), (250, 100)], FRAME)
-    assert pieces == [[(100.0, 100.0), (200.0, 100.0), (200.0, 450.0)], [(250.0, 450.0), (250.0, 100.0)]]
-    assert inside_pieces([(0, 0), (10, 10)], FRAME) == []
+    def pieces(*places):
+        x, y = np.array(places, dtype=float).T
+        return [list(zip(*(side.tolist() for side in piece), strict=True)) for piece in inside_pieces(x, y, FRAME)]
+
+    assert pieces((0, 100), (200, 100), (200, 600), (250, 600), (250, 100)) == [
+        [(100.0, 100.0), (200.0, 100.0), (200.0, 450.0)],
+        [(250.0, 450.0), (250.0, 100.0)],
+    ]
+    assert pieces((0, 0), (10, 10)) == pieces((150, 100)) == []
+    assert pieces((150, 0), (150, 600)) == [[(150.0, 50.0), (150.0, 450.0)]], "across the whole frame"
+    assert pieces((110, 60), (120, 70), (130, 80)) == [[(110.0, 60.0), (120.0, 70.0), (130.0, 80.0)]]
 
 
 def crowded_log():
@@ -41,48 +54,47 @@ def crowded_log():
         unit="",
         low=1.0,
         high=3.5,
-        line_depths=tuple(depths),
-        line_values=tuple(values),
+        line=LogCurve.of(depths, values),
         line_name="log",
     )
 
 
 def test_a_crowded_log_keeps_its_spikes_and_its_gaps():
     track = crowded_log()
-    pieces = log_pieces(track.line_depths, track.line_values, track, FRAME)
+    pieces = log_pieces(track.line, track.low, track.high, FRAME)
     assert len(pieces) == 2
-    rows = [row for piece in pieces for row in piece.spread]
-    assert min(least for least, _, _ in rows) == pytest.approx(track.x(1.2, FRAME))
-    assert max(most for _, most, _ in rows) == pytest.approx(track.x(3.3, FRAME))
-    assert len(rows) <= 402
-    assert pieces[0].line[-1][1] < FRAME.y(60.0) < FRAME.y(61.9) < pieces[1].line[0][1]
-    assert all(a[1] < b[1] for piece in pieces for a, b in itertools.pairwise(piece.line))
-    means = [x for piece in pieces for x, _ in piece.line]
+    assert min(piece.least.min() for piece in pieces) == pytest.approx(track.x(1.2, FRAME))
+    assert max(piece.most.max() for piece in pieces) == pytest.approx(track.x(3.3, FRAME))
+    assert sum(len(piece.least) for piece in pieces) <= 402
+    assert pieces[0].y[-1] < FRAME.y(60.0) < FRAME.y(61.9) < pieces[1].y[0]
+    assert all((np.diff(piece.y) > 0).all() for piece in pieces)
+    means = np.concatenate([piece.x for piece in pieces])
     assert means[200] == pytest.approx(track.x(2.4, FRAME), abs=0.5)
 
 
 def test_a_log_with_few_samples_is_drawn_through_each():
-    track = stairs(line_depths=(10.0, 20.0, 30.0, 40.0, 50.0), line_values=(2.0, 2.1, None, 2.3, 2.4))
-    pieces = log_pieces(track.line_depths, track.line_values, track, FRAME)
-    assert [len(piece.line) for piece in pieces] == [2, 2]
-    assert not any(piece.spread for piece in pieces)
-    assert pieces[1].line[0] == (pytest.approx(track.x(2.3, FRAME)), pytest.approx(FRAME.y(40.0)))
+    track = stairs(line=LogCurve.of((10.0, 20.0, 30.0, 40.0, 50.0), (2.0, 2.1, None, 2.3, 2.4)))
+    pieces = log_pieces(track.line, track.low, track.high, FRAME)
+    assert [len(piece.x) for piece in pieces] == [2, 2]
+    assert all(piece.least is None for piece in pieces)
+    assert pieces[1].x[0] == pytest.approx(track.x(2.3, FRAME))
+    assert pieces[1].y[0] == pytest.approx(FRAME.y(40.0))
 
 
 def test_a_stretch_of_log_within_one_row_has_a_length():
     values = [2.4] * 5000 + [None] * 40 + [2.5] * 30 + [None] * 40 + [2.4] * 4890
     depths = [index * 0.01 for index in range(len(values))]
-    track = stairs(line_depths=tuple(depths), line_values=tuple(values))
-    pieces = log_pieces(track.line_depths, track.line_values, track, FRAME)
+    track = stairs(line=LogCurve.of(depths, values))
+    pieces = log_pieces(track.line, track.low, track.high, FRAME)
     assert len(pieces) == 3
-    assert pieces[1].line[0][1] < pieces[1].line[-1][1]
+    assert pieces[1].y[0] < pieces[1].y[-1]
 
 
 def test_a_crowded_log_buries_neither_staircase_nor_itself(qapp, light):
     values = [2.3 + 0.1 * (-1) ** index for index in range(10_000)]
     depths = [index * 0.01 for index in range(10_000)]
     steps = (Step(top=0.0, base=100.0, value=2.35),)
-    track = stairs(steps=steps, line_depths=tuple(depths), line_values=tuple(values), line_name="log")
+    track = stairs(steps=steps, line=LogCurve.of(depths, values), line_name="log")
     image = blank(light)
     with painting(image) as painter:
         draw_track(painter, track, FRAME, light)
@@ -171,8 +183,7 @@ def test_nothing_is_inked_outside_the_frame(qapp, light):
             Point(depth=50.0, value=30.0, sd=1.0),
             Point(depth=120.0, value=2.0),
         ),
-        line_depths=(-10.0, 50.0, 130.0),
-        line_values=(2.0, -40.0, 2.5),
+        line=LogCurve.of((-10.0, 50.0, 130.0), (2.0, -40.0, 2.5)),
     )
     with painting(image) as painter:
         draw_track(painter, wild, FRAME, light)
@@ -188,8 +199,7 @@ def test_names_stand_beside_their_curve_away_from_the_other(qapp, light):
     track = stairs(
         step_name="gravity",
         line_name="log",
-        line_depths=log_depths,
-        line_values=tuple(2.3 if z < 40 else 2.4 if z < 60 else 2.6 for z in log_depths),
+        line=LogCurve.of(log_depths, [2.3 if z < 40 else 2.4 if z < 60 else 2.6 for z in log_depths]),
     )
     with painting(blank(light)) as painter:
         gravity, log = draw_curve_names(painter, track, FRAME, light)
@@ -249,8 +259,7 @@ def test_a_ribbon_has_the_tone_of_its_density_and_the_selected_one_is_accented(q
 def test_the_selection_is_a_band_for_an_interval_and_a_line_for_a_station(qapp, light):
     image = blank(light)
     with painting(image) as painter:
-        draw_selection_band(painter, FRAME, light, top=25.0, base=50.0)
-        draw_selection_band(painter, FRAME, light, top=75.0, base=75.0)
+        draw_selection_bands(painter, FRAME, light, [(25.0, 50.0), (75.0, 75.0)])
     accent, tint = QColor(light.roles["accent"]), QColor(light.roles["tint"])
     column = [image.pixelColor(200, y) for y in range(500)]
     assert [y for y, colour in enumerate(column) if colour == accent] == [150, 250, 350]

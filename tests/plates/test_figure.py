@@ -20,6 +20,7 @@ from plumbwell.plates.figure import (
 )
 from plumbwell.plates.ledger_excerpt import interval_excerpt
 from plumbwell.plates.lettering import ELLIPSIS, FAMILY, plate_family, text_placed
+from plumbwell.plates.log_curve import LogCurve
 from plumbwell.plates.plate import PlateFinding, PlateStation, SurveyPlate
 from plumbwell.plates.survey_tracks import survey_tracks
 from plumbwell.plates.theme import theme_named
@@ -265,10 +266,10 @@ def test_files_are_equal_when_plates_are(invented, light, tmp_path):
 
 def test_the_log_is_shown_whole_unless_it_is_wild(invented, light):
     plate = invented(20)
-    least, greatest = min(v for v in plate.log_values if v), max(v for v in plate.log_values if v)
+    least, greatest = plate.log.low, plate.log.high
     track = next(track for track in survey_tracks(plate, wide=False) if track.title == "density")
     assert track.low < least < greatest < track.high
-    spiked = replace(plate, log_values=(0.01, *plate.log_values[1:]))
+    spiked = replace(plate, log=LogCurve(depth=plate.log.depth, value=[0.01, *plate.log.value[1:]]))
     track = next(track for track in survey_tracks(spiked, wide=False) if track.title == "density")
     assert track.low > 1.5
     assert "0.010" in [text.drawn for text in _drawn(spiked, light)[1]]

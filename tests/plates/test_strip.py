@@ -10,7 +10,10 @@ from plumbwell.plates.axis import Frame
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.painting import draw_mark, painting
 from plumbwell.plates.plate import PlateFinding, PlateInterval, SurveyPlate
-from plumbwell.plates.strip import CORE_LEFT, core_width, draw_strip, spread_names, strip_room
+from plumbwell.plates.strip import draw_strip, draw_tone_key, key_height, strip_room
+from plumbwell.plates.strip_names import spread_names
+from plumbwell.plates.strip_places import CORE_LEFT, chosen_rows, core_width, finding_marks, strip_columns
+from plumbwell.plates.theme import theme_named
 
 FRAME = Frame(left=0, top=20, right=216, base=620, depth_top=0.0, depth_base=600.0)
 
@@ -88,7 +91,7 @@ def test_crowded_names_stay_inside(count):
 
 def test_names_outside_the_window_are_muted_and_the_grip_frames_it(qapp, light):
     plate = replace(layers(2.0, 2.4, 2.6, 2.8), markers=(("Upper bed", 50.0), ("Inner bed", 250.0)))
-    image = drawn(plate, light, window=(200.0, 300.0), selected=(220.0, 240.0))
+    image = drawn(plate, light, window=(200.0, 300.0), selected=[(220.0, 240.0)])
     accent = QColor(light.roles["accent"])
     rows = [y for y in range(640) if image.pixelColor(200, y) == accent]
     assert rows == [220, 320]
@@ -163,3 +166,72 @@ def test_leaders_of_crowded_names_spread_beside_the_core(qapp, light):
     ]
     reach = [found[-1] - found[0] for found in rows]
     assert reach[1] > reach[0] + 20, "they slant apart over the whole way from the core to the names"
+
+
+def test_larger_numbers_push_the_core_right_and_leave_it_as_wide(qapp):
+    columns = {scale: strip_columns(theme_named("light", scale), FRAME) for scale in (0.9, 1.0, 1.5)}
+    assert (columns[1.0].numbers_right, columns[1.0].core, columns[1.0].names) == (33, 60, 131)
+    assert columns[0.9].core < 60 < columns[1.5].core
+    for one in columns.values():
+        assert one.names - one.core == 71 and one.core - one.numbers_right == 27
+
+
+@pytest.mark.parametrize("scale", [0.9, 1.0, 1.6])
+@pytest.mark.parametrize("upward", [False, True])
+def test_depth_numbers_stand_apart_left_of_the_bar(qapp, scale, upward):
+    theme = theme_named("light", scale)
+    frame = replace(FRAME, depth_top=-226.0, depth_base=1218.0, upward=upward)
+    with text_placed() as placed, painting(QImage(216, 640, QImage.Format.Format_RGB32)) as painter:
+        draw_strip(painter, layers(2.4), frame, theme)
+    numbers = [text for text in placed if text.drawn.strip("\u2212\u00a0").replace("\u00a0", "").isdigit()]
+    assert len(numbers) >= 5
+    for above, below in pairwise(numbers):
+        assert below.needed.top() - above.needed.bottom() > 3
+    bar = strip_columns(theme, frame).bar
+    assert all(0 <= text.needed.left() and text.needed.right() < bar for text in numbers)
+    shown = [int(text.drawn.replace("\u2212", "-").replace("\u00a0", "")) for text in numbers]
+    assert shown == sorted(shown, reverse=upward)
+
+
+def test_chosen_spans_that_touch_are_one_and_those_outside_are_left_out():
+    spans = [(300.0, 350.0), (100.0, 200.0), (200.0, 250.0), (90.0, 90.0), (700.0, 800.0), (-50.0, 10.0)]
+    assert chosen_rows(FRAME, spans) == [(20, 30), (110, 110), (120, 270), (320, 370)]
+
+
+def test_a_mark_stands_for_the_less_grave_findings_beside_it():
+    findings = [
+        PlateFinding(severity="note", depth=104.0),
+        PlateFinding(severity="look", depth=100.0),
+        PlateFinding(severity="error", depth=107.0),
+        PlateFinding(severity="look", depth=300.0),
+        PlateFinding(severity="look", depth=900.0),
+        PlateFinding(severity="look"),
+    ]
+    marks = [(mark.finding, mark.others) for mark in finding_marks(findings, FRAME)]
+    assert marks == [(2, (1, 0)), (3, ())]
+
+
+def test_a_name_is_not_struck_through_by_the_grip(qapp, light):
+    plate = replace(layers(2.0, 2.4, 2.6), markers=(("Marrow Shale", 100.0),))
+    accent = QColor(light.roles["accent"])
+
+    def line(base):
+        image = drawn(plate, light, window=(20.0, base))
+        row = round(FRAME.y(base))
+        return [x for x in range(132, 200) if image.pixelColor(x, row) == accent]
+
+    assert len(line(150.0)) == 68
+    assert len(line(109.0)) < 10, "the line ends where the name begins"
+
+
+@pytest.mark.parametrize("scale", [0.9, 1.0, 1.6])
+def test_the_key_of_tones_fits_its_height(qapp, scale):
+    theme = theme_named("light", scale)
+    image = QImage(216, 200, QImage.Format.Format_RGB32)
+    with text_placed() as placed, painting(image) as painter:
+        draw_tone_key(painter, theme, left=17, top=10, width=176)
+    assert [text.drawn for text in placed] == ["density, g/cm\u00b3", "2.0", "2.5", "3.0"]
+    assert max(text.needed.bottom() for text in placed) <= 10 + key_height(theme)
+    assert key_height(theme_named("light")) == 62
+    title, first = placed[0].needed, placed[1].needed
+    assert first.top() > title.bottom() + 11

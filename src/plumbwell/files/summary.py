@@ -22,6 +22,7 @@ from plumbwell.reduction.design import DriftUnknown
 from plumbwell.study.cautions import CAUTIONS
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
+from plumbwell.study.visit_table import tares_in_force
 from plumbwell.survey.recipe import as_written
 
 HOUR = 3600.0
@@ -163,26 +164,16 @@ def drift(results: Results) -> list[dict[str, Any]]:
 
 def tares(results: Results) -> list[dict[str, Any]]:
     """The tares that were taken out, in time order; sd None for one that is held at its stated size."""
-    fit, shift = results.network.adjustment, results.network.gravity.tare_shift
-    names, basis = results.survey.readings.run.names, fit.basis
-    told = []
-    for number in sorted(range(len(basis.tares)), key=lambda one: (basis.tares[one].time, one)):
-        tare, run = basis.tares[number], int(basis.tare_run[number])
-        unknown = DriftUnknown(kind="tare", run=run, tare=number)
-        if tare.size is not None and tare.size_sd is None:
-            size, sd = tare.size, None
-        else:
-            size, found = fit.unknown(unknown)
-            size, sd = size + float(shift[number]), found if unknown in fit.design.unknowns else None
-        told.append(
-            {
-                "run": names[run],
-                "time": iso(tare.time),
-                "size": _number(size, MILLIGAL),
-                "sd": _number(sd, MILLIGAL),
-            }
-        )
-    return told
+    names = results.survey.readings.run.names
+    return [
+        {
+            "run": names[one.run],
+            "time": iso(one.tare.time),
+            "size": _number(one.size, MILLIGAL),
+            "sd": _number(one.sd, MILLIGAL),
+        }
+        for one in tares_in_force(results)
+    ]
 
 
 def variance_components(results: Results) -> dict[str, Any]:

@@ -9,22 +9,45 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from math import ceil, floor, log10
 
+import numpy as np
 from PySide6.QtGui import QPainter
 
 from plumbwell.plates.lettering import draw_text, text_height, text_width
 from plumbwell.plates.numbers import number, step_decimals
 from plumbwell.plates.painting import draw_graduated_bar, hairline_across, whole
 from plumbwell.plates.theme import Theme
+from plumbwell.survey.column import Array
 
-HEAD_HEIGHT = 52
-TITLE_BASELINE, UNIT_BASELINE = 22, 41
-AXIS_WIDTH = 58
 STATION_TICK, LEAST_TICK_GAP = 4, 3
+BAR_LEFT, NUMBERS_LEFT = 8, 21
+
+
+def head_height(theme: Theme) -> int:
+    """Return the height of the heads of ledger and tracks in px: 52, grown with the text."""
+    return theme.px(52)
+
+
+def title_baseline(theme: Theme) -> int:
+    """Return how far below the upper edge of a head its names stand, in px: 22, grown with the text."""
+    return theme.px(22)
+
+
+def unit_baseline(theme: Theme) -> int:
+    """Return how far below the upper edge of a head its units stand, in px: 41, grown with the text."""
+    return theme.px(41)
+
+
+def axis_width(theme: Theme) -> int:
+    """Return the width of the depth axis in px: 58, grown with the text."""
+    return theme.px(58)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Frame:
-    """A rectangle in px with the depth window it shows: depth grows from its top edge to its base."""
+    """A rectangle in px with the depth window it shows: depth grows from its top edge to its base.
+
+    With `upward` the numbers that are written grow upward: depth is the negative of an elevation.
+    """
 
     left: float
     top: float
@@ -32,11 +55,21 @@ class Frame:
     base: float
     depth_top: float
     depth_base: float
+    upward: bool = False
+
+    def number_of(self, depth: float) -> float:
+        """Return the number that is written for a depth."""
+        return 0.0 - depth if self.upward else depth
 
     def y(self, depth: float) -> float:
         """Return the px row of a depth."""
         share = (depth - self.depth_top) / (self.depth_base - self.depth_top)
         return self.top + share * (self.base - self.top)
+
+    def y_of(self, depths: Array) -> Array:
+        """Return the px rows of many depths."""
+        share = (depths - self.depth_top) / (self.depth_base - self.depth_top)
+        return np.asarray(self.top + share * (self.base - self.top))
 
     def across(self, left: float, right: float) -> Frame:
         """Return the frame with the same depths between other edges."""
@@ -47,6 +80,7 @@ class Frame:
             base=self.base,
             depth_top=self.depth_top,
             depth_base=self.depth_base,
+            upward=self.upward,
         )
 
 
@@ -152,6 +186,31 @@ def spaced_rows(frame: Frame, depths: Sequence[float], gap: float) -> list[int]:
     return rows
 
 
+def numbered_depths(frame: Frame, measured: tuple[float, float]) -> list[float]:
+    """Return the depths that have a number on the tracks' depth axis, inside the frame and the measured range."""
+    graduation = track_graduation(frame.depth_base - frame.depth_top, frame.base - frame.top)
+    first, last = max(measured[0], frame.depth_top), min(measured[1], frame.depth_base)
+    return multiples(graduation.numbered, first, last) if first <= last else []
+
+
+def axis_room(theme: Theme, frame: Frame, measured: tuple[float, float], label: str) -> float:
+    """Return the width in px that the depth axis needs: 58, more for long numbers and a long label.
+
+    The numbers of the whole measured range count, so that the axis keeps its width while the window moves.
+    """
+    graduation = track_graduation(frame.depth_base - frame.depth_top, frame.base - frame.top)
+    decimals = step_decimals(graduation.numbered)
+    numbers = [number(frame.number_of(depth), decimals) for depth in measured]
+    widest = max(text_width(theme, "small", words) for words in numbers)
+    return max(axis_width(theme), NUMBERS_LEFT + widest + 6, text_width(theme, "emphasis", label) + theme.px(8))
+
+
+def number_baseline(theme: Theme, frame: Frame, depth: float) -> float:
+    """Return the baseline of a number on the tracks' depth axis: beside its depth, and inside the frame."""
+    cap = text_height(theme, "small")
+    return min(max(frame.y(depth) + cap / 2, frame.top + cap + 4), frame.base - 1)
+
+
 def draw_depth_axis(
     painter: QPainter,
     frame: Frame,
@@ -162,6 +221,7 @@ def draw_depth_axis(
     stations: Sequence[float],
     measured: tuple[float, float],
     head_room: float = 0.0,
+    inset: float = 0.0,
 ) -> list[float]:
     """Draw the depth axis of the tracks with its head, and return the numbered depths for the grid.
 
@@ -169,7 +229,7 @@ def draw_depth_axis(
     ----------
     painter : QPainter
     frame : Frame
-        The axis below its head; the head takes the 52 px above.
+        The axis below its head; the head takes the px above.
     theme : Theme
     label, unit : str
         What depth is ("depth", "MD", "chainage") and its unit.
@@ -179,38 +239,41 @@ def draw_depth_axis(
         Depths from and to which the bar is drawn, inside those of the frame.
     head_room : float
         Empty px left of the axis' head, for a long label.
+    inset : float
+        How far right of the left edge a label stands that has its unit beside it.
     """
-    head = frame.top - HEAD_HEIGHT
+    head, gap, edge = frame.top - head_height(theme), theme.px(5), frame.right - theme.px(8)
     unit_width = text_width(theme, "small", unit)
-    if text_width(theme, "emphasis", label) + 5 + unit_width <= frame.right - frame.left + 4:
-        box = draw_text(painter, theme, label, x=frame.left, baseline=head + TITLE_BASELINE, face="emphasis")
-        x, baseline, align = box.right() + 5, head + TITLE_BASELINE, "left"
+    if inset + text_width(theme, "emphasis", label) + gap + unit_width <= frame.right - frame.left + 4:
+        left = frame.left + inset
+        box = draw_text(painter, theme, label, x=left, baseline=head + title_baseline(theme), face="emphasis")
+        x, baseline, align = box.right() + gap, head + title_baseline(theme), "left"
     else:
-        room = (frame.left - head_room, frame.right - 8)
+        room = (frame.left - head_room, edge)
         draw_text(
             painter,
             theme,
             label,
-            x=frame.right - 8,
-            baseline=head + TITLE_BASELINE,
+            x=edge,
+            baseline=head + title_baseline(theme),
             face="emphasis",
             align="right",
             room=room,
         )
-        x, baseline, align = frame.right - 8, head + UNIT_BASELINE, "right"
+        x, baseline, align = edge, head + unit_baseline(theme), "right"
     draw_text(painter, theme, unit, x=x, baseline=baseline, face="small", role="muted", align=align)
     graduation = track_graduation(frame.depth_base - frame.depth_top, frame.base - frame.top)
     first, last = max(measured[0], frame.depth_top), min(measured[1], frame.depth_base)
-    edges, before = depth_fields(graduation, frame, first, last)
-    bar = frame.left + 8
-    draw_graduated_bar(painter, theme, x=bar, edges=edges, fields_before=before)
+    bar = frame.left + BAR_LEFT
+    if first < last:
+        edges, before = depth_fields(graduation, frame, first, last)
+        draw_graduated_bar(painter, theme, x=bar, edges=edges, fields_before=before)
     for row in spaced_rows(frame, stations, LEAST_TICK_GAP):
         hairline_across(painter, bar + 4, bar + 4 + STATION_TICK, row, theme.colour("ink"))
-    numbered = multiples(graduation.numbered, first, last)
-    cap = text_height(theme, "small")
-    texts = [number(depth, step_decimals(graduation.numbered)) for depth in numbered]
-    numbers_right = bar + 13 + max((text_width(theme, "small", words) for words in texts), default=0.0)
+    numbered = numbered_depths(frame, measured)
+    texts = [number(frame.number_of(depth), step_decimals(graduation.numbered)) for depth in numbered]
+    numbers_right = frame.left + NUMBERS_LEFT + max((text_width(theme, "small", words) for words in texts), default=0.0)
     for depth, words in zip(numbered, texts, strict=True):
-        baseline = min(max(frame.y(depth) + cap / 2, frame.top + cap + 4), frame.base - 1)
+        baseline = number_baseline(theme, frame, depth)
         draw_text(painter, theme, words, x=numbers_right, baseline=baseline, face="small", align="right")
     return numbered

@@ -14,7 +14,7 @@ from PySide6.QtGui import QImage, QPainter
 from PySide6.QtSvg import QSvgGenerator
 
 from plumbwell.plates.application import drawing_application
-from plumbwell.plates.axis import AXIS_WIDTH, Frame, draw_depth_axis
+from plumbwell.plates.axis import Frame, axis_width, draw_depth_axis
 from plumbwell.plates.fan import draw_fan, interval_ribbons, station_ribbons
 from plumbwell.plates.findings_list import draw_findings_list
 from plumbwell.plates.layout import (
@@ -23,10 +23,10 @@ from plumbwell.plates.layout import (
     LINE,
     MARGIN,
     REMARK_GAP,
-    SCALE_REMARK,
     TITLE_HEIGHT,
     Layout,
     plate_layout,
+    scale_remark,
 )
 from plumbwell.plates.ledger_excerpt import Excerpt, draw_excerpt
 from plumbwell.plates.lettering import draw_text, text_width
@@ -38,11 +38,11 @@ from plumbwell.plates.survey_tracks import survey_tracks
 from plumbwell.plates.svg_paths import compact_svg
 from plumbwell.plates.svg_text import svg_texts, with_glyphs
 from plumbwell.plates.theme import Theme
-from plumbwell.plates.track import Track, draw_grid, draw_track, draw_track_head
+from plumbwell.plates.track import Track
+from plumbwell.plates.track_curves import draw_track
+from plumbwell.plates.track_row import draw_grid, draw_track_head, names_track, track_frames, track_gap
 
-GAP = 12
 DEPTH_PAD = 8.0
-WIDEST_TITLE = 190.0
 METRE = 39.3701 * 96
 _SIZE = re.compile(rb'width="[^"]*mm" height="[^"]*mm"')
 
@@ -72,7 +72,7 @@ def _draw_frame_text(painter: QPainter, plate: SurveyPlate, layout: Layout, them
     draw_text(
         painter,
         theme,
-        SCALE_REMARK,
+        scale_remark(theme),
         x=right,
         baseline=layout.foot_top + 19,
         face="small",
@@ -119,45 +119,17 @@ def _draw_ledger(
     return right + FAN_WIDTH
 
 
-def _track_widths(theme: Theme, tracks: list[Track], total: float) -> list[float]:
-    """Return the width of each track: by weight, but wide enough for its title unless that is very long."""
-    least = [
-        min(
-            text_width(theme, "emphasis", track.title) + text_width(theme, "small", track.unit) + 8,
-            WIDEST_TITLE,
-        )
-        for track in tracks
-    ]
-    held: set[int] = set()
-    while True:
-        free = [index for index in range(len(tracks)) if index not in held]
-        part = (total - sum(least[index] for index in held)) / max(
-            sum(tracks[index].weight for index in free), 1e-9
-        )
-        narrow = {index for index in free if tracks[index].weight * part < least[index]}
-        if not narrow or narrow == set(free):
-            return [
-                least[index] if index in held else tracks[index].weight * part for index in range(len(tracks))
-            ]
-        held |= narrow
-
-
 def _draw_tracks(
     painter: QPainter, plate: SurveyPlate, tracks: list[Track], frame: Frame, theme: Theme
 ) -> None:
     """Draw tracks side by side over one grid, with names at the curves and under the tops of layers."""
-    widths = _track_widths(theme, tracks, frame.right - frame.left - GAP * (len(tracks) - 1))
-    left = frame.left
-    names_stand = max(range(len(tracks)), key=lambda index: tracks[index].weight)
-    for index, track in enumerate(tracks):
-        right = left + widths[index]
-        own = frame.across(float(int(left)), float(int(right)))
+    names_stand = names_track(tracks)
+    for index, (track, own) in enumerate(zip(tracks, track_frames(theme, tracks, frame), strict=True)):
         draw_track_head(painter, track, own, theme)
         boxes = draw_track(painter, track, own, theme)
         boxes += draw_curve_names(painter, track, own, theme, taken=boxes)
         if index == names_stand:
             draw_layer_names(painter, track, own, theme, markers=plate.names_in_view, taken=boxes)
-        left = right + GAP
 
 
 def draw_figure(painter: QPainter, plate: SurveyPlate, size: tuple[int, int], theme: Theme) -> None:
@@ -199,13 +171,13 @@ def draw_figure(painter: QPainter, plate: SurveyPlate, size: tuple[int, int], th
     fan_right = body.left
     if layout.excerpt is not None:
         fan_right = _draw_ledger(painter, plate, layout.excerpt, layout, body, theme)
-    axis_width, head_room = float(AXIS_WIDTH), FAN_WIDTH - 8.0
+    width, head_room = float(axis_width(theme)), FAN_WIDTH - 8.0
     if layout.excerpt is None:
-        axis_width, head_room = (
-            max(axis_width, min(text_width(theme, "emphasis", plate.depth_label), 140.0)),
+        width, head_room = (
+            max(width, min(text_width(theme, "emphasis", plate.depth_label), 140.0)),
             0.0,
         )
-    axis = body.across(fan_right, fan_right + axis_width)
+    axis = body.across(fan_right, fan_right + width)
     stations = [station.depth for station in plate.stations]
     depths = draw_depth_axis(
         painter,
@@ -217,8 +189,8 @@ def draw_figure(painter: QPainter, plate: SurveyPlate, size: tuple[int, int], th
         measured=(low, high),
         head_room=head_room,
     )
-    tracks = survey_tracks(plate, wide=layout.excerpt is None)
-    across = body.across(axis.right + GAP / 2, body.right)
+    tracks = survey_tracks(plate, wide=layout.excerpt is None, bars=theme.bars)
+    across = body.across(axis.right + track_gap(theme) / 2, body.right)
     draw_grid(
         painter,
         across,

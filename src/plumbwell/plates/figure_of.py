@@ -14,10 +14,11 @@ import numpy as np
 from plumbwell import __version__
 from plumbwell.earth.constants import GRAM_PER_CM3, MILLIGAL
 from plumbwell.plates.figure import figure_image, packed_png, write_svg
+from plumbwell.plates.hole_depths import HoleDepths, hole_depths
+from plumbwell.plates.log_curve import LogCurve
 from plumbwell.plates.numbers import counted, number, sd_decimals
 from plumbwell.plates.plate import PlateFinding, PlateInterval, PlateStation, SurveyPlate
 from plumbwell.plates.theme import theme_named
-from plumbwell.reduction.positions import well_path
 from plumbwell.reduction.reference_rock import log_depth
 from plumbwell.study.cautions import OTHER_MASSES
 from plumbwell.study.finding import Finding
@@ -36,24 +37,19 @@ def _sd(value: float) -> float | None:
     return _known(value, MILLIGAL) or None
 
 
-def survey_plate(results: Results) -> SurveyPlate:
+def survey_plate(results: Results, depths: HoleDepths | None = None) -> SurveyPlate:
     """The plate of a reduced survey.
 
     Parameters
     ----------
     results : Results
+    depths : HoleDepths or None
+        The depths to show; None: measured depth in metres where there is one.
     """
     survey, stations, intervals = results.survey, results.stations, results.intervals
-    site, located = survey.site, stations.located
-    column = np.array([role == "column" for role in stations.role])
-    mark = located.mark_depth.values
-    measured = bool(np.isfinite(mark[column]).all())
-    depth = mark if measured else located.positions.tvd.values
-    path = well_path(survey.path, north_correction=site.north_correction)
-
-    def shown_depth(of_hole: Array) -> list[float]:
-        return (of_hole if measured else path.at(of_hole)[0]).tolist()
-
+    site = survey.site
+    depths = hole_depths(results) if depths is None else depths
+    scale, depth, column = depths.scale, depths.stations, depths.column
     pairs = intervals.densities.pairs
     flagged = {row for finding in results.findings if finding.severity != "note" for row in finding.intervals}
     rows = []
@@ -76,28 +72,28 @@ def survey_plate(results: Results) -> SurveyPlate:
                 flagged=row in flagged,
             )
         )
-    logs: list[float] = []
-    values: list[float | None] = []
-    for log in survey.logs[:1]:
-        logs = shown_depth(log_depth(log, site))
-        values = [_known(one, GRAM_PER_CM3) for one in log.density.values.tolist()]
+    curves = [
+        LogCurve.of(depths.of_hole(log_depth(log, site)), log.density.values / GRAM_PER_CM3)
+        for log in survey.logs[:1]
+    ]
     markers = (
         []
         if survey.markers is None
-        else list(zip(survey.markers.marker, shown_depth(survey.markers.depth.values), strict=True))
+        else list(zip(survey.markers.marker, depths.of_hole(survey.markers.depth.values).tolist(), strict=True))
     )
     deepest = float(np.nanmax(depth[column])) if column.any() else 0.0
-    used = np.flatnonzero(column & np.isfinite(depth))
+    used = np.flatnonzero(column)
     return SurveyPlate(
         title=site.name,
         subtitle=", ".join(
             [
                 counted(len(used), "station"),
                 *([counted(len(rows), "interval")] if rows else []),
-                f"to {number(deepest, 0 if deepest >= ROUND_DEPTH else 1)} m",
+                f"to {number(scale.number_of(deepest), 0 if abs(deepest) >= ROUND_DEPTH else 1)} {scale.unit}",
             ]
         ),
-        depth_label="MD" if measured else "TVD",
+        depth_label=scale.label,
+        depth_unit=scale.unit,
         intervals=tuple(rows),
         stations=tuple(
             PlateStation(
@@ -112,8 +108,7 @@ def survey_plate(results: Results) -> SurveyPlate:
             for one in used.tolist()
         ),
         markers=tuple((name, float(at)) for name, at in markers if np.isfinite(at)),
-        log_depths=tuple(logs),
-        log_values=tuple(values),
+        log=curves[0] if curves else None,
         findings=tuple(
             PlateFinding(
                 severity=finding.severity, depth=_finding_depth(finding, depth, pairs.top), words=finding.text

@@ -7,7 +7,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from plumbwell.plates.axis import AXIS_WIDTH, HEAD_HEIGHT
+from plumbwell.plates.axis import axis_width, head_height
 from plumbwell.plates.findings_list import SetFinding, findings_count, findings_heights, set_findings
 from plumbwell.plates.ledger_excerpt import (
     LEAST_ROW_HEIGHT,
@@ -27,10 +27,14 @@ MARGIN = 16
 TITLE_HEIGHT = 72
 FAN_WIDTH = 60
 LINE = 18
-SCALE_REMARK = "bars and bands 2 sd"
 REMARK_GAP = 28.0
 LEDGER_WIDTH, LEAST_TRACKS = 560.0, 520.0
 FINDINGS_ABOVE, FINDINGS_RIGHT = 24, 16
+
+
+def scale_remark(theme: Theme) -> str:
+    """Return in words how far drawn bars and bands reach."""
+    return f"bars and bands {theme.bars} sd"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -39,6 +43,7 @@ class Layout:
 
     width: int
     height: int
+    head_height: int
     caution: tuple[str, ...]
     remarks: tuple[tuple[str, ...], ...]
     strip_right: float
@@ -53,7 +58,7 @@ class Layout:
     @property
     def head_top(self) -> int:
         """Return the upper edge of the heads."""
-        return self.body_top - HEAD_HEIGHT
+        return self.body_top - self.head_height
 
     @property
     def ledger_left(self) -> float:
@@ -73,7 +78,7 @@ class Layout:
 
 def _remark_lines(theme: Theme, remarks: tuple[str, ...], width: float) -> list[tuple[str, ...]]:
     """Return remarks set in lines, in their order; one too long for a line is broken."""
-    room = width - text_width(theme, "small", SCALE_REMARK) - REMARK_GAP
+    room = width - text_width(theme, "small", scale_remark(theme)) - REMARK_GAP
     pieces = [piece for remark in remarks for piece in wrapped(theme, "small", remark, room)]
     lines: list[tuple[str, ...]] = []
     used = 0.0
@@ -91,7 +96,7 @@ def _remark_lines(theme: Theme, remarks: tuple[str, ...], width: float) -> list[
 def _columns(excerpt: Excerpt, theme: Theme, row_height: int, left: float) -> tuple[float, ...]:
     """Return the widths of a ledger's columns: the natural ones, and a little more where there is room."""
     widths = column_widths(excerpt, theme, row_height)
-    tracks_left = WIDTH - MARGIN - LEAST_TRACKS - AXIS_WIDTH - FAN_WIDTH
+    tracks_left = WIDTH - MARGIN - LEAST_TRACKS - axis_width(theme) - FAN_WIDTH
     spare = max(min(LEDGER_WIDTH, tracks_left - left) - sum(widths), 0.0)
     return tuple(float(int(width + min(spare / len(widths), 14.0))) for width in widths)
 
@@ -101,7 +106,7 @@ def _layout(plate: SurveyPlate, theme: Theme, notes: tuple[str, ...], height: in
     inner = WIDTH - 2 * MARGIN
     caution = tuple(wrapped(theme, "text", plate.caution, inner)) if plate.caution else ()
     remarks = _remark_lines(theme, notes, inner)
-    above = TITLE_HEIGHT + (len(caution) * 20 + 20 if caution else 0) + HEAD_HEIGHT + 8
+    above = TITLE_HEIGHT + (len(caution) * 20 + 20 if caution else 0) + head_height(theme) + 8
     below = len(remarks) * LINE + 26
     excerpt = interval_excerpt(plate) if plate.intervals else station_excerpt(plate)
     most = (height or GREATEST_HEIGHT) - above - below
@@ -119,6 +124,7 @@ def _layout(plate: SurveyPlate, theme: Theme, notes: tuple[str, ...], height: in
     return Layout(
         width=WIDTH,
         height=height,
+        head_height=head_height(theme),
         caution=caution,
         remarks=tuple(remarks),
         strip_right=strip_right,

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 
 from PySide6.QtGui import QPainter
 
-from plumbwell.plates.axis import HEAD_HEIGHT, TITLE_BASELINE, UNIT_BASELINE
+from plumbwell.plates.axis import head_height, title_baseline, unit_baseline
 from plumbwell.plates.lettering import draw_text, text_height, text_width
 from plumbwell.plates.numbers import NO_VALUE, column_decimals, number, sd_text
 from plumbwell.plates.painting import draw_mark, hairline_across, whole
@@ -215,7 +215,7 @@ def draw_excerpt(
     row_height : float
         14 to 24 px; below 20 px the small size is used.
     """
-    head = top - HEAD_HEIGHT
+    head = top - head_height(theme)
     right_end = left + sum(widths)
     cap = text_height(theme, _face("text", row_height))
     for row, mark in enumerate(excerpt.marks):
@@ -234,7 +234,7 @@ def draw_excerpt(
             theme,
             column.name,
             x=edge,
-            baseline=head + TITLE_BASELINE,
+            baseline=head + title_baseline(theme),
             face="emphasis",
             align="right",
             room=room,
@@ -244,7 +244,7 @@ def draw_excerpt(
             theme,
             column.unit,
             x=edge,
-            baseline=head + UNIT_BASELINE,
+            baseline=head + unit_baseline(theme),
             face="small",
             role="muted",
             align="right",

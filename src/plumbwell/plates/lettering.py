@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from functools import cache, lru_cache
 
 from PySide6.QtCore import QPointF, QRectF, Qt
-from PySide6.QtGui import QFont, QFontDatabase, QFontMetricsF, QImage, QPainter, QPainterPath, QTransform
+from PySide6.QtGui import QColor, QFont, QFontDatabase, QFontMetricsF, QImage, QPainter, QPainterPath, QTransform
 from PySide6.QtSvg import QSvgGenerator
 
 from plumbwell.plates.svg_text import Glyph, SvgText, gathering_texts, glyphs_of, leave_mark
@@ -114,9 +114,15 @@ def _placed_outline(
     return QTransform(scale, 0.0, 0.0, scale, x, baseline).map(_outline(semibold, italic, words))
 
 
+@lru_cache(maxsize=256)
 def _cut(theme: Theme, face: str) -> tuple[int, bool, bool]:
     size, semibold, italic = FACES[face]
     return round(theme.sizes[size] * theme.text_scale), semibold, italic
+
+
+@lru_cache(maxsize=256)
+def _ink(theme: Theme, role: str) -> QColor:
+    return theme.colour(role)
 
 
 def face_font(theme: Theme, face: str) -> QFont:
@@ -154,9 +160,12 @@ def elided(theme: Theme, face: str, words: str, width: float) -> str:
 
 
 def wrapped(theme: Theme, face: str, words: str, width: float) -> list[str]:
-    """Return words broken into lines of at most `width` px, at spaces; a longer word is shortened."""
+    """Return words broken into lines of at most `width` px, at spaces; a longer word is shortened.
+
+    A no-break space holds: a number is not parted from its thousands or its unit.
+    """
     lines: list[str] = []
-    for word in words.split():
+    for word in filter(None, words.replace("\n", " ").split(" ")):
         longer = f"{lines[-1]} {word}" if lines else word
         if lines and text_width(theme, face, longer) <= width:
             lines[-1] = longer
@@ -228,12 +237,19 @@ def draw_text(
     record = _RECORD.get()
     if record is not None:
         record.append(PlacedText(words=words, drawn=drawn, needed=QRectF(box), allowed=room))
+    device = painter.device()
+    if not isinstance(device, FILE_DEVICES):
+        # A screen: here most words are drawn, so the painter's state is not put by and taken up again.
+        painter.setFont(_font(*_cut(theme, face)))
+        painter.setPen(_ink(theme, role))
+        painter.drawText(QPointF(box.left(), baseline), drawn)
+        return box
     painter.save()
     painter.setRenderHint(QPainter.RenderHint.Antialiasing, True)
     painter.setRenderHint(QPainter.RenderHint.TextAntialiasing, True)
-    if isinstance(painter.device(), QSvgGenerator) and gathering_texts():
-        painter.setPen(Qt.PenStyle.NoPen)
-        painter.setBrush(theme.colour(role))
+    painter.setPen(Qt.PenStyle.NoPen)
+    painter.setBrush(theme.colour(role))
+    if isinstance(device, QSvgGenerator) and gathering_texts():
         pixels, semibold, italic = _cut(theme, face)
         leave_mark(
             painter,
@@ -244,14 +260,7 @@ def draw_text(
                 baseline=baseline,
             ),
         )
-    elif isinstance(painter.device(), FILE_DEVICES):
-        outline = _placed_outline(*_cut(theme, face), drawn, x=box.left(), baseline=baseline)
-        painter.setPen(Qt.PenStyle.NoPen)
-        painter.setBrush(theme.colour(role))
-        painter.drawPath(outline)
     else:
-        painter.setFont(_font(*_cut(theme, face)))
-        painter.setPen(theme.colour(role))
-        painter.drawText(QPointF(box.left(), baseline), drawn)
+        painter.drawPath(_placed_outline(*_cut(theme, face), drawn, x=box.left(), baseline=baseline))
     painter.restore()
     return box

@@ -1,12 +1,14 @@
 """What a survey's plate shows, as plain values in the units of people.
 
 Depths in `depth_unit`, gravity in `gravity_unit`, densities in g/cm3; plain floats, strings and
-tuples, no arrays. Standard deviations are one standard deviation; drawn bars and bands are two.
+tuples, no arrays but in the log. Standard deviations are one standard deviation; drawn bars and bands are two.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+
+from plumbwell.plates.log_curve import LogCurve
 
 SEVERITIES = ("note", "look", "error")
 DENSITY_UNIT = "g/cm\u00b3"
@@ -82,7 +84,7 @@ class PlateFinding:
             raise ValueError(f"severity {self.severity!r} is none of {', '.join(SEVERITIES)}")
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class SurveyPlate:
     """Everything that the plate of one reduced survey shows.
 
@@ -98,8 +100,8 @@ class SurveyPlate:
         In any order.
     markers : tuple of (str, float)
         Names of tops and their depths.
-    log_depths, log_values : tuple
-        The density log in order of depth, None where it has a gap; both empty without a log.
+    log : LogCurve or None
+        The density log.
     openings, waters : tuple of (float, float)
         Depths from and to where the hole or drift lies in a void or in water.
     findings : tuple of PlateFinding
@@ -118,8 +120,7 @@ class SurveyPlate:
     intervals: tuple[PlateInterval, ...] = ()
     stations: tuple[PlateStation, ...] = ()
     markers: tuple[tuple[str, float], ...] = ()
-    log_depths: tuple[float, ...] = ()
-    log_values: tuple[float | None, ...] = ()
+    log: LogCurve | None = None
     openings: tuple[tuple[float, float], ...] = ()
     waters: tuple[tuple[float, float], ...] = ()
     findings: tuple[PlateFinding, ...] = ()
@@ -161,6 +162,6 @@ class SurveyPlate:
     @property
     def has_log(self) -> bool:
         """Return whether there is a log value anywhere."""
-        return any(value is not None for value in self.log_values) or any(
+        return (self.log is not None and self.log.known) or any(
             interval.log is not None for interval in self.intervals
         )

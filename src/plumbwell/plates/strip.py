@@ -6,7 +6,7 @@ twice. Beside it the graduated bar, findings, station ticks, and the names of to
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 
 from PySide6.QtCore import QRectF
 from PySide6.QtGui import QPainter
@@ -19,7 +19,7 @@ from plumbwell.plates.axis import (
     spaced_rows,
     strip_graduation,
 )
-from plumbwell.plates.lettering import draw_text, text_height, text_width
+from plumbwell.plates.lettering import draw_text, text_height, text_width, wrapped
 from plumbwell.plates.numbers import number, step_decimals
 from plumbwell.plates.painting import (
     draw_graduated_bar,
@@ -30,71 +30,60 @@ from plumbwell.plates.painting import (
     hairline_down,
     polygon,
     rectangle,
-    smooth_line,
     stroke_shape,
     whole,
 )
 from plumbwell.plates.plate import DENSITY_UNIT, PlateFinding, PlateInterval, SurveyPlate
+from plumbwell.plates.strip_names import PlacedName, draw_leader, draw_name, placed_names
+from plumbwell.plates.strip_places import (
+    BLOCK_HEIGHT,
+    BLOCK_WIDTH,
+    NAMES_LEFT,
+    UNKNOWN_DENSITY,
+    FindingMark,
+    StripColumns,
+    Tops,
+    chosen_rows,
+    core_width,
+    finding_marks,
+    grip_right,
+    grip_rows,
+    interval_width,
+    number_inset,
+    strip_columns,
+)
 from plumbwell.plates.theme import Theme
 
 STRIP_WIDTH, WIDEST_STRIP = 216, 264
-NUMBERS_RIGHT, BAR_LEFT, FINDINGS_MIDDLE = 33, 38, 48
-TICKS_LEFT, CORE_LEFT, NAMES_LEFT = 53, 60, 131
-CORE_WIDTH = 56
-NAME_SPACING = 16
 KEY_HEIGHT = 62
 KEY_LOW, KEY_HIGH = 1.8, 3.2
-UNKNOWN_DENSITY = 2.2
-SLIVER = 1.5
+NAMES_MARGIN, GRIP_MARGIN = 8, 10
+STALE_OPACITY = 0.5
+EMPTY_CORE = 40
+EMPTY_WORDS = ("the hole, once", "a survey is open")
 
 
-def core_width(density: float) -> float:
-    """Return how far the core stands out at a density in g/cm3, in px: from 6.1 at 1.6 to 63.1 at 3.2.
-
-    Notes
-    -----
-    56 (0.30 + 0.70 (rho - 1.9) / 1.1), with rho held to 1.6 to 3.2.
-    """
-    held = min(max(density, 1.6), 3.2)
-    return CORE_WIDTH * (0.30 + 0.70 * (held - 1.9) / 1.1)
+def draw_bar(painter: QPainter, frame: Frame, theme: Theme, columns: StripColumns) -> None:
+    """Draw the graduated bar of a strip."""
+    edges, before = depth_fields(_graduation(frame, theme), frame, frame.depth_top, frame.depth_base)
+    draw_graduated_bar(painter, theme, x=columns.bar, edges=edges, fields_before=before)
 
 
-def _number_inset(theme: Theme, first: float, last: float) -> float:
-    """Return how far the strip is moved right so that long depths have room: none up to four figures."""
-    widest = max(text_width(theme, "small", number(depth, 0)) for depth in (first, last))
-    return float(max(whole(widest) + 2 - NUMBERS_RIGHT, 0))
+def _graduation(frame: Frame, theme: Theme) -> Graduation:
+    """Return the graduation of a strip; larger numbers stand farther apart."""
+    return strip_graduation(frame.depth_base - frame.depth_top, (frame.base - frame.top) / theme.text_scale)
 
 
-def _width(interval: PlateInterval) -> float:
-    """Return the width of the core in an interval, in whole px; a middling one where no density is known."""
-    return float(whole(core_width(UNKNOWN_DENSITY if interval.density is None else interval.density)))
-
-
-def _layer_row(
-    intervals: Sequence[PlateInterval], frame: Frame, depth: float
-) -> tuple[int, list[PlateInterval]]:
-    """Return the px row of a top and the intervals that meet there.
-
-    A station is seldom read just at a top; one a px from it stands for it, so that no sliver is left between.
-    """
-    y = frame.y(depth)
-    edges = [edge for interval in intervals for edge in (interval.top, interval.base)]
-    nearest = min(edges, key=lambda edge: abs(frame.y(edge) - y), default=depth)
-    at = nearest if abs(frame.y(nearest) - y) <= SLIVER else depth
-    return whole(frame.y(at)), [i for i in intervals if i.top - 1e-6 <= at <= i.base + 1e-6]
-
-
-def _draw_depths(painter: QPainter, frame: Frame, theme: Theme, graduation: Graduation, left: float) -> None:
-    edges, before = depth_fields(graduation, frame, frame.depth_top, frame.depth_base)
-    draw_graduated_bar(painter, theme, x=left + BAR_LEFT, edges=edges, fields_before=before)
+def draw_depths(painter: QPainter, frame: Frame, theme: Theme, columns: StripColumns) -> None:
+    """Draw the depth numbers of a strip."""
+    step = _graduation(frame, theme).numbered
     cap = text_height(theme, "small")
-    for depth in multiples(graduation.numbered, frame.depth_top, frame.depth_base):
-        words = number(depth, step_decimals(graduation.numbered))
+    for depth in multiples(step, frame.depth_top, frame.depth_base):
         draw_text(
             painter,
             theme,
-            words,
-            x=left + NUMBERS_RIGHT,
+            number(frame.number_of(depth), step_decimals(step)),
+            x=columns.numbers_right,
             baseline=frame.y(depth) + cap / 2,
             face="small",
             role="muted",
@@ -102,16 +91,15 @@ def _draw_depths(painter: QPainter, frame: Frame, theme: Theme, graduation: Grad
         )
 
 
-def _draw_core(
+def _draw_intervals(
     painter: QPainter,
     intervals: Sequence[PlateInterval],
     frame: Frame,
     theme: Theme,
-    left: float,
+    core: float,
     tops: Sequence[float],
 ) -> None:
     """Draw the intervals in their tones, then their free edge, then ground lines at the tops of layers."""
-    core = left + CORE_LEFT
     ink: list[QRectF] = []
     # Width and lower row of the outlined interval just above; None where there is none.
     above: tuple[float, int] | None = None
@@ -119,7 +107,7 @@ def _draw_core(
         upper, lower = whole(frame.y(interval.top)), whole(frame.y(interval.base))
         if lower <= upper:
             continue
-        width = _width(interval)
+        width = interval_width(interval)
         shape = rectangle(core, upper, core + width, lower)
         fill_tone(painter, shape, theme, interval.density, from_prior=interval.from_prior)
         if above is not None and above[1] != upper:
@@ -139,15 +127,16 @@ def _draw_core(
         ink.append(QRectF(core - 1, above[1], above[0] + 2, 1))
     for line in ink:
         painter.fillRect(line, theme.colour("ink"))
+    places = Tops(intervals, frame)
     for depth in tops:
-        row, meeting = _layer_row(intervals, frame, depth)
-        known = [_width(interval) for interval in meeting if interval.density is not None]
+        row, meeting = places.at(depth)
+        known = [interval_width(interval) for interval in meeting if interval.density is not None]
         if known and whole(frame.y(intervals[0].top)) < row < whole(frame.y(intervals[-1].base)):
             hairline_across(painter, core, core + min(known), row, theme.colour("ground"))
 
 
-def _draw_openings(painter: QPainter, frame: Frame, theme: Theme, left: float, *, plate: SurveyPlate) -> None:
-    core, full = left + CORE_LEFT, core_width(3.2)
+def _draw_openings(painter: QPainter, frame: Frame, theme: Theme, core: float, *, plate: SurveyPlate) -> None:
+    full = core_width(3.2)
     for kind, spans in (("void", plate.openings), ("water", plate.waters)):
         for top, base in spans:
             upper, lower = (whole(min(max(frame.y(depth), frame.top), frame.base)) for depth in (top, base))
@@ -163,97 +152,185 @@ def _draw_openings(painter: QPainter, frame: Frame, theme: Theme, left: float, *
                     )
 
 
-def spread_names(wanted: Sequence[float], *, spacing: float, top: float, base: float) -> list[float]:
-    """Return rows near the wanted ones, in their order, at least `spacing` apart and inside top and base.
-
-    Where the names do not all fit, they are evenly spread. Neighbours that would collide share the shift:
-    each group of them keeps its mean.
-    """
-    if not wanted:
-        return []
-    if (len(wanted) - 1) * spacing > base - top:
-        step = (base - top) / (len(wanted) - 1)
-        return [top + index * step for index in range(len(wanted))]
-    groups: list[tuple[float, int]] = []
-    for row in wanted:
-        centre, count = row, 1
-        while groups:
-            above_centre, above_count = groups[-1]
-            if (
-                centre - (count - 1) * spacing / 2 - (above_centre + (above_count - 1) * spacing / 2)
-                >= spacing
-            ):
-                break
-            groups.pop()
-            # Mean of the wanted rows of both groups, each taken about its own middle.
-            centre = (centre * count + above_centre * above_count) / (count + above_count)
-            count += above_count
-        half = (count - 1) * spacing / 2
-        centre = min(max(centre, top + half), base - half)
-        groups.append((centre, count))
-    rows = [
-        centre + (index - (count - 1) / 2) * spacing for centre, count in groups for index in range(count)
-    ]
-    for index in range(len(rows) - 2, -1, -1):
-        rows[index] = min(rows[index], rows[index + 1] - spacing)
-    return rows
+def draw_core(
+    painter: QPainter,
+    plate: SurveyPlate,
+    frame: Frame,
+    theme: Theme,
+    columns: StripColumns,
+    *,
+    stale: bool = False,
+) -> None:
+    """Draw the core of a survey with its openings and station ticks; at half strength where it is stale."""
+    painter.save()
+    if stale:
+        painter.setOpacity(STALE_OPACITY)
+    if plate.intervals:
+        tops = [depth for _, depth in plate.markers]
+        _draw_intervals(painter, plate.intervals, frame, theme, columns.core, tops)
+    else:
+        right = columns.core + core_width(UNKNOWN_DENSITY)
+        outline = rectangle(columns.core, frame.top + 0.5, right, frame.base - 0.5)
+        stroke_shape(painter, outline, theme.colour("strong"), 1, (1, 3))
+    _draw_openings(painter, frame, theme, columns.core, plate=plate)
+    painter.restore()
+    for row in spaced_rows(frame, [station.depth for station in plate.stations], 2):
+        hairline_across(painter, columns.ticks, columns.ticks + 5, row, theme.colour("ink"))
+    # An elevation of nought is no ground.
+    if frame.depth_top < 0 < frame.depth_base and not frame.upward:
+        hairline_across(painter, columns.bar, columns.names - 4, frame.y(0.0), theme.colour("ink"))
 
 
-def _draw_names(
+def draw_findings(
+    painter: QPainter,
+    findings: Sequence[PlateFinding],
+    marks: Iterable[FindingMark],
+    theme: Theme,
+    columns: StripColumns,
+) -> None:
+    """Draw the marks of findings beside the core."""
+    for mark in marks:
+        draw_mark(painter, theme, findings[mark.finding].severity, x=columns.findings - 0.5, y=mark.y)
+
+
+def draw_selection(
     painter: QPainter,
     frame: Frame,
     theme: Theme,
-    *,
-    left: float,
-    right: float,
-    markers: Sequence[tuple[str, float]],
-    window: tuple[float, float] | None,
-    intervals: Sequence[PlateInterval],
+    columns: StripColumns,
+    selected: Iterable[tuple[float, float]],
 ) -> None:
-    """Draw names of tops with their leaders, kinked where names were pushed apart."""
-    shown = list(markers)
-    most = int((frame.base - frame.top) // NAME_SPACING)
-    if len(shown) > most > 0:
-        # More names than lines: every so many-th top is named, all keep their boundary in the core.
-        shown = [shown[index * len(shown) // most] for index in range(most)]
-    cap = text_height(theme, "name")
-    rows = spread_names(
-        [frame.y(depth) + 9 for _, depth in shown],
-        spacing=NAME_SPACING,
-        top=frame.top + cap / 2,
-        base=frame.base - cap / 2,
-    )
-    # Leaders slant right of the widest core, so that none crosses the free edge.
-    core_right = left + CORE_LEFT + max((_width(interval) for interval in intervals), default=0.0)
-    for (words, depth), row in zip(shown, rows, strict=True):
-        y, meeting = _layer_row(intervals, frame, depth)
-        widths = [_width(interval) for interval in meeting]
-        start, end = left + CORE_LEFT + max(widths, default=0.0) + 4, left + NAMES_LEFT - 4
-        if abs(row - frame.y(depth) - 9) < 0.5:
-            hairline_across(painter, start, end, y, theme.colour("strong"))
-        else:
-            kink = core_right + 6
-            hairline_across(painter, start, kink, y, theme.colour("strong"))
-            smooth_line(painter, ((kink, y + 0.5), (end + 1, row)), theme.colour("strong"), 1)
-        inside = window is None or window[0] <= depth <= window[1]
+    """Draw chosen depths over the core: a band each, or a line, with a pointer left of the names."""
+    start, end = columns.ticks - 1, columns.names - 8
+    accent = theme.colour("accent")
+    for upper, lower in chosen_rows(frame, selected):
+        painter.fillRect(QRectF(start, upper, end - start, lower - upper), theme.colour("accent", 60))
+        for y in {upper, lower}:
+            hairline_across(painter, start, end, y, accent)
+        middle = (upper + lower) / 2 + 0.5
+        fill_shape(painter, polygon((end, middle), (end + 5, middle - 4), (end + 5, middle + 4)), accent)
+
+
+def draw_grip(
+    painter: QPainter, frame: Frame, theme: Theme, columns: StripColumns, window: tuple[float, float]
+) -> None:
+    """Draw the bracket about the depth window: open to the left, blocks on its corners."""
+    rows = grip_rows(frame, window)
+    accent = theme.colour("accent")
+    right = grip_right(frame)
+    for y in rows:
+        hairline_across(painter, columns.bar - 4, right - 1, y, accent)
+        painter.fillRect(QRectF(right - BLOCK_WIDTH, y - BLOCK_HEIGHT / 2, BLOCK_WIDTH, BLOCK_HEIGHT), accent)
+    hairline_down(painter, right - 3, rows[0], rows[1], accent)
+
+
+def draw_strip(
+    painter: QPainter,
+    plate: SurveyPlate,
+    frame: Frame,
+    theme: Theme,
+    *,
+    window: tuple[float, float] | None = None,
+    selected: Iterable[tuple[float, float]] = (),
+) -> None:
+    """Draw the core strip of a survey.
+
+    Parameters
+    ----------
+    painter : QPainter
+    plate : SurveyPlate
+    frame : Frame
+        Whole width of the strip; its depths are those of the whole hole.
+    theme : Theme
+    window : tuple of float, optional
+        Depths that ledger and tracks show: framed by a grip, names outside it muted.
+    selected : iterable of tuple of float
+        Chosen depths from and to, equal for a station.
+    """
+    columns = strip_columns(theme, frame)
+    draw_bar(painter, frame, theme, columns)
+    draw_depths(painter, frame, theme, columns)
+    draw_core(painter, plate, frame, theme, columns)
+    names = placed_names(frame, theme, columns, markers=plate.names_in_view, intervals=plate.intervals)
+    for name in names:
+        draw_leader(painter, theme, columns, name)
+        if window is None:
+            draw_name(painter, theme, columns, name, right=names_right(frame, window), window=window)
+    if window is not None:
+        draw_framed_names(painter, frame, theme, columns, names, window)
+    draw_findings(painter, plate.findings, finding_marks(plate.findings, frame), theme, columns)
+    draw_selection(painter, frame, theme, columns, selected)
+
+
+def draw_framed_names(
+    painter: QPainter,
+    frame: Frame,
+    theme: Theme,
+    columns: StripColumns,
+    names: Sequence[PlacedName],
+    window: tuple[float, float],
+) -> None:
+    """Draw the grip about the depth window, and over it the names, which it must not strike through."""
+    draw_grip(painter, frame, theme, columns, window)
+    crossed, right = grip_rows(frame, window), names_right(frame, window)
+    for name in names:
+        draw_name(painter, theme, columns, name, right=right, window=window, crossed=crossed)
+
+
+def names_right(frame: Frame, window: tuple[float, float] | None) -> float:
+    """Return the right limit of names: beside a grip they keep clear of its blocks."""
+    return frame.right - (NAMES_MARGIN if window is None else GRIP_MARGIN)
+
+
+def strip_room(theme: Theme, plate: SurveyPlate, *, upward: bool = False, widest: int = WIDEST_STRIP) -> float:
+    """Return the width in px that a strip needs for the names of a plate, 216 to `widest`."""
+    low, high = plate.depth_range
+    frame = Frame(left=0, top=0, right=0, base=1, depth_top=low, depth_base=high, upward=upward)
+    names = max((text_width(theme, "name", words) for words, _ in plate.markers), default=0.0)
+    names += number_inset(theme, frame)
+    return float(min(max(whole(NAMES_LEFT + names + 12), STRIP_WIDTH), widest))
+
+
+def draw_empty_strip(painter: QPainter, frame: Frame, theme: Theme) -> None:
+    """Draw the strip where nothing is open: bar and core as outlines, and what would stand there."""
+    columns = strip_columns(theme, frame)
+    strong = theme.colour("strong")
+    bar = rectangle(columns.bar + 0.5, frame.top + 0.5, columns.bar + 4.5, frame.base - 0.5)
+    stroke_shape(painter, bar, strong, 1)
+    core = rectangle(columns.core + 0.5, frame.top + 0.5, columns.core + EMPTY_CORE + 0.5, frame.base - 0.5)
+    stroke_shape(painter, core, strong, 1, (3, 4))
+    left, right = columns.core + EMPTY_CORE + 24, frame.right - 4
+    lines = [line for words in EMPTY_WORDS for line in wrapped(theme, "small", words, right - left)]
+    for index, words in enumerate(lines):
         draw_text(
             painter,
             theme,
             words,
-            x=left + NAMES_LEFT,
-            baseline=row + cap / 2,
-            face="name",
-            role="ink" if inside else "muted",
-            room=(left + NAMES_LEFT, right),
+            x=left,
+            baseline=frame.top + theme.px(11) + index * theme.px(17),
+            face="small",
+            role="muted",
+            room=(left, right),
         )
 
 
+def key_height(theme: Theme) -> int:
+    """Return the height of the key of density tones in px: 62 at scale 1."""
+    return theme.px(22) + 11 + theme.px(17) + 12
+
+
 def draw_tone_key(painter: QPainter, theme: Theme, *, left: float, top: float, width: float) -> None:
-    """Draw the key of density tones, 1.8 to 3.2, its title at `top` px and 62 px high in all."""
+    """Draw the key of density tones, 1.8 to 3.2, its title just below `top` px."""
     draw_text(
-        painter, theme, f"density, {DENSITY_UNIT}", x=left, baseline=top + 14, face="small", role="muted"
+        painter,
+        theme,
+        f"density, {DENSITY_UNIT}",
+        x=left,
+        baseline=top + theme.px(14),
+        face="small",
+        role="muted",
     )
-    bar_top, bar_height = whole(top) + 22, 11
+    bar_top, bar_height = whole(top) + theme.px(22), 11
     for column in range(int(width)):
         density = KEY_LOW + (KEY_HIGH - KEY_LOW) * column / width
         painter.fillRect(QRectF(left + column, bar_top, width - column, bar_height), theme.tone(density))
@@ -269,120 +346,8 @@ def draw_tone_key(painter: QPainter, theme: Theme, *, left: float, top: float, w
             theme,
             number(density, 1),
             x=x,
-            baseline=bar_top + bar_height + 17,
+            baseline=bar_top + bar_height + theme.px(17),
             face="small",
             role="muted",
             align="middle",
         )
-
-
-def _draw_findings(
-    painter: QPainter, findings: Sequence[PlateFinding], frame: Frame, theme: Theme, left: float
-) -> None:
-    """Draw a mark at each finding that has a depth; where marks would overlap, the gravest stands for all."""
-    taken: list[float] = []
-    grave = {"error": 0, "look": 1, "note": 2}
-    for finding in sorted(findings, key=lambda finding: grave[finding.severity]):
-        if finding.depth is None or not frame.depth_top <= finding.depth <= frame.depth_base:
-            continue
-        y = frame.y(finding.depth)
-        if any(abs(y - other) < 10 for other in taken):
-            continue
-        taken.append(y)
-        draw_mark(painter, theme, finding.severity, x=left + FINDINGS_MIDDLE - 0.5, y=y)
-
-
-def draw_strip(
-    painter: QPainter,
-    plate: SurveyPlate,
-    frame: Frame,
-    theme: Theme,
-    *,
-    window: tuple[float, float] | None = None,
-    selected: tuple[float, float] | None = None,
-) -> None:
-    """Draw the core strip of a survey.
-
-    Parameters
-    ----------
-    painter : QPainter
-    plate : SurveyPlate
-    frame : Frame
-        Whole width of the strip; its depths are those of the whole hole.
-    theme : Theme
-    window : tuple of float, optional
-        Depths that ledger and tracks show: framed by a grip, names outside it muted.
-    selected : tuple of float, optional
-        Selected depths, equal for a station.
-    """
-    left = frame.left + _number_inset(theme, frame.depth_top, frame.depth_base)
-    span, height = frame.depth_base - frame.depth_top, frame.base - frame.top
-    tops = [depth for _, depth in plate.markers]
-    _draw_depths(painter, frame, theme, strip_graduation(span, height), left)
-    if plate.intervals:
-        _draw_core(painter, plate.intervals, frame, theme, left, tops)
-    else:
-        stroke_shape(
-            painter,
-            rectangle(
-                left + CORE_LEFT,
-                frame.top + 0.5,
-                left + CORE_LEFT + core_width(UNKNOWN_DENSITY),
-                frame.base - 0.5,
-            ),
-            theme.colour("strong"),
-            1,
-            (1, 3),
-        )
-    _draw_openings(painter, frame, theme, left, plate=plate)
-    for row in spaced_rows(frame, [station.depth for station in plate.stations], 2):
-        hairline_across(painter, left + TICKS_LEFT, left + TICKS_LEFT + 5, row, theme.colour("ink"))
-    if frame.depth_top < 0 < frame.depth_base:
-        hairline_across(painter, left + BAR_LEFT, left + NAMES_LEFT - 4, frame.y(0.0), theme.colour("ink"))
-    _draw_names(
-        painter,
-        frame,
-        theme,
-        left=left,
-        right=frame.right - 8,
-        markers=plate.names_in_view,
-        window=window,
-        intervals=plate.intervals,
-    )
-    _draw_findings(painter, plate.findings, frame, theme, left)
-    if selected is not None:
-        _draw_selection(painter, frame, theme, selected, left)
-    if window is not None:
-        _draw_grip(painter, frame, theme, window)
-
-
-def _draw_selection(
-    painter: QPainter, frame: Frame, theme: Theme, selected: tuple[float, float], left: float
-) -> None:
-    """Draw the selected depths over the core, with a pointer at the right."""
-    upper, lower = (whole(frame.y(depth)) for depth in selected)
-    start, end = left + TICKS_LEFT, left + NAMES_LEFT - 4
-    painter.fillRect(QRectF(start, upper, end - start, lower - upper), theme.colour("tint", 60))
-    for y in {upper, lower}:
-        hairline_across(painter, start, end, y, theme.colour("accent"))
-    middle = (upper + lower) / 2 + 0.5
-    fill_shape(
-        painter, polygon((end, middle), (end + 6, middle - 4), (end + 6, middle + 4)), theme.colour("accent")
-    )
-
-
-def _draw_grip(painter: QPainter, frame: Frame, theme: Theme, window: tuple[float, float]) -> None:
-    """Draw the bracket about the depth window: open to the left, blocks on its corners."""
-    upper, lower = (whole(frame.y(depth)) for depth in window)
-    right = frame.right - 2
-    for y in (upper, lower):
-        hairline_across(painter, frame.left + BAR_LEFT - 4, right, y, theme.colour("accent"))
-        painter.fillRect(QRectF(right - 3, y - 5, 5, 10), theme.colour("accent"))
-    hairline_down(painter, right - 1, upper, lower, theme.colour("accent"))
-
-
-def strip_room(theme: Theme, plate: SurveyPlate) -> float:
-    """Return the width in px that a strip needs for the names of a plate, 216 to 264."""
-    widest = max((text_width(theme, "name", words) for words, _ in plate.markers), default=0.0)
-    widest += _number_inset(theme, *plate.depth_range)
-    return float(min(max(whole(NAMES_LEFT + widest + 12), STRIP_WIDTH), WIDEST_STRIP))

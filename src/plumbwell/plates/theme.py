@@ -10,6 +10,7 @@ import json
 from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cache
+from math import floor
 from types import MappingProxyType
 
 from PySide6.QtGui import QColor
@@ -108,6 +109,8 @@ class Theme:
         Heading, text and small size in px before scaling.
     hairline, step : float
         Width of hairlines and of gravity-derived steps in px.
+    bars : int
+        Standard deviations that drawn bars and bands reach to each side: 1 or 2.
     """
 
     name: str
@@ -116,6 +119,11 @@ class Theme:
     sizes: tuple[int, int, int] = (19, 14, 13)
     hairline: float = 1.0
     step: float = 1.6
+    bars: int = 2
+
+    def px(self, length: float) -> int:
+        """Return a length of the unscaled design, in px, grown with the text and whole."""
+        return floor(length * self.text_scale + 0.5)
 
     def colour(self, role: str, alpha: int = 255) -> QColor:
         """Return the colour of a role, with `alpha` from 0 (clear) to 255."""

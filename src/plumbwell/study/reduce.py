@@ -44,6 +44,7 @@ from plumbwell.reduction.visits import Visits, visits
 from plumbwell.study.case import Case
 from plumbwell.study.docket.kinds import docket
 from plumbwell.study.kept import Kept
+from plumbwell.study.overlay import with_notes, with_uses
 from plumbwell.study.results import IntervalResults, NetworkResults, ReadingResults, Results, StationResults
 from plumbwell.survey.column import (
     Array,
@@ -101,7 +102,9 @@ def reduce(
     """
     keep = Kept() if kept is None else kept
     case = Case(survey=case) if isinstance(case, Survey) else case
-    survey, chosen = case.survey, case.chosen if recipe is None else recipe
+    # A note changes no number, so that the chain does not see it.
+    survey = keep(with_uses, case.survey, case.overlay.without_notes)
+    chosen = case.chosen if recipe is None else recipe
     timing: dict[str, float] = {}
     started = perf_counter()
 
@@ -113,8 +116,10 @@ def reduce(
         progress(share, part)
 
     readings, site, instruments = survey.readings, survey.site, survey.instruments
-    utc = keep(utc_time, readings, instruments)
-    depths = keep(row_depths, readings, survey.runs, survey.places)
+    # What asks only for measured columns is found again when rows go in or out of use.
+    measured = case.survey.readings
+    utc = keep(utc_time, measured, instruments)
+    depths = keep(row_depths, measured, survey.runs, survey.places)
     placed = keep.settled(
         placement, readings, depths, survey.places, survey.ties, utc=utc.values, same_place=chosen.same_place
     )
@@ -135,15 +140,15 @@ def reduce(
     shell = keep(reference_shell, where.positions, site, choice, reference)
     parts = keep(known_parts, where.positions, site, choice, normal=normal, shell=shell)
     done("known parts", 0.2)
-    raw = keep(calibrated, readings, instruments, remove_tide=chosen.tide != "none")
+    raw = keep(calibrated, measured, instruments, remove_tide=chosen.tide != "none")
     modelled = keep(modelled_tide, utc, site=site, source=chosen.tide, tide_table=survey.tide_table)
     tidal = keep(
-        tide, readings, instruments, modelled, utc=utc, loading=survey.loading,
+        tide, measured, instruments, modelled, utc=utc, loading=survey.loading,
         factor=1.0 if chosen.tide == "table" else chosen.tide_factor,
     )
     at_station = keep(_rows_at, station)
     tilted = keep(
-        _tilt, readings, instruments, where, site, at_station, system=chosen.normal_gravity, form=chosen.height_form
+        _tilt, measured, instruments, where, site, at_station, system=chosen.normal_gravity, form=chosen.height_form
     )
     pressure = keep(
         _pressure, readings, instruments, where, at_station, admittance=chosen.pressure_admittance,
@@ -158,14 +163,14 @@ def reduce(
         _run_instruments(readings, instruments),
     )
     network = keep(network_parts, basis, stays, ties, n_stations=len(where.placement.label))
-    noise = keep(_noise_terms, readings, instruments, estimate=chosen.noise == "estimate")
+    noise = keep(_noise_terms, measured, instruments, estimate=chosen.noise == "estimate")
     orders = keep(_orders, readings, survey.runs, stays, chosen.drift_order)
     counts = keep(_visit_counts, stays, len(where.placement.label))
     pairs = keep.settled(
         interval_pairs, where.positions, where.placement.role, network.of_station, counts,
         min_thickness=chosen.min_thickness,
     )
-    scales = keep(_scales, readings, instruments, raw)
+    scales = keep(_scales, measured, instruments, raw)
 
     def solved(values: Column) -> tuple[Adjustment, StationGravity]:
         fit = keep(
@@ -212,7 +217,7 @@ def reduce(
     done("densities", 0.8)
     labels = where.placement.label
     results = Results(
-        survey=survey,
+        survey=keep(with_notes, survey, case.overlay),
         recipe=chosen,
         choice=choice,
         reference=reference,

@@ -1,0 +1,1 @@
+"""The window: what was surveyed, seen and judged, with everything live."""

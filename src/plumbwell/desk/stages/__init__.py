@@ -1,0 +1,1 @@
+"""What each stage shows: its ledger, its plots, its figure of merit."""

@@ -1,0 +1,99 @@
+"""What the status line tells at its left: where the pointer or the selection is, in all depths, and the value there."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from plumbwell.desk.shown import Shown
+from plumbwell.desk.stages import states
+from plumbwell.files.times import iso
+from plumbwell.plates.numbers import column_decimals, number, with_sd
+
+if TYPE_CHECKING:
+    from plumbwell.desk.workspace import Workspace
+
+Pairs = list[tuple[str, str]]
+
+
+def status_words(work: Workspace, opened: bool) -> Pairs:
+    """Pairs of a small label and a value; the label is empty where the value says it all."""
+    if not opened:
+        return [("", "No survey open")]
+    shown = work.shown
+    if shown is None:
+        return [("", "reducing")]
+    selection = work.selection
+    if work.stage in (states.READINGS, states.DRIFT):
+        rows = (selection.row,) if selection.row is not None else work.chosen_rows()
+        return _of_row(shown, work.stage, rows)
+    depth = selection.depth
+    if depth is None:
+        spans = shown.spans(selection.level, selection.rows)
+        if not spans:
+            return []
+        depth = (spans[0][0] + spans[-1][1]) / 2
+    return _at_depth(shown, depth)
+
+
+def _at_depth(shown: Shown, depth: float) -> Pairs:
+    plate, scale = shown.plate, shown.scale
+    pairs: Pairs = []
+    column = np.flatnonzero(shown.depths.column)
+    order = column[np.argsort(shown.depths.stations[column])]
+    at = shown.depths.stations[order]
+    if len(order) and at[0] <= depth <= at[-1]:
+        located = shown.results.stations.located
+        if shown.depths.measured:
+            md = np.interp(depth, at, located.mark_depth.values[order]) / scale.factor
+            pairs.append(("", f"{number(float(md), 1)} {scale.unit} MD"))
+        tvd = np.interp(depth, at, located.positions.tvd.values[order]) / scale.factor
+        elevation = np.interp(depth, at, located.positions.elevation.values[order]) / scale.factor
+        pairs.append(("", f"{number(float(tvd), 1)} {scale.unit} TVD"))
+        pairs.append(("", f"{number(float(elevation), 1)} {scale.unit} elevation"))
+    else:
+        pairs.append(("", f"{number(scale.number_of(depth), 1)} {shown.unit_label()}"))
+    for interval in plate.intervals:
+        if interval.top <= depth <= interval.base and interval.density is not None:
+            decimals = column_decimals([one.sd for one in plate.intervals], default=3)
+            pairs.append(("density", f"{with_sd(interval.density, interval.sd, decimals=decimals)} g/cm³"))
+            break
+    above = [name for name, top in plate.names_in_view if top <= depth]
+    if above:
+        pairs.append(("", above[-1]))
+    return pairs
+
+
+def _of_row(shown: Shown, stage: str, rows: tuple[int, ...]) -> Pairs:
+    if not rows:
+        return []
+    results, row = shown.results, rows[0]
+    readings, placement = results.survey.readings, results.stations.located.placement
+    if stage == states.DRIFT:
+        network = results.network.visits
+        visits = shown.visits
+        time, run, station = float(visits.time[row]), int(network.run[row]), int(network.station[row])
+        residual, sd = visits.residual[row] * 1e8, visits.residual_sd[row] * 1e8
+        found = (
+            ("residual", f"{with_sd(float(residual), float(sd), decimals=1, signed=True)} µGal")
+            if np.isfinite(sd)
+            else ("", "nothing checks this visit")
+        )
+        named = ("visit", str(row + 1))
+    else:
+        time, run = float(results.readings.utc.values[row]), int(readings.run.code[row])
+        station = int(placement.station[row])
+        residual = results.readings.estimates.residual.values[row] * 1e8
+        found = ("residual", f"{number(float(residual), 1, signed=True)} µGal")
+        named = ("row", str(row + 1))
+    pairs: Pairs = [("", iso(time).replace("T", " ").replace("Z", " UTC")), ("run", readings.run.names[run]), named]
+    if station >= 0:
+        depth = shown.depths.stations[station]
+        pairs.append(("station", results.stations.label[station]))
+        if np.isfinite(depth):
+            pairs.append(("", f"{number(shown.scale.number_of(float(depth)), 1)} {shown.unit_label()}"))
+    pairs.append(found)
+    if len(rows) > 1:
+        pairs.append(("", f"{len(rows)} rows chosen"))
+    return pairs

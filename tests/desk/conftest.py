@@ -1,0 +1,25 @@
+"""Windows for the tests of the desk, closed at their end."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from driven_desk import Driven
+
+
+@pytest.fixture
+def driven(tmp_path: Path) -> Iterator[Callable[..., Driven]]:
+    """Makes windows over one data folder."""
+    made: list[Driven] = []
+
+    def make(**options: Any) -> Driven:
+        made.append(Driven(tmp_path / "home", **options))
+        return made[-1]
+
+    yield make
+    for one in made:
+        one.close()
