@@ -1,5 +1,7 @@
 """The stage line: states by shape and colour, what the keyboard and the screen reader get, texts in their room."""
 
+from dataclasses import replace
+
 import pytest
 from PySide6.QtCore import QPoint, Qt
 from PySide6.QtGui import QAccessible, QColor
@@ -9,7 +11,7 @@ from PySide6.QtWidgets import QApplication
 from plumbwell.desk.look import Look
 from plumbwell.desk.stage_line import StageLine
 from plumbwell.plates.lettering import text_placed
-from plumbwell.plates.stage_line import LINE_AT, StageState, stage_height, stage_places
+from plumbwell.plates.stage_line import LINE_AT, StagePlace, StageState, shown_figure, stage_height, stage_places
 from plumbwell.plates.theme import theme_named
 
 WIDTH = 1224
@@ -228,3 +230,16 @@ def test_other_stages_take_the_place_of_those_before(line):
 def test_a_state_that_does_not_exist_is_refused():
     with pytest.raises(ValueError, match="state 'fine' is none of in_order, look, error"):
         StageState(key="drift", number=3, name="Drift", figure="", state="fine")
+
+
+def test_the_count_of_findings_is_the_last_to_go(qapp):
+    light = theme_named("light")
+    place = StagePlace(node=0.0, left=11.0, right=11.0 + 150.0, figure_left=11.0)
+    stage = StageState(
+        key="readings", number=2, name="Readings", figure="376 readings, 1 out, 3 findings", state="look"
+    )
+    assert shown_figure(light, stage, place) == "376 readings, 3 findings"
+    narrow = replace(place, right=11.0 + 80.0)
+    assert shown_figure(light, stage, narrow) == "3 findings"
+    quiet = replace(stage, figure="376 readings, 1 out", state="in_order")
+    assert shown_figure(light, quiet, replace(place, right=11.0 + 90.0)).startswith("376 readings")

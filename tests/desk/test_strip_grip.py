@@ -309,7 +309,7 @@ def test_every_text_has_its_room(strip, look, width, scale, upward):
     recolour(look, "light", scale)
     deep = replace(
         plate(),
-        title="A survey whose name has no end and no room",
+        title="A survey whose name has no end and no room in any strip there is",
         intervals=tuple(replace(row, top=10 * row.top, base=10 * row.base) for row in plate().intervals),
         stations=(),
         markers=tuple((f"{name} of the long formation", 10 * depth) for name, depth in plate().markers),

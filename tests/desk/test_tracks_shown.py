@@ -305,3 +305,25 @@ def test_without_tracks_there_is_an_axis_and_no_word_of_values(qtbot, look, plat
     assert "600.0" in [text.drawn for text in texts(widget)]
     assert widget.accessibleDescription() == "no tracks"
     assert widget.focusPolicy() == Qt.FocusPolicy.StrongFocus
+
+
+def test_where_even_the_least_tracks_have_no_room_the_main_one_stays_unless_another_is_asked_for(qtbot, look, plate):
+    narrow = shown(qtbot, look, plate, size=(240, 480))
+    assert [title for title, is_shown in narrow.track_choices() if is_shown] == ["density"]
+    narrow.choose_tracks(["density", "difference"])
+    assert [title for title, is_shown in narrow.track_choices() if is_shown] == ["density", "difference"]
+
+
+def test_the_edge_of_a_band_does_not_strike_through_the_values_at_the_crosshair(qtbot, look, plate):
+    widget = shown(qtbot, look, plate, size=(900, 480))
+    axis = widget._places().axis
+    line = round(axis.y(axis.depth_top + 0.5 * (axis.depth_base - axis.depth_top)))
+    per_px = (axis.depth_base - axis.depth_top) / (axis.base - axis.top)
+    depth = axis.depth_top + (line - axis.top) * per_px
+    widget.set_crosshair(depth)
+    # Ten px above the crosshair lies the middle of the words.
+    widget.set_selection([(depth - 60 * per_px, depth - 10 * per_px)])
+    image, accent = widget.grab().toImage(), QColor(look.theme.roles["accent"])
+    columns = [x for x in range(image.width()) if image.pixelColor(x, line - 10) == accent]
+    gaps = [right - left for left, right in zip(columns, columns[1:], strict=False) if right - left > 30]
+    assert len(columns) > 100 and len(gaps) >= 3, "the edge is there, and leaves out the words of each track"

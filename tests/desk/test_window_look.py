@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 from PySide6.QtCore import QObject, Qt
-from PySide6.QtGui import QAccessible
+from PySide6.QtGui import QAccessible, QGuiApplication
 from PySide6.QtWidgets import QAbstractButton, QComboBox, QLineEdit, QWidget
 
 from plumbwell.desk.stages import states
@@ -153,3 +153,15 @@ def test_tab_walks_through_the_window_and_focus_is_seen(driven):
         seen.append(window.shell.focusWidget())
     owners = {type(one).__name__ for one in seen if one is not None}
     assert {"Strip", "Tracks"} <= owners and any("Ledger" in name or "Rows" in name for name in owners), owners
+
+
+def test_the_window_follows_the_system_where_it_is_asked_to(driven, monkeypatch):
+    window = driven(theme="system")
+    assert window.look.theme.name == "light"
+    monkeypatch.setattr(type(window.look), "_named", lambda self: "dark")
+    QGuiApplication.styleHints().colorSchemeChanged.emit(Qt.ColorScheme.Dark)
+    assert window.look.theme.name == "dark"
+    monkeypatch.undo()
+    window.desk.do("theme light")
+    QGuiApplication.styleHints().colorSchemeChanged.emit(Qt.ColorScheme.Dark)
+    assert window.look.theme.name == "light"

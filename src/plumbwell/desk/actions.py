@@ -101,6 +101,7 @@ class Actions(QObject):
         )  # fmt: skip
         menu.addSeparator()
         self._action(menu, "columns", "&Columns of the ledger…")
+        self._action(menu, "tracks", "T&racks…")
         self._action(menu, "whole", "The &whole hole", "Ctrl+Home")
         self._action(menu, "tray", "&Fold or open the tray", "Ctrl+T")
 

@@ -20,6 +20,7 @@ from plumbwell.study.acts import (
     Note,
     SetRecipe,
 )
+from plumbwell.study.overlay import with_uses
 
 
 class Asking(QObject):
@@ -51,11 +52,14 @@ class Asking(QObject):
 
     def use(self, rows: tuple[int, ...]) -> None:
         """Leave readings out, or take them in again where all of them are out; asks for the reason."""
-        case, reasons = self._work.shown, self._work.reasons
-        if not rows or case is None:
+        case, reasons = self._document.case, self._work.reasons
+        if self._still_reducing() or case is None:
+            return
+        if not rows:
             self._notice.say("Choose the readings first that are to be left out or taken in.")
             return
-        use = case.results.survey.readings.use
+        # As the case stands, not as it was when the shown result was worked out.
+        use = with_uses(case.survey, case.overlay).readings.use
         used = tuple(row for row in rows if use[row])
         if used:
             reasons.ask(
@@ -70,6 +74,13 @@ class Asking(QObject):
                 lambda reason: self._document.act(Include(rows=rows, reason=reason)),
             )
 
+    def _still_reducing(self) -> bool:
+        """Whether nothing can be asked yet, for there is no result; says so."""
+        if self._work.shown is not None:
+            return False
+        self._notice.say("The survey is not reduced yet: choose readings when its result is there.")
+        return True
+
     def chosen_readings(self) -> tuple[int, ...]:
         """The readings that belong to what is chosen."""
         work = self._work
@@ -79,6 +90,8 @@ class Asking(QObject):
 
     def note(self) -> None:
         """Ask for a note on the chosen readings."""
+        if self._still_reducing():
+            return
         rows, shown = self.chosen_readings(), self._work.shown
         if not rows or shown is None:
             self._notice.say("Choose the readings first that the note belongs to.")
@@ -92,6 +105,8 @@ class Asking(QObject):
 
     def tare(self, *, drop: bool) -> None:
         """Take a jump before the first chosen reading into account, or drop the nearest one of its run."""
+        if self._still_reducing():
+            return
         rows, shown = self.chosen_readings(), self._work.shown
         if not rows or shown is None:
             self._notice.say("Choose the reading first before which the instrument jumped.")

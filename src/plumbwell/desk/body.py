@@ -22,7 +22,7 @@ GAP = 20
 GRIP = 7
 FAN_WIDTHS = {"interval": 60, "station": 52}
 NARROW_FAN = 48
-LEAST_LEDGER, LEAST_PLOTS = 220, 260
+LEAST_LEDGER, LEAST_PLOTS = 220, 210
 DEPTH_SHARE, TIME_SHARE, NARROW_SHARE = 0.55, 0.58, 0.61
 """Most of the width that a ledger takes of its own accord, beside tracks and beside plots against time."""
 

@@ -86,7 +86,9 @@ class DocketPage(QWidget):
         look.changed.connect(self.update)
         self.set_findings(())
 
-    def set_findings(self, findings: Sequence[Finding], *, can_go: Callable[[Finding], bool] = has_place) -> None:
+    def set_findings(
+        self, findings: Sequence[Finding], *, can_go: Callable[[Finding], bool] = has_place, empty: str = EMPTY
+    ) -> None:
         """Show the findings, errors first, then what wants a look, then notes.
 
         The finding that was the current one stays so while it is among them.
@@ -96,6 +98,8 @@ class DocketPage(QWidget):
         findings : sequence of Finding
         can_go : callable
             Tells whether there is a place to go to; where there is none, no word offers it.
+        empty : str
+            What stands there where there are none.
         """
         before = self.current
         ordered = sorted(findings, key=lambda one: GRAVEST_FIRST.index(one.severity))
@@ -113,7 +117,8 @@ class DocketPage(QWidget):
         words = f"Docket, {counted(len(blocks), 'finding')}"
         self.setAccessibleName(words)
         self.list.setAccessibleName(words)
-        self.setAccessibleDescription("" if blocks else EMPTY)
+        self._empty = empty
+        self.setAccessibleDescription("" if blocks else empty)
         self.update()
 
     @property
@@ -134,8 +139,9 @@ class DocketPage(QWidget):
         theme = self.look.theme
         with painting(self) as painter:
             draw_text(
-                painter, theme, EMPTY, x=0, baseline=theme.px(FIRST_BASELINE), role="muted", room=(0, self.width())
-            )
+                painter, theme, self._empty, x=0, baseline=theme.px(FIRST_BASELINE), role="muted",
+                room=(0, self.width()),
+            )  # fmt: skip
 
 
 def _same(one: Finding, other: Finding) -> bool:

@@ -6,6 +6,7 @@ from one to the next.
 
 from __future__ import annotations
 
+import os
 from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -162,7 +163,8 @@ class RecentRow(_Row):
     def __init__(self, path: str, look: Look, parent: QWidget) -> None:
         super().__init__(look, parent)
         self.path = path
-        self.there = Path(path).exists()
+        # os.path answers no where Path raises: in a folder that may not be looked into.
+        self.there = os.path.exists(path)
         self.name, self.place = Path(path).name or path, str(Path(path).parent)
         self.setEnabled(self.there)
         self.setAccessibleName(self.name if self.there else f"{self.name}, {GONE}")

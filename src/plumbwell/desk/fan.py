@@ -22,6 +22,7 @@ from plumbwell.plates.numbers import counted
 from plumbwell.plates.painting import hairline_across, painting
 
 INTERVAL, STATION = "interval", "station"
+STALE = 0.5
 
 
 @dataclass(frozen=True, slots=True)
@@ -83,6 +84,7 @@ class Fan(QWidget):
     def __init__(self, look: Look, parent: QWidget | None = None) -> None:
         super().__init__(parent)
         self._look = look
+        self._stale = False
         self._kind: str | None = None
         self._rows: tuple[FanRow, ...] = ()
         self._named: frozenset[int] = frozenset()
@@ -114,6 +116,12 @@ class Fan(QWidget):
         self._selected = frozenset(selected)
         self._say()
         self.update()
+
+    def set_stale(self, stale: bool) -> None:
+        """Show that new densities are on their way: the ribbons are pale."""
+        if stale != self._stale:
+            self._stale = stale
+            self.update()
 
     def set_window(self, top: float, base: float) -> None:
         """Take the depths between which the tracks show."""
@@ -164,7 +172,9 @@ class Fan(QWidget):
             painter.fillRect(self.rect(), theme.colour("ground"))
             painter.save()
             painter.setClipRect(0, int(frame.top), self.width(), self.height())
+            painter.setOpacity(STALE if self._stale else 1.0)
             self._draw_ribbons(painter, frame)
+            painter.setOpacity(1.0)
             self._draw_threads(painter, frame)
             painter.restore()
             hairline_across(painter, 0, self.width(), frame.top - 1, theme.colour("ink"))

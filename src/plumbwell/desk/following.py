@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
+import numpy as np
 from PySide6.QtCore import QObject
 
 from plumbwell.desk.selection import Selection
@@ -134,7 +135,9 @@ class Following(QObject):
         """The ledger shows other rows: the depth window goes to their depths."""
         depths = self._work.ledger.visible_depths() if self._deep and not self._leading else None
         if depths is not None:
-            low, high = self._selection.whole
+            # Where the table ends: of a single station the whole is more than its own depth.
+            table = self._work.ledger.table
+            low, high = float(np.nanmin(table.top)), float(np.nanmax(table.base))
             padded = self._selection.padded()
             self._leading = True
             try:
@@ -225,7 +228,9 @@ class Following(QObject):
         """Let the rows in view flow into their depths."""
         work = self._work
         kind = FANS.get(work.stage)
-        if kind is not None and self._shown is not None:
+        if self._shown is None:
+            work.fan.set_rows(None, ())
+        elif kind is not None:
             work.fan.set_rows(
                 kind if work.ledger.in_depth_order() else None, work.ledger.fan_rows(), self.chosen_here()
             )

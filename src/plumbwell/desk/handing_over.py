@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from contextlib import suppress
 from datetime import datetime
 from pathlib import Path
 
@@ -17,6 +18,8 @@ from plumbwell.files.survey_copy import write_survey_copy
 from plumbwell.plates.numbers import counted
 from plumbwell.plates.outputs import Written, write_outputs
 from plumbwell.survey.errors import PlumbwellError
+
+AT_WORK = "Files are being written already; wait for them, or stop that first."
 
 
 class HandingOver(QObject):
@@ -44,11 +47,21 @@ class HandingOver(QObject):
         if not folder or results is None:
             panel.say("Name a folder for the outputs.", wrong=True)
             return
-        if self._document.busy:
-            panel.say("A result is on its way; write when it is there.", wrong=True)
+        document = self._document
+        if document.at_work:
+            panel.say(AT_WORK, wrong=True)
+            return
+        if not document.current:
+            panel.say(
+                "A result is on its way; write when it is there."
+                if document.busy
+                else "There is no result of the survey as it stands now, so nothing is written. Undo what was done "
+                "last, or mend it; then write.",
+                wrong=True,
+            )
             return
         try:
-            target = check_target(Path(folder), survey=self._document.folder)
+            target = check_target(self._beside(folder), survey=self._document.folder)
         except PlumbwellError as error:
             panel.say(str(error), wrong=True)
             return
@@ -56,12 +69,22 @@ class HandingOver(QObject):
         self._status.set_progress(0.0, "writing the outputs")
         self._document.long_work(lambda progress: write_outputs(results, target, progress=progress))
 
+    def _beside(self, folder: str) -> Path:
+        """The folder that was named: one without a place of its own lies beside the survey folder."""
+        survey = self._document.folder
+        with suppress(RuntimeError):  # "~" where nobody has a home
+            folder = str(Path(folder).expanduser())
+        return Path(folder) if survey is None else survey.parent / folder
+
     def copy(self, folder: str) -> None:
         """Write a copy of the survey folder with all acts in it."""
         case, source = self._document.case, self._document.folder
         if case is None or source is None:
             return
-        target = Path(folder)
+        if self._document.at_work:
+            self._work.handover.say(AT_WORK, wrong=True)
+            return
+        target = self._beside(folder)
 
         def copy(progress: object) -> Path:
             write_survey_copy(case, source, target)
@@ -93,10 +116,12 @@ class HandingOver(QObject):
         elif isinstance(error, OSError):
             where = f"{error.filename}: " if error.filename else ""
             words = (
-                f"The files could not be written: {where}{error.strerror or error}. What stood there before is "
-                "unchanged."
+                f"The files could not be written: {where}{error.strerror or type(error).__name__}. What stood there "
+                "before is unchanged; name another folder, or make room and write again."
             )
-        else:
+        elif isinstance(error, PlumbwellError):
             words = str(error)
+        else:
+            words = "A fault of the program stopped the writing. What stood there before is unchanged."
         self._work.handover.say(words, wrong=True)
         self._notice.say(words, wrong=True)

@@ -13,14 +13,17 @@ from PySide6.QtGui import QDesktopServices, QPaintEvent, QResizeEvent
 from PySide6.QtWidgets import QFileDialog, QHBoxLayout, QScrollArea, QVBoxLayout, QWidget
 
 from plumbwell.desk.look import Look
-from plumbwell.desk.words import Caption, Field, Word
-from plumbwell.plates.axis import head_height
+from plumbwell.desk.words import WORD_PAD, Caption, Field, MainAction, Word, middle_baseline
+from plumbwell.plates.axis import head_height, title_baseline, unit_baseline
 from plumbwell.plates.numbers import counted
 from plumbwell.plates.painting import draw_mark, hairline_across, painting
 from plumbwell.study.cautions import CAUTIONS
 from plumbwell.study.finding import Finding
 
 MOST_LINES = 12
+CAUTION_PAD = 10
+WIDEST = 680
+"""Widest column of words, px of the unscaled design; longer lines are hard to follow."""
 
 
 class Marked(QWidget):
@@ -70,6 +73,24 @@ class Text(Caption):
             self.setFixedHeight(self.height_for(self.width()))
 
 
+class Caution(QWidget):
+    """The cautions that go with every output, framed by rules above and below."""
+
+    def __init__(self, words: str, look: Look, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self._look = look
+        self.text = Text(words, look)
+        column = QVBoxLayout(self)
+        column.setContentsMargins(0, CAUTION_PAD, 0, CAUTION_PAD)
+        column.addWidget(self.text)
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        ink = self._look.theme.colour("ink")
+        with painting(self) as painter:
+            hairline_across(painter, 0, self.width(), 0, ink)
+            hairline_across(painter, 0, self.width(), self.height() - 1, ink)
+
+
 class HandoverPanel(QWidget):
     """Where the outputs go, and what is said with them.
 
@@ -89,11 +110,15 @@ class HandoverPanel(QWidget):
         super().__init__(parent)
         self._look = look
         self._written: Path | None = None
-        self._title = Caption("Write everything to", look, self, face="emphasis")
+        self._title = Caption("Write the outputs", look, self, face="emphasis")
+        self._under_title = Caption(
+            "the files at the left, as plumbwell reduce writes them", look, self, face="small", role="muted"
+        )
+        self._folder_title = Caption("into the folder", look, self, face="small", role="muted")
         self.folder = Field(look, self)
         self.folder.setAccessibleName("Folder for the outputs")
         self.choose = Word("Choose a folder", look, self)
-        self.write = Word("Write", look, self)
+        self.write = MainAction("Write", look, self)
         self.said = Text("", look, self, role="muted")
         self.show_folder = Word("Show the folder", look, self)
         self.copy = Word("Save a copy as survey folder", look, self)
@@ -106,11 +131,12 @@ class HandoverPanel(QWidget):
         )
         self._findings_title = Caption("", look, self, face="emphasis")
         self._findings = QVBoxLayout()
-        self._cautions = Text(" ".join(CAUTIONS), look, self)
-        inner = QWidget()
+        self._cautions = Caution(" ".join(CAUTIONS), look, self)
+        self._copy_title = Caption("Or keep the survey itself", look, self, face="emphasis")
+        inner = self._inner = QWidget()
         column = QVBoxLayout(inner)
         column.setContentsMargins(0, 12, 16, 12)
-        column.setSpacing(8)
+        column.setSpacing(4)
         line = QHBoxLayout()
         line.setSpacing(12)
         line.addWidget(self.folder, 1)
@@ -120,18 +146,27 @@ class HandoverPanel(QWidget):
         acts.addWidget(self.write)
         acts.addWidget(self.show_folder)
         acts.addStretch(1)
+        column.addWidget(self._folder_title)
         column.addLayout(line)
+        column.addSpacing(12)
         column.addLayout(acts)
         column.addWidget(self.said)
-        column.addSpacing(8)
-        column.addWidget(self.copy)
-        column.addWidget(self._copy_text)
-        column.addSpacing(8)
+        column.addSpacing(12)
         column.addWidget(self._cautions)
-        column.addSpacing(8)
+        column.addSpacing(16)
         column.addWidget(self._findings_title)
         column.addLayout(self._findings)
+        column.addSpacing(16)
+        column.addWidget(self._copy_title)
+        column.addWidget(self._copy_text)
+        kept = QHBoxLayout()
+        # A word has room for its focus frame, and stands with its letters on the edge of the column.
+        kept.setContentsMargins(-WORD_PAD, 0, 0, 0)
+        kept.addWidget(self.copy)
+        kept.addStretch(1)
+        column.addLayout(kept)
         column.addStretch(1)
+        self.said.hide()
         self._area = QScrollArea(self)
         self._area.setWidget(inner)
         self._area.setWidgetResizable(True)
@@ -167,6 +202,7 @@ class HandoverPanel(QWidget):
         """Tell how writing went; `written` is the folder that can be shown."""
         self._written = written
         self.said.say(words, "brick" if wrong else "muted")
+        self.said.setVisible(bool(words))
         self.show_folder.setVisible(written is not None)
 
     def _choose(self) -> None:
@@ -185,9 +221,13 @@ class HandoverPanel(QWidget):
             QDesktopServices.openUrl(QUrl.fromLocalFile(str(self._written)))
 
     def _lay(self) -> None:
-        top = head_height(self._look.theme)
-        self._title.setGeometry(0, self._look.theme.px(8), self.width(), self._title.line)
+        theme = self._look.theme
+        top = head_height(theme)
+        for caption, baseline in ((self._title, title_baseline(theme)), (self._under_title, unit_baseline(theme))):
+            middle = middle_baseline(theme, caption.face, caption.line)
+            caption.setGeometry(0, baseline - middle, self.width(), caption.line)
         self._area.setGeometry(0, top, self.width(), self.height() - top)
+        self._inner.setMaximumWidth(theme.px(WIDEST))
         self.update()
 
     def resizeEvent(self, event: QResizeEvent) -> None:

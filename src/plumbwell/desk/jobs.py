@@ -6,6 +6,7 @@ answer comes back through one signal in the window's thread. Who asked drops an 
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Callable
 from dataclasses import dataclass
 from threading import Condition, Event, Thread
@@ -14,8 +15,14 @@ from typing import Any
 
 from PySide6.QtCore import QObject, Signal
 
+TURN = 0.0005
+"""Seconds after which a thread of ours lets another one have its turn."""
+
 LEAST_PAUSE = 0.05
 """Seconds between two tellings of progress: twenty a second at most."""
+
+PATIENCE = 1.5
+"""Seconds that a closing window waits for work that cannot be interrupted."""
 
 
 class Stopped(Exception):
@@ -71,25 +78,35 @@ class Lane(QObject):
             self._waiting.append((self._ticket, work))
             if not self._started:
                 self._started = True
+                # The window's thread shall not wait five milliseconds whenever it wants to go on.
+                sys.setswitchinterval(TURN)
                 self._thread.start()
             self._wake.notify()
             return self._ticket
 
     def stop(self) -> None:
-        """Ask the running work to stop at its next telling, and forget what waits."""
+        """Ask the running work to stop at its next telling; what waits is answered as stopped at once."""
         with self._wake:
-            self._waiting.clear()
+            waiting, self._waiting = self._waiting, []
             if self._progress is not None:
                 self._progress.stopped.set()
+        for ticket, _ in waiting:
+            self.answered.emit(Answer(ticket=ticket, error=Stopped()))
 
-    def end(self, patience: float = 3.0) -> None:
-        """Stop and end the thread; waits a little for work that cannot be interrupted."""
-        self.stop()
+    def end(self) -> None:
+        """Take no more work, stop what is running, and tell nothing any more."""
         with self._wake:
+            self._waiting.clear()
             self._ended = True
+            if self._progress is not None:
+                self._progress.stopped.set()
             self._wake.notify()
+
+    def join(self, patience: float) -> bool:
+        """Wait so many seconds for the thread of an ended lane; whether it has ended."""
         if self._started:
             self._thread.join(patience)
+        return not self._thread.is_alive()
 
     def _work(self) -> None:
         while True:
@@ -104,11 +121,26 @@ class Lane(QObject):
                 answer = Answer(ticket=ticket, value=work(progress))
             except BaseException as error:  # noqa: BLE001  it is handed to who asked
                 answer = Answer(ticket=ticket, error=error)
+            # Told under the lock: once the lane has ended, the object of its signals may be gone.
             with self._wake:
                 self._progress = None
                 if self._ended:
                     return
-            self.answered.emit(answer)
+                self.answered.emit(answer)
+
+    def tell(self, ticket: int, share: float, what: str) -> None:
+        """Tell how far the work of a ticket is; for its progress."""
+        with self._wake:
+            if not self._ended:
+                self.progressed.emit(ticket, share, what)
+
+
+def end_all(*lanes: Lane, patience: float = PATIENCE) -> bool:
+    """End lanes together; waits a little for work that cannot be interrupted. Whether all threads have ended."""
+    for lane in lanes:
+        lane.end()
+    until = monotonic() + patience
+    return all([lane.join(max(until - monotonic(), 0.0)) for lane in lanes])
 
 
 class Progress:
@@ -127,4 +159,4 @@ class Progress:
         now = monotonic()
         if now - self._told >= LEAST_PAUSE:
             self._told = now
-            self._lane.progressed.emit(self._ticket, share, what)
+            self._lane.tell(self._ticket, share, what)

@@ -414,7 +414,9 @@ class Ledger(QWidget):
             return
         height, bar = row_height(self._look.theme), self.rows.verticalScrollBar()
         ends = int(inside[0]) * height, (int(inside[-1]) + 1) * height - self.rows.viewport().height()
-        bar.setValue(min(max(bar.value(), min(ends)), max(ends)))
+        value = min(max(bar.value(), min(ends)), max(ends))
+        # A whole row stands under the head, unless the last one would be cut for it.
+        bar.setValue(min(-(-value // height) * height, bar.maximum()))
 
     def _scrolled(self) -> None:
         if not self._quiet:

@@ -135,6 +135,13 @@ class LedgerModel(QAbstractTableModel):
             self._given = next((words.column.key for words in rising), "")
         return self._given or None
 
+    def falling_key(self) -> str | None:
+        """Key of the first chosen column whose numbers fall as the rows are given, where none rises: elevations."""
+        if self.given_key() is not None:
+            return None
+        falling = (words for words in self.columns if not words.is_text and rises(-words.values))
+        return next((words.column.key for words in falling), None)
+
     @property
     def places(self) -> Rows:
         """Row of the view of each row of the table, -1 where the filter hides it."""

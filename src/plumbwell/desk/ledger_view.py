@@ -109,7 +109,9 @@ class LedgerView(QTableView):
     def wedge_of(self, key: str) -> str | None:
         """Which way the numbers of a column grow, when rows stand sorted by it."""
         if self.ledger.sorting is None:
-            return "down" if key == self.ledger.given_key() else None
+            if key == self.ledger.given_key():
+                return "down"
+            return "up" if key == self.ledger.falling_key() else None
         by, descending = self.ledger.sorting
         return None if key != by else "up" if descending else "down"
 

@@ -184,7 +184,8 @@ class ColumnWords:
             return []
         rows = set(_sampled(n).tolist())
         if self.is_text:
-            rows.add(max(range(n), key=lambda row: len(self.texts[row])))
+            lengths = list(map(len, self.texts))
+            rows.add(lengths.index(max(lengths)))
         elif np.isfinite(self.values).any():
             rows |= {int(np.nanargmin(self._finite_values)), int(np.nanargmax(self._finite_values))}
         return sorted(rows)

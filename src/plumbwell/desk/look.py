@@ -38,6 +38,12 @@ class Look(QObject):
         self.wanted = SYSTEM
         self.depth = DepthScale()
         self.theme: Theme = theme_named(self._named())
+        QGuiApplication.styleHints().colorSchemeChanged.connect(self._system_changed)
+
+    def _system_changed(self) -> None:
+        """The system went from light to dark or back: the window goes along where it is to look as the system."""
+        if self.wanted == SYSTEM:
+            self.choose()
 
     def _named(self) -> str:
         if self.wanted != SYSTEM:

@@ -155,7 +155,8 @@ class MenuRow(QWidget):
         row.setSpacing(8)
         # Menus keep their words; where room is short, values and the find field are narrower.
         menus.setSizePolicy(QSizePolicy.Policy.Minimum, QSizePolicy.Policy.Preferred)
-        row.addWidget(menus)
+        # At its own height: a taller bar keeps its words at the top, above the line of the others.
+        row.addWidget(menus, 0, Qt.AlignmentFlag.AlignVCenter)
         row.addStretch(1)
         row.addWidget(IconButton("undo-2", undo, look, self))
         row.addWidget(IconButton("redo-2", redo, look, self))

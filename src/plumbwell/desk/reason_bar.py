@@ -8,16 +8,18 @@ from __future__ import annotations
 from collections.abc import Callable
 
 from PySide6.QtCore import Qt, Signal
-from PySide6.QtGui import QKeyEvent, QPainter, QPaintEvent
-from PySide6.QtWidgets import QCompleter, QHBoxLayout, QWidget
+from PySide6.QtGui import QKeyEvent, QPainter, QPaintEvent, QResizeEvent
+from PySide6.QtWidgets import QCompleter, QHBoxLayout, QVBoxLayout, QWidget
 
+from plumbwell.desk.body import MARGIN
 from plumbwell.desk.look import Look
 from plumbwell.desk.settings import Settings
-from plumbwell.desk.words import Caption, Field, Word
+from plumbwell.desk.words import WORD_PAD, Caption, Field, Word
 from plumbwell.plates.painting import hairline_across, painting
 
 REASONS = "reasons"
 MOST_REASONS = 12
+MOST_LINES = 4
 
 
 class ReasonBar(QWidget):
@@ -37,17 +39,23 @@ class ReasonBar(QWidget):
         self._act: Callable[[str], str | None] | None = None
         self._question = Caption("", look, self, face="emphasis")
         self.field = Field(look, self)
-        self.wrong = Caption("", look, self, face="small", role="brick")
+        # Under the field, so that neither is shortened by the other.
+        self.wrong = Caption("", look, self, face="small", role="brick", lines=MOST_LINES)
         self.do = Word("Do it", look, self)
         self.leave = Word("Cancel", look, self)
-        row = QHBoxLayout(self)
-        row.setContentsMargins(0, 4, 0, 4)
+        column = QVBoxLayout(self)
+        row = QHBoxLayout()
+        # On the edges of ledger and plots; a word has room for its focus frame beside it.
+        column.setContentsMargins(MARGIN, 4, MARGIN - WORD_PAD, 4)
+        column.setSpacing(0)
         row.setSpacing(12)
         row.addWidget(self._question)
         row.addWidget(self.field, 1)
-        row.addWidget(self.wrong)
         row.addWidget(self.do)
         row.addWidget(self.leave)
+        column.addLayout(row)
+        column.addWidget(self.wrong)
+        look.changed.connect(self._fit)
         self.field.returnPressed.connect(self._answer)
         self.do.clicked.connect(self._answer)
         self.leave.clicked.connect(self.let_be)
@@ -90,6 +98,15 @@ class ReasonBar(QWidget):
     def _say_wrong(self, words: str) -> None:
         self.wrong.say(words)
         self.wrong.setVisible(bool(words))
+        self._fit()
+
+    def _fit(self) -> None:
+        width = max(self.width() - 2 * MARGIN + WORD_PAD, 1)
+        self.wrong.setFixedHeight(self.wrong.height_for(width))
+
+    def resizeEvent(self, event: QResizeEvent) -> None:
+        super().resizeEvent(event)
+        self._fit()
 
     def _answer(self) -> None:
         reason = self.field.text().strip()
@@ -113,4 +130,4 @@ class ReasonBar(QWidget):
     def paintEvent(self, event: QPaintEvent) -> None:
         painter: QPainter
         with painting(self) as painter:
-            hairline_across(painter, 0, self.width(), 0, self._look.theme.colour("rule"))
+            hairline_across(painter, MARGIN, self.width() - MARGIN, 0, self._look.theme.colour("rule"))

@@ -7,6 +7,7 @@ are downward, in the unit and kind of the depth axis.
 from __future__ import annotations
 
 from collections.abc import Iterable
+from math import isfinite
 
 from PySide6.QtCore import QObject, Signal
 
@@ -52,6 +53,8 @@ class Selection(QObject):
 
     def show(self, top: float, base: float) -> None:
         """Bring depths into view, held so that the window never leaves the hole by more than half its length."""
+        if not isfinite(top + base):
+            return
         low, high = self.whole
         length = min(max(base - top, (high - low) / 500.0, 1e-6), 2.0 * (high - low))
         middle = min(max((top + base) / 2.0, low), high)

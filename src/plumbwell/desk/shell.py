@@ -5,6 +5,7 @@ It holds geometry and takes what the system tells a window; what that means is s
 
 from __future__ import annotations
 
+import os
 from collections.abc import Sequence
 from pathlib import Path
 from typing import Protocol
@@ -97,6 +98,7 @@ def dropped(urls: Sequence[object]) -> list[Path]:
     found = []
     for url in urls:
         path = Path(url.toLocalFile())  # type: ignore[attr-defined]
-        if url.isLocalFile() and (path.is_dir() or path.name == "survey.toml"):  # type: ignore[attr-defined]
+        # os.path answers no where Path raises: a name too long, a folder that may not be looked into.
+        if url.isLocalFile() and (os.path.isdir(path) or path.name == "survey.toml"):  # type: ignore[attr-defined]
             found.append(path)
     return found

@@ -143,6 +143,48 @@ class Shown:
         return rows[0] if rows else None
 
 
+def carried(before: Shown, after: Shown, level: str, rows: Sequence[int]) -> tuple[int, ...]:
+    """The rows of a new result that chosen rows of the one before stand for.
+
+    Stations are known by their labels, visits by their readings, intervals by their stations, or else by the depths
+    that they reach over; what is no longer there falls out.
+
+    Parameters
+    ----------
+    before, after : Shown
+        Of the same survey, in the same depth scale.
+    level : str
+        What the rows are.
+    rows : sequence of int
+        Of `before`.
+    """
+    if level == STATION:
+        return _stations_again(before, after, rows)
+    if level == VISIT:
+        return after.converted(READING, before.converted(VISIT, rows, READING), VISIT)
+    if level == INTERVAL:
+        old, new = before.results.intervals.densities.pairs, after.results.intervals.densities.pairs
+        place = {label: station for station, label in enumerate(after.results.stations.label)}
+        at = {pair: row for row, pair in enumerate(zip(new.top.tolist(), new.base.tolist(), strict=True))}
+        labels = before.results.stations.label
+        found: list[int] = []
+        for row in rows:
+            pair = (place.get(labels[old.top[row]], -1), place.get(labels[old.base[row]], -1))
+            if pair in at:
+                found.append(at[pair])
+            else:
+                for top, base in before.spans(INTERVAL, (row,)):
+                    found += after.rows_between(INTERVAL, top, base)
+        return tuple(dict.fromkeys(found))
+    return tuple(rows)
+
+
+def _stations_again(before: Shown, after: Shown, rows: Sequence[int]) -> tuple[int, ...]:
+    place = {label: station for station, label in enumerate(after.results.stations.label)}
+    labels = before.results.stations.label
+    return tuple(place[labels[row]] for row in rows if labels[row] in place)
+
+
 def shown(case: Case, results: Results, scale: DepthScale) -> Shown:
     """A result as the window shows it in a depth scale."""
     depths = hole_depths(results, scale)

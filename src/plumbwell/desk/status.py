@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from plumbwell.desk.shown import Shown
 from plumbwell.desk.stages import states
-from plumbwell.files.times import iso
-from plumbwell.plates.numbers import column_decimals, number, with_sd
+from plumbwell.plates.numbers import column_decimals, counted, number, with_sd
+from plumbwell.plates.time_axis import clock, days
 
 if TYPE_CHECKING:
     from plumbwell.desk.workspace import Workspace
@@ -23,7 +24,7 @@ def status_words(work: Workspace, opened: bool) -> Pairs:
         return [("", "No survey open")]
     shown = work.shown
     if shown is None:
-        return [("", "reducing")]
+        return [("", "no result" if work.why_not else "reducing")]
     selection = work.selection
     if work.stage in (states.READINGS, states.DRIFT):
         rows = (selection.row,) if selection.row is not None else work.chosen_rows()
@@ -33,25 +34,29 @@ def status_words(work: Workspace, opened: bool) -> Pairs:
         spans = shown.spans(selection.level, selection.rows)
         if not spans:
             return []
+        if len(selection.rows) > 1:
+            return _of_several(shown, selection.level, len(selection.rows), spans)
         depth = (spans[0][0] + spans[-1][1]) / 2
     return _at_depth(shown, depth)
+
+
+def _of_several(shown: Shown, level: str, count: int, spans: Sequence[tuple[float, float]]) -> Pairs:
+    """How many rows are chosen, and from where to where they reach."""
+    first, last = (number(shown.scale.number_of(depth), 1) for depth in (spans[0][0], spans[-1][1]))
+    return [("", f"{counted(count, level)} chosen"), ("", f"{first} to {last} {shown.unit_label()}")]
 
 
 def _at_depth(shown: Shown, depth: float) -> Pairs:
     plate, scale = shown.plate, shown.scale
     pairs: Pairs = []
-    column = np.flatnonzero(shown.depths.column)
-    order = column[np.argsort(shown.depths.stations[column])]
-    at = shown.depths.stations[order]
-    if len(order) and at[0] <= depth <= at[-1]:
-        located = shown.results.stations.located
-        if shown.depths.measured:
-            md = np.interp(depth, at, located.mark_depth.values[order]) / scale.factor
-            pairs.append(("", f"{number(float(md), 1)} {scale.unit} MD"))
-        tvd = np.interp(depth, at, located.positions.tvd.values[order]) / scale.factor
-        elevation = np.interp(depth, at, located.positions.elevation.values[order]) / scale.factor
-        pairs.append(("", f"{number(float(tvd), 1)} {scale.unit} TVD"))
-        pairs.append(("", f"{number(float(elevation), 1)} {scale.unit} elevation"))
+    place = shown.depths.place_at(shown.results, depth)
+    if place is not None:
+        md, tvd = place
+        if np.isfinite(md):
+            pairs.append(("", f"{number(md / scale.factor, 1)} {scale.unit} MD"))
+        pairs.append(("", f"{number(tvd / scale.factor, 1)} {scale.unit} TVD"))
+        elevation = (shown.depths.datum_elevation - tvd) / scale.factor
+        pairs.append(("", f"{number(elevation, 1)} {scale.unit} elevation"))
     else:
         pairs.append(("", f"{number(scale.number_of(depth), 1)} {shown.unit_label()}"))
     for interval in plate.intervals:
@@ -63,6 +68,11 @@ def _at_depth(shown: Shown, depth: float) -> Pairs:
     if above:
         pairs.append(("", above[-1]))
     return pairs
+
+
+def _moment(time: float) -> str:
+    """A time as people write it: day, time of day, UTC."""
+    return f"{days(time, time, year=True)} {clock(time, seconds=True)} UTC"
 
 
 def _of_row(shown: Shown, stage: str, rows: tuple[int, ...]) -> Pairs:
@@ -82,12 +92,12 @@ def _of_row(shown: Shown, stage: str, rows: tuple[int, ...]) -> Pairs:
         )
         named = ("visit", str(row + 1))
     else:
-        time, run = float(results.readings.utc.values[row]), int(readings.run.code[row])
+        time, run = float(readings.time.values[row]), int(readings.run.code[row])
         station = int(placement.station[row])
         residual = results.readings.estimates.residual.values[row] * 1e8
         found = ("residual", f"{number(float(residual), 1, signed=True)} µGal")
         named = ("row", str(row + 1))
-    pairs: Pairs = [("", iso(time).replace("T", " ").replace("Z", " UTC")), ("run", readings.run.names[run]), named]
+    pairs: Pairs = [("", _moment(time)), ("run", readings.run.names[run]), named]
     if station >= 0:
         depth = shown.depths.stations[station]
         pairs.append(("station", results.stations.label[station]))

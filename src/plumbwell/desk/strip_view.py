@@ -19,7 +19,7 @@ from plumbwell.desk.strip_window import Window, WindowLimits, window_limits
 from plumbwell.desk.strip_words import depth_words, described, finding_words, hole_words
 from plumbwell.desk.words import draw_focus
 from plumbwell.plates.axis import Frame
-from plumbwell.plates.lettering import draw_text, elided
+from plumbwell.plates.lettering import draw_text, elided, text_width
 from plumbwell.plates.painting import hairline_across, painting
 from plumbwell.plates.plate import SurveyPlate
 from plumbwell.plates.stage_line import stage_height
@@ -46,6 +46,7 @@ from plumbwell.plates.strip_places import (
     grip_part,
     strip_columns,
 )
+from plumbwell.plates.theme import Theme
 
 LEAST_WIDTH, MOST_WIDTH = 168, 320
 MARGIN = 16
@@ -54,6 +55,19 @@ TITLE_BASELINE, SUBTITLE_BASELINE = 28, 46
 NOTHING = ("No survey", "nothing open")
 MARK_REACH = 6.0
 BRUSH, FINDING = "brush", "finding"
+
+
+def title_face(theme: Theme, title: str, room: float) -> str:
+    """Return the face of the survey's name: the heading, or the smaller one where only that has room."""
+    return "heading" if text_width(theme, "heading", title) <= room else "emphasis"
+
+
+def shorter_parts(theme: Theme, words: str, room: float) -> str:
+    """Return words in parts without the parts between the first and the last where they have no room otherwise."""
+    parts = words.split(", ")
+    while len(parts) > 2 and text_width(theme, "small", ", ".join(parts)) > room:
+        del parts[-2]
+    return ", ".join(parts)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -263,9 +277,11 @@ class StripView(QWidget):
     def _draw_title(self, painter: QPainter, title: str, subtitle: str, *, role: str) -> None:
         theme = self._look.theme
         room = (MARGIN, self.width() - 8)
+        # A long name stands smaller before it is shortened.
+        heading = title_face(theme, title, room[1] - room[0])
         for words, down, face, colour in (
-            (title, TITLE_BASELINE, "heading", role),
-            (subtitle, SUBTITLE_BASELINE, "small", "muted"),
+            (title, TITLE_BASELINE, heading, role),
+            (shorter_parts(theme, subtitle, room[1] - room[0]), SUBTITLE_BASELINE, "small", "muted"),
         ):
             draw_text(
                 painter, theme, words, x=MARGIN, baseline=theme.px(down), face=face, role=colour, room=room
@@ -291,7 +307,7 @@ class StripView(QWidget):
             return ""
         if y < theme.px(SUBTITLE_BASELINE) + theme.px(6):
             room = self.width() - 8 - MARGIN
-            texts = (("heading", plate.title), ("small", plate.subtitle))
+            texts = ((title_face(theme, plate.title, room), plate.title), ("small", plate.subtitle))
             short = any(elided(theme, face, words, room) != words for face, words in texts)
             return f"{plate.title}\n{plate.subtitle}" if short else ""
         frame = self.frame()

@@ -294,9 +294,10 @@ class ShownTimePlots(QWidget):
             if self._hovered is not None:
                 draw_hovered_point(painter, plots, layout, theme, self._hovered)
             draw_chosen_rings(painter, plots, layout, theme, self._rows)
-            draw_time_words(painter, plots, layout, theme, stale=self._stale)
             dragged = None if self._drag is None else self._drag.key
             draw_tares(painter, plots, layout, theme, chosen=self._tare, without=dragged)
+            # Over the tares, whose lines would strike the slopes through.
+            draw_time_words(painter, plots, layout, theme, stale=self._stale)
             if self._drag is not None:
                 draw_dragged_tare(painter, layout, theme, run_index=self._drag.run_index, time=self._drag.time)
             if self.hasFocus():

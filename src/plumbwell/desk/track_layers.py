@@ -13,7 +13,7 @@ from PySide6.QtGui import QPainter, QPixmap
 
 from plumbwell.plates.axis import BAR_LEFT, Frame, axis_room, draw_depth_axis, head_height, numbered_depths
 from plumbwell.plates.excursions import draw_wedges
-from plumbwell.plates.naming import draw_curve_names, draw_layer_names, draw_origin_names
+from plumbwell.plates.naming import draw_base_name, draw_curve_names, draw_layer_names, draw_origin_names
 from plumbwell.plates.painting import hairline_across, painting
 from plumbwell.plates.theme import Theme
 from plumbwell.plates.track import Track
@@ -105,11 +105,15 @@ def places_of(scene: TrackScene, theme: Theme, size: QSize) -> Places:
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class Layers:
-    """Ground with heads and grid, then curves, then axis and words; the last two are clear where nothing is."""
+    """Ground with heads and grid, then curves, then axis and words; the last two are clear where nothing is.
+
+    `names` are the boxes of the words in the tracks.
+    """
 
     ground: QPixmap
     curves: QPixmap
     words: QPixmap
+    names: tuple[QRectF, ...]
 
 
 def _blank(size: QSize, ratio: float, theme: Theme | None) -> QPixmap:
@@ -165,6 +169,7 @@ def _draw_words(painter: QPainter, scene: TrackScene, theme: Theme, places: Plac
     names_stand = names_track(scene.tracks)
     for index, (track, own) in enumerate(zip(scene.tracks, places.tracks, strict=True)):
         boxes = draw_wedges(painter, track, own, theme, knock_out=False)
+        boxes += draw_base_name(painter, track, own, theme, taken=boxes, knock_out=False)
         boxes += draw_curve_names(painter, track, own, theme, taken=boxes, knock_out=False)
         boxes += draw_origin_names(painter, track, own, theme, knock_out=False)
         if index == names_stand:
@@ -197,4 +202,4 @@ def layers_of(
         painter.setCompositionMode(QPainter.CompositionMode.CompositionMode_DestinationOut)
         for box in boxes:
             painter.fillRect(box, theme.colour("ink", KNOCK_OUT))
-    return Layers(ground=ground, curves=curves, words=words)
+    return Layers(ground=ground, curves=curves, words=words, names=tuple(boxes))

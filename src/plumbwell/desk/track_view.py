@@ -10,14 +10,14 @@ from collections.abc import MutableMapping, Sequence
 from dataclasses import replace
 
 from PySide6.QtCore import QRect, QRectF, QSize, Qt
-from PySide6.QtGui import QFocusEvent, QPaintEvent, QPixmap, QResizeEvent
+from PySide6.QtGui import QFocusEvent, QPainter, QPaintEvent, QPixmap, QRegion, QResizeEvent
 from PySide6.QtWidgets import QWidget
 
 from plumbwell.desk.look import Look
 from plumbwell.desk.track_layers import Layers, Places, TrackScene, heads_of, layers_of, places_of
 from plumbwell.desk.track_scales import ValueScales
 from plumbwell.desk.words import draw_focus
-from plumbwell.plates.axis import axis_width, head_height, numbered_depths, track_graduation
+from plumbwell.plates.axis import axis_width, head_height, number_boxes, numbered_depths, track_graduation
 from plumbwell.plates.numbers import counted, number, step_decimals
 from plumbwell.plates.painting import hairline_across, painting
 from plumbwell.plates.track import Track
@@ -32,7 +32,9 @@ from plumbwell.plates.track_marks import (
     draw_readout,
     draw_rings,
     draw_selection_bands,
+    knocked_out,
     merged_spans,
+    placed_readout,
 )
 from plumbwell.plates.track_readout import told
 from plumbwell.plates.track_row import least_widths, track_gap
@@ -199,15 +201,21 @@ class TrackView(QWidget):
     def _chosen(self) -> tuple[Track, ...]:
         """Return the tracks to show: as chosen, else those that have room; never none."""
         choice = self._choice()
-        roomy = not any(track.narrow for track in self._all) or not (self._narrow or self._crowded())
-        chosen = tuple(track for track in self._all if choice.get(track.title, roomy or track.narrow))
-        return chosen or self._all
+        roomy = not any(track.narrow for track in self._all) or not (self._narrow or self._crowded(self._all))
+        chosen = [track for track in self._all if choice.get(track.title, roomy or track.narrow)] or list(self._all)
+        # Where even those have no room, the least of them that nobody asked for goes.
+        while len(chosen) > 1 and self._crowded(chosen):
+            unasked = [track for track in reversed(chosen) if track.title not in choice]
+            if not unasked:
+                break
+            chosen.remove(min(unasked, key=lambda track: track.weight))
+        return tuple(chosen)
 
-    def _crowded(self) -> bool:
-        """Return whether the titles of all tracks have no room side by side."""
+    def _crowded(self, tracks: Sequence[Track]) -> bool:
+        """Return whether the titles of tracks have no room side by side."""
         theme, across = self.look.theme, self._places().across
-        gaps = track_gap(theme) * (len(self._all) - 1)
-        return sum(least_widths(theme, self._all)) + gaps > across.right - across.left
+        gaps = track_gap(theme) * (len(tracks) - 1)
+        return sum(least_widths(theme, tracks)) + gaps > across.right - across.left
 
     def _tracks_changed(self) -> None:
         self._kept = None
@@ -258,22 +266,30 @@ class TrackView(QWidget):
         with painting(self) as painter:
             painter.drawPixmap(0, 0, layers.ground)
             bands = scene.spans if self._band is None else (*scene.spans, self._band)
-            draw_selection_bands(painter, body, theme, bands)
+            numbers = number_boxes(theme, places.axis, scene.measured) if bands else ()
+            draw_selection_bands(painter, body, theme, bands, spared=numbers)
             painter.setOpacity(STALE_OPACITY if self._stale else 1.0)
             painter.drawPixmap(0, 0, layers.curves)
             painter.setOpacity(1.0)
-            painter.drawPixmap(0, 0, layers.words)
+            depth = self._crosshair if self._crosshair is not None and self._in_view(self._crosshair) else None
+            readouts = [
+                [] if depth is None else placed_readout(track, own, theme, depth)
+                for track, own in zip(scene.tracks, places.tracks, strict=True)
+            ]
+            crossed = [knocked_out(one.box) for row in readouts for one in row]
+            if depth is not None:
+                crossed.append(QRectF(places.axis.right, body.y(depth) - 2, body.right - places.axis.right, 4))
+            self._draw_names(painter, layers, crossed)
             for track, own in zip(scene.tracks, places.tracks, strict=True):
                 draw_chosen_steps(painter, track, own, theme, scene.spans)
                 if self._hovered is not None:
                     draw_hovered(painter, track, own, theme, self._hovered)
                 draw_rings(painter, track, own, theme, scene.lit)
-            depth = self._crosshair
-            if depth is not None and body.depth_top <= depth <= body.depth_base:
+            if depth is not None:
                 y = body.y(depth)
                 hairline_across(painter, places.axis.right, body.right, y, theme.colour("ink"))
-                for track, own in zip(scene.tracks, places.tracks, strict=True):
-                    draw_readout(painter, track, own, theme, depth, spans=bands)
+                for placed, own in zip(readouts, places.tracks, strict=True):
+                    draw_readout(painter, placed, own, theme, spans=bands)
                 draw_depth_tag(
                     painter,
                     places.axis,
@@ -285,6 +301,21 @@ class TrackView(QWidget):
                 )
             if self.hasFocus():
                 draw_focus(painter, theme, QRectF(self.rect()))
+
+    def _in_view(self, depth: float) -> bool:
+        return self._scene.window[0] <= depth <= self._scene.window[1]
+
+    def _draw_names(self, painter: QPainter, layers: Layers, crossed: Sequence[QRectF]) -> None:
+        """Draw axis and names, without the names that read-out or crosshair would cover in part."""
+        hidden = [box for box in layers.names if any(box.intersects(other) for other in crossed)]
+        painter.save()
+        if hidden:
+            region = QRegion(self.rect())
+            for box in hidden:
+                region = region.subtracted(QRegion(box.toAlignedRect()))
+            painter.setClipRegion(region, Qt.ClipOperation.IntersectClip)
+        painter.drawPixmap(0, 0, layers.words)
+        painter.restore()
 
     def _depth_words(self, depth: float, unit: bool = False) -> str:
         """Return a depth as written: one decimal, more where the axis is graduated finer."""

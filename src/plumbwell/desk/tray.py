@@ -340,7 +340,7 @@ class Tray(QWidget):
             names.set_names([(page.key, page.name) for page in self.pages if wanted(page.key)], self._states, width)
             names.setGeometry(left, 0, width, row)
             names.setVisible(width > 0 and names.count() > 0)
-            names.show_open(next((key for key in opened if wanted(key)), ""))
+            names.show_open("" if self.is_folded else next((key for key in opened if wanted(key)), ""))
         for page in self.pages:
             left, width = (aside, self.width() - aside)
             if not single and page.key == DOCKET:

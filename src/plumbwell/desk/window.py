@@ -5,11 +5,12 @@ It owns nothing of a survey: the document does. What the person wants is asked f
 
 from __future__ import annotations
 
+import os
 from collections.abc import Sequence
 from datetime import datetime
 from pathlib import Path
 
-from PySide6.QtCore import QObject, Qt
+from PySide6.QtCore import QObject, QPoint, Qt
 from PySide6.QtWidgets import QFileDialog, QStackedWidget, QVBoxLayout, QWidget
 
 from plumbwell import __version__
@@ -22,6 +23,7 @@ from plumbwell.desk.failure_log import LOG_NAME
 from plumbwell.desk.find import FindEntry
 from plumbwell.desk.handing_over import HandingOver
 from plumbwell.desk.history_page import HistoryRow
+from plumbwell.desk.jobs import Stopped
 from plumbwell.desk.menu_row import MenuRow
 from plumbwell.desk.notice import Notice
 from plumbwell.desk.problems import Problems
@@ -36,13 +38,15 @@ from plumbwell.files.keeper import EPOCH
 from plumbwell.files.new_survey import write_new_survey
 from plumbwell.study.acts import ChooseRecipe, NamePoint
 from plumbwell.study.cautions import CAUTIONS
+from plumbwell.study.history import History, Point
 from plumbwell.survey.errors import PlumbwellError
 from plumbwell.survey.recipe import KEYS
+from plumbwell.survey.survey import Survey
 
 TEXT_STEP = 0.1
 NEEDS_SURVEY = (
     "again", "name", "copy folder", "write", "copy", "all", "filter", "use", "note", "tare", "drop tare", "columns",
-    "whole", *(f"stage {key}" for key in states.STAGES),
+    "tracks", "whole", *(f"stage {key}" for key in states.STAGES),
 )  # fmt: skip
 
 
@@ -108,7 +112,7 @@ class Desk(QObject):
         document.not_opened.connect(self._not_opened)
         document.changed.connect(self._changed)
         document.reduced.connect(self._reduced)
-        document.not_reduced.connect(lambda error: self.notice.say(f"This cannot be reduced: {error}", wrong=True))
+        document.not_reduced.connect(self._not_reduced)
         document.told.connect(self.notice.say)
         document.progressed.connect(self.status.set_progress)
         work.pointed.connect(self._tell)
@@ -141,13 +145,14 @@ class Desk(QObject):
 
     def open(self, path: Path) -> None:
         """Open a survey folder, or that of a survey.toml."""
-        self._asked, self._refused = path, False
+        self._asked = path
         self.notice.clear()
         self.status.set_progress(0.0, "reading the files")
         self.document.open(path)
 
     _asked: Path | None = None
-    _refused = False
+    _why_not = ""
+    _told_recipe: tuple[object, ...] = ()
 
     def _show_nothing(self) -> None:
         self.row.survey.say("none")
@@ -165,6 +170,7 @@ class Desk(QObject):
         assert folder is not None and survey is not None
         self.status.set_progress(None, "")
         self.settings.add_recent(str(folder))
+        self._sentences: dict[str, str] = {}
         self.row.survey.say(survey.site.name)
         self.shell.setWindowTitle(f"{survey.site.name} – Plumbwell")
         self.workspace.handover.set_folder(folder.parent / f"{folder.name}_results")
@@ -175,8 +181,12 @@ class Desk(QObject):
 
     def _not_opened(self, path: str, error: Exception) -> None:
         self.status.set_progress(None, "")
+        if isinstance(error, Stopped):
+            self.notice.say(f"Stopped: {path} was not opened.")
+            return
+        if (survey := self.document.survey) is not None:
+            self.notice.say(f"{survey.site.name} is still open: a click on a stage leads back to it.")
         self.problems.show_error(Path(path), error)
-        self._refused = True
         self.workspace.front.setCurrentWidget(self._refusal)
         self.actions.enable(("again",), True)
 
@@ -189,8 +199,8 @@ class Desk(QObject):
     def _list_recent(self, menu: object) -> None:
         menu.clear()  # type: ignore[attr-defined]
         for path in self.settings.texts(RECENT):
-            action = menu.addAction(path)  # type: ignore[attr-defined]
-            action.setEnabled(Path(path).exists())
+            action = menu.addAction(as_named(path))  # type: ignore[attr-defined]
+            action.setEnabled(os.path.exists(path))
             action.triggered.connect(lambda _=False, which=path: self.open(Path(which)))
         menu.addSeparator()  # type: ignore[attr-defined]
         menu.addAction(self.actions.of["open"])  # type: ignore[attr-defined]
@@ -199,7 +209,7 @@ class Desk(QObject):
         menu, case = self.actions.recipes, self.document.case
         menu.clear()
         for name in () if case is None else case.recipe_names:
-            action = menu.addAction(name)
+            action = menu.addAction(as_named(name))
             action.setCheckable(True)
             action.setChecked(case is not None and name == case.chosen_name)
             action.triggered.connect(lambda _=False, which=name: self.asking.take(ChooseRecipe(name=which)))
@@ -217,7 +227,23 @@ class Desk(QObject):
         self._show_history()
         self._tell()
 
+    def _not_reduced(self, error: Exception) -> None:
+        if isinstance(error, PlumbwellError):
+            why = f"The survey cannot be reduced as it stands now: {str(error).rstrip('.')}."
+        elif isinstance(error, MemoryError):
+            why = "The memory was not enough to reduce the survey as it stands now."
+        else:
+            why = "A fault of the program stopped the reduction of the survey as it stands now."
+        history = self.document.history
+        undo = " Undo takes the last act back." if history is not None and history.can_undo else ""
+        stands = " The numbers shown are still those of before." if self.workspace.shown is not None else ""
+        self._why_not = f"{why}{stands}{undo}"
+        self.notice.say(self._why_not, wrong=True)
+
     def _reduced(self) -> None:
+        if self._why_not and self.notice.words == self._why_not:
+            self.notice.clear()
+        self._why_not = ""
         self._show_recipe()
         self._tell()
 
@@ -235,6 +261,10 @@ class Desk(QObject):
         if document.results is not None:
             placed = document.results.stations
             stations = tuple(one for one, role in zip(placed.label, placed.role, strict=True) if role == "column")
+        told = (case.recipe_names, case.chosen_name, case.chosen, survey.recipe, stations)
+        if told == self._told_recipe:
+            return
+        self._told_recipe = told
         page.set_names(case.recipe_names, case.chosen_name)
         page.set_recipe(case.chosen, survey.recipe, stations=stations)
         changed = len(case.changed_keys())
@@ -259,7 +289,7 @@ class Desk(QObject):
                     number=point.number,
                     when_words=_moment(point.when),
                     who=point.who,
-                    sentence=history.sentence(point.number, survey),
+                    sentence=self._sentence(history, point, survey),
                     name=point.name,
                     here=point.number == history.cursor,
                     ahead=point.number in line and point.number not in before,
@@ -270,6 +300,12 @@ class Desk(QObject):
         )
         acts = len(history.points) - 1
         self.workspace.tray.set_state("history", str(acts) if acts else "")
+
+    def _sentence(self, history: History, point: Point, survey: Survey) -> str:
+        """What led to a point; told once, for a point never changes."""
+        if point.hash not in self._sentences:
+            self._sentences[point.hash] = history.sentence(point.number, survey)
+        return self._sentences[point.hash]
 
     # -- actions ---------------------------------------------------------------------------------------------
 
@@ -285,6 +321,7 @@ class Desk(QObject):
             "all": work.ledger.choose_all,
             "filter": work.ledger.open_filter,
             "columns": work.ledger.open_columns,
+            "tracks": lambda: work.tracks.menu().popup(work.tracks.mapToGlobal(QPoint(0, 0))),
             "use": lambda: self.asking.use(self.asking.chosen_readings()),
             "note": self.asking.note,
             "tare": lambda: self.asking.tare(drop=False),
@@ -342,13 +379,18 @@ class Desk(QObject):
             return
         try:
             write_new_survey(Path(name))
-        except (PlumbwellError, OSError) as error:
+        except PlumbwellError as error:
             self.notice.say(str(error), wrong=True)
+            return
+        except OSError as error:
+            why = error.strerror or type(error).__name__
+            self.notice.say(f"{name} cannot be written: {why}. Name another folder.", wrong=True)
             return
         self.open(Path(name))
 
     def _again(self) -> None:
-        folder = self.document.folder if not self._refused else self._asked
+        refused = self.workspace.front.currentWidget() is self._refusal
+        folder = self._asked if refused else self.document.folder
         if folder is not None:
             self.open(folder)
 
@@ -390,7 +432,7 @@ class Desk(QObject):
         saved = self.document.saved
         kind = look.depth.kind if work.shown is None else work.shown.scale.kind
         self.status.set_right(
-            bars=look.theme.bars,
+            bars=look.theme.bars if work.shown is not None and work.stage != states.HANDOVER else None,
             unit=look.depth.unit,
             kind=kind,
             saved="" if saved is None else datetime.fromtimestamp(saved).strftime("%H:%M"),
@@ -419,6 +461,12 @@ def framed(page: QWidget) -> QWidget:
     return frame
 
 
+def as_named(words: str) -> str:
+    """A name as a menu shows it, where a single & would underline what follows."""
+    return words.replace("&", "&&")
+
+
 def _moment(seconds: float) -> str:
     """A time of the history (s since 2000-01-01 UTC), in the zone of the machine."""
-    return datetime.fromtimestamp(seconds + EPOCH).strftime("%d %b %Y, %H:%M:%S")
+    moment = datetime.fromtimestamp(seconds + EPOCH)
+    return f"{moment.day} {moment:%b %Y, %H:%M:%S}"

@@ -37,7 +37,7 @@ ENTER_KEYS = (Qt.Key.Key_Return, Qt.Key.Key_Enter)
 CHEVRON = 14
 
 
-def draw_focus(painter: QPainter, theme: Theme, box: QRectF) -> None:
+def draw_focus(painter: QPainter, theme: Theme, box: QRectF, role: str = "accent") -> None:
     """Draw the frame of keyboard focus inside a box."""
     inset = FOCUS_WIDTH / 2
     box = box.adjusted(inset, inset, -inset, -inset)
@@ -47,7 +47,7 @@ def draw_focus(painter: QPainter, theme: Theme, box: QRectF) -> None:
         (box.right(), box.bottom()),
         (box.left(), box.bottom()),
     )
-    stroke_shape(painter, polygon(*corners), theme.colour("accent"), FOCUS_WIDTH)
+    stroke_shape(painter, polygon(*corners), theme.colour(role), FOCUS_WIDTH)
 
 
 def middle_baseline(theme: Theme, face: str, height: float) -> int:
@@ -131,6 +131,38 @@ class Word(QAbstractButton):
                 hairline_across(painter, box.left(), box.right(), baseline + 2, theme.colour("accent"), thick)
             if self.hasFocus():
                 draw_focus(painter, theme, QRectF(self.rect()))
+
+
+class MainAction(Word):
+    """The one main action of a page: a word on a filled ground."""
+
+    def sizeHint(self) -> QSize:
+        theme = self.look.theme
+        return QSize(ceil(text_width(theme, "emphasis", self.text())) + 2 * theme.px(20), theme.px(32))
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        theme = self.look.theme
+        with painting(self) as painter:
+            baseline = middle_baseline(theme, "emphasis", self.height())
+            if self.isEnabled():
+                painter.fillRect(self.rect(), theme.colour("accent"))
+            width = text_width(theme, "emphasis", self.text())
+            left = (self.width() - width) / 2
+            box = draw_text(
+                painter,
+                theme,
+                self.text(),
+                x=left,
+                baseline=baseline,
+                face="emphasis",
+                role="on_accent" if self.isEnabled() else "strong",
+                room=(0, self.width()),
+            )
+            if self.isEnabled() and (self.underMouse() or self.isDown()):
+                hairline_across(painter, box.left(), box.right(), baseline + 2, theme.colour("on_accent"), 2)
+            if self.hasFocus():
+                inside = QRectF(self.rect()).adjusted(2, 2, -2, -2)
+                draw_focus(painter, theme, inside, role="on_accent" if self.isEnabled() else "accent")
 
 
 class Caption(QWidget):

@@ -21,25 +21,19 @@ from plumbwell.desk.following import FANS, LEVELS, TIMED, Following
 from plumbwell.desk.handover_panel import HandoverPanel
 from plumbwell.desk.history_page import HistoryPage
 from plumbwell.desk.ledger import Ledger
+from plumbwell.desk.ledger_model import empty_table
 from plumbwell.desk.look import Look
 from plumbwell.desk.reason_bar import ReasonBar
 from plumbwell.desk.recipe_page import RecipePage
 from plumbwell.desk.selection import Selection
 from plumbwell.desk.settings import Settings
 from plumbwell.desk.settle_view import SettleView
-from plumbwell.desk.shown import Shown, shown
+from plumbwell.desk.shown import Shown, carried, shown
 from plumbwell.desk.stage_line import StageLine
 from plumbwell.desk.stages import states
-from plumbwell.desk.stages.density import density_table
-from plumbwell.desk.stages.depth_tracks import density_tracks, reduction_tracks
-from plumbwell.desk.stages.drift import drift_table
-from plumbwell.desk.stages.handover import handover_table
-from plumbwell.desk.stages.readings import readings_table
-from plumbwell.desk.stages.reduction import reduction_table
-from plumbwell.desk.stages.time_series import drift_plots, reading_plots
+from plumbwell.desk.stages.in_front import CANNOT_REDUCE, EMPTY, REDUCING, show_plots, stage_table
 from plumbwell.desk.stages.tray_views import counted_findings
 from plumbwell.desk.strip import Strip
-from plumbwell.desk.table import LedgerTable
 from plumbwell.desk.time_plots import TimePlots
 from plumbwell.desk.tracks import Tracks
 from plumbwell.desk.tray import Tray, TrayPage
@@ -53,21 +47,10 @@ NARROW = 1300
 STALE_AFTER = 150
 """Milliseconds after which a result that is still on its way shows."""
 
-STRIP_WIDTH, LEAST_STRIP, MOST_STRIP = 216, 168, 320
+STRIP_WIDTH, LEAST_STRIP, MOST_STRIP, STRIP_SHARE = 216, 168, 320, 0.22
 TRAY_HEIGHT, TRAY_SHARE = 232, 0.36
 MOST_PLACES = 2000
 """Stations and intervals that the find field offers."""
-
-DRIFT_WEIGHTS = (2.6, 1.0)
-"""Heights of the visits against drift, and of the residuals under them."""
-
-EMPTY = {
-    states.READINGS: "There are no readings.",
-    states.DRIFT: "No reading in use belongs to a station.",
-    states.REDUCTION: "There is no station.",
-    states.DENSITY: "One station makes no interval: densities need gravity at two depths.",
-    states.HANDOVER: "",
-}
 
 
 class Workspace(QWidget):
@@ -97,6 +80,7 @@ class Workspace(QWidget):
         self.stage = states.READINGS
         self.written: tuple[str, ...] = ()
         self._written_words = ""
+        self._why_not = ""
         self._narrow = False
         self.page_keys: tuple[str, ...] = ()
         self._scale = look.theme.text_scale
@@ -121,6 +105,8 @@ class Workspace(QWidget):
         self.front = front
         front.addWidget(self.body)
         self._lay_out()
+        self._findings_later = QTimer(self, singleShot=True, interval=0)
+        self._findings_later.timeout.connect(self._show_findings)
         self._stale = QTimer(self, singleShot=True, interval=STALE_AFTER)
         self._stale.timeout.connect(lambda: self._set_stale(True))
         self.following = Following(self, self.selection)
@@ -169,14 +155,18 @@ class Workspace(QWidget):
         if theme.text_scale != self._scale:
             self._scale = theme.text_scale
             self.fold_tray(self.tray.is_folded)
-        self.strip.setMinimumWidth(theme.px(LEAST_STRIP))
-        self.strip.setMaximumWidth(theme.px(MOST_STRIP))
+        self.strip.setMinimumWidth(LEAST_STRIP)
+        self.strip.setMaximumWidth(max(theme.px(MOST_STRIP), MOST_STRIP))
         self.tray.setMinimumHeight(theme.px(34))
 
     def restore_sizes(self) -> None:
         """Take the sizes that were left the last time, or those of the design."""
         theme = self._look.theme
-        level = self._settings.numbers("sizes/level") or [theme.px(STRIP_WIDTH), 10_000]
+        level = self._settings.numbers("sizes/level")
+        if not level:
+            # Large text has more room for names, but never more than a share of the window.
+            strip = max(min(theme.px(STRIP_WIDTH), int(STRIP_SHARE * self.window().width())), STRIP_WIDTH)
+            level = [strip, max(self.window().width() - strip, 1)]
         self._level.setSizes(level)
         upright = self._settings.numbers("sizes/upright")
         if upright:
@@ -231,6 +221,7 @@ class Workspace(QWidget):
         document.opened.connect(self._take_survey)
         document.changed.connect(self.show_states)
         document.reduced.connect(self._take_result)
+        document.not_reduced.connect(self._take_refusal)
         document.working.connect(self._take_working)
         self._look.depth_changed.connect(self._change_depths)
         self._look.changed.connect(self._measure)
@@ -243,9 +234,19 @@ class Workspace(QWidget):
     # -- results ---------------------------------------------------------------------------------------------
 
     def _take_survey(self) -> None:
-        self.shown = None
+        self.shown, self._why_not = None, ""
         self.written, self._written_words = (), ""
+        # A question about the rows of the survey before must not be answered about those of this one.
+        if self.reasons.isVisible():
+            self.reasons.let_be()
+        self.selection.point()
         self.selection.choose("reading", ())
+        self.docket.set_findings((), empty=REDUCING)
+        self.tray.set_state("docket", "")
+        self.handover.set_findings(())
+        self.handover.say("")
+        self.settle.set_visit(None)
+        self.neighbours.set_empty()
         wanted = self._settings.text(f"stage/{self._document.folder}", states.READINGS)
         self.stage = wanted if wanted in states.STAGES else states.READINGS
         self.strip.set_nothing()
@@ -259,36 +260,61 @@ class Workspace(QWidget):
 
     def _take_working(self, working: bool) -> None:
         if working:
+            self._why_not = ""
             self._stale.start()
         else:
             self._stale.stop()
             self._set_stale(False)
 
     def _set_stale(self, stale: bool) -> None:
-        for view in (self.ledger, self.tracks, self.times, self.strip):
+        for view in (self.ledger, self.tracks, self.times, self.strip, self.fan):
             view.set_stale(stale)
-        self.show_states(working=stale)
+        self.show_states(working=stale and not self._why_not)
 
     def _take_result(self) -> None:
         document = self._document
         assert document.reduced_case is not None and document.results is not None
-        first = self.shown is None
-        self.written, self._written_words = (), ""
-        self.shown = shown(document.reduced_case, document.results, self._look.depth)
-        self._show_survey(fresh=first)
+        before = self.shown
+        self.written, self._written_words, self._why_not = (), "", ""
+        after = shown(document.reduced_case, document.results, self._look.depth)
+        selection = self.selection
+        if before is not None:
+            # Rows of the result before are other rows, or none, in this one.
+            selection.point()
+            rows = carried(before, after, selection.level, selection.rows)
+            self.shown = None
+            selection.choose(selection.level, rows)
+        self.shown = after
+        self._show_survey(fresh=before is None)
+
+    def _take_refusal(self, error: Exception) -> None:
+        """The present case cannot be reduced: the numbers that stand are those of another one."""
+        self._why_not = CANNOT_REDUCE
+        if self.shown is None:
+            self.docket.set_findings((), empty=CANNOT_REDUCE)
+            self._show_stage()
+        else:
+            self._set_stale(True)
 
     def _show_survey(self, *, fresh: bool) -> None:
         assert self.shown is not None
         plate, one = self.shown.plate, self.shown
         self.strip.set_plate(plate, upward=one.scale.upward)
         if fresh or self.selection.whole != plate.depth_range:
-            self.selection.hold(plate.depth_range)
-        self.docket.set_findings(one.results.findings)
-        self.tray.set_state("docket", counted_findings(one.results.findings))
-        self.handover.set_findings(one.results.findings)
+            self.selection.hold(plate.depth_range, window=None if fresh else self.selection.window)
         self._show_stage(fresh=fresh)
         self.following.show_window()
         self.following.show_chosen()
+        # The densities are painted first; what is written about them follows in the same breath.
+        self._findings_later.start()
+
+    def _show_findings(self) -> None:
+        if self.shown is None:
+            return
+        findings = self.shown.results.findings
+        self.docket.set_findings(findings)
+        self.tray.set_state("docket", counted_findings(findings))
+        self.handover.set_findings(findings)
 
     def _change_depths(self) -> None:
         if self.shown is None:
@@ -309,7 +335,11 @@ class Workspace(QWidget):
 
     def go_to_stage(self, stage: str) -> None:
         """Bring a stage to the front; what is chosen is carried over to its rows."""
-        if stage == self.stage or self._document.survey is None:
+        if self._document.survey is None:
+            return
+        # What kept the survey from being seen (another folder that could not be read) is put away.
+        self.front.setCurrentWidget(self.body)
+        if stage == self.stage:
             return
         if self.shown is not None and stage in LEVELS and self.selection.level in LEVELS.values():
             rows = self.shown.converted(self.selection.level, self.selection.rows, LEVELS[stage])
@@ -336,66 +366,23 @@ class Workspace(QWidget):
         self.page_keys = tuple(page.key for page in pages)
         self.tray.set_pages(pages)
 
-    def _table(self) -> LedgerTable | None:
-        document, one = self._document, self.shown
-        if self.stage == states.READINGS and document.case is not None:
-            return readings_table(document.case if one is None else one.case, one, self._look.depth)
-        if one is None:
-            return None
-        if self.stage == states.DRIFT:
-            return drift_table(one)
-        if self.stage == states.REDUCTION:
-            return reduction_table(one)
-        if self.stage == states.DENSITY:
-            return density_table(one)
-        return handover_table(one, self.written)
-
     def _show_stage(self, *, fresh: bool = False) -> None:
-        table = self._table()
+        case = self._document.case
+        table = stage_table(self.stage, case, self.shown, self._look.depth, self.written)
         if table is None:
-            self.ledger.set_empty("The survey is being reduced.")
+            self.ledger.set_table(empty_table())
+            self.ledger.set_empty(self._why_not or REDUCING)
         else:
             if not len(table):
                 self.ledger.set_empty(EMPTY[self.stage])
             self.ledger.set_table(table)
         self.body.set_fan(FANS.get(self.stage))
         self._share()
-        self._show_plots()
+        show_plots(self, self._look, case, self.shown, self._why_not or REDUCING)
         self.following.show_fan()
         self.show_states()
         if fresh and self.stage in FANS and self.ledger.in_depth_order():
             self.following.ledger_moved()
-
-    def _show_plots(self) -> None:
-        one, case = self.shown, self._document.case
-        if self.stage in TIMED:
-            self.plots.setCurrentWidget(self.times)
-            if self.stage == states.READINGS and case is not None:
-                plots = reading_plots(case if one is None else one.case, one)
-                self.times.set_plots(plots, noun="reading")
-            elif one is not None:
-                plots = drift_plots(one)
-                self.times.set_plots(plots, DRIFT_WEIGHTS[: len(plots)])
-            else:
-                self.times.set_plots(())
-                self.times.set_empty("The survey is being reduced.")
-        elif self.stage == states.HANDOVER:
-            self.plots.setCurrentWidget(self.handover)
-        else:
-            self.plots.setCurrentWidget(self.tracks)
-            if one is not None:
-                bars = self._look.theme.bars
-                tracks = density_tracks(one, bars) if self.stage == states.DENSITY else reduction_tracks(one, bars)
-                self.tracks.set_tracks(
-                    tracks,
-                    depth_label=one.plate.depth_label,
-                    unit=one.plate.depth_unit,
-                    upward=one.scale.upward,
-                    stations=[station.depth for station in one.plate.stations],
-                    markers=one.plate.markers,
-                    measured=one.plate.depth_range,
-                    stage=self.stage,
-                )
 
     def show_states(self, *, working: bool = False) -> None:
         """Tell the stages' figures and states."""
@@ -403,10 +390,11 @@ class Workspace(QWidget):
         if document.survey is None:
             self.stage_line.set_stages(states.nothing_open())
             return
-        results = None if self.shown is None else self.shown.results
+        # Of a case that cannot be reduced nothing is known: the figures of the one before would speak for it.
+        results = None if self.shown is None or self._why_not else self.shown.results
         self.stage_line.set_stages(
             states.stage_states(
-                document.survey, results, current=self.stage,
+                document.survey, results, visits=self.shown.visits if self.shown else None, current=self.stage,
                 working=working and results is not None,
                 written=self._written_words,
             )
@@ -456,6 +444,11 @@ class Workspace(QWidget):
         self._set_pages()
         self.fold_tray(True)
         self.show_states()
+
+    @property
+    def why_not(self) -> str:
+        """Why there is no result of the present case; empty where there is one, or one is on its way."""
+        return self._why_not
 
     def set_written(self, names: Sequence[str], words: str) -> None:
         """The outputs of the present result were written."""

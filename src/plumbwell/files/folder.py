@@ -147,7 +147,7 @@ def _open(path: str | os.PathLike[str]) -> tuple[Path, bytes]:
         if unfit.mend == MISSING_MEND:
             file = shown(given if named else given / FILE, LONGEST_PATH)
             refused.mend = f"put the file there; or {mend}"
-    except (OSError, ValueError):
+    except (OSError, ValueError, RuntimeError):  # RuntimeError: links that lead in a circle, before Python 3.13
         refused = UnfitFile("a name that cannot be opened", "a survey folder", mend)
     problem = Problem(
         file=file,

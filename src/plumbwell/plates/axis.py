@@ -10,6 +10,7 @@ from dataclasses import dataclass
 from math import ceil, floor, log10
 
 import numpy as np
+from PySide6.QtCore import QRectF
 from PySide6.QtGui import QPainter
 
 from plumbwell.plates.lettering import draw_text, text_height, text_width
@@ -103,7 +104,7 @@ def multiples(step: float, low: float, high: float) -> list[float]:
 
 
 def value_ticks(
-    theme: Theme, low: float, high: float, *, left: float, width: float
+    theme: Theme, low: float, high: float, *, left: float, width: float, counted_from: float = 0.0
 ) -> list[tuple[float, str, float]]:
     """Return the ticks of a value axis, their numbers and the px columns on which the numbers are centred.
 
@@ -116,6 +117,8 @@ def value_ticks(
         Ends of the scale.
     left, width : float
         Left edge and width of the axis in px.
+    counted_from : float
+        What the numbers count from.
     """
     best: list[tuple[float, str, float]] = []
     for gap in (8.0, 4.0):
@@ -124,7 +127,7 @@ def value_ticks(
             row: list[tuple[float, str, float]] = []
             end = left - gap
             for tick in multiples(step, low, high):
-                words = number(tick, step_decimals(step))
+                words = number(tick - counted_from, step_decimals(step))
                 half = text_width(theme, "small", words) / 2
                 middle = left + (tick - low) / (high - low) * width
                 middle = min(max(middle, left + half), left + width - half)
@@ -209,6 +212,19 @@ def number_baseline(theme: Theme, frame: Frame, depth: float) -> float:
     """Return the baseline of a number on the tracks' depth axis: beside its depth, and inside the frame."""
     cap = text_height(theme, "small")
     return min(max(frame.y(depth) + cap / 2, frame.top + cap + 4), frame.base - 1)
+
+
+def number_boxes(theme: Theme, frame: Frame, measured: tuple[float, float]) -> list[QRectF]:
+    """Return the boxes of the numbers on the tracks' depth axis, in px."""
+    depths = numbered_depths(frame, measured)
+    graduation = track_graduation(frame.depth_base - frame.depth_top, frame.base - frame.top)
+    texts = [number(frame.number_of(depth), step_decimals(graduation.numbered)) for depth in depths]
+    widths = [text_width(theme, "small", words) for words in texts]
+    right, cap = frame.left + NUMBERS_LEFT + max(widths, default=0.0), text_height(theme, "small")
+    return [
+        QRectF(right - width, number_baseline(theme, frame, depth) - cap, width, cap)
+        for depth, width in zip(depths, widths, strict=True)
+    ]
 
 
 def draw_depth_axis(

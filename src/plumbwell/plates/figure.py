@@ -30,7 +30,7 @@ from plumbwell.plates.layout import (
 )
 from plumbwell.plates.ledger_excerpt import Excerpt, draw_excerpt
 from plumbwell.plates.lettering import draw_text, text_width
-from plumbwell.plates.naming import draw_curve_names, draw_layer_names
+from plumbwell.plates.naming import draw_base_name, draw_curve_names, draw_layer_names
 from plumbwell.plates.painting import hairline_across, painting
 from plumbwell.plates.plate import SurveyPlate
 from plumbwell.plates.strip import KEY_HEIGHT, draw_strip, draw_tone_key
@@ -127,6 +127,7 @@ def _draw_tracks(
     for index, (track, own) in enumerate(zip(tracks, track_frames(theme, tracks, frame), strict=True)):
         draw_track_head(painter, track, own, theme)
         boxes = draw_track(painter, track, own, theme)
+        boxes += draw_base_name(painter, track, own, theme, taken=boxes)
         boxes += draw_curve_names(painter, track, own, theme, taken=boxes)
         if index == names_stand:
             draw_layer_names(painter, track, own, theme, markers=plate.names_in_view, taken=boxes)

@@ -16,6 +16,11 @@ from plumbwell.reduction.positions import WellPath, well_path
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Array
 
+BETWEEN = 65
+"""Places between two stations at which the path is asked: an arc is then followed to a millimetre."""
+
+ROUNDING = 1e-6
+
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class HoleDepths:
@@ -53,6 +58,30 @@ class HoleDepths:
         """The shown depth of places given by vertical depth in m, where vertical depth or elevation is shown."""
         down = tvd if self.scale.kind == TVD else tvd - self.datum_elevation
         return down / self.scale.factor
+
+    def place_at(self, results: Results, depth: float) -> tuple[float, float] | None:
+        """Measured depth of the mark and vertical depth of the sensor, m, at a shown depth among the column's stations.
+
+        Between two stations they follow the path; what the sensor is off the mark changes evenly from one to the
+        other. None above the first station and below the last; the measured depth is NaN where there is none.
+        """
+        column = np.flatnonzero(self.column)
+        order = column[np.argsort(self.stations[column], kind="stable")]
+        at = self.stations[order]
+        if not len(order) or not at[0] - ROUNDING <= depth <= at[-1] + ROUNDING:
+            return None
+        down = depth * self.scale.factor
+        if not self.measured:
+            return float("nan"), down if self.scale.kind == TVD else down + self.datum_elevation
+        lower = min(int(np.searchsorted(at, depth, side="right")), len(order) - 1)
+        ends = order[[max(lower - 1, 0), lower]]
+        located = results.stations.located
+        mark, tvd = located.mark_depth.values[ends], located.positions.tvd.values[ends]
+        off = tvd - self.path.at(mark)[0]
+        marks = np.linspace(mark[0], mark[1], BETWEEN)
+        verticals = self.path.at(marks)[0] + np.linspace(off[0], off[1], BETWEEN)
+        shown = marks / self.scale.factor if self.scale.kind == MD else self.of_vertical(verticals)
+        return float(np.interp(depth, shown, marks)), float(np.interp(depth, shown, verticals))
 
 
 def hole_depths(results: Results, scale: DepthScale | None = None) -> HoleDepths:

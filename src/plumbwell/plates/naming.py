@@ -26,6 +26,7 @@ from plumbwell.plates.lettering import draw_text, elided, text_box, text_height,
 from plumbwell.plates.polyline import log_pieces
 from plumbwell.plates.theme import Theme
 from plumbwell.plates.track import Track
+from plumbwell.plates.track_row import base_in_head, base_words
 from plumbwell.survey.column import Array
 
 CLEAR = 6.0
@@ -269,6 +270,48 @@ def draw_layer_names(
                 boxes.append(box)
                 break
     return boxes
+
+
+def draw_base_name(
+    painter: QPainter,
+    track: Track,
+    frame: Frame,
+    theme: Theme,
+    *,
+    taken: Sequence[QRectF] = (),
+    knock_out: bool = True,
+) -> list[QRectF]:
+    """Draw what the tick numbers of a track count from where its head has no room for it; return its box.
+
+    It stands under the head, or further down where curves leave room first.
+    """
+    words = base_words(track)
+    width, cap = text_width(theme, "small", words), text_height(theme, "small")
+    if not words or base_in_head(theme, track, frame) or width > frame.right - frame.left:
+        return []
+    rows = np.arange(frame.top + cap + CLEAR, frame.base - CLEAR, 4.0)
+    if not len(rows):
+        return []
+    sides = [extent.within(rows - cap - 3, rows + 5) for extent in all_extents(track, frame, theme.bars)]
+    left, right = np.min([side[0] for side in sides], axis=0), np.max([side[1] for side in sides], axis=0)
+    for row, low, high in zip(rows.tolist(), left.tolist(), right.tolist(), strict=True):
+        for x, free in ((frame.right - width, high + CLEAR), (frame.left + 2, frame.right)):
+            box = text_box(theme, "small", words, x=x, baseline=row)
+            beside = x >= free if x > frame.left + 2 else x + width + CLEAR <= low
+            if beside and not any(box.adjusted(-3, -3, 3, 3).intersects(used) for used in taken):
+                return [
+                    draw_text(
+                        painter,
+                        theme,
+                        words,
+                        x=x,
+                        baseline=row,
+                        face="small",
+                        role="muted",
+                        knock_out=knock_out,
+                    )
+                ]
+    return []
 
 
 def _name_rows(theme: Theme, track: Track, frame: Frame, edges: Sequence[float]) -> list[list[tuple[str, float]]]:

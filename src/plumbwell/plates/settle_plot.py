@@ -78,7 +78,9 @@ class SettlePlot:
             values=(0.0, 0.0),
             band=None if self.mean_sd is None or not isfinite(self.mean_sd) else (self.mean_sd, self.mean_sd),
         )
-        run = RunPanel(name="", run_index=self.run_index, points=points, lines=(mean,))
+        # Of one reading there is no mean beside itself.
+        lines = (mean,) if len(seconds) > 1 else ()
+        run = RunPanel(name="", run_index=self.run_index, points=points, lines=lines)
         return TimePlot(title=self.title, unit=self.unit, panels=(run,), zero_line=True, least_span=LEAST_SPAN)
 
 
@@ -89,8 +91,9 @@ def settle_layout(plot: TimePlot, theme: Theme, *, width: float, height: float) 
     scale = UprightScale(top=top, base=max(height - theme.px(FOOT), top + 2), low=low, high=high)
     left = max(float(theme.px(GUTTER)), numbers_width(theme, upright_ticks(theme, scale)) + theme.px(12))
     right = width - text_width(theme, "small", MEAN) - theme.px(8)
-    times = [time for line in plot.panels[0].lines for time in line.times]
-    span = RunSpan(run_index=plot.panels[0].run_index, name="", first=min(times), last=max(times))
+    seconds = plot.panels[0].points.times
+    times = [float(seconds.min()) - LINE_BEYOND, float(seconds.max()) + LINE_BEYOND]
+    span = RunSpan(run_index=plot.panels[0].run_index, name="", first=min(times), last=max(times), margin=0.0)
     axis = time_axis((span,), theme, left=left, right=right, view=TimeView())
     frame = PlotFrame(head_top=0.0, title_right=width, scale=scale)
     return TimeLayout(width=width, height=height, axis=axis, frames=(frame,))
@@ -123,7 +126,7 @@ def draw_settle_frame(painter: QPainter, plot: TimePlot, layout: TimeLayout, the
     draw_upright_numbers(painter, theme, scale, values, left=0.0, right=numbers_right)
     foot = scale.base + theme.px(8) + cap
     for panel in layout.axis.shown():
-        ticks = minute_ticks(theme, panel)
+        ticks = minute_ticks(theme, panel) if plot.panels[0].lines else [(0.0, number(0.0, 0))]
         for time, _ in ticks:
             hairline_down(painter, panel.x(time), scale.top, scale.base, theme.colour("hair"), theme.hairline)
         draw_upright_grid(painter, theme, scale, values, left=panel.left, right=panel.right, zero=False)
@@ -141,6 +144,8 @@ def draw_settle_frame(painter: QPainter, plot: TimePlot, layout: TimeLayout, the
                 align="middle",
                 room=(panel.left - 1, layout.width),
             )
+        if not plot.panels[0].lines:
+            continue
         end = min(panel.x(time) for line in plot.panels[0].lines for time in line.times[-1:])
         draw_text(
             painter,

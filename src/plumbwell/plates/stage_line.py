@@ -139,9 +139,18 @@ def stage_places(stages: Sequence[StageState], width: float) -> list[StagePlace]
 
 
 def shown_figure(theme: Theme, stage: StageState, place: StagePlace) -> str:
-    """Return a stage's figure as far as it has room: what does not fit goes clause by clause, no number is cut."""
+    """Return a stage's figure as far as it has room: what does not fit goes clause by clause, no number is cut.
+
+    Of a stage that wants a look the last clause, the count of its findings, stays longest.
+    """
     room = place.right - place.figure_left
     clauses = stage.figure.split(", ")
+    if stage.state in ("look", "error"):
+        for count in range(len(clauses) - 1, 0, -1):
+            words = ", ".join([*clauses[:count], clauses[-1]])
+            if text_width(theme, "small", words) <= room:
+                return words
+        clauses = clauses[-1:]
     for count in range(len(clauses), 0, -1):
         words = ", ".join(clauses[:count]) + (ELLIPSIS if count < len(clauses) else "")
         if text_width(theme, "small", words) <= room:

@@ -6,7 +6,7 @@ Turns values in the units of people into tracks with their value scales, for fig
 from __future__ import annotations
 
 from collections.abc import Sequence
-from math import sqrt
+from math import ceil, floor, log10, sqrt
 from statistics import median
 
 import numpy as np
@@ -25,6 +25,8 @@ CURVE_DASHES = ((), (6.0, 3.0), (1.5, 2.5), (7.0, 2.5, 1.5, 2.5))
 FILLS = 4
 OTHERS = "others"
 MOST_USUAL, BAR_ROOM = 3.0, 1.2
+LONG_NUMBERS = 1e4
+"""From here on the numbers of a scale are too long for its ticks, and count from a round one."""
 
 
 def _station_track(plate: SurveyPlate, *, anomaly: bool, weight: float, bars: int) -> Track | None:
@@ -44,6 +46,14 @@ def _station_track(plate: SurveyPlate, *, anomaly: bool, weight: float, bars: in
         narrow=False,
         bars=bars,
     )
+
+
+def round_below(low: float, high: float) -> float:
+    """Return what the numbers of a scale count from: 0, or a round number below where they would be long."""
+    if low < LONG_NUMBERS:
+        return 0.0
+    unit = 10.0 ** max(ceil(log10(high - low)), 2)
+    return unit * floor(low / unit)
 
 
 def point_track(
@@ -85,6 +95,7 @@ def point_track(
         decimals=column_decimals(sds, default=3),
         signed=signed,
         narrow=narrow,
+        counted_from=round_below(low, high),
     )
 
 

@@ -57,12 +57,13 @@ def days(first: float, last: float, *, year: bool = False) -> str:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class RunSpan:
-    """A run and the times of its first and last value."""
+    """A run and the times of its first and last value; with `margin` s of room at both ends, by default some."""
 
     run_index: int
     name: str
     first: float
     last: float
+    margin: float | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -213,7 +214,7 @@ class TimeAxis:
 
 
 def _margined(span: RunSpan) -> tuple[float, float]:
-    margin = max(MARGIN_SHARE * (span.last - span.first), LEAST_MARGIN)
+    margin = max(MARGIN_SHARE * (span.last - span.first), LEAST_MARGIN) if span.margin is None else span.margin
     return span.first - margin, span.last + margin
 
 

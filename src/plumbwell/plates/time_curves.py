@@ -130,8 +130,15 @@ def _draw_links(painter: QPainter, theme: Theme, panel: Panel, run: RunPanel, sc
 def point_places(panel: Panel, run: RunPanel, scale: UprightScale) -> tuple[Floats, Floats, Indexes]:
     """Return columns and rows in px of all points, and which of them lie in the panel."""
     x, y = panel_columns(panel, run.points.times), scale_rows(scale, run.points.values)
-    within = np.isfinite(y) & (x >= panel.left) & (x <= panel.right) & (y >= scale.top) & (y <= scale.base)
+    edge = _left_out_edge(run)
+    within = np.isfinite(y) & (x >= panel.left) & (x <= panel.right)
+    within &= (y >= scale.top + edge) & (y <= scale.base - edge)
     return x, y, np.flatnonzero(within)
+
+
+def _left_out_edge(run: RunPanel) -> Floats:
+    """Return how far inside the plot each point must lie, px: a cross at the edge would strike through the head."""
+    return np.where(run.points.excluded, REACH + 1.0, 0.0)
 
 
 def point_reach(layout: TimeLayout, plot: TimePlot, scale: UprightScale) -> float:
@@ -183,12 +190,13 @@ def beyond_scale(
     """
     points = run.points
     x = panel_columns(panel, points.times)
-    outside = np.isfinite(points.values) & ((points.values < scale.low) | (points.values > scale.high))
+    y, edge = scale_rows(scale, points.values), _left_out_edge(run)
+    outside = np.isfinite(points.values) & ((y < scale.top + edge) | (y > scale.base - edge))
     places = np.flatnonzero(outside & (x >= panel.left) & (x <= panel.right))
     middle = (scale.low + scale.high) / 2
     found: list[tuple[float, bool, float, bool]] = []
     for place in places[np.argsort(-np.abs(points.values[places] - middle))].tolist():
-        above = bool(points.values[place] > scale.high)
+        above = bool(points.values[place] > middle)
         if any(above == other and abs(x[place] - column) < theme.px(48) for column, other, _, _ in found):
             continue
         found.append((float(x[place]), above, float(points.values[place]), bool(points.excluded[place])))

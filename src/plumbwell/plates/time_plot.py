@@ -21,7 +21,7 @@ Indexes = NDArray[np.intp]
 Flags = NDArray[np.bool_]
 
 BARS_HELD = 2.0
-PAD_SHARE, LINE_SHARE, LEFT_OUT_SHARE = 0.06, 0.25, 0.5
+PAD_SHARE, LINE_SHARE, LEFT_OUT_SHARE = 0.06, 0.25, 0.25
 FENCE = 3.0
 LEAST_JUDGED = 4
 

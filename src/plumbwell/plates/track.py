@@ -229,6 +229,8 @@ class Track:
         Names at the curves; empty for none.
     narrow : bool
         Shown where there is little room too.
+    counted_from : float
+        What the tick numbers count from; where it is not 0 it is told at the track.
     """
 
     title: str
@@ -249,6 +251,7 @@ class Track:
     beside_name: str = ""
     line_name: str = ""
     narrow: bool = True
+    counted_from: float = 0.0
     step_columns: StepColumns = field(init=False, repr=False)
     beside_columns: StepColumns = field(init=False, repr=False)
     point_columns: PointColumns = field(init=False, repr=False)

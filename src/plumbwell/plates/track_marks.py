@@ -6,6 +6,7 @@ All of it is cheap to paint, so that curves need not be painted anew when the po
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
 from PySide6.QtCore import QPointF, QRectF
@@ -44,8 +45,13 @@ def merged_spans(spans: Sequence[Span]) -> list[Span]:
     return merged
 
 
-def draw_selection_bands(painter: QPainter, frame: Frame, theme: Theme, spans: Sequence[Span]) -> None:
-    """Draw selected depths as tinted bands with accent edges across a frame; a span of equal ends is a line."""
+def draw_selection_bands(
+    painter: QPainter, frame: Frame, theme: Theme, spans: Sequence[Span], *, spared: Sequence[QRectF] = ()
+) -> None:
+    """Draw selected depths as tinted bands with accent edges across a frame; a span of equal ends is a line.
+
+    An edge does not strike through the words whose boxes are `spared`.
+    """
     for top, base in merged_spans(spans):
         if base < frame.depth_top or top > frame.depth_base:
             continue
@@ -55,7 +61,12 @@ def draw_selection_bands(painter: QPainter, frame: Frame, theme: Theme, spans: S
             painter.fillPath(shape, theme.colour("tint"))
         for depth in {top, base}:
             if frame.depth_top <= depth <= frame.depth_base:
-                hairline_across(painter, frame.left, frame.right, frame.y(depth), theme.colour("accent"))
+                y, left = frame.y(depth), frame.left
+                for box in spared:
+                    if box.top() - 1 <= whole(y) <= box.bottom() + 1:
+                        hairline_across(painter, left, box.left() - 3, y, theme.colour("accent"))
+                        left = box.right() + 3
+                hairline_across(painter, left, frame.right, y, theme.colour("accent"))
 
 
 def draw_chosen_steps(painter: QPainter, track: Track, frame: Frame, theme: Theme, spans: Sequence[Span]) -> None:
@@ -156,21 +167,26 @@ def _clear(painter: QPainter, frame: Frame, theme: Theme, box: QRectF, spans: Se
     painter.setClipRect(box)
     painter.fillRect(box, theme.colour("ground", alpha))
     if any(frame.y(top) <= box.bottom() and frame.y(base) >= box.top() for top, base in spans):
-        draw_selection_bands(painter, frame, theme, spans)
+        # No edge of a band strikes through the words; where nothing is written it runs on.
+        draw_selection_bands(painter, frame, theme, spans, spared=(box,) if alpha < 255 else ())
     painter.restore()
 
 
-def draw_readout(
-    painter: QPainter, track: Track, frame: Frame, theme: Theme, depth: float, *, spans: Sequence[Span] = ()
-) -> list[QRectF]:
-    """Draw what a track shows at a depth just above the crosshair, on the side that its curves leave free.
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PlacedWords:
+    """Words of a read-out with their colour role, place and box."""
 
-    Near the upper edge it stands below the line. The boxes of the words are returned.
+    words: str
+    role: str
+    x: float
+    baseline: float
+    box: QRectF
 
-    Parameters
-    ----------
-    spans : sequence of (float, float)
-        Selected depths, which are seen behind the words.
+
+def placed_readout(track: Track, frame: Frame, theme: Theme, depth: float) -> list[PlacedWords]:
+    """Return what a track shows at a depth with its place: just above the crosshair, on the side left free.
+
+    Near the upper edge it stands below the line.
     """
     reach = BAR_REACH * (frame.depth_base - frame.depth_top) / (frame.base - frame.top)
     pad = theme.px(READOUT_PAD)
@@ -186,26 +202,25 @@ def draw_readout(
     taken = [extent for rows in all_extents(track, frame) if (extent := rows.between(upper, lower))]
     free_left = min((extent[0] for extent in taken), default=frame.right) - frame.left
     free_right = frame.right - max((extent[1] for extent in taken), default=frame.left)
-    boxes = []
+    placed = []
     for number, pieces in enumerate(lines):
+        baseline = first + number * line
         widths = [text_width(theme, "small", words) for words, _ in pieces]
         x = left if free_left >= free_right else max(right - sum(widths), left)
         for (words, role), width in zip(pieces, widths, strict=True):
-            box = text_box(theme, "small", words, x=x, baseline=first + number * line)
-            _clear(painter, frame, theme, knocked_out(box), spans, KNOCK_OUT)
-            boxes.append(
-                draw_text(
-                    painter,
-                    theme,
-                    words,
-                    x=x,
-                    baseline=first + number * line,
-                    face="small",
-                    role=role,
-                )
-            )
+            box = text_box(theme, "small", words, x=x, baseline=baseline)
+            placed.append(PlacedWords(words=words, role=role, x=x, baseline=baseline, box=box))
             x += width
-    return boxes
+    return placed
+
+
+def draw_readout(
+    painter: QPainter, placed: Sequence[PlacedWords], frame: Frame, theme: Theme, *, spans: Sequence[Span] = ()
+) -> None:
+    """Draw the read-out of a track; `spans` are selected depths, which are seen behind the words."""
+    for one in placed:
+        _clear(painter, frame, theme, knocked_out(one.box), spans, KNOCK_OUT)
+        draw_text(painter, theme, one.words, x=one.x, baseline=one.baseline, face="small", role=one.role)
 
 
 def draw_depth_tag(

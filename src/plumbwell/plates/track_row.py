@@ -11,6 +11,7 @@ from PySide6.QtGui import QPainter
 
 from plumbwell.plates.axis import Frame, head_height, title_baseline, unit_baseline, value_ticks
 from plumbwell.plates.lettering import draw_text, text_width
+from plumbwell.plates.numbers import number
 from plumbwell.plates.painting import hairline_across, hairline_down
 from plumbwell.plates.shapes import dots_across
 from plumbwell.plates.theme import Theme
@@ -19,6 +20,9 @@ from plumbwell.plates.track import Track
 GAP = 12
 AFTER_TITLE = 5
 WIDEST_TITLE = 190
+BASE_WORDS = "+\u00a0"
+BASE_ROOM = 26
+"""Px beside what the numbers count from that are left to the curve."""
 
 
 def track_gap(theme: Theme) -> int:
@@ -27,13 +31,18 @@ def track_gap(theme: Theme) -> int:
 
 
 def least_widths(theme: Theme, tracks: Sequence[Track]) -> list[float]:
-    """Return the width in px at which each track has room for its title, unless that is very long."""
+    """Return the width in px at which each track has room for its title, and for what its numbers count from.
+
+    A very long title has no say."""
     return [
-        min(
-            text_width(theme, "emphasis", track.title)
-            + text_width(theme, "small", track.unit)
-            + theme.px(AFTER_TITLE + 3),
-            theme.px(WIDEST_TITLE),
+        max(
+            min(
+                text_width(theme, "emphasis", track.title)
+                + text_width(theme, "small", track.unit)
+                + theme.px(AFTER_TITLE + 3),
+                theme.px(WIDEST_TITLE),
+            ),
+            text_width(theme, "small", base_words(track)) + theme.px(BASE_ROOM) if track.counted_from else 0.0,
         )
         for track in tracks
     ]
@@ -107,14 +116,27 @@ def draw_grid(
         )
 
 
+def base_words(track: Track) -> str:
+    """Return what the tick numbers of a track count from, as "+ 981 400"; empty where that is 0."""
+    return f"{BASE_WORDS}{number(track.counted_from, 0)}" if track.counted_from else ""
+
+
+def base_in_head(theme: Theme, track: Track, frame: Frame) -> bool:
+    """Return whether the head of a track has room for what its numbers count from, after title and unit."""
+    words = f"{track.unit} {base_words(track)}"
+    title = text_width(theme, "emphasis", track.title) + theme.px(AFTER_TITLE)
+    return bool(track.counted_from) and title + text_width(theme, "small", words) <= frame.right - frame.left
+
+
 def draw_track_head(painter: QPainter, track: Track, frame: Frame, theme: Theme) -> None:
     """Draw a track's title, unit, tick numbers and ticks above its frame, and its value grid inside it.
 
     The ink line under the head is drawn once for the whole plate, so that it is continuous.
     """
+    unit = f"{track.unit} {base_words(track)}" if base_in_head(theme, track, frame) else track.unit
     head, gap = frame.top - head_height(theme), theme.px(AFTER_TITLE)
     baseline = head + title_baseline(theme)
-    unit_width = text_width(theme, "small", track.unit)
+    unit_width = text_width(theme, "small", unit)
     box = draw_text(
         painter,
         theme,
@@ -127,7 +149,7 @@ def draw_track_head(painter: QPainter, track: Track, frame: Frame, theme: Theme)
     draw_text(
         painter,
         theme,
-        track.unit,
+        unit,
         x=box.right() + gap,
         baseline=baseline,
         face="small",
@@ -136,7 +158,10 @@ def draw_track_head(painter: QPainter, track: Track, frame: Frame, theme: Theme)
         room=(box.right() + gap, max(frame.right + 0.5, box.right() + gap)),
     )
     width = frame.right - frame.left
-    for tick, words, middle in value_ticks(theme, track.low, track.high, left=frame.left, width=width):
+    ticks = value_ticks(
+        theme, track.low, track.high, left=frame.left, width=width, counted_from=track.counted_from
+    )
+    for tick, words, middle in ticks:
         x = track.x(tick, frame)
         draw_text(
             painter,

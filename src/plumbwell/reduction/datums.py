@@ -172,8 +172,8 @@ def _tare_shifts(adjustment: Adjustment, parts: Parts, datum_of_part: Index) -> 
     shift = np.zeros(len(basis.tares))
     before = [level(part) for part in parts.of_run.tolist()]
     for number in sorted(range(len(basis.tares)), key=lambda one: basis.tares[one].time):
-        if basis.tares[number].size is not None:
-            continue
+        if basis.tares[number].size is not None or parts.of_tare[number] < 0:
+            continue  # of a stated size; or nothing is read before the next tare, so that there is no level to refer to
         run, after = int(basis.tare_run[number]), level(int(parts.of_tare[number]))
         shift[number] = after - before[run]
         before[run] = after

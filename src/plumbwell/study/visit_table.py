@@ -84,9 +84,19 @@ class DriftLine:
     time : (n,) array
         UTC, s since 2000-01-01, rising; a tare has a place just before and one at its time.
     drift, sd : (n,) arrays, m/s2
-        Drift and tares, run bias left out; sd of the run's line against the gravity of the stations.
+        Drift and tares, run bias left out, and the sd of the line among its own visits (see Notes).
     rate, rate_sd : float
         Mean drift rate over the run, m/s3, and its sd; the sd NaN where the rate is held.
+
+    Notes
+    -----
+    The sd is that of bias + drift + tares at each time plus the mean gravity of the stations that are read again or
+    tied, weighted as the run's visits there are. It is the band that a line fitted through points has: narrowest amid
+    those visits, where it is one over the root of their summed weights, and wider towards the ends. The sd of drift
+    alone would be 0 at the run's first reading, for drift counts from there, and the sd of bias + drift alone would
+    be that of the datum, which no visit of the run shows. Visits of stations that are read once tell nothing of drift
+    and do not narrow the band. Between tares each stretch is taken among its own visits: how far the stretches are
+    apart is told by the sd of the tare.
     """
 
     run: int
@@ -97,14 +107,23 @@ class DriftLine:
     rate_sd: float
 
 
-def drift_lines(results: Results) -> tuple[DriftLine, ...]:
-    """The drift lines of the runs with used readings, in time order."""
-    fit, visits = results.network.adjustment, results.network.visits
-    return tuple(_line(results, fit, int(run)) for run in visits.run_order.tolist())
+def drift_lines(results: Results, table: VisitTable | None = None) -> tuple[DriftLine, ...]:
+    """The drift lines of the runs with used readings, in time order.
+
+    Parameters
+    ----------
+    results : Results
+    table : VisitTable or None
+        The visits of the very same results; None: they are worked out.
+    """
+    visits = visit_table(results) if table is None else table
+    telling = visits.repeated | np.isfinite(visits.residual_sd)
+    return tuple(_line(results, telling, int(run)) for run in results.network.visits.run_order.tolist())
 
 
-def _line(results: Results, fit: Adjustment, run: int) -> DriftLine:
-    basis, shift = fit.basis, results.network.gravity.tare_shift
+def _line(results: Results, telling: NDArray[np.bool_], run: int) -> DriftLine:
+    fit, shift = results.network.adjustment, results.network.gravity.tare_shift
+    basis = fit.basis
     start = float(basis.start[run])
     length = float(results.network.visits.run_length[run])
     jumps = [number for number in range(len(basis.tares)) if int(basis.tare_run[number]) == run]
@@ -130,24 +149,69 @@ def _line(results: Results, fit: Adjustment, run: int) -> DriftLine:
         held = basis.tares[number]
         fixed = held.size if held.size is not None and held.size_sd is None else 0.0
         drift = drift + np.where(after, fixed + float(shift[number]), 0.0)
-    variance = np.einsum("qn,qr,rn->n", terms, fit.solution.border, terms)
+    variance = np.zeros(len(time))
+    edges = [-np.inf, *sorted(basis.tares[number].time for number in jumps), np.inf]
+    for first, last in zip(edges[:-1], edges[1:], strict=True):
+        inside = (time >= first) & (time < last)
+        variance[inside] = _variance_among(fit, _visits_between(fit, telling, run, first, last), terms[:, inside])
     rate, rate_sd = _mean_rate(fit, run)
     return DriftLine(run=run, time=time, drift=drift, sd=np.sqrt(np.maximum(variance, 0.0)), rate=rate, rate_sd=rate_sd)
 
 
+def _visits_between(fit: Adjustment, telling: NDArray[np.bool_], run: int, first: float, last: float) -> Index:
+    """Visits of a run with a used reading from one time to another: those that tell of drift, or else all."""
+    visits = fit.visits
+    members = np.flatnonzero(visits.run == run)
+    pieces = [visits.rows[visits.start[one] : visits.start[one + 1]] for one in members.tolist()]
+    utc = fit.basis.utc[np.concatenate(pieces)]
+    visit = np.repeat(members, [len(piece) for piece in pieces])
+    own = np.unique(visit[(utc >= first) & (utc < last)])
+    if not own.size:
+        own = members
+    return own[telling[own]] if telling[own].any() else own
+
+
+def _variance_among(fit: Adjustment, members: Index, terms: Array) -> Array:
+    """Variance of border terms (q, n) and the mean gravity of the stations of some visits together, (n,)."""
+    solution = fit.solution
+    weight = solution.weight[members]
+    at, where = np.unique(fit.visits.station[members], return_inverse=True)
+    share = np.bincount(where, weight) / weight.sum()
+    # Gravity of a station is that of its visits less what the border puts on them: D^-1 and -D^-1 B.
+    mean = share @ solution.mean[at]
+    off = terms - mean[:, None]
+    # Only the run's own rows of the terms hold anything: with hundreds of runs the rest would take seconds.
+    own = np.flatnonzero(terms.any(axis=1))
+    grown = solution.border[:, own] @ terms[own] - (solution.border @ mean)[:, None]
+    return float(np.sum(share**2 / solution.total[at])) + np.sum(off * grown, axis=0)
+
+
 def _mean_rate(fit: Adjustment, run: int) -> tuple[float, float]:
     """Mean rate of a run's polynomial over the run, and its sd: the powers add, for scaled time ends at 1."""
+    if fit.orders[run] == 0:
+        return float(fit.basis.rate[run]), float("nan")
     length = float(fit.basis.length[run])
     members = [n for n, what in enumerate(fit.design.unknowns) if what.kind == "drift" and what.run == run]
-    if not members:
-        return float(fit.basis.rate[run]), float("nan")
+    if not members:  # nothing determines it: it was held at 0
+        return 0.0, float("nan")
     rate = float(np.sum(fit.solution.unknown[members, 0])) / length
     return rate, float(np.sqrt(np.sum(fit.solution.border[np.ix_(members, members)]))) / length
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class TareInForce:
-    """A tare that was taken out: run code, the tare as listed, its size and sd (None where it is held), m/s2."""
+    """A tare that was taken out.
+
+    Parameters
+    ----------
+    run : int
+        Code of the run.
+    tare : Tare
+        As it is listed.
+    size, sd : float, float or None
+        m/s2. The sd is None where the size is held: as stated, or at 0 where nothing tells it. A tare of unknown size
+        that parts the network has no size at all (NaN), for the levels before and after it cannot be compared.
+    """
 
     run: int
     tare: Tare
@@ -157,18 +221,25 @@ class TareInForce:
 
 def tares_in_force(results: Results) -> tuple[TareInForce, ...]:
     """The tares that were taken out, in time order."""
-    fit, shift = results.network.adjustment, results.network.gravity.tare_shift
-    basis = fit.basis
+    fit, parts = results.network.adjustment, results.network.parts
+    shift, basis = results.network.gravity.tare_shift, fit.basis
+    part_of_run = parts.of_run.tolist()
     found = []
     for number in sorted(range(len(basis.tares)), key=lambda one: (basis.tares[one].time, one)):
         tare, run = basis.tares[number], int(basis.tare_run[number])
+        size, sd = 0.0, None
         unknown = DriftUnknown(kind="tare", run=run, tare=number)
         if tare.size is not None and tare.size_sd is None:
-            found.append(TareInForce(run=run, tare=tare, size=tare.size, sd=None))
-            continue
-        size, sd = fit.unknown(unknown)
-        known = unknown in fit.design.unknowns
-        found.append(TareInForce(run=run, tare=tare, size=size + float(shift[number]), sd=sd if known else None))
+            size = tare.size
+        elif unknown in fit.design.unknowns:
+            size, sd = fit.unknown(unknown)
+        if tare.size is None:
+            after = int(parts.of_tare[number])
+            if after not in (part_of_run[run], -1):  # -1: nothing is read before the next tare
+                size, sd, part_of_run[run] = float("nan"), None, after
+            else:
+                size += float(shift[number])
+        found.append(TareInForce(run=run, tare=tare, size=size, sd=sd))
     return tuple(found)
 
 

@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from plumbwell.desk.table import NUMBER, TEXT, LedgerColumn
+from plumbwell.plates.depth_scale import MD
 from plumbwell.study.finding import SEVERITIES, Finding
 from plumbwell.study.results import Results
 from plumbwell.study.tables import TABLES
@@ -73,9 +74,13 @@ def along_hole(results: Results) -> Array:
 
 
 def depth_column(key: str, title: str, depth: Array, *, unit: str, label: str, **look: Any) -> LedgerColumn:
-    """A column of depths as they are written, one decimal."""
+    """A column of depths as they are written, one decimal.
+
+    Copied, `top` is measured depth as in the files; what is not measured depth is named so: `top_tvd [m]`.
+    """
+    kind = "" if label == MD else f"_{label.lower()}"
     return LedgerColumn(
-        key=key, name=title, unit=f"{unit} {label}", heading=f"{key} [{unit}]", values=depth, decimals=1, **look
+        key=key, name=title, unit=f"{unit} {label}", heading=f"{key}{kind} [{unit}]", values=depth, decimals=1, **look
     )
 
 

@@ -12,6 +12,19 @@ from plumbwell.study.finding import SEVERITIES
 MICROGAL = 1e-8
 
 
+def _changed_visits(shown: Shown) -> set[int]:
+    """Visits of which a reading was taken out or in by hand: of its run and station the nearest in time."""
+    results, visits = shown.results, shown.results.network.visits
+    readings, placement = results.survey.readings, results.stations.located.placement
+    found = set()
+    for row in {one.row for one in shown.case.overlay.rows}:
+        same = (visits.run == readings.run.code[row]) & (visits.station == placement.station[row])
+        if same.any():
+            away = np.where(same, np.abs(shown.visits.time - readings.time.values[row]), np.inf)
+            found.add(int(np.argmin(away)))
+    return found
+
+
 def drift_table(shown: Shown) -> LedgerTable:
     """The ledger of visits."""
     results = shown.results
@@ -74,13 +87,9 @@ def drift_table(shown: Shown) -> LedgerTable:
             if before is None or SEVERITIES.index(finding.severity) > SEVERITIES.index(before):
                 marks[visit] = finding.severity
             hints[visit] = f"{hints[visit]}\n{finding.text}".strip()
-    changed = {one.row for one in shown.case.overlay.rows}
-    for visit in range(n):
-        if marks[visit] is None and changed:
-            own = network.rows[int(network.start[visit]) : int(network.start[visit + 1])]
-            first, last = own.min(), own.max()
-            if any(first <= row <= last for row in changed):
-                marks[visit], hints[visit] = "changed", "readings of this visit were taken out or in by hand"
+    for visit in _changed_visits(shown):
+        if marks[visit] is None:
+            marks[visit], hints[visit] = "changed", "readings of this visit were taken out or in by hand"
     at = np.where(shown.depths.column[station], depth, np.nan)
     return LedgerTable(
         stage="drift",

@@ -15,18 +15,18 @@ from plumbwell.study.tables import TABLES
 
 FILE = "file"
 HOLDS = {
-    "stations.csv": "gravity of every station, each part taken out, the anomaly that is left",
-    "intervals.csv": "density of every interval with its sd, log density, difference",
-    "layers.csv": "densities between the boundaries of layers",
-    "readings_reduced.csv": "every raw row with its corrections, drift and residual",
+    "stations.csv": "gravity of stations, each effect",
+    "intervals.csv": "densities with sd, log, difference",
+    "layers.csv": "densities of layers",
+    "readings_reduced.csv": "every row with drift and residual",
     "repeats.csv": "how repeated visits agree",
     "density_covariance.csv": "covariance of the densities",
     "common_covariance.csv": "covariance of what all densities share",
     "station_covariance.csv": "covariance of station gravity",
-    "reduced.las": "density, sd, log and anomaly against depth, LAS 2.0",
-    "figure.svg": "core strip, ledger and tracks, to be scaled",
+    "reduced.las": "density, sd, log, anomaly, LAS 2.0",
+    "figure.svg": "core strip, ledger and tracks",
     "figure.png": "the same as a picture",
-    SUMMARY: "recipe, drift, noise, findings, SHA-256 of every input",
+    SUMMARY: "recipe, findings, input hashes",
 }
 
 

@@ -7,6 +7,7 @@ import numpy as np
 from plumbwell.desk.shown import READING, Shown
 from plumbwell.desk.stages.columns import counted_rows, depth_column, has_any, marks_of, table_column
 from plumbwell.desk.table import TEXT, TIME, LedgerColumn, LedgerTable
+from plumbwell.files.survey_copy import told_notes
 from plumbwell.plates.depth_scale import DepthScale
 from plumbwell.study.case import Case
 from plumbwell.study.overlay import laid_over
@@ -24,7 +25,8 @@ MILLIGAL = 1e-5
 
 
 def _texts(labels: Labels) -> tuple[str, ...]:
-    return tuple(one or "" for one in labels.as_list())
+    names = (*(name or "" for name in labels.names), "")  # the last for code -1, no label
+    return tuple(map(names.__getitem__, labels.code.tolist()))
 
 
 def _raw_columns(survey: Survey) -> list[LedgerColumn]:
@@ -70,7 +72,7 @@ def _measured(survey: Survey, scale: DepthScale) -> list[LedgerColumn]:
     ]
     if not has_any(readings.depth.values):
         columns.pop(3)
-    if all(one is None for one in readings.station.as_list()):
+    if (readings.station.code < 0).all():
         columns.pop(2)
     if len(readings.instrument.names) > 1:
         columns.insert(2, LedgerColumn(
@@ -134,14 +136,13 @@ def readings_table(case: Case, shown: Shown | None, scale: DepthScale) -> Ledger
     for row in np.flatnonzero(~readings.use).tolist():
         marks[row] = "excluded"
         hints[row] = reasons.get(row) or readings.note[row] or "left out by the folder (use=no)"
-    notes = tuple(
-        reasons[row] if row in reasons and not text else text for row, text in enumerate(readings.note)
-    )
+    told = told_notes(case)
+    notes = tuple(told.get(row, text) for row, text in enumerate(readings.note))
     columns = [*_measured(survey, scale), *([] if shown is None else _worked(shown))]
     columns.append(
         LedgerColumn(
             key="note", name="note", heading="note", values=notes, kind=TEXT, italic=True, narrow=False,
-            what="reason or note", shown=any(notes),
+            what="note, and why a row was taken out or in", shown=any(notes),
         )
     )
     if shown is None:

@@ -16,6 +16,9 @@ from plumbwell.desk.stages.columns import (
 from plumbwell.desk.table import LedgerColumn, LedgerTable
 from plumbwell.survey.column import Array
 
+SEEN = 5e-4
+"""mGal: a change of normal gravity that three decimals show."""
+
 
 def density_below(shown: Shown) -> Array:
     """g/cm3 of the rock below each station, NaN where none is known; for the fan."""
@@ -32,6 +35,7 @@ def reduction_table(shown: Shown) -> LedgerTable:
     """The ledger of stations with every part that is taken out of gravity."""
     results, n = shown.results, len(shown.results.stations)
     table = "stations"
+    along = along_hole(results)
     tvd = table_column(results, table, "tvd", title="TVD", unit="m", decimals=1, shown=False)
     columns = [
         table_column(results, table, "station", title="station", shown=_labels_tell(shown)),
@@ -42,16 +46,18 @@ def reduction_table(shown: Shown) -> LedgerTable:
         tvd,
         table_column(results, table, "elevation", title="elevation", decimals=1, shown=False),
         table_column(results, table, "visits", title="visits", decimals=0, shown=False),
-        table_column(results, table, "gravity", title="gravity", sd="gravity_sd", decimals=3),
+        # Its standard deviation is that of what is left over, and stands there.
+        table_column(results, table, "gravity", title="gravity", decimals=3),
         table_column(results, table, "normal_gravity", title="normal", decimals=3, shown=False),
         LedgerColumn(
             key="latitude", name="latitude", unit="mGal", heading="normal_gravity_less_first [mGal]",
-            values=along_hole(results), decimals=3, signed=True, narrow=False,
+            values=along, decimals=3, signed=True, narrow=False,
+            shown=bool(np.nanmax(np.abs(along), initial=0.0) > SEEN),
             what="normal gravity on the ellipsoid, less that of the first station of the column",
         ),
         table_column(results, table, "free_air", title="free air", decimals=3, signed=True, narrow=False),
         table_column(results, table, "shell", title="shells", decimals=3, signed=True, narrow=False),
-        table_column(results, table, "anomaly", title="left over", sd="gravity_sd", decimals=3, signed=True),
+        table_column(results, table, "anomaly", title="left over", sd="gravity_sd", signed=True),
     ]
     marks, hints = marks_of(results.findings, "stations", n)
     in_column = shown.depths.column

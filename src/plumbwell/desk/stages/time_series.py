@@ -93,8 +93,11 @@ def reading_plots(case: Case, shown: Shown | None) -> tuple[TimePlot, ...]:
 
 
 def _tare_words(one: TareInForce) -> str:
+    if not np.isfinite(one.size):
+        return "tare of unknown size"
     if one.sd is None:
-        return f"tare {number(one.size / MICROGAL, 1, signed=True)} µGal, as stated"
+        held = "held" if one.tare.size is None else "as stated"
+        return f"tare {number(one.size / MICROGAL, 1, signed=True)} µGal, {held}"
     decimals = column_decimals([one.sd / MICROGAL], default=0)
     return (
         f"tare {number(one.size / MICROGAL, decimals, signed=True)} {PLUS_MINUS} "
@@ -108,7 +111,7 @@ def drift_plots(shown: Shown) -> tuple[TimePlot, ...]:
     visits, network = shown.visits, results.network.visits
     names, codes = results.survey.readings.run.names, _order(shown.case)
     place_of = {code: place for place, code in enumerate(codes)}
-    lines = {one.run: one for one in drift_lines(results)}
+    lines = {one.run: one for one in drift_lines(results, visits)}
     tares = list(enumerate(tares_in_force(results)))
     excluded = _excluded_visits(shown)
     main, left = [], []
@@ -140,7 +143,8 @@ def drift_plots(shown: Shown) -> tuple[TimePlot, ...]:
                 links=_links(network.station, members, visits.time, own_tares),
             )
         )
-        again = members[visits.repeated[members]]
+        # What no other visit checks is 0 by construction and would look like a perfect repeat.
+        again = members[visits.repeated[members] & np.isfinite(visits.residual_sd[members])]
         left.append(
             RunPanel(
                 name=name,
