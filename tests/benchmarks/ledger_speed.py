@@ -23,10 +23,10 @@ from PySide6.QtCore import QAbstractTableModel, QModelIndex  # noqa: E402
 from PySide6.QtWidgets import QApplication, QHeaderView, QTableView  # noqa: E402
 
 from made_ledger import large_table  # noqa: E402
-from plumbwell.desk.ledger import Ledger  # noqa: E402
-from plumbwell.desk.ledger_cells import row_height  # noqa: E402
+from plumbwell.desk.ledger.ledger import Ledger  # noqa: E402
+from plumbwell.desk.ledger.ledger_cells import row_height  # noqa: E402
+from plumbwell.desk.ledger.table import LedgerTable  # noqa: E402
 from plumbwell.desk.look import Look  # noqa: E402
-from plumbwell.desk.table import LedgerTable  # noqa: E402
 
 SIZE = (900, 1000)
 PAGES = 120

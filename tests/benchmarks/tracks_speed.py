@@ -17,7 +17,7 @@ from PySide6.QtGui import QPainter, QPaintEvent, QPen
 from PySide6.QtWidgets import QApplication, QWidget
 
 from plumbwell.desk.look import Look
-from plumbwell.desk.tracks import Tracks
+from plumbwell.desk.tracks.tracks import Tracks
 from plumbwell.plates.log_curve import LogCurve
 from plumbwell.plates.polyline import log_pieces
 from plumbwell.plates.track import OriginBar, Point, Step, Track

@@ -5,8 +5,8 @@ from PySide6.QtCore import QPoint, QRectF, Qt
 from PySide6.QtGui import QColor, QImage
 from PySide6.QtTest import QTest
 
-from plumbwell.desk.covariance_view import NOTHING_CHOSEN, CovarianceView
 from plumbwell.desk.look import Look
+from plumbwell.desk.tray.covariance_view import NOTHING_CHOSEN, CovarianceView
 from plumbwell.plates.covariance_picture import draw_correlation, neighbour_sentence
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.painting import painting

@@ -4,8 +4,8 @@ import pytest
 from PySide6.QtCore import QPoint, Qt
 from PySide6.QtTest import QTest
 
-from plumbwell.desk.docket_page import EMPTY, DocketPage, has_place, recipe_key_of
-from plumbwell.desk.words import Word
+from plumbwell.desk.parts.words import Word
+from plumbwell.desk.tray.docket_page import EMPTY, DocketPage, has_place, recipe_key_of
 from plumbwell.study.finding import Finding
 from shown_texts import SCALES, look_of, placed_texts, shown_words
 

@@ -6,9 +6,9 @@ from PySide6.QtGui import QColor, QPixmap
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QAbstractButton, QApplication, QWidget
 
-from plumbwell.desk.doors import Doors
 from plumbwell.desk.look import Look
-from plumbwell.desk.samples import SAMPLES
+from plumbwell.desk.opening.doors import Doors
+from plumbwell.desk.opening.samples import SAMPLES
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.theme import theme_named
 

@@ -12,8 +12,8 @@ from PySide6.QtCore import Qt, qInstallMessageHandler, qWarning
 from PySide6.QtGui import QGuiApplication
 from PySide6.QtTest import QTest
 
-from plumbwell.desk.failure import SAFE, Failures, install, sentence_of, uninstall
-from plumbwell.desk.failure_log import KEPT, LARGEST, LOG_NAME, FailureLog, traced
+from plumbwell.desk.opening.failure import SAFE, Failures, install, sentence_of, uninstall
+from plumbwell.desk.opening.failure_log import KEPT, LARGEST, LOG_NAME, FailureLog, traced
 from plumbwell.survey.errors import InputError, Problem, SurveyError
 from shown_texts import SCALES, cut_short, look_of, shown_words
 
@@ -206,7 +206,7 @@ def test_an_error_in_painting_is_shown_once_after_it(tmp_path):
     source = (
         "import sys; from pathlib import Path\n"
         "from PySide6.QtWidgets import QApplication, QWidget; from PySide6.QtCore import QTimer\n"
-        "from plumbwell.desk.failure import install, uninstall; from plumbwell.desk.look import Look\n"
+        "from plumbwell.desk.opening.failure import install, uninstall; from plumbwell.desk.look import Look\n"
         "class Broken(QWidget):\n"
         "    def paintEvent(self, event):\n"
         f"        raise ZeroDivisionError({SECRET!r})\n"
@@ -302,7 +302,7 @@ def test_a_disk_that_refuses_the_log_does_not_keep_the_window_from_failing_well(
 
 def test_a_crash_writes_its_places_into_the_log(tmp_path):
     source = (
-        "import faulthandler, sys; from pathlib import Path; from plumbwell.desk.failure_log import start_log\n"
+        "import faulthandler, sys; from pathlib import Path; from plumbwell.desk.opening.failure_log import start_log\n"
         f"secret = {SECRET!r}; log = start_log(Path(sys.argv[1]))\n"
         "def painted():\n    import os; os.abort()\n"
         "painted()\n"

@@ -7,7 +7,7 @@ from PySide6.QtCore import QPoint, Qt
 from PySide6.QtGui import QColor
 from PySide6.QtTest import QTest
 
-from plumbwell.desk.fan import Fan, FanRow
+from plumbwell.desk.hole.fan import Fan, FanRow
 from plumbwell.desk.look import Look
 from plumbwell.plates.axis import head_height
 from plumbwell.plates.theme import theme_named

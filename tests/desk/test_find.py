@@ -5,7 +5,7 @@ from PySide6.QtCore import Qt
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QLineEdit, QWidget
 
-from plumbwell.desk.find import NOTHING, FindEntry, FindField, found, sought
+from plumbwell.desk.frame.find import NOTHING, FindEntry, FindField, found, sought
 from shown_texts import SCALES, cut_short, look_of, shown_words
 
 NAMES = (

@@ -4,7 +4,7 @@ import pytest
 from PySide6.QtCore import QPoint, Qt
 from PySide6.QtTest import QTest
 
-from plumbwell.desk.history_page import AHEAD, ASIDE, BACK, HERE, HistoryPage, HistoryRow, way_of
+from plumbwell.desk.tray.history_page import AHEAD, ASIDE, BACK, HERE, HistoryPage, HistoryRow, way_of
 from shown_texts import SCALES, cut_short, look_of, placed_texts, shown_words
 
 ROWS = (

@@ -6,7 +6,7 @@ import pytest
 from PySide6.QtCore import Qt
 from PySide6.QtGui import QImage
 
-from plumbwell.desk.icons import draw_icon
+from plumbwell.desk.parts.icons import draw_icon
 from plumbwell.plates.painting import painting
 from plumbwell.plates.theme import theme_named
 from plumbwell.resources import resource

@@ -10,10 +10,10 @@ from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
 from made_ledger import interval_table, large_table, seconds, visit_table
-from plumbwell.desk.ledger import Ledger
-from plumbwell.desk.ledger_menu import column_menu
+from plumbwell.desk.ledger.ledger import Ledger
+from plumbwell.desk.ledger.ledger_menu import column_menu
+from plumbwell.desk.ledger.table import LedgerColumn
 from plumbwell.desk.look import Look
-from plumbwell.desk.table import LedgerColumn
 from plumbwell.plates.lettering import text_placed
 
 LEFT, CTRL = Qt.MouseButton.LeftButton, Qt.KeyboardModifier.ControlModifier

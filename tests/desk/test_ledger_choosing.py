@@ -8,7 +8,7 @@ from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
 from made_ledger import interval_table, large_table, visit_table
-from plumbwell.desk.ledger import Ledger
+from plumbwell.desk.ledger.ledger import Ledger
 from plumbwell.desk.look import Look
 
 LEFT = Qt.MouseButton.LeftButton

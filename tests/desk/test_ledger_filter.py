@@ -4,9 +4,9 @@ import numpy as np
 import pytest
 
 from made_ledger import interval_table, seconds, visit_table
-from plumbwell.desk.ledger_filter import FilterError, kept_rows, parsed
-from plumbwell.desk.ledger_words import ColumnWords, number_words
-from plumbwell.desk.table import TIME, LedgerColumn
+from plumbwell.desk.ledger.ledger_filter import FilterError, kept_rows, parsed
+from plumbwell.desk.ledger.ledger_words import ColumnWords, number_words
+from plumbwell.desk.ledger.table import TIME, LedgerColumn
 
 
 def kept(text, table):

@@ -9,10 +9,10 @@ from PySide6.QtGui import QAccessible, QColor, QHelpEvent
 from PySide6.QtWidgets import QApplication, QToolTip
 
 from made_ledger import interval_table, large_table, visit_table
-from plumbwell.desk.ledger import Ledger
-from plumbwell.desk.ledger_model import SPOKEN
+from plumbwell.desk.ledger.ledger import Ledger
+from plumbwell.desk.ledger.ledger_model import SPOKEN
+from plumbwell.desk.ledger.table import LedgerColumn
 from plumbwell.desk.look import Look
-from plumbwell.desk.table import LedgerColumn
 from plumbwell.plates.axis import head_height
 from plumbwell.plates.lettering import ELLIPSIS, text_placed
 from plumbwell.plates.numbers import MINUS, NO_VALUE

@@ -6,10 +6,10 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from made_ledger import interval_table, seconds, visit_table
-from plumbwell.desk.ledger_order import sorted_rows
-from plumbwell.desk.ledger_search import cells_with, numbers_with, plain
-from plumbwell.desk.ledger_words import FIGURE_SPACE, ColumnWords
-from plumbwell.desk.table import TEXT, TIME, LedgerColumn
+from plumbwell.desk.ledger.ledger_order import sorted_rows
+from plumbwell.desk.ledger.ledger_search import cells_with, numbers_with, plain
+from plumbwell.desk.ledger.ledger_words import FIGURE_SPACE, ColumnWords
+from plumbwell.desk.ledger.table import TEXT, TIME, LedgerColumn
 from plumbwell.plates.lettering import text_width
 from plumbwell.plates.numbers import NO_VALUE, number
 from plumbwell.plates.theme import theme_named

@@ -8,8 +8,8 @@ from PySide6.QtCore import QPoint, Qt
 from PySide6.QtGui import QGuiApplication
 from PySide6.QtTest import QTest
 
-from plumbwell.desk.file_excerpt import cell_span, elided_around, file_excerpt, visible
-from plumbwell.desk.problems import MOST_BLOCKS, Problems
+from plumbwell.desk.opening.file_excerpt import cell_span, elided_around, file_excerpt, visible
+from plumbwell.desk.opening.problems import MOST_BLOCKS, Problems
 from plumbwell.files.folder import read_survey
 from plumbwell.survey.errors import InputError, NumericalError, Problem, SurveyError
 from reduced_surveys import WELL

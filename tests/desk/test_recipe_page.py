@@ -8,10 +8,10 @@ from PySide6.QtGui import QWheelEvent
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
-from plumbwell.desk.recipe_editors import number_typed, value_text
-from plumbwell.desk.recipe_page import GROUPS, WITHOUT_EFFECT, RecipePage, spread
-from plumbwell.desk.recipe_row import what_of
-from plumbwell.desk.words import Chooser
+from plumbwell.desk.parts.words import Chooser
+from plumbwell.desk.tray.recipe_editors import number_typed, value_text
+from plumbwell.desk.tray.recipe_page import GROUPS, WITHOUT_EFFECT, RecipePage, spread
+from plumbwell.desk.tray.recipe_row import what_of
 from plumbwell.survey.recipe import DEFAULT, KEYS, UNAVAILABLE, as_written, is_unavailable, with_written
 from shown_texts import SCALES, cut_short, look_of, shown_words
 

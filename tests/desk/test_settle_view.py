@@ -6,7 +6,7 @@ from PySide6.QtGui import QColor
 from PySide6.QtTest import QTest
 
 from plumbwell.desk.look import Look
-from plumbwell.desk.settle_view import NOTHING_CHOSEN, SettleView
+from plumbwell.desk.tray.settle_view import NOTHING_CHOSEN, SettleView
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.settle_plot import SettlePlot
 

@@ -10,7 +10,7 @@ import pytest
 
 from driven_desk import Driven
 from made_surveys import loop, made_case
-from plumbwell.desk.ledger_words import ColumnWords
+from plumbwell.desk.ledger.ledger_words import ColumnWords
 from plumbwell.desk.selection import Selection
 from plumbwell.desk.shown import shown
 from plumbwell.desk.stages import states

@@ -8,8 +8,8 @@ from PySide6.QtGui import QAccessible, QColor
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
+from plumbwell.desk.frame.stage_line import StageLine
 from plumbwell.desk.look import Look
-from plumbwell.desk.stage_line import StageLine
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.stage_line import LINE_AT, StagePlace, StageState, shown_figure, stage_height, stage_places
 from plumbwell.plates.theme import theme_named

@@ -6,8 +6,8 @@ from PySide6.QtGui import QColor
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QAbstractButton
 
+from plumbwell.desk.frame.status_line import StatusLine
 from plumbwell.desk.look import Look
-from plumbwell.desk.status_line import StatusLine
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.theme import theme_named
 

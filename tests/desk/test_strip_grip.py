@@ -8,8 +8,8 @@ from PySide6.QtGui import QColor, QWheelEvent
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
+from plumbwell.desk.hole.strip import Strip
 from plumbwell.desk.look import Look
-from plumbwell.desk.strip import Strip
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.plate import PlateFinding, PlateInterval, PlateStation, SurveyPlate
 from plumbwell.plates.strip_places import CORE_LEFT, core_width, grip_rows

@@ -2,7 +2,7 @@
 
 import pytest
 
-from plumbwell.desk.strip_window import window_limits
+from plumbwell.desk.hole.strip_window import window_limits
 
 HOLE = window_limits((0.0, 1000.0), "m")
 AIR = 12.0

@@ -10,7 +10,7 @@ from PySide6.QtWidgets import QApplication
 
 from made_time_plots import LEFT_OUT, TARE_KEY, TARE_TIME, at, drift_plots
 from plumbwell.desk.look import Look
-from plumbwell.desk.time_plots import TimePlots
+from plumbwell.desk.times.time_plots import TimePlots
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.time_plot import RunPanel, TimePlot, time_points
 

@@ -7,8 +7,8 @@ from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
 from plumbwell.desk.look import Look
-from plumbwell.desk.track_window import held, whole_window, zoomed
-from plumbwell.desk.tracks import Tracks
+from plumbwell.desk.tracks.track_window import held, whole_window, zoomed
+from plumbwell.desk.tracks.tracks import Tracks
 from plumbwell.plates.track import OriginBar, Point, Step, Track
 
 LEFT, MIDDLE = Qt.MouseButton.LeftButton, Qt.MouseButton.MiddleButton

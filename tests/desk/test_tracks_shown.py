@@ -6,7 +6,7 @@ from PySide6.QtGui import QColor, QContextMenuEvent
 from PySide6.QtWidgets import QApplication, QMenu
 
 from plumbwell.desk.look import Look
-from plumbwell.desk.tracks import Tracks
+from plumbwell.desk.tracks.tracks import Tracks
 from plumbwell.plates.axis import head_height
 from plumbwell.plates.figure_of import survey_plate
 from plumbwell.plates.lettering import ELLIPSIS, text_placed
@@ -234,7 +234,7 @@ def test_hovering_costs_no_new_curves(qtbot, look, plate, monkeypatch):
     widget = shown(qtbot, look, plate)
     widget.grab()
     painted = []
-    monkeypatch.setattr("plumbwell.desk.track_layers.draw_curves", lambda *args: painted.append(args))
+    monkeypatch.setattr("plumbwell.desk.tracks.track_layers.draw_curves", lambda *args: painted.append(args))
     for depth in (600.0, 610.0, None):
         widget.set_crosshair(depth)
         widget.set_hovered(depth)

@@ -6,7 +6,7 @@ from PySide6.QtGui import QAccessible
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QTabBar, QWidget
 
-from plumbwell.desk.tray import Tray, TrayPage
+from plumbwell.desk.tray.tray import Tray, TrayPage
 from shown_texts import SCALES, cut_short, look_of, shown_words
 
 KEYS = ("docket", "workings", "layers", "recipe", "history")

@@ -13,8 +13,8 @@ import pytest
 import small_folder
 from driven_desk import wait_until
 from plumbwell.desk import document as document_module
-from plumbwell.desk import failure
 from plumbwell.desk.following import FANS
+from plumbwell.desk.opening import failure
 from plumbwell.desk.stages import states
 from plumbwell.plates import outputs
 from plumbwell.study.acts import Exclude
@@ -256,7 +256,7 @@ import sys
 from pathlib import Path
 from PySide6.QtCore import QTimer
 from PySide6.QtWidgets import QApplication
-from plumbwell.desk import failure, start, track_view
+from plumbwell.desk.opening import failure, start, track_view
 from plumbwell.desk.shell import Shell
 from plumbwell.study.acts import Exclude
 

@@ -17,8 +17,8 @@ from PySide6.QtCore import Qt
 import plumbwell
 from driven_desk import Driven, wait_until
 from plumbwell.cli import main
+from plumbwell.desk.ledger.table import LedgerColumn
 from plumbwell.desk.stages import states
-from plumbwell.desk.table import LedgerColumn
 from reduced_surveys import MINE, SHAFT, WELL
 
 SURVEYS = pytest.mark.parametrize("folder", [WELL, MINE, SHAFT], ids=lambda folder: folder.name)

@@ -7,8 +7,8 @@ from itertools import pairwise
 from PySide6.QtCore import Qt
 from PySide6.QtGui import QColor
 
+from plumbwell.desk.frame.status import status_words
 from plumbwell.desk.stages import states
-from plumbwell.desk.status import status_words
 from plumbwell.plates.depth_scale import ELEVATION
 from plumbwell.plates.painting import whole
 from plumbwell.plates.track_marks import knocked_out, placed_readout
@@ -68,7 +68,7 @@ def test_several_rows_are_counted_with_their_reach_and_no_value_between_them(dri
     window.stage(states.DENSITY)
     window.work.selection.choose("interval", (2, 8))
     window.settle()
-    words = " ".join(value for _, value in status_words(window.work, True))
+    words = " ".join(value for _, value in status_words(window.work, chosen=window.work.chosen_rows(), waiting=""))
     assert words == "2 intervals chosen 66.0 to 271.0 m MD"
 
 

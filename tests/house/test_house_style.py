@@ -85,7 +85,7 @@ def test_test_files_have_names_of_their_own():
 
 
 def test_no_widget_overrides_event():
-    """With such an override an error in a paintEvent ends the process; see `desk/hints.py`."""
+    """With such an override an error in a paintEvent ends the process; see `desk/parts/hints.py`."""
     found = [
         shown(path)
         for path in SOURCES

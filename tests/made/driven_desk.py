@@ -9,10 +9,10 @@ from PySide6.QtCore import QEventLoop, QPoint, Qt, QTimer
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication, QWidget
 
-from plumbwell.desk.history_page import HistoryRow
 from plumbwell.desk.look import Look
 from plumbwell.desk.settings import Settings
 from plumbwell.desk.shell import Shell
+from plumbwell.desk.tray.history_page import HistoryRow
 from plumbwell.desk.window import Desk
 from plumbwell.plates.track import Track
 

@@ -4,7 +4,7 @@ from datetime import UTC, datetime
 
 import numpy as np
 
-from plumbwell.desk.table import TEXT, TIME, LedgerColumn, LedgerTable
+from plumbwell.desk.ledger.table import TEXT, TIME, LedgerColumn, LedgerTable
 
 # No, top, base, step of gravity mGal, density, sd, log, sd of the difference, mark.
 ROWS = (

@@ -5,7 +5,7 @@ from __future__ import annotations
 from PySide6.QtCore import QObject
 
 from plumbwell.desk.document import Document
-from plumbwell.desk.notice import Notice
+from plumbwell.desk.frame.notice import Notice
 from plumbwell.desk.workspace import Workspace
 from plumbwell.plates.numbers import counted
 from plumbwell.study.acts import (

@@ -18,7 +18,7 @@ from plumbwell.desk.stages.tray_views import neighbour_view, settle_view, settle
 
 if TYPE_CHECKING:
     from plumbwell.desk.shown import Shown
-    from plumbwell.desk.workspace import Workspace
+    from plumbwell.desk.views import Views
 
 LEVELS = {
     states.READINGS: "reading", states.DRIFT: "visit", states.REDUCTION: "station", states.DENSITY: "interval",
@@ -41,11 +41,11 @@ class Following(QObject):
 
     Parameters
     ----------
-    work : Workspace
+    work : Views
     selection : Selection
     """
 
-    def __init__(self, work: Workspace, selection: Selection) -> None:
+    def __init__(self, work: Views, selection: Selection) -> None:
         super().__init__(work)
         self._work, self._selection = work, selection
         self._leading = False
@@ -73,7 +73,7 @@ class Following(QObject):
         work.times.row_hovered.connect(lambda row: self._point_at_row(-1 if row is None else row))
         work.times.walked.connect(self._walk)
         work.settle.rows_chosen.connect(lambda rows: selection.choose("reading", rows))
-        work.settle.walked.connect(self._walk)
+        work.settle.walked.connect(lambda row: selection.choose("reading", (row,)))
         work.neighbours.chosen.connect(self._choose_neighbour)
         selection.chosen.connect(self.show_chosen)
         selection.pointed.connect(self._show_pointed)

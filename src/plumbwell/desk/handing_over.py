@@ -9,9 +9,9 @@ from pathlib import Path
 from PySide6.QtCore import QObject
 
 from plumbwell.desk.document import Document
+from plumbwell.desk.frame.notice import Notice
+from plumbwell.desk.frame.status_line import StatusLine
 from plumbwell.desk.jobs import Stopped
-from plumbwell.desk.notice import Notice
-from plumbwell.desk.status_line import StatusLine
 from plumbwell.desk.workspace import Workspace
 from plumbwell.files.output_folder import check_target
 from plumbwell.files.survey_copy import write_survey_copy

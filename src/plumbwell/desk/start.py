@@ -58,14 +58,14 @@ def run(path: Path | None, home: Path) -> int:
         heartbeat.stop()
         for number, handler in former.items():
             signal.signal(number, handler)
-        from plumbwell.desk import failure
+        from plumbwell.desk.opening import failure
 
         failure.uninstall()
 
 
 def furnish(shell: Shell, home: Path, path: Path | None) -> None:
     """Load the desk into the bare window, and open a survey."""
-    from plumbwell.desk import failure
+    from plumbwell.desk.opening import failure
     from plumbwell.desk.window import Desk
 
     failure.install(home, shell.look, shell)

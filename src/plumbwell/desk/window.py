@@ -14,25 +14,25 @@ from PySide6.QtCore import QObject, QPoint, Qt
 from PySide6.QtWidgets import QFileDialog, QStackedWidget, QVBoxLayout, QWidget
 
 from plumbwell import __version__
-from plumbwell.desk.actions import Actions
 from plumbwell.desk.asking import Asking
-from plumbwell.desk.body import MARGIN
 from plumbwell.desk.document import Document
-from plumbwell.desk.doors import Doors
-from plumbwell.desk.failure_log import LOG_NAME
-from plumbwell.desk.find import FindEntry
+from plumbwell.desk.frame.actions import Actions
+from plumbwell.desk.frame.body import MARGIN
+from plumbwell.desk.frame.find import FindEntry
+from plumbwell.desk.frame.menu_row import MenuRow
+from plumbwell.desk.frame.notice import Notice
+from plumbwell.desk.frame.status import status_words
+from plumbwell.desk.frame.status_line import StatusLine
 from plumbwell.desk.handing_over import HandingOver
-from plumbwell.desk.history_page import HistoryRow
 from plumbwell.desk.jobs import Stopped
-from plumbwell.desk.menu_row import MenuRow
-from plumbwell.desk.notice import Notice
-from plumbwell.desk.problems import Problems
-from plumbwell.desk.samples import SAMPLES, sample_folder
+from plumbwell.desk.opening.doors import Doors
+from plumbwell.desk.opening.failure_log import LOG_NAME
+from plumbwell.desk.opening.problems import Problems
+from plumbwell.desk.opening.samples import SAMPLES, sample_folder
 from plumbwell.desk.settings import RECENT
 from plumbwell.desk.shell import Shell
 from plumbwell.desk.stages import states
-from plumbwell.desk.status import status_words
-from plumbwell.desk.status_line import StatusLine
+from plumbwell.desk.tray.history_page import HistoryRow
 from plumbwell.desk.workspace import NARROW, Workspace
 from plumbwell.files.keeper import EPOCH
 from plumbwell.files.new_survey import write_new_survey
@@ -428,7 +428,10 @@ class Desk(QObject):
 
     def _tell(self) -> None:
         work, look = self.workspace, self.look
-        self.status.set_left(status_words(work, self.document.survey is not None))
+        waiting = "no result" if work.why_not else "reducing"
+        if self.document.survey is None:
+            waiting = "No survey open"
+        self.status.set_left(status_words(work, chosen=work.chosen_rows(), waiting=waiting))
         saved = self.document.saved
         kind = look.depth.kind if work.shown is None else work.shown.scale.kind
         self.status.set_right(

@@ -12,31 +12,19 @@ from PySide6.QtCore import Qt, QTimer, Signal
 from PySide6.QtGui import QPaintEvent
 from PySide6.QtWidgets import QHBoxLayout, QSplitter, QStackedWidget, QVBoxLayout, QWidget
 
-from plumbwell.desk.body import MARGIN, Body
-from plumbwell.desk.covariance_view import CovarianceView
-from plumbwell.desk.docket_page import DocketPage, recipe_key_of
 from plumbwell.desk.document import Document
-from plumbwell.desk.fan import Fan
 from plumbwell.desk.following import FANS, LEVELS, TIMED, Following
-from plumbwell.desk.handover_panel import HandoverPanel
-from plumbwell.desk.history_page import HistoryPage
-from plumbwell.desk.ledger import Ledger
-from plumbwell.desk.ledger_model import empty_table
+from plumbwell.desk.frame.body import MARGIN
+from plumbwell.desk.ledger.ledger_model import empty_table
 from plumbwell.desk.look import Look
-from plumbwell.desk.reason_bar import ReasonBar
-from plumbwell.desk.recipe_page import RecipePage
-from plumbwell.desk.selection import Selection
 from plumbwell.desk.settings import Settings
-from plumbwell.desk.settle_view import SettleView
-from plumbwell.desk.shown import Shown, carried, shown
-from plumbwell.desk.stage_line import StageLine
+from plumbwell.desk.shown import carried, shown
 from plumbwell.desk.stages import states
 from plumbwell.desk.stages.in_front import CANNOT_REDUCE, EMPTY, REDUCING, show_plots, stage_table
 from plumbwell.desk.stages.tray_views import counted_findings
-from plumbwell.desk.strip import Strip
-from plumbwell.desk.time_plots import TimePlots
-from plumbwell.desk.tracks import Tracks
-from plumbwell.desk.tray import Tray, TrayPage
+from plumbwell.desk.tray.docket_page import recipe_key_of
+from plumbwell.desk.tray.tray import TrayPage
+from plumbwell.desk.views import Views
 from plumbwell.plates.numbers import number
 from plumbwell.plates.painting import painting
 from plumbwell.study.finding import Finding
@@ -53,55 +41,31 @@ MOST_PLACES = 2000
 """Stations and intervals that the find field offers."""
 
 
-class Workspace(QWidget):
+class Workspace(Views):
     """Everything about the survey in front.
 
     Signals
     -------
     stage_changed(str)
-    pointed
-        What the status line tells has changed.
     use_wanted(tuple)
         The person wants readings taken out or in: rows.
     """
 
     stage_changed = Signal(str)
-    pointed = Signal()
     use_wanted = Signal(object)
 
     def __init__(
         self, look: Look, document: Document, settings: Settings, front: QStackedWidget,
         parent: QWidget | None = None,
     ) -> None:  # fmt: skip
-        super().__init__(parent)
-        self._look, self._document, self._settings = look, document, settings
-        self.selection = Selection(self)
-        self.shown: Shown | None = None
-        self.stage = states.READINGS
+        super().__init__(look, settings, parent)
+        self._document = document
         self.written: tuple[str, ...] = ()
         self._written_words = ""
         self._why_not = ""
         self._narrow = False
         self.page_keys: tuple[str, ...] = ()
         self._scale = look.theme.text_scale
-        self.strip = Strip(look, self)
-        self.stage_line = StageLine(look, self)
-        self.ledger = Ledger(look, settings, self)
-        self.fan = Fan(look, self)
-        self.tracks = Tracks(look, self, memory=settings)
-        self.times = TimePlots(look, self)
-        self.handover = HandoverPanel(look, self)
-        self.plots = QStackedWidget(self)
-        for view in (self.tracks, self.times, self.handover):
-            self.plots.addWidget(view)
-        self.body = Body(look, self.ledger, self.fan, self.plots, self)
-        self.reasons = ReasonBar(look, settings, self)
-        self.tray = Tray(look, self)
-        self.docket = DocketPage(look)
-        self.recipe = RecipePage(look)
-        self.history = HistoryPage(look)
-        self.settle = SettleView(look)
-        self.neighbours = CovarianceView(look)
         self.front = front
         front.addWidget(self.body)
         self._lay_out()

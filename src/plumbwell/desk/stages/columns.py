@@ -11,7 +11,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from plumbwell.desk.table import NUMBER, TEXT, LedgerColumn
+from plumbwell.desk.ledger.table import NUMBER, TEXT, LedgerColumn
 from plumbwell.plates.depth_scale import MD
 from plumbwell.study.finding import SEVERITIES, Finding
 from plumbwell.study.results import Results

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from plumbwell.desk.ledger.table import LedgerColumn, LedgerTable
 from plumbwell.desk.shown import INTERVAL, Shown
 from plumbwell.desk.stages.columns import (
     counted_rows,
@@ -13,7 +14,6 @@ from plumbwell.desk.stages.columns import (
     table_column,
     values_of,
 )
-from plumbwell.desk.table import LedgerColumn, LedgerTable
 
 AMBER_RATIO = 3.0
 

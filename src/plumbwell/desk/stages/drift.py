@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 
+from plumbwell.desk.ledger.table import TEXT, TIME, LedgerColumn, LedgerTable
 from plumbwell.desk.shown import VISIT, Shown
 from plumbwell.desk.stages.columns import counted_rows, depth_column
-from plumbwell.desk.table import TEXT, TIME, LedgerColumn, LedgerTable
 from plumbwell.study.finding import SEVERITIES
 
 MICROGAL = 1e-8

@@ -6,9 +6,9 @@ from collections.abc import Collection
 
 import numpy as np
 
+from plumbwell.desk.ledger.table import TEXT, LedgerColumn, LedgerTable
 from plumbwell.desk.shown import Shown
 from plumbwell.desk.stages.columns import counted_rows
-from plumbwell.desk.table import TEXT, LedgerColumn, LedgerTable
 from plumbwell.files.output_folder import SUMMARY
 from plumbwell.files.tables_out import COVARIANCES
 from plumbwell.study.tables import TABLES

@@ -10,6 +10,7 @@ from collections.abc import Collection
 from typing import TYPE_CHECKING
 
 from plumbwell.desk.following import TIMED
+from plumbwell.desk.ledger.table import LedgerTable
 from plumbwell.desk.look import Look
 from plumbwell.desk.shown import Shown
 from plumbwell.desk.stages import states
@@ -20,12 +21,11 @@ from plumbwell.desk.stages.handover import handover_table
 from plumbwell.desk.stages.readings import readings_table
 from plumbwell.desk.stages.reduction import reduction_table
 from plumbwell.desk.stages.time_series import drift_plots, reading_plots
-from plumbwell.desk.table import LedgerTable
 from plumbwell.plates.depth_scale import DepthScale
 from plumbwell.study.case import Case
 
 if TYPE_CHECKING:
-    from plumbwell.desk.workspace import Workspace
+    from plumbwell.desk.views import Views
 
 DRIFT_WEIGHTS = (2.6, 1.0)
 """Heights of the visits against drift, and of the residuals under them."""
@@ -70,12 +70,12 @@ def stage_table(
     return handover_table(one, written)
 
 
-def show_plots(work: Workspace, look: Look, case: Case | None, one: Shown | None, waiting: str) -> None:
+def show_plots(work: Views, look: Look, case: Case | None, one: Shown | None, waiting: str) -> None:
     """Put the plots of the stage in front beside its ledger.
 
     Parameters
     ----------
-    work : Workspace
+    work : Views
     look : Look
     case : Case or None
     one : Shown or None

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 
+from plumbwell.desk.ledger.table import TEXT, TIME, LedgerColumn, LedgerTable
 from plumbwell.desk.shown import READING, Shown
 from plumbwell.desk.stages.columns import counted_rows, depth_column, has_any, marks_of, table_column
-from plumbwell.desk.table import TEXT, TIME, LedgerColumn, LedgerTable
 from plumbwell.files.survey_copy import told_notes
 from plumbwell.plates.depth_scale import DepthScale
 from plumbwell.study.case import Case

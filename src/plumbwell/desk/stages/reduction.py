@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from plumbwell.desk.ledger.table import LedgerColumn, LedgerTable
 from plumbwell.desk.shown import STATION, Shown
 from plumbwell.desk.stages.columns import (
     along_hole,
@@ -13,7 +14,6 @@ from plumbwell.desk.stages.columns import (
     nothing_excluded,
     table_column,
 )
-from plumbwell.desk.table import LedgerColumn, LedgerTable
 from plumbwell.survey.column import Array
 
 SEEN = 5e-4

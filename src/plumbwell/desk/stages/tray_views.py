@@ -6,9 +6,9 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from plumbwell.desk.covariance_view import CovarianceView
 from plumbwell.desk.selection import Selection
 from plumbwell.desk.shown import VISIT, Shown
+from plumbwell.desk.tray.covariance_view import CovarianceView
 from plumbwell.plates.numbers import number
 from plumbwell.plates.settle_plot import SettlePlot
 from plumbwell.study.finding import Finding

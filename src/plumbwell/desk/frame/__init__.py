@@ -1,0 +1,1 @@
+"""What stands round the views: menu row, stage line, status line, notices, and how the body is laid."""

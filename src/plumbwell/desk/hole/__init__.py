@@ -1,0 +1,1 @@
+"""The hole itself: core strip and fan."""

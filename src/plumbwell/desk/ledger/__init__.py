@@ -1,0 +1,1 @@
+"""The ledger: a real table of the present stage, sorted, filtered, chosen from and copied."""

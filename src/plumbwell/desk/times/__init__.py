@@ -1,0 +1,1 @@
+"""Plots against time: readings and drift, a panel a run."""

@@ -1,0 +1,1 @@
+"""Depth tracks: values against depth, side by side under one depth axis."""
