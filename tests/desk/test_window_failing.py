@@ -256,7 +256,9 @@ import sys
 from pathlib import Path
 from PySide6.QtCore import QTimer
 from PySide6.QtWidgets import QApplication
-from plumbwell.desk.opening import failure, start, track_view
+from plumbwell.desk import start
+from plumbwell.desk.opening import failure
+from plumbwell.desk.tracks import track_view
 from plumbwell.desk.shell import Shell
 from plumbwell.study.acts import Exclude
 
