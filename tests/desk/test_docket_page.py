@@ -5,7 +5,7 @@ from PySide6.QtCore import QPoint, Qt
 from PySide6.QtTest import QTest
 
 from plumbwell.desk.parts.words import Word
-from plumbwell.desk.tray.docket_page import EMPTY, DocketPage, has_place, recipe_key_of
+from plumbwell.desk.tray.docket_page import EMPTY, DocketPage, has_place, place_words, recipe_key_of
 from plumbwell.study.finding import Finding
 from shown_texts import SCALES, look_of, placed_texts, shown_words
 
@@ -79,6 +79,7 @@ def test_the_window_may_say_itself_where_there_is_a_way(look, qtbot):
 
 def test_a_finding_about_a_setting_leads_to_its_key():
     assert recipe_key_of(FOUND[3]) == "drift_walk" and has_place(FOUND[3])
+    assert place_words(FOUND[3]) == "Recipe, Drift walk" and place_words(FOUND[0]) == FOUND[0].place
     assert recipe_key_of(finding("x", place="recipe")) is None
     assert recipe_key_of(finding("x", place="recipe, nothing")) is None
     assert not has_place(FOUND[0])

@@ -14,6 +14,7 @@ from PySide6.QtWidgets import QFileDialog, QHBoxLayout, QScrollArea, QVBoxLayout
 
 from plumbwell.desk.look import Look
 from plumbwell.desk.parts.words import WORD_PAD, Caption, Field, MainAction, Word, middle_baseline
+from plumbwell.desk.tray.docket_page import place_words
 from plumbwell.plates.axis import head_height, title_baseline, unit_baseline
 from plumbwell.plates.numbers import counted
 from plumbwell.plates.painting import draw_mark, hairline_across, painting
@@ -32,9 +33,9 @@ class Marked(QWidget):
     def __init__(self, finding: Finding, look: Look, parent: QWidget | None = None) -> None:
         super().__init__(parent)
         self._look, self._severity = look, finding.severity
-        self.place = Caption(finding.place, look, self, face="emphasis")
+        self.place = Caption(place_words(finding), look, self, face="emphasis")
         self.text = Caption(finding.text, look, self, lines=MOST_LINES)
-        self.setAccessibleName(f"{finding.severity}: {finding.place}: {finding.text}")
+        self.setAccessibleName(f"{finding.severity}: {place_words(finding)}: {finding.text}")
         look.changed.connect(self._lay)
 
     def _lay(self) -> None:

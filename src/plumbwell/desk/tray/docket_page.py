@@ -32,6 +32,12 @@ def recipe_key_of(finding: Finding) -> str | None:
     return key if where == "recipe" and key in KEYS else None
 
 
+def place_words(finding: Finding) -> str:
+    """Return the place of a finding as people read it: a setting of the recipe by its label."""
+    key = recipe_key_of(finding)
+    return finding.place if key is None else f"Recipe, {KEYS[key].label}"
+
+
 def has_place(finding: Finding) -> bool:
     """Return whether a finding leads somewhere: to stations, intervals, readings or a key of the recipe."""
     return bool(finding.stations or finding.intervals or finding.rows or recipe_key_of(finding))
@@ -44,15 +50,15 @@ class FindingBlock(Block):
         self.finding = finding
         self.go = Word("Go there", look)
         super().__init__(look, mark=finding.severity, words=(self.go,) if can_go else ())
-        self.go.setAccessibleName(f"Go there: {finding.place}")
-        self.setAccessibleName(f"{SPOKEN[finding.severity]}: {finding.place}")
+        self.go.setAccessibleName(f"Go there: {place_words(finding)}")
+        self.setAccessibleName(f"{SPOKEN[finding.severity]}: {place_words(finding)}")
         self.setAccessibleDescription(f"{finding.text} {finding.mend}")
 
     def lines_of(self, width: float) -> list[BlockLine]:
         """Return place and words; of a block that is not the current one, one line and two."""
         theme, one = self.look.theme, self.finding
         width = min(width, theme.px(WIDEST))
-        places = shortened(theme, "emphasis", one.place, width, None if self.current else 1)
+        places = shortened(theme, "emphasis", place_words(one), width, None if self.current else 1)
         texts = shortened(theme, "text", one.text, width, None if self.current else SHORT_LINES)
         mends = shortened(theme, "text", one.mend, width, None) if self.current else []
         return [
