@@ -180,7 +180,9 @@ def _open(arguments: argparse.Namespace, stops: Stops) -> int:
         return USAGE_WRONG
     with held():
         try:
-            from plumbwell.desk.start import run
+            from plumbwell.desk.start import load_qt, run
+
+            load_qt()
         except (ImportError, OSError) as error:
             say(f"The window cannot be shown, because a library is missing: {error}. `plumbwell reduce` works "
                 "without it.", sys.stderr)  # fmt: skip

@@ -37,9 +37,11 @@ application.exec()
 OURS = """
 import sys, time
 from pathlib import Path
+from plumbwell.desk import start
+start.load_qt()
 from PySide6.QtCore import QObject, QEvent, QTimer
 from PySide6.QtWidgets import QApplication
-from plumbwell.desk import start, shell
+from plumbwell.desk import shell
 times = {{}}
 class FirstPaint(QObject):
     def eventFilter(self, watched, event):

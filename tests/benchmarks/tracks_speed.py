@@ -1,4 +1,4 @@
-"""How fast the tracks pan, in ratios of one run: `QT_QPA_PLATFORM=offscreen python tests/benchmarks/tracks_speed.py`.
+"""How fast the tracks pan, in ratios of one run: `python tests/benchmarks/tracks_speed.py`.
 
 Frames are painted one after the other into a shown window, each with another depth window. The yardsticks are painted
 in the same run: a bare widget with 500 lines, and one with a smooth line of a thousand points that moves. A log of a
@@ -8,8 +8,11 @@ million samples has spikes of one sample each; that every one in view reaches it
 from __future__ import annotations
 
 import gc
+import os
 import time
 from collections.abc import Callable, Sequence
+
+os.environ.setdefault("QT_QPA_PLATFORM", "offscreen")
 
 import numpy as np
 from PySide6.QtCore import QPointF, Qt

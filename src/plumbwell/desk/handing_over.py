@@ -14,7 +14,6 @@ from plumbwell.desk.frame.status_line import StatusLine
 from plumbwell.desk.jobs import Stopped
 from plumbwell.desk.workspace import Workspace
 from plumbwell.files.output_folder import check_target
-from plumbwell.files.survey_copy import write_survey_copy
 from plumbwell.plates.numbers import counted
 from plumbwell.plates.outputs import Written, write_outputs
 from plumbwell.survey.errors import PlumbwellError
@@ -87,6 +86,9 @@ class HandingOver(QObject):
         target = self._beside(folder)
 
         def copy(progress: object) -> Path:
+            # Loaded when it is wanted: its library costs a start more than all the rest of handing over.
+            from plumbwell.files.survey_copy import write_survey_copy
+
             write_survey_copy(case, source, target)
             return target
 
