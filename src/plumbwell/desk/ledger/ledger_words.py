@@ -178,16 +178,24 @@ class ColumnWords:
 
     @cached_property
     def _telling_rows(self) -> list[int]:
-        """Rows among which the widest value is: a sample, and the ends of the column."""
+        """Rows among which the widest value is.
+
+        Figures are equally wide and a column has one number of decimals, so that of numbers the least or the greatest
+        is the widest, or the dash of one that is missing. Texts and times are sampled.
+        """
         n = len(self)
         if not n:
             return []
+        if not self.is_text and not self.is_time:
+            known = np.isfinite(self.values)
+            rows = set() if known.all() else {int(np.argmin(known))}
+            if known.any():
+                rows |= {int(np.nanargmin(self._finite_values)), int(np.nanargmax(self._finite_values))}
+            return sorted(rows)
         rows = set(_sampled(n).tolist())
         if self.is_text:
             lengths = list(map(len, self.texts))
             rows.add(lengths.index(max(lengths)))
-        elif np.isfinite(self.values).any():
-            rows |= {int(np.nanargmin(self._finite_values)), int(np.nanargmax(self._finite_values))}
         return sorted(rows)
 
     @property
