@@ -163,7 +163,7 @@ def test_handlers_that_stood_before_are_put_back(capsys):
 )
 def test_what_cannot_be_printed_changes_neither_files_nor_status(streams, heard, tmp_path):
     if "/dev/full" in streams and not os.path.exists("/dev/full"):
-        pytest.skip("no /dev/full here")
+        pytest.skip("this system has no /dev/full, a disk that is always full")
     line = f'"{sys.executable}" -m plumbwell reduce "{SHAFT}" --out "{tmp_path}/out" {streams}'
     if "|" in streams:
         line = line.replace(" |", "; echo $? >&2; } |").join(["{ ", ""])
@@ -180,7 +180,7 @@ def test_what_cannot_be_printed_changes_neither_files_nor_status(streams, heard,
 @pytest.mark.parametrize("words", ["--help", "--version", "new made"])
 def test_help_and_new_bear_a_full_disk_behind_the_terminal(words, tmp_path):
     if not os.path.exists("/dev/full"):
-        pytest.skip("no /dev/full here")
+        pytest.skip("this system has no /dev/full, a disk that is always full")
     done = subprocess.run(
         ["sh", "-c", f'"{sys.executable}" -m plumbwell {words} > /dev/full'],
         env=environment(), cwd=tmp_path, capture_output=True, text=True, check=False, timeout=60,

@@ -9,6 +9,15 @@ from typing import Any
 import pytest
 
 from driven_desk import Driven
+from plumbwell.desk.look import Look
+from shown_texts import look_of
+
+
+@pytest.fixture
+def look(qapp: Any) -> Iterator[Look]:
+    """The light look in force, set back afterwards."""
+    with look_of() as look:
+        yield look
 
 
 @pytest.fixture

@@ -5,7 +5,6 @@ from PySide6.QtCore import QPoint, QRectF, Qt
 from PySide6.QtGui import QColor, QImage
 from PySide6.QtTest import QTest
 
-from plumbwell.desk.look import Look
 from plumbwell.desk.tray.covariance_view import NOTHING_CHOSEN, CovarianceView
 from plumbwell.plates.covariance_picture import draw_correlation, neighbour_sentence
 from plumbwell.plates.lettering import text_placed
@@ -19,15 +18,6 @@ MATRIX = [
     for row in range(COUNT)
 ]
 MATRIX[9][10] = MATRIX[10][9] = -0.48
-
-
-@pytest.fixture
-def look(qapp):
-    """A light look, set back afterwards."""
-    look = Look()
-    look.choose(wanted="light", text_scale=1.0)
-    yield look
-    look.choose(wanted="light", text_scale=1.0)
 
 
 @pytest.fixture

@@ -25,12 +25,6 @@ FOUND = (
 )
 
 
-@pytest.fixture
-def look():
-    with look_of() as look:
-        yield look
-
-
 def made_page(look, qtbot, findings=FOUND, *, width=424, height=600):
     page = DocketPage(look)
     qtbot.addWidget(page)

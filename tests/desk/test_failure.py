@@ -1,6 +1,7 @@
 """When the program fails: logged without readings, shown once, and everything put back at the end."""
 
 import faulthandler
+import os
 import subprocess
 import sys
 import threading
@@ -18,12 +19,6 @@ from plumbwell.survey.errors import InputError, Problem, SurveyError
 from shown_texts import SCALES, cut_short, look_of, shown_words
 
 SECRET = "2440.671"
-
-
-@pytest.fixture
-def look():
-    with look_of() as look:
-        yield look
 
 
 @contextmanager
@@ -297,7 +292,10 @@ def test_a_disk_that_refuses_the_log_does_not_keep_the_window_from_failing_well(
     (tmp_path / "file").write_text("", "utf-8")
     failures = Failures(FailureLog(tmp_path / "file" / "folder"), look)
     failures.take(raised())
-    shown(qtbot, failures).close()
+    dialog = shown(qtbot, failures)
+    assert dialog.details.toPlainText().startswith("ValueError\n")
+    assert os.listdir(tmp_path) == ["file"]
+    dialog.close()
 
 
 def test_a_crash_writes_its_places_into_the_log(tmp_path):

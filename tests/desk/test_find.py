@@ -18,12 +18,6 @@ NAMES = (
 )
 
 
-@pytest.fixture
-def look():
-    with look_of() as look:
-        yield look
-
-
 class Scene:
     """A window with a field of its own and the find field; what was run."""
 

@@ -16,12 +16,6 @@ ROWS = (
 )
 
 
-@pytest.fixture
-def look():
-    with look_of() as look:
-        yield look
-
-
 def made_page(look, qtbot, rows=ROWS, *, width=760, height=300):
     page = HistoryPage(look)
     qtbot.addWidget(page)

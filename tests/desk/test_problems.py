@@ -16,12 +16,6 @@ from reduced_surveys import WELL
 from shown_texts import SCALES, cut_short, look_of, placed_texts, shown_words
 
 
-@pytest.fixture
-def look():
-    with look_of() as look:
-        yield look
-
-
 def problem(row=3, column="depth [m]", file="a.csv", **more):
     parts = {"found": '"x"', "expected": "a number such as 12.5", "mend": "write the value"} | more
     return Problem(file=file, row=row, column=column, **parts)

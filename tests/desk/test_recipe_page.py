@@ -18,12 +18,6 @@ from shown_texts import SCALES, cut_short, look_of, shown_words
 STATIONS = ("P1", "P2", "P3")
 
 
-@pytest.fixture
-def look():
-    with look_of() as look:
-        yield look
-
-
 class Asked(list):
     """What the page asked for, in order."""
 

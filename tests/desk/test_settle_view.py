@@ -5,7 +5,6 @@ from PySide6.QtCore import QPoint, Qt
 from PySide6.QtGui import QColor
 from PySide6.QtTest import QTest
 
-from plumbwell.desk.look import Look
 from plumbwell.desk.tray.settle_view import NOTHING_CHOSEN, SettleView
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.settle_plot import SettlePlot
@@ -23,15 +22,6 @@ VISIT = SettlePlot(
     excluded=[True] + [False] * 6,
     mean_sd=1.7,
 )
-
-
-@pytest.fixture
-def look(qapp):
-    """A light look, set back afterwards."""
-    look = Look()
-    look.choose(wanted="light", text_scale=1.0)
-    yield look
-    look.choose(wanted="light", text_scale=1.0, bars=2)
 
 
 @pytest.fixture

@@ -9,22 +9,12 @@ from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
 
 from made_time_plots import LEFT_OUT, TARE_KEY, TARE_TIME, at, drift_plots
-from plumbwell.desk.look import Look
 from plumbwell.desk.times.time_plots import TimePlots
 from plumbwell.plates.lettering import text_placed
 from plumbwell.plates.time_plot import RunPanel, TimePlot, time_points
 
 LEFT, MIDDLE = Qt.MouseButton.LeftButton, Qt.MouseButton.MiddleButton
 CTRL = Qt.KeyboardModifier.ControlModifier
-
-
-@pytest.fixture
-def look(qapp):
-    """A light look, set back afterwards."""
-    look = Look()
-    look.choose(wanted="light", text_scale=1.0)
-    yield look
-    look.choose(wanted="light", text_scale=1.0)
 
 
 @pytest.fixture
@@ -60,20 +50,25 @@ def place(widget, row, plot=0):
     raise AssertionError(row)
 
 
+def move(widget, place, button=Qt.MouseButton.NoButton):
+    """Move to a place, whatever window of another test still lies above it."""
+    at = QPointF(place)
+    event = QMouseEvent(
+        QEvent.Type.MouseMove,
+        at,
+        widget.mapToGlobal(at),
+        Qt.MouseButton.NoButton,
+        button,
+        Qt.KeyboardModifier.NoModifier,
+    )
+    QApplication.sendEvent(widget, event)
+
+
 def drag(widget, begin, end, button=LEFT, *, release=True):
     """Press at one place and move to another by way of the middle."""
     QTest.mousePress(widget, button, pos=begin)
     for step in (QPoint((begin.x() + end.x()) // 2, (begin.y() + end.y()) // 2), end):
-        move = QPointF(step)
-        event = QMouseEvent(
-            QEvent.Type.MouseMove,
-            move,
-            widget.mapToGlobal(move),
-            Qt.MouseButton.NoButton,
-            button,
-            Qt.KeyboardModifier.NoModifier,
-        )
-        QApplication.sendEvent(widget, event)
+        move(widget, step, button)
     if release:
         QTest.mouseRelease(widget, button, pos=end)
 
@@ -173,7 +168,7 @@ def test_hovering_tells_the_row_and_grows_its_point(plots):
     hovered = heard(plots.row_hovered)
     before = shot(plots)
     spot = place(plots, 41)
-    QTest.mouseMove(plots, spot)
+    move(plots, spot)
     QApplication.processEvents()
     assert hovered[-1] == 41
     after = shot(plots)

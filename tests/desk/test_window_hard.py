@@ -120,7 +120,7 @@ def test_a_folder_that_cannot_be_read_leaves_the_open_survey_one_click_away(driv
     assert window.document.folder == SHAFT.resolve()
 
 
-@pytest.mark.skipif(os.name != "posix", reason="links that lead in a circle")
+@pytest.mark.skipif(os.name != "posix", reason="only POSIX systems let a plain user make links")
 def test_links_that_lead_in_a_circle_are_refused_in_words(driven, tmp_path):
     (tmp_path / "circle").symlink_to(tmp_path / "circle")
     window = driven()

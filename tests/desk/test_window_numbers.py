@@ -107,8 +107,8 @@ def alike(values: Any, tables: Tables, name: str, heading: str, *, microgal: boo
         assert cells == written, heading
 
 
-def ledgers_agree(window: Driven, tables: Tables) -> None:
-    """Every column of the ledgers of Readings, Reduction and Density stands in the tables."""
+def ledgers_agree(window: Driven, tables: Tables) -> int:
+    """Every column of the ledgers of Readings, Reduction and Density stands in the tables; returns how many."""
     window.desk.do("depth MD")
     readings = ledger_of(window, states.READINGS)
     raw = readings_by_hand(window, readings, tables)
@@ -123,6 +123,7 @@ def ledgers_agree(window: Driven, tables: Tables) -> None:
             assert key in raw or key.startswith("raw "), key
             if key.startswith("raw "):
                 assert list(column.values) == tables.written["readings_reduced"][column.heading]
+    compared = len(readings)
     md = window.work.shown.scale.kind == "MD"
     for stage, name, columns, derived in (
         (states.REDUCTION, "stations", STATIONS, {"latitude"}),
@@ -143,6 +144,8 @@ def ledgers_agree(window: Driven, tables: Tables) -> None:
             else:
                 assert column.sds is None, key
         derived_columns(ledger, tables, stage)
+        compared += len(ledger)
+    return compared
 
 
 def readings_by_hand(window: Driven, ledger: dict[str, LedgerColumn], tables: Tables) -> set[str]:
@@ -203,8 +206,11 @@ def visits_by_hand(tables: Tables) -> list[list[int]]:
     return stops
 
 
-def drift_by_hand(window: Driven, tables: Tables) -> None:
-    """The Drift ledger from readings_reduced.csv and repeats.csv: visits are plain means, for readings weigh alike."""
+def drift_by_hand(window: Driven, tables: Tables) -> int:
+    """The Drift ledger from readings_reduced.csv and repeats.csv: visits are plain means, for readings weigh alike.
+
+    Returns how many visits were worked out.
+    """
     ledger = ledger_of(window, states.DRIFT)
     assert set(ledger) == {
         "time", "run", "station", "role", "depth", "readings", "less_tide", "residual", "ratio",
@@ -250,20 +256,22 @@ def drift_by_hand(window: Driven, tables: Tables) -> None:
         )
         assert labels[earlier] == labels[later] == repeats["station"][n]
         assert shown[later] - shown[earlier] == pytest.approx(difference * 1000.0, abs=1e-6)
+    return len(stops)
 
 
 @SURVEYS
 def test_ledgers_are_the_tables_of_command_line_and_python(driven, tables_of, folder):
     window = driven()
     window.open(folder)
-    ledgers_agree(window, tables_of(folder))
+    assert ledgers_agree(window, tables_of(folder)) > 30
 
 
 @SURVEYS
 def test_visits_and_residuals_can_be_worked_out_from_the_written_tables(driven, tables_of, folder):
     window = driven()
     window.open(folder)
-    drift_by_hand(window, tables_of(folder))
+    tables = tables_of(folder)
+    assert drift_by_hand(window, tables) > len(tables.written["stations"]["station"])
 
 
 def steps_of(track: Any) -> list[tuple[float, float, float, float | None]]:

@@ -29,6 +29,9 @@ from plumbwell.plates.theme import Theme
 LINE = 19
 """Distance of baselines in running text, px of the unscaled design."""
 
+SENTENCE_LINE = 20
+"""The same in the sentence of an empty picture, which stands alone."""
+
 WORD_PAD = 3
 """Room on both sides of an action word for its focus frame."""
 
@@ -48,6 +51,13 @@ def draw_focus(painter: QPainter, theme: Theme, box: QRectF, role: str = "accent
         (box.left(), box.bottom()),
     )
     stroke_shape(painter, polygon(*corners), theme.colour(role), FOCUS_WIDTH)
+
+
+def draw_sentence(painter: QPainter, theme: Theme, words: str, *, width: float, baseline: float) -> None:
+    """Draw what an empty picture says, broken at a width, from the left."""
+    for line in wrapped(theme, "text", words, width):
+        draw_text(painter, theme, line, x=0, baseline=baseline, role="muted", room=(0, width))
+        baseline += theme.px(SENTENCE_LINE)
 
 
 def middle_baseline(theme: Theme, face: str, height: float) -> int:

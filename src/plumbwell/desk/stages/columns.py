@@ -11,7 +11,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from plumbwell.desk.ledger.table import NUMBER, TEXT, LedgerColumn
+from plumbwell.desk.ledger.table import NUMBER, TEXT, LedgerColumn, LedgerTable
 from plumbwell.plates.depth_scale import MD
 from plumbwell.study.finding import SEVERITIES, Finding
 from plumbwell.study.results import Results
@@ -116,6 +116,39 @@ def counted_rows(n: int) -> tuple[str, ...]:
 def nothing_excluded(n: int) -> NDArray[np.bool_]:
     """No row is struck through."""
     return np.zeros(n, dtype=bool)
+
+
+def table_in_depth(
+    results: Results, stage: str, level: str, which: str, *, columns: Sequence[LedgerColumn], top: Array, base: Array,
+    density: Array,
+) -> LedgerTable:
+    """A ledger whose rows lie along the hole and cannot be excluded one by one.
+
+    Parameters
+    ----------
+    results : Results
+    stage : str
+    level : str
+        What a row is for the selection: `INTERVAL` or `STATION`.
+    which : str
+        What a row is for the findings: "stations" or "intervals".
+    columns : sequence of LedgerColumn
+    top, base, density : numpy.ndarray
+        Of each row, shape (n,): its depths, m, and the rock between or below, g/cm3, NaN where unknown.
+    """
+    marks, hints = marks_of(results.findings, which, len(density))
+    return LedgerTable(
+        stage=stage,
+        level=level,
+        numbers=counted_rows(len(density)),
+        columns=tuple(columns),
+        marks=tuple(marks),
+        hints=tuple(hints),
+        excluded=nothing_excluded(len(density)),
+        top=top,
+        base=base,
+        density=density,
+    )
 
 
 def has_any(values: Array | Sequence[float]) -> bool:

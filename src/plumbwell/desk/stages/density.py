@@ -7,11 +7,9 @@ import numpy as np
 from plumbwell.desk.ledger.table import LedgerColumn, LedgerTable
 from plumbwell.desk.shown import INTERVAL, Shown
 from plumbwell.desk.stages.columns import (
-    counted_rows,
     depth_column,
-    marks_of,
-    nothing_excluded,
     table_column,
+    table_in_depth,
     values_of,
 )
 
@@ -20,7 +18,7 @@ AMBER_RATIO = 3.0
 
 def density_table(shown: Shown) -> LedgerTable:
     """The ledger of intervals."""
-    results, n = shown.results, len(shown.results.intervals)
+    results = shown.results
     table, scale = "intervals", shown.scale
     top, base = shown.interval_edges
     logged = bool(np.isfinite(values_of(results, table, "log_density")).any())
@@ -53,19 +51,9 @@ def density_table(shown: Shown) -> LedgerTable:
             amber_from=AMBER_RATIO, shown=logged, what="difference over the sd of the density",
         ),
     ]
-    marks, hints = marks_of(results.findings, "intervals", n)
     density = np.array(
         [np.nan if one.density is None else one.density for one in shown.plate.intervals], dtype=np.float64
     )
-    return LedgerTable(
-        stage="density",
-        level=INTERVAL,
-        numbers=counted_rows(n),
-        columns=tuple(columns),
-        marks=tuple(marks),
-        hints=tuple(hints),
-        excluded=nothing_excluded(n),
-        top=top,
-        base=base,
-        density=density,
+    return table_in_depth(
+        results, "density", INTERVAL, "intervals", columns=columns, top=top, base=base, density=density
     )

@@ -8,11 +8,9 @@ from plumbwell.desk.ledger.table import LedgerColumn, LedgerTable
 from plumbwell.desk.shown import STATION, Shown
 from plumbwell.desk.stages.columns import (
     along_hole,
-    counted_rows,
     depth_column,
-    marks_of,
-    nothing_excluded,
     table_column,
+    table_in_depth,
 )
 from plumbwell.survey.column import Array
 
@@ -33,7 +31,7 @@ def density_below(shown: Shown) -> Array:
 
 def reduction_table(shown: Shown) -> LedgerTable:
     """The ledger of stations with every part that is taken out of gravity."""
-    results, n = shown.results, len(shown.results.stations)
+    results = shown.results
     table = "stations"
     along = along_hole(results)
     tvd = table_column(results, table, "tvd", title="TVD", unit="m", decimals=1, shown=False)
@@ -59,20 +57,10 @@ def reduction_table(shown: Shown) -> LedgerTable:
         table_column(results, table, "shell", title="shells", decimals=3, signed=True, narrow=False),
         table_column(results, table, "anomaly", title="left over", sd="gravity_sd", signed=True),
     ]
-    marks, hints = marks_of(results.findings, "stations", n)
     in_column = shown.depths.column
     depth = np.where(in_column, shown.depths.stations, np.nan)
-    return LedgerTable(
-        stage="reduction",
-        level=STATION,
-        numbers=counted_rows(n),
-        columns=tuple(columns),
-        marks=tuple(marks),
-        hints=tuple(hints),
-        excluded=nothing_excluded(n),
-        top=depth,
-        base=depth,
-        density=density_below(shown),
+    return table_in_depth(
+        results, "reduction", STATION, "stations", columns=columns, top=depth, base=depth, density=density_below(shown)
     )
 
 

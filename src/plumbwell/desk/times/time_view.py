@@ -13,11 +13,10 @@ from PySide6.QtGui import QFocusEvent, QPaintEvent, QPixmap, QResizeEvent
 from PySide6.QtWidgets import QWidget
 
 from plumbwell.desk.look import Look
-from plumbwell.desk.parts.words import draw_focus
+from plumbwell.desk.parts.words import draw_focus, draw_sentence
 from plumbwell.desk.times.time_pointing import PlacedRows, rows_in_time, tares_in_time
 from plumbwell.desk.times.time_telling import told
 from plumbwell.plates.axis import head_height, title_baseline
-from plumbwell.plates.lettering import draw_text, wrapped
 from plumbwell.plates.painting import painting
 from plumbwell.plates.time_axis import TimeView
 from plumbwell.plates.time_curves import draw_time_curves
@@ -308,9 +307,7 @@ class ShownTimePlots(QWidget):
         with painting(self) as painter:
             painter.fillRect(self.rect(), theme.colour("ground"))
             baseline = head_height(theme) + title_baseline(theme)
-            for words in wrapped(theme, "text", self._empty, self.width()):
-                draw_text(painter, theme, words, x=0, baseline=baseline, role="muted", room=(0, self.width()))
-                baseline += theme.px(20)
+            draw_sentence(painter, theme, self._empty, width=self.width(), baseline=baseline)
             if self.hasFocus():
                 draw_focus(painter, theme, QRectF(self.rect()))
 

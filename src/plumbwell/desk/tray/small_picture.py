@@ -10,11 +10,10 @@ from PySide6.QtGui import QFocusEvent, QPainter, QPaintEvent, QResizeEvent
 from PySide6.QtWidgets import QWidget
 
 from plumbwell.desk.look import Look
-from plumbwell.desk.parts.words import draw_focus
-from plumbwell.plates.lettering import draw_text, wrapped
+from plumbwell.desk.parts.words import draw_focus, draw_sentence
 from plumbwell.plates.painting import painting
 
-EMPTY_BASELINE, EMPTY_LINE = 17, 20
+EMPTY_BASELINE = 17
 WIDTH, LEAST_WIDTH = 600, 200
 
 
@@ -81,9 +80,7 @@ class SmallPicture(QWidget):
                 self.paint(painter)
             else:
                 baseline = theme.px(EMPTY_BASELINE)
-                for words in wrapped(theme, "text", self._empty, self.width()):
-                    draw_text(painter, theme, words, x=0, baseline=baseline, role="muted", room=(0, self.width()))
-                    baseline += theme.px(EMPTY_LINE)
+                draw_sentence(painter, theme, self._empty, width=self.width(), baseline=baseline)
             if self.hasFocus():
                 draw_focus(painter, theme, QRectF(self.rect()))
 
