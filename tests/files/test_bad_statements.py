@@ -77,17 +77,17 @@ def test_unknown_recipe_key(told: Told) -> None:
 
 def test_recipe_values_that_are_wrong_or_cannot_be_done(told: Told) -> None:
     text = told(
-        TOML + '\n[recipe]\ndrift_order = 7\nlayers = "smooth"\ndrift_walk = 0.01\ntares = "proposed"\n'
+        TOML + '\n[recipe]\ndrift_order = 7\nlayers = "smooth"\ndrift_walk = -0.01\ntares = "found"\n'
     )
     assert text.split("\n") == [
         'survey.toml, row 13, [recipe] drift_order: found 7; expected "auto", 0, 1, 2 or 3; to mend: correct '
         "the value",
         'survey.toml, row 14, [recipe] layers: found "smooth", which this version cannot do; '
         'expected "plain" or "none"; to mend: write one of these, or remove the key',
-        "survey.toml, row 15, [recipe] drift_walk: found 0.01, which this version cannot do; "
-        'expected "auto" or "off"; to mend: write one of these, or remove the key',
-        'survey.toml, row 16, [recipe] tares: found "proposed", which this version cannot do; '
-        'expected "listed"; to mend: write one of these, or remove the key',
+        'survey.toml, row 15, [recipe] drift_walk: found -0.01; expected "auto", "off", "on" or a number in '
+        "mGal/h^1.5 above 0; to mend: correct the value",
+        'survey.toml, row 16, [recipe] tares: found "found"; expected "listed" or "proposed"; to mend: correct '
+        "the value",
     ]
 
 

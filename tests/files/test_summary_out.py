@@ -33,8 +33,8 @@ readings = "readings.csv"
 def test_keys_are_those_of_the_contract(shaft):
     told = json.loads(summary_text(shaft, outputs=["stations.csv"]))
     assert list(told) == [
-        "format", "program_version", "survey", "recipe", "counts", "free_air_gradient", "drift", "tares",
-        "variance_components", "chi_square", "absolute", "findings", "inputs", "outputs", "cautions", "notes",
+        "format", "program_version", "survey", "recipe", "counts", "free_air_gradient", "drift", "tares", "outliers",
+        "scale_factors", "variance_components", "chi_square", "absolute", "findings", "inputs", "outputs", "cautions", "notes",
         "timing",
     ]  # fmt: skip
     assert told["format"] == "plumbwell-summary/1" and told["program_version"] == __version__
@@ -109,7 +109,7 @@ def test_variance_components_and_chi_square_are_in_mgal_and_fit(shaft):
     told = summary(shaft, outputs=[])
     parts = told["variance_components"]
     assert parts["reading"] == 0.002, "no visit has two readings: the floor holds"
-    assert 0.005 < parts["reseating"] < 0.015 and parts["dof"] == 19 and parts["walk"] is None
+    assert 0.005 < parts["reseating"] < 0.015 and parts["dof"] == 19 and parts["walk"] == 0.0
     # With the re-seating noise estimated from them the visits' squares sum to about their freedom.
     assert told["chi_square"]["dof"] == 19
     assert told["chi_square"]["value"] == pytest.approx(19.0, rel=0.2)

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from made_surveys import loop, made_case
-from plumbwell.reduction.design import DriftUnknown
+from plumbwell.reduction.drift_basis import DriftUnknown
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Tare
 

@@ -195,10 +195,6 @@ def test_settings_are_told_in_the_units_of_people(case, key, value, told):
         ("depth_sd", -1, "Sd of depths cannot be \u22121 m. It may be a number in m from 0 to 100."),
         ("depth_sd", float("nan"), "Sd of depths cannot be nan m. It may be a number in m from 0 to 100."),
         ("layers", "smooth", 'Layers cannot be smooth in this version of the program. It may be "plain" or "none".'),
-        (
-            "drift_walk", 0.3,
-            'Drift walk cannot be 0.3 mGal/h^1.5 in this version of the program. It may be "auto" or "off".',
-        ),
         ("reference_density", "markers", 'The reference density cannot be "markers": no marker has a density.'),
         ("reference_density", "log", 'The reference density cannot be "log": the survey has no density log.'),
         ("layer_boundaries", "markers", 'The layer boundaries cannot be "markers": the survey has no markers.'),

@@ -198,9 +198,10 @@ def test_repeat_sd_agrees_with_the_whole_covariance_of_the_residuals(name, reque
     np.add.at(whole, (design.entry_visit, design.n_stations + design.entry_unknown), design.entry_value)
     normal = whole.T @ (solution.weight[:, None] * whole)
     np.add.at(normal, (solution.ties.station, solution.ties.station), solution.ties.weight)
-    for prior in design.priors:
-        at = design.n_stations + prior.unknowns
-        normal[np.ix_(at, at)] += np.outer(prior.factors, prior.factors) / prior.sd**2
+    priors = np.zeros((len(design.priors), design.size))
+    np.add.at(priors, (design.priors.row, design.priors.unknown), design.priors.factor)
+    priors /= design.priors.sd[:, None]
+    normal[design.n_stations :, design.n_stations :] += priors.T @ priors
     scale = 1.0 / np.sqrt(np.diagonal(normal))
     inverse = scale[:, None] * np.linalg.inv(normal * np.outer(scale, scale)) * scale
     spread = np.diag(1.0 / solution.weight) - whole @ inverse @ whole.T

@@ -7,66 +7,18 @@ derivatives each, and is kept apart.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
+from plumbwell.density.chain_spread import ChainSpread
 from plumbwell.density.interval import IntervalDensities
 from plumbwell.earth.shells import interval_density_derivatives
 from plumbwell.reduction.datums import StationGravity
 from plumbwell.reduction.effects import Anomalies, KnownParts
 from plumbwell.reduction.spread import Spread
+from plumbwell.reduction.wide_spread import Sums
 from plumbwell.survey.column import Array, Column, Index, Input, Law, computed, constant_column
-
-
-@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
-class ChainSpread:
-    """A covariance of k intervals: tridiagonal along chains of shared stations, plus low rank.
-
-    Parameters
-    ----------
-    diagonal : (k,) array
-    follower : (k,) int array
-        The interval that starts where this one ends, -1 for none.
-    neighbour : (k,) array
-        Chain part of the covariance with the follower.
-    columns, signs : (k, r), (r,) arrays
-        As in `Spread`.
-    """
-
-    diagonal: Array
-    follower: Index
-    neighbour: Array
-    columns: Array
-    signs: Array
-
-    def variance(self) -> Array:
-        """The k variances; rounding below 0 is taken as 0."""
-        return np.maximum(self.diagonal + self.columns**2 @ self.signs, 0.0)
-
-    def matrix(self) -> Array:
-        """The whole covariance, (k, k)."""
-        matrix = np.diag(self.diagonal) + (self.columns * self.signs) @ self.columns.T
-        first = np.flatnonzero(self.follower >= 0)
-        second = self.follower[first]
-        matrix[first, second] += self.neighbour[first]
-        matrix[second, first] += self.neighbour[first]
-        return matrix
-
-    def with_follower(self) -> Array:
-        """Covariance of each interval with its follower, (k,); 0 where there is none."""
-        second = np.maximum(self.follower, 0)
-        low = np.einsum("kr,kr,r->k", self.columns, self.columns[second], self.signs)
-        return np.where(self.follower >= 0, self.neighbour + low, 0.0)
-
-    def __add__(self, other: ChainSpread) -> ChainSpread:
-        return ChainSpread(
-            diagonal=self.diagonal + other.diagonal,
-            follower=self.follower,
-            neighbour=self.neighbour + other.neighbour,
-            columns=np.hstack([self.columns, other.columns]),
-            signs=np.concatenate([self.signs, other.signs]),
-        )
 
 
 def _followers(top: Index, base: Index) -> Index:
@@ -74,16 +26,9 @@ def _followers(top: Index, base: Index) -> Index:
     return np.array([at.get(station, -1) for station in base.tolist()], dtype=np.intp)
 
 
-def through(spread: Spread, top: Index, base: Index, by_top: Array, by_base: Array, follower: Index) -> ChainSpread:
-    """The covariance of quantities that answer by `by_top` and `by_base` to errors of their two stations."""
-    next_top = np.where(follower >= 0, by_top[np.maximum(follower, 0)], 0.0)
-    return ChainSpread(
-        diagonal=by_top**2 * spread.diagonal[top] + by_base**2 * spread.diagonal[base],
-        follower=follower,
-        neighbour=by_base * next_top * spread.diagonal[base],
-        columns=by_top[:, None] * spread.columns[top] + by_base[:, None] * spread.columns[base],
-        signs=spread.signs,
-    )
+def through(spread: Spread, pairs: Sums, follower: Index) -> ChainSpread:
+    """The covariance of quantities that answer so to errors of their two stations."""
+    return ChainSpread(terms=((spread, pairs),), follower=follower)
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -204,18 +149,17 @@ def interval_errors(
     )
     follower = _followers(top, base)
 
-    def of_gravity(spread: Spread) -> ChainSpread:
-        return through(spread, top, base, by_top, by_base, follower)
+    answers = Sums(first=top, second=base, by_first=by_top, by_second=by_base)
 
     # Down the hole a station goes lower, and in a deviated one to another latitude; its gravity stays.
     top_down = by_top_height * along.cosine[top] + by_top * along.pull[top]
     base_down = by_base_height * along.cosine[base] + by_base * along.pull[base]
     depths = Spread(diagonal=along.sd**2, columns=np.zeros((len(elevation), 0)), signs=np.zeros(0))
     spreads = {
-        "reading": of_gravity(gravity.reading),
-        "drift": of_gravity(gravity.drift),
-        "tare": of_gravity(gravity.tare),
-        "depth": through(depths, top, base, top_down, base_down, follower),
+        "reading": through(gravity.reading, answers, follower),
+        "drift": through(gravity.drift, answers, follower),
+        "tare": through(gravity.tare, answers, follower),
+        "depth": through(depths, replace(answers, by_first=top_down, by_second=base_down), follower),
     }
 
     def shared(change: Array) -> Array:

@@ -90,8 +90,11 @@ reference_density = "markers"  # g/cm3 of the rock between ground and station; "
 # tide_factor = 1.16        # on the tide of a rigid Earth
 # pressure_admittance = -0.3   # uGal/hPa
 # drift_order = "auto"      # "auto", 0, 1, 2 or 3: order of the polynomial in time that is each run's drift
-# drift_walk = "auto"       # slow wander of the drift beyond its polynomial: "auto" or "off"; in this version
-                            # both leave it out, and "auto" says so among the findings
+# drift_walk = "auto"       # slow wander of the drift beyond its polynomial: "auto" keeps it where the readings
+                            # ask for it, "off", "on", or its strength in mGal/h^1.5
+# tares = "listed"          # jumps taken out: only those of [[tare]], or "proposed": those that are found too
+# outliers = "flag"         # readings that do not fit: "flag" names and keeps them; "downweight"; "exclude"
+# scale_factor = "given"    # or "estimate": from two ties or more in ties.csv
 # noise = "estimate"        # "estimate" from the survey, or "as_given" by the instrument
 # datum_station = "D1"      # datum: the station where relative gravity is 0; default: the column's highest
 # datum_sd = 50             # mGal, of the unknown absolute level, used only without a tie

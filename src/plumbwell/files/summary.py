@@ -18,7 +18,7 @@ from plumbwell.earth.constants import MILLIGAL
 from plumbwell.files.output_folder import OUTPUTS, SUMMARY_FORMAT
 from plumbwell.files.times import iso
 from plumbwell.reduction.chance import chi_square_chance
-from plumbwell.reduction.design import DriftUnknown
+from plumbwell.reduction.drift_basis import DriftUnknown
 from plumbwell.study.cautions import CAUTIONS
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
@@ -68,7 +68,12 @@ def summary(
         "counts": counts(results),
         "free_air_gradient": _number(results.choice.gradient, MILLIGAL),
         "drift": drift(results),
-        "tares": {"applied": tares(results), "proposed": []},
+        "tares": {"applied": tares(results), "proposed": proposed_tares(results)},
+        "outliers": outliers(results),
+        "scale_factors": [
+            {"instrument": one.instrument, "scale": _number(one.scale), "sd": _number(one.sd) if one.told else None}
+            for one in results.network.scales
+        ],
         "variance_components": variance_components(results),
         "chi_square": _chi_square(results),
         "absolute": results.absolute,
@@ -143,7 +148,7 @@ def drift(results: Results) -> list[dict[str, Any]]:
                 {
                     "power": power,
                     "value": _number(value, unit),
-                    "sd": _number(sd, unit) if unknown in fit.design.unknowns else None,
+                    "sd": _number(sd, unit) if unknown in fit.design.position else None,
                     "unit": "mGal/h" if power == 1 else f"mGal/h^{power}",
                 }
             )
@@ -176,18 +181,59 @@ def tares(results: Results) -> list[dict[str, Any]]:
     ]
 
 
+def proposed_tares(results: Results) -> list[dict[str, Any]]:
+    """The tares that the readings show and nobody listed, in time order, whether they are taken out or not."""
+    names = results.survey.readings.run.names
+    return [
+        {
+            "run": names[one.run],
+            "time": iso(one.time),
+            "gap_from": iso(one.gap_from),
+            "gap_to": iso(one.gap_to),
+            "size": _number(one.size, MILLIGAL),
+            "sd": _number(one.sd, MILLIGAL),
+            "gain": _number(one.gain),
+            "p": _number(one.p),
+            "stops_between": one.visits_between,
+            "applied": results.network.proposed_applied,
+        }
+        for one in results.network.proposed
+    ]
+
+
+def outliers(results: Results) -> list[dict[str, Any]]:
+    """The readings that do not fit, in the order of the file: where each stands and what it is off by."""
+    found, readings = results.network.judgement, results.survey.readings
+    return [
+        {
+            "row": int(readings.raw.lines[row]),
+            "run": readings.run.names[int(readings.run.code[row])],
+            "time": iso(float(results.readings.utc.values[row])),
+            "error": _number(error, MILLIGAL),
+            "ratio": _number(ratio),
+            "undecided": bool(alike),
+        }
+        for row, error, ratio, alike in zip(
+            found.rows.tolist(), found.error.tolist(), found.ratio.tolist(), found.alike.tolist(), strict=True
+        )
+    ]
+
+
 def variance_components(results: Results) -> dict[str, Any]:
     """Noise that the weights rest on, as sds in mGal, whether estimated or as the instrument states.
 
     `reading` is the median sd of a single reading, `reading_scale` the factor on stated sds, `reseating` the
-    root of the visits' mean re-seating variance; `dof` 0 says that the survey could not tell it.
+    root of the visits' mean re-seating variance, `walk` the strength of the drift's random walk in mGal/h^1.5,
+    None where none was tried; `dof` 0 says that the survey could not tell the noise.
     """
-    noise, seat = results.network.adjustment.noise, results.network.adjustment.reseating
+    fit = results.network.adjustment
+    noise, seat = fit.noise, fit.reseating
+    strength = fit.walk.strength if fit.walk is not None else (0.0 if fit.walk_tried else None)
     return {
         "reading": _number(float(np.median(noise.sd)), MILLIGAL),
         "reading_scale": _number(noise.scale),
         "reseating": _number(math.sqrt(float(np.mean(seat.variance))), MILLIGAL),
-        "walk": None,
+        "walk": _number(strength, MILLIGAL / HOUR**1.5),
         "dof": seat.freedom,
     }
 

@@ -142,9 +142,8 @@ def density_covariance(results: Results) -> str:
     spread, variance = intervals.errors.independent, intervals.density_sd.values**2 / unit
     if len(labels) <= MOST_WHOLE:
         return _whole("interval", labels, _symmetric(spread.matrix() / unit, variance))
-    upper, lower = spread.columns[:-1], spread.columns[1:]
-    chain = np.where(spread.follower[:-1] == np.arange(1, len(labels)), spread.neighbour[:-1], 0.0)
-    beside = (chain + np.einsum("kr,kr,r->k", upper, lower, spread.signs)) / unit
+    upper = np.arange(len(labels) - 1)
+    beside = spread.between(upper, upper + 1) / unit
     return _neighbours(labels, variance, beside + 0.0 * (variance[1:] + variance[:-1]))
 
 

@@ -1,39 +1,42 @@
 """Readings -> station gravity, drift and noise, by one adjustment of all runs.
 
-`adjusted` fits the network: reading noise from within visits, drift orders by F test, re-seating noise by
-restricted likelihood, then the solution and what it leaves at every reading. Nothing here knows of depth;
-the datum is set by `datums.referred_gravity`.
+`adjusted` fits the network: reading noise from within visits, drift orders by F test, re-seating noise and a random
+walk of the drift by restricted likelihood, then the solution and what it leaves at every reading. Nothing here knows of
+depth; the datum is set by `datums.referred_gravity`.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
-from plumbwell.reduction.added_columns import sum_of_squares_with
 from plumbwell.reduction.broken_visits import contrasts, unbroken_stretches
-from plumbwell.reduction.design import (
-    HIGHEST_ORDER,
-    Design,
-    DriftBasis,
-    DriftUnknown,
-    design,
-    visit_regressors,
-    with_priors,
-)
-from plumbwell.reduction.drift_order import Comparison, OrderTest, chosen_orders
-from plumbwell.reduction.network import Rank, Solution, TieRows, rank_of_visits, solve
+from plumbwell.reduction.candidates import more_drift
+from plumbwell.reduction.checked import Checked, checked, visit_means
+from plumbwell.reduction.design import Design, design, drift_of, walk_priors, with_priors
+from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
+from plumbwell.reduction.drift_order import Comparison, OrderTest, chosen_orders, raised_together
+from plumbwell.reduction.network import NO_RANK, Rank, Solution, TieRows, rank_beside_walk, rank_of_visits, solve
 from plumbwell.reduction.network_parts import Parts, undetermined
+from plumbwell.reduction.restricted_likelihood import log_likelihood, visits_alone
 from plumbwell.reduction.variances import ReadingNoise, Reseating, reading_noise, reseating, stated_reseating
 from plumbwell.reduction.visits import Visits
+from plumbwell.reduction.walk import LEAST_FREEDOM, WalkFit, enough_gain, likeliest_strength
+from plumbwell.reduction.walk_modes import modes_for
 from plumbwell.survey.column import Array, Index
 from plumbwell.survey.errors import NumericalError
 
-DESIGNS_HELD = 100
+DESIGNS_HELD = 60
 MANY_FREEDOM = 300
 """Beyond so many degrees of freedom one column more moves the noise by less than a third of a percent, and the weights
 of the lower order serve the F test."""
+
+HOPELESS = 0.7
+"""Share of the gain that is asked of a walk under which it is not tried in the network itself."""
+
+DOUBTED = 0.5
+"""Robust weight under which a reading counts as taken out in degrees of freedom."""
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -64,7 +67,14 @@ class Adjustment:
     ----------
     basis, visits, design, solution, noise, reseating
         What the fit rests on.
+    rank : Rank
+        What the visits alone determine.
     tests : tuple of OrderTest
+    walk : WalkFit or None
+    walk_tried : bool
+        False where the walk was not asked for, or the degrees of freedom are too few for it.
+    likelihood : float
+        Logarithm of the restricted likelihood of the visits.
     held : (n,) array
         Known drift of each row, m/s2.
     visit_mean : (v,) array
@@ -73,9 +83,7 @@ class Adjustment:
         m/s2.
     border_drift : (n,) array
         Drift and tares of each row from the border unknowns, run bias left out, m/s2.
-    visit_effect, residual, standardised, redundancy : (n,) arrays
-        NaN where they have no meaning (unused rows; standardised where nothing checks the reading).
-        `residual` of unused rows is the observation less its prediction.
+    checked : Checked
     """
 
     basis: DriftBasis
@@ -84,36 +92,49 @@ class Adjustment:
     solution: Solution
     noise: ReadingNoise
     reseating: Reseating
+    rank: Rank
     tests: tuple[OrderTest, ...]
+    walk: WalkFit | None
+    walk_tried: bool
+    likelihood: float
     held: Array
     visit_mean: Array
     station_floor: Array
     border_drift: Array
-    visit_effect: Array
-    residual: Array
-    standardised: Array
-    redundancy: Array
+    checked: Checked
 
     @property
     def orders(self) -> tuple[int, ...]:
         """Drift order by run code."""
         return self.design.orders
 
+    @property
+    def visit_effect(self) -> Array:
+        """See `Checked`."""
+        return self.checked.visit_effect
+
+    @property
+    def residual(self) -> Array:
+        """See `Checked`."""
+        return self.checked.residual
+
+    @property
+    def standardised(self) -> Array:
+        """See `Checked`."""
+        return self.checked.standardised
+
+    @property
+    def redundancy(self) -> Array:
+        """See `Checked`."""
+        return self.checked.redundancy
+
     def unknown(self, wanted: DriftUnknown) -> tuple[float, float]:
         """Estimate and sd of a border unknown (drift per power of scaled time); 0, 0 when it is held at 0."""
-        if wanted not in self.design.unknowns:
+        number = self.design.position.get(wanted)
+        if number is None:
             return 0.0, 0.0
-        number = self.design.unknowns.index(wanted)
-        return float(self.solution.unknown[number, 0]), float(np.sqrt(self.solution.border[number, number]))
-
-
-def visit_means(weight: Array, values: Array, start: Index) -> Array:
-    """Weighted means over visits of used rows' values, (u,) or (u, m).
-
-    `weight` (u,) sums to 1 within a visit; `start` (v + 1,) marks where each visit starts.
-    """
-    shaped = weight if values.ndim == 1 else weight[:, None]
-    return np.add.reduceat(shaped * values, start[:-1], axis=0)
+        variance = self.solution.unknown_variance(np.array([number]))
+        return float(self.solution.unknown[number, 0]), float(np.sqrt(variance[0]))
 
 
 def adjusted(
@@ -128,7 +149,9 @@ def adjusted(
     start_orders: tuple[int, ...],
     automatic: tuple[int, ...],
     station: Index,
+    walk: str | float = "off",
     responses: tuple[Array, ...] = (),
+    trust: Array | None = None,
 ) -> Adjustment:
     """The adjusted network.
 
@@ -144,9 +167,13 @@ def adjusted(
         Codes of the runs whose order is chosen.
     station : (n,) int array
         Station of each row, -1 for none.
+    walk : "auto", "off", "on" or float
+        The random walk of the drift: kept when it explains enough, none, estimated, or its strength, m/s2/s^1.5.
     responses : tuple of (n,) arrays
         Further right-hand sides, e.g. the calibrated readings of one instrument, whose answers in gravity
         stand in the further columns of `solution.gravity`.
+    trust : (n,) array or None
+        Robust weight of each row, 0 to 1. None: 1 for all.
     """
     rows = visits.rows
     orders = tuple(
@@ -156,35 +183,35 @@ def adjusted(
     lost: list[DriftUnknown] = []
     unbroken = unbroken_stretches(basis, visits)
     sd = terms.reading_floor[rows]
+    counts = np.diff(visits.start)
+    held = basis.held(rows, orders)
+    values = observed[rows] - held
 
-    def designed(chosen: tuple[int, ...], weight: Array) -> tuple[Design, Rank]:
+    def designed(chosen: tuple[int, ...], weight: Array, modes: int = 0) -> tuple[Design, Rank]:
         one, rank = _designed(
-            basis, visits, weight, n_stations=n_stations, orders=chosen, dropped=parts.dropped, lost=tuple(lost)
+            basis, visits, weight, n_stations=n_stations, orders=chosen, dropped=parts.dropped, lost=tuple(lost),
+            modes=modes,
         )
         if len(unbroken) > len(visits.start):
             one = with_priors(one, contrasts(one, basis, visits, unbroken, values, 1.0 / sd**2))
         return one, rank
 
-    counts = np.diff(visits.start)
-    held = basis.held(rows, orders)
-    values = observed[rows] - held
     even = np.repeat(1.0 / counts, counts)
     first, rank = designed(orders, even)
     while (missing := undetermined(first, ties, rank)) is not None:
         lost.append(missing)
         first, rank = designed(orders, even)
     means = np.add.reduceat(values, visits.start[:-1]) / counts
-    stated = terms.reading_sd[rows]
     typical = float(np.mean(terms.reseating_sd[rows] ** 2 + terms.reading_floor[rows] ** 2))
     rough = _solved(first, np.full(len(visits), 1.0 / typical), means, ties)
-    drift = border_drift(basis, first, rough.unknown[:, 0], rows)
     noise = reading_noise(
         visits,
-        values - drift,
+        values - drift_of(basis, first, rough.unknown[:, 0], rows, bias=True),
         unbroken=unbroken,
-        stated=stated,
+        stated=terms.reading_sd[rows],
         floor=terms.reading_floor[rows],
         estimate=terms.estimate,
+        trust=None if trust is None else trust[rows],
     )
     sd = noise.sd
     # Rounding apart the weights within visits are even where all readings are equally good.
@@ -192,51 +219,110 @@ def adjusted(
     u0 = stated_reseating(
         noise,
         reseating_sd=terms.reseating_sd[rows][visits.start[:-1]],
-        stated=stated,
+        stated=terms.reading_sd[rows],
         estimate=terms.estimate,
     )
-
+    doubtful = 0
+    if trust is not None:
+        doubtful = int(np.count_nonzero(np.maximum.reduceat(trust[rows], visits.start[:-1]) < DOUBTED))
     mean = visit_means(noise.weight, values, visits.start)
+    latest: list[float] = []
 
-    solved: dict[tuple[int, ...], tuple[int, Solution]] = {}
+    def seated(one: Design, rank: Rank, modes: Array | None = None) -> Reseating:
+        found = reseating(
+            one, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate, doubtful=doubtful,
+            start=latest[-1] if latest else None, walk=modes,
+        )
+        if np.isfinite(found.estimate):
+            latest.append(found.estimate)
+        return found
 
-    def fit(chosen: tuple[int, ...]) -> tuple[int, Solution] | None:
-        """Degrees of freedom and solution with the noise of the chosen orders; None where they are not determined."""
+    solved: dict[tuple[int, ...], tuple[Reseating, Solution]] = {}
+
+    def fit(chosen: tuple[int, ...]) -> tuple[Reseating, Solution] | None:
+        """Noise and solution of the chosen orders; None where they are not determined."""
         one, rank = designed(chosen, weighted)
         if undetermined(one, ties, rank) is not None:
             return None
         if chosen not in solved:
-            found = reseating(one, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate)
-            weight = 1.0 / (noise.variance + found.variance)
-            solved[chosen] = (found.freedom, _solved(one, weight, mean, ties))
+            seat = seated(one, rank)
+            solved[chosen] = (seat, _solved(one, 1.0 / (noise.variance + seat.variance), mean, ties))
         return solved[chosen]
 
     def compare(chosen: tuple[int, ...], run: int, higher: int) -> Comparison | None:
-        below = fit(chosen) if len(visits) > MANY_FREEDOM else None
-        if below is not None and below[0] > MANY_FREEDOM:
-            return _by_columns(*below, basis, visits, weighted, run=run, lower=chosen[run], higher=higher)
         above = fit((*chosen[:run], higher, *chosen[run + 1 :]))
         if above is None:
             return None
-        freedom, solution = above
-        added = [one.kind == "drift" and one.power > chosen[one.run] for one in solution.design.unknowns]
-        return Comparison(low=_without(solution, added), high=solution.sum_of_squares(), freedom=freedom)
+        seat, solution = above
+        added = np.array([one.kind == "drift" and one.power > chosen[one.run] for one in solution.design.unknowns])
+        return Comparison(low=_without(solution, added), high=solution.sum_of_squares(), freedom=seat.freedom)
 
     tests: tuple[OrderTest, ...] = ()
-    if automatic:
+    if automatic and len(visits) - rank.rank > MANY_FREEDOM:
+
+        def compare_all(chosen: tuple[int, ...]) -> tuple[int, float, dict[int, tuple[float, float]]]:
+            seat, solution = fit(chosen) or _nothing()
+            return seat.freedom, solution.sum_of_squares(), more_drift(solution, basis, visits, weighted)
+
+        orders, tests = raised_together(orders, automatic, compare_all)
+    elif automatic:
         orders, tests = chosen_orders(orders, automatic, compare)
     final, rank = designed(orders, weighted)
-    seat = reseating(final, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate)
+    seat = solved[orders][0] if orders in solved else seated(final, rank)
+    likelihood = np.nan
+    if seat.freedom > 0:
+        likelihood = log_likelihood(final, mean, noise.variance + seat.variance, rank=rank)
+    walking, walk_tried = None, False
+    drifting = [run for run in visits.run_order.tolist() if orders[run] > 0]
+    if walk != "off" and drifting:
+        plain, plain_rank = final, rank
+
+        def walked(strength: float, modes: int) -> tuple[Design, Rank, Reseating, float]:
+            one, _ = designed(orders, weighted, modes)
+            along = rank_beside_walk(plain_rank, plain, one)
+            prior = walk_priors(basis, one, strength)
+            extra = with_priors(replace(one, prior_matrix=np.zeros_like(one.prior_matrix)), prior).prior_matrix
+            found = seated(one, along, extra)
+            gained = np.nan
+            if found.freedom > 0:
+                gained = log_likelihood(one, mean, noise.variance + found.variance, rank=along, walk=extra)
+            return with_priors(one, prior), along, found, gained
+
+        longest = float(max(basis.length[run] for run in drifting))
+        visit_sd = float(np.sqrt(np.median(noise.variance + seat.variance)))
+
+        def modes_of(strength: float) -> int:
+            return modes_for(strength * np.sqrt(longest**3 / 3.0) / visit_sd, len(visits))
+
+        walk_tried = not isinstance(walk, str) or walk == "on" or seat.freedom >= LEAST_FREEDOM
+        if isinstance(walk, float):
+            walking = WalkFit(strength=walk, modes=modes_of(walk), likelihood=np.nan)
+        elif walk_tried and seat.freedom > 0:
+            variance = noise.variance + seat.variance
+            unit = float(np.median(variance))
+            strength, gain = likeliest_strength(
+                visits_alone(final, unit / variance, mean, rank, None), basis, visits, weighted,
+                freedom=seat.freedom, typical=unit, estimate=terms.estimate,
+            )
+            wanted = enough_gain(seat.freedom)
+            # What all noise scaled together says and what the network says differ little: far below is none.
+            if gain > 0.0 and (walk == "on" or gain > HOPELESS * wanted):
+                modes = modes_of(strength)
+                gained = walked(strength, modes)[3]
+                if walk == "on" or gained - likelihood > wanted:
+                    walking = WalkFit(strength=strength, modes=modes, likelihood=gained)
+        if walking is not None:
+            final, rank, seat, likelihood = walked(walking.strength, walking.modes)
+            walking = replace(walking, likelihood=likelihood)
     weight = 1.0 / (noise.variance + seat.variance)
     answers = [visit_means(noise.weight, one[rows], visits.start) for one in responses]
     solution = _solved(final, weight, np.column_stack([mean, *answers]), ties)
     everywhere = np.arange(len(observed))
     whole_held = basis.held(everywhere, orders)
-    drift_all = border_drift(basis, final, solution.unknown[:, 0], everywhere)
-    checked = _checked(observed - whole_held - drift_all, visits, solution, noise, seat, basis, station)
+    unknown = solution.unknown[:, 0]
+    level = observed - whole_held - drift_of(basis, final, unknown, everywhere, bias=True)
     floor = np.zeros(n_stations)
     np.maximum.at(floor, station[rows], terms.station_floor[rows])
-    bias = run_bias(basis, final, solution.unknown[:, 0])
     return Adjustment(
         basis=basis,
         visits=visits,
@@ -244,16 +330,21 @@ def adjusted(
         solution=solution,
         noise=noise,
         reseating=seat,
+        rank=rank,
         tests=tests,
+        walk=walking,
+        walk_tried=walk_tried,
+        likelihood=likelihood,
         held=whole_held,
         visit_mean=mean,
         station_floor=floor,
-        border_drift=drift_all - bias[basis.run],
-        visit_effect=checked[0],
-        residual=checked[1],
-        standardised=checked[2],
-        redundancy=checked[3],
+        border_drift=drift_of(basis, final, unknown, everywhere, bias=False),
+        checked=checked(level, visits, solution, noise, seat, basis, station),
     )
+
+
+def _nothing() -> tuple[Reseating, Solution]:
+    raise NumericalError("the network of readings could not be solved: its drift terms cannot be told apart")
 
 
 def _designed(
@@ -265,55 +356,32 @@ def _designed(
     orders: tuple[int, ...],
     dropped: tuple[DriftUnknown, ...],
     lost: tuple[DriftUnknown, ...],
+    modes: int,
 ) -> tuple[Design, Rank]:
     """The design of some orders with its rank, found again where the weights within visits are what they were."""
-    made, bytes_of_weight = basis.made, weight.tobytes()
+    made = basis.made
     if len(made) > DESIGNS_HELD:
         made.clear()
-    key = (visits, bytes_of_weight, n_stations, orders, dropped, lost)
+    key = (visits, weight.tobytes(), n_stations, orders, dropped, lost, modes)
     if key not in made:
-        if (visits, bytes_of_weight) not in made:
-            made[visits, bytes_of_weight] = visit_regressors(basis, visits, weight)
-        regressors = made[visits, bytes_of_weight]
-        one = design(basis, visits, regressors, n_stations=n_stations, orders=orders, dropped=dropped, lost=lost)
-        made[key] = (one, rank_of_visits(one))
+        one = design(
+            basis, visits, weight, n_stations=n_stations, orders=orders, dropped=dropped, lost=lost, modes=modes
+        )
+        # The modes of a walk are no fixed unknowns: the rank beside them is that of the design without.
+        made[key] = (one, rank_of_visits(one) if not modes else NO_RANK)
     return made[key]  # type: ignore[no-any-return]
 
 
-def _by_columns(
-    freedom: int,
-    below: Solution,
-    basis: DriftBasis,
-    visits: Visits,
-    weight: Array,
-    *,
-    run: int,
-    lower: int,
-    higher: int,
-) -> Comparison | None:
-    """The higher order of one run compared by adding its columns to the solution of the lower, weights kept."""
-    members = np.flatnonzero(visits.run == run)
-    first, last = int(members[0]), int(members[-1]) + 1
-    rows = slice(int(visits.start[first]), int(visits.start[last]))
-    time = basis.time(visits.rows[rows])
-    powers = np.column_stack([time**power for power in range(lower + 1, higher + 1)])
-    columns = visit_means(weight[rows], powers, visits.start[first : last + 1] - visits.start[first])
-    name = f"drift rate of run {run}"
-    prior = next((one for one in below.design.priors if one.name == name), None)
-    factors = np.full(higher - lower, 1.0 / basis.length[run])
-    high = sum_of_squares_with(below, members, columns, prior=prior, factors=factors)
-    if high is None:
-        return None
-    return Comparison(low=below.sum_of_squares(), high=high, freedom=freedom - (higher - lower))
-
-
-def _without(above: Solution, left_out: list[bool]) -> float:
+def _without(above: Solution, left_out: Array) -> float:
     """Weighted sum of squares of visit residuals when some border unknowns are held at 0, weights kept.
 
     The solution moves by C e (e^T C e)^-1 x_e, e the unknowns left out, C the covariance, x their estimates.
     """
     gone = np.flatnonzero(left_out)
-    moved = above.border[:, gone] @ np.linalg.solve(above.border[gone[:, None], gone], above.unknown[gone, 0])
+    picked = np.zeros((above.design.size, len(gone)))
+    picked[gone, np.arange(len(gone))] = 1.0
+    columns = above.factor.solve(picked)
+    moved = columns @ np.linalg.solve(columns[gone], above.unknown[gone, 0])
     residual = above.residual[:, 0] + above.fitted(moved)
     return float(above.weight @ residual**2)
 
@@ -341,71 +409,3 @@ def run_bias(basis: DriftBasis, one: Design, unknown: Array) -> Array:
         if what.kind == "bias":
             bias[what.run] = unknown[number]
     return bias
-
-
-def border_drift(basis: DriftBasis, one: Design, unknown: Array, rows: Index) -> Array:
-    """What the border unknowns (bias, drift, tares) put on the given rows, m/s2."""
-    run, time = basis.run[rows], basis.time(rows)
-    coefficient = np.zeros((HIGHEST_ORDER + 1, len(basis.start)))
-    jumps = np.zeros(len(rows))
-    for number, what in enumerate(one.unknowns):
-        if what.kind == "tare":
-            jumps += unknown[number] * basis.jumps(rows, what.tare)
-        else:
-            coefficient[what.power, what.run] = unknown[number]
-    total = coefficient[HIGHEST_ORDER][run]
-    for power in range(HIGHEST_ORDER - 1, -1, -1):
-        total = total * time + coefficient[power][run]
-    return total + jumps
-
-
-def _checked(
-    level: Array,
-    visits: Visits,
-    solution: Solution,
-    noise: ReadingNoise,
-    seat: Reseating,
-    basis: DriftBasis,
-    station: Index,
-) -> tuple[Array, Array, Array, Array]:
-    """Visit effect, residual, standardised residual and redundancy of every row; `level` is free of bias and drift."""
-    n = len(level)
-    effect, standardised, redundancy = (np.full(n, np.nan) for _ in range(3))
-    one = solution.design
-    gravity, border = solution.gravity[:, 0], solution.border
-    predicted = np.where(station >= 0, gravity[np.maximum(station, 0)], np.nan)
-    rank_of_run = np.full(len(basis.start), -1)
-    rank_of_run[visits.run_order] = np.arange(len(visits.run_order))
-    residual = np.where(rank_of_run[basis.run] >= 0, level - predicted, np.nan)
-    rows = visits.rows
-    visit = np.repeat(np.arange(len(visits)), np.diff(visits.start))
-    share, where, run = noise.weight, station[rows], basis.run[rows]
-    # Regressors of the unknowns of each row's own run, z; their means over its visit; and what the border's
-    # covariance makes of both.
-    unknown = one.of_run[run]
-    z = basis.table(rows)[one.table_row[unknown], np.arange(len(rows))[:, None]] * (unknown >= 0)
-    z_mean = visit_means(share, z, visits.start)[visit]
-    turned, turned_mean = np.empty_like(z), np.empty_like(z)
-    edges = np.searchsorted(rank_of_run[run], np.arange(len(visits.run_order) + 1)).tolist()
-    for code, start, end in zip(visits.run_order.tolist(), edges[:-1], edges[1:], strict=True):
-        own_rows = slice(start, end)
-        numbers = one.of_run[code]
-        block = border[numbers[:, None], numbers] * ((numbers >= 0)[:, None] & (numbers >= 0))
-        turned[own_rows], turned_mean[own_rows] = z[own_rows] @ block, z_mean[own_rows] @ block
-    spread = solution.mean @ border
-    at_station = 1.0 / solution.total + np.einsum("sq,sq->s", spread, solution.mean)
-    cross = spread[where[:, None], unknown]
-    base, of_mean = at_station[where], np.einsum("rm,rm->r", z_mean, cross)
-    own = np.einsum("rm,rm->r", turned_mean, z) - np.einsum("rm,rm->r", z, cross) - of_mean + base
-    fit = np.einsum("rm,rm->r", turned_mean, z_mean) - 2.0 * of_mean + base
-    tilt = np.einsum("rm,rm->r", turned - turned_mean, z - z_mean)
-    variance = (noise.variance + seat.variance)[visit]
-    kept = seat.variance[visit] / variance
-    effect[rows] = kept * visit_means(share, residual[rows], visits.start)[visit]
-    residual[rows] -= effect[rows]
-    checked = np.maximum(1.0 - fit / variance, 0.0)
-    sd2 = noise.sd**2 - noise.variance[visit] + (1.0 - kept) ** 2 * variance * checked + tilt
-    enough = sd2 > 1e-9 * noise.sd**2
-    standardised[rows] = np.where(enough, residual[rows] / np.sqrt(np.where(enough, sd2, 1.0)), np.nan)
-    redundancy[rows] = 1.0 - own * share / variance
-    return effect, residual, standardised, redundancy

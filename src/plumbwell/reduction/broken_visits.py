@@ -8,23 +8,29 @@ from __future__ import annotations
 
 import numpy as np
 
-from plumbwell.reduction.design import Design, DriftBasis, Prior, regressor
+from plumbwell.reduction.design import NO_PRIORS, Design, Priors, of_rows
+from plumbwell.reduction.drift_basis import DriftBasis
 from plumbwell.reduction.visits import Visits
-from plumbwell.survey.column import Array, Index, frozen, frozen_index
+from plumbwell.survey.column import Array, Index
 
 
 def unbroken_stretches(basis: DriftBasis, visits: Visits) -> Index:
     """Where each stretch of a visit that no tare of unknown size breaks starts in `visits.rows`, and the end."""
-    unknown = [n for n, tare in enumerate(basis.tares) if tare.size is None or tare.size_sd is not None]
-    if not unknown:
-        return visits.start
-    jumps = np.sum([basis.jumps(visits.rows, one) for one in unknown], axis=0)
-    return np.union1d(visits.start, np.flatnonzero(np.diff(jumps) != 0.0) + 1)
+    utc = basis.utc[visits.rows]
+    breaks = []
+    for number, tare in enumerate(basis.tares):
+        if tare.size is None or tare.size_sd is not None:
+            own = np.flatnonzero((visits.run == basis.tare_run[number]) & (visits.first < tare.time))
+            own = own[visits.last[own] >= tare.time]
+            for visit in own.tolist():
+                rows = slice(int(visits.start[visit]), int(visits.start[visit + 1]))
+                breaks.append(rows.start + int(np.searchsorted(utc[rows], tare.time)))
+    return np.union1d(visits.start, breaks).astype(np.intp) if breaks else visits.start
 
 
 def contrasts(
     one: Design, basis: DriftBasis, visits: Visits, unbroken: Index, values: Array, weight: Array
-) -> tuple[Prior, ...]:
+) -> Priors:
     """Differences between the stretches of broken visits, as observations of the border.
 
     Parameters
@@ -42,31 +48,31 @@ def contrasts(
     -----
     Of a visit with three stretches or more each is compared with the one before it.
     """
-    found = []
-    inner = np.setdiff1d(unbroken, visits.start)
-    for middle in inner.tolist():
+    found = NO_PRIORS
+    is_tare = np.array([what.kind == "tare" for what in one.unknowns] + [False])
+    for middle in np.setdiff1d(unbroken, visits.start).tolist():
         at = int(np.searchsorted(unbroken, middle))
         before, after = (slice(int(unbroken[n]), int(unbroken[n + 1])) for n in (at - 1, at))
-        numbers = [n for n, what in enumerate(one.unknowns) if what.run == basis.run[visits.rows[middle]]]
 
-        def mean(of: Array, part: slice) -> float:
-            return float(np.average(of[part], weights=weight[part]))
+        def mean(of: Array, part: slice) -> Array:
+            return np.average(of, axis=0, weights=weight[part])
 
-        factors = []
-        for number in numbers:
-            shape = regressor(basis, one.unknowns[number], visits.rows)
-            factors.append(mean(shape, after) - mean(shape, before))
-        moved = np.flatnonzero(factors)
-        if not any(one.unknowns[numbers[n]].kind == "tare" for n in moved.tolist()):
+        numbers = one.of_run[basis.run[visits.rows[middle]]]
+        factors = mean(of_rows(basis, one, visits.rows[after]), after) - mean(
+            of_rows(basis, one, visits.rows[before]), before
+        )
+        moved = np.flatnonzero((factors != 0.0) & (numbers >= 0))
+        if not is_tare[numbers[moved]].any():
             continue  # held at 0
         variance = 1.0 / float(np.sum(weight[before])) + 1.0 / float(np.sum(weight[after]))
-        found.append(
-            Prior(
-                name=f"jump within visit {int(np.searchsorted(visits.start, middle, side='right'))}",
-                unknowns=frozen_index([numbers[n] for n in moved.tolist()]),
-                factors=frozen([factors[n] for n in moved.tolist()]),
-                value=mean(values, after) - mean(values, before),
-                sd=float(np.sqrt(variance)),
+        found = found.joined(
+            Priors(
+                name=(f"jump within visit {int(np.searchsorted(visits.start, middle, side='right'))}",),
+                value=np.array([float(mean(values[after], after) - mean(values[before], before))]),
+                sd=np.array([float(np.sqrt(variance))]),
+                row=np.zeros(len(moved), dtype=np.intp),
+                unknown=numbers[moved],
+                factor=factors[moved],
             )
         )
-    return tuple(found)
+    return found

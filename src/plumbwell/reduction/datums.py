@@ -12,9 +12,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment, run_bias
-from plumbwell.reduction.network import NO_TIES, Solution, TieRows, border_matrix
+from plumbwell.reduction.banded import columns_of, factored, held
+from plumbwell.reduction.design import Design
+from plumbwell.reduction.network import NO_TIES, Border, Solution, TieRows, answer_of_stations, normal_equations
+from plumbwell.reduction.network import on_border as border_of
 from plumbwell.reduction.network_parts import Parts
 from plumbwell.reduction.spread import Spread, low_rank
+from plumbwell.reduction.wide_spread import WideSpread
 from plumbwell.survey.column import Array, Index
 
 UNDETERMINED = 1e-13  # of a border matrix with unit diagonal: its rounding
@@ -93,39 +97,25 @@ def referred_gravity(adjustment: Adjustment, parts: Parts, ties: TieRows, datum_
     gravity = raw.copy()
     gravity[taken] -= raw[datum[taken]]
     tie_columns = _tie_columns(solution, ties)
-    visits_alone = border_matrix(design, solution.weight, NO_TIES) if len(ties.station) else None
-    matrix, of_visits, mean = visits_alone or (solution.border_matrix, solution.total, solution.mean)
-    visited = np.zeros(len(of_visits), dtype=bool)
-    visited[design.station] = True
-    own = np.where(visited, 1.0 / of_visits, 0.0)
+    border = normal_equations(design, solution.weight, NO_TIES) if len(ties.station) else solution.border
+    of_visits = np.bincount(design.station, solution.weight, minlength=len(raw))
+    visited = of_visits > 0.0
+    own = np.where(visited, 1.0 / np.where(visited, of_visits, 1.0), 0.0)
     floor = np.where(visited, np.maximum(adjustment.station_floor**2 - own, 0.0), 0.0)
     # Ties are a datum spread over the tied stations: the errors of the visits alone, less what the ties take over
     # of the errors at the tied stations. What visits alone leave open (the level at least) falls out of that.
     tied = np.unique(ties.station) if len(ties.station) else ties.station
     taken_over = np.zeros((len(own), len(tied)))
     np.add.at(taken_over.T, np.searchsorted(tied, ties.station), (tie_columns * np.sqrt(ties.weight)).T)
-
-    def on_ties(columns: Array) -> Array:
-        return columns - taken_over @ columns[tied] if len(tied) else columns
-
-    at_tied = np.zeros_like(taken_over)
-    at_tied[tied, np.arange(len(tied))] = np.sqrt(own[tied])
-    own[tied] = 0.0
-    reading = Spread(diagonal=own + floor, columns=on_ties(at_tied), signs=np.ones(len(tied)))
-    tares = [number for number, one in enumerate(design.unknowns) if one.kind == "tare"]
-    others = [number for number, one in enumerate(design.unknowns) if one.kind != "tare"]
-    # Without a tie the solution itself has shown that nothing is left open, however weak a prior may be.
-    least = UNDETERMINED if len(tied) else 0.0
-    root = _inverse_root(matrix[np.ix_(others, others)] if tares else matrix, least)
-    drift = low_rank(on_ties(-mean[:, others] @ root))
-    tare = low_rank(np.zeros((len(own), 0)))
-    if tares:
-        carry = np.zeros((design.size, len(tares)))
-        across = matrix[np.ix_(others, tares)]
-        carry[others] = -root @ (root.T @ across)
-        carry[tares] = np.eye(len(tares))
-        left = matrix[np.ix_(tares, tares)] + across.T @ carry[others]
-        tare = low_rank(on_ties(-mean @ carry @ _inverse_root(left, least)))
+    # The floor is an error of each station's own, before any datum.
+    reading = Spread(diagonal=own, columns=np.zeros((len(own), 0)), signs=np.zeros(0)).anchored(tied, taken_over)
+    reading = Spread(diagonal=reading.diagonal + floor, columns=reading.columns, signs=reading.signs)
+    tares = np.array([n for n, one in enumerate(design.unknowns) if one.kind == "tare"], dtype=np.intp)
+    if design.layout.count == 1 and not design.layout.corner:
+        drift, tare = _by_roots(design, border, tares, least=UNDETERMINED if len(tied) else 0.0)
+    else:
+        drift, tare = _by_pairs(design, border, tares, own, tied=bool(len(tied)))
+    drift, tare = drift.anchored(tied, taken_over), tare.anchored(tied, taken_over)
     bias = run_bias(adjustment.basis, design, solution.unknown[:, 0])
     for run, part in enumerate(parts.of_run.tolist()):
         if part >= 0 and datum_of_part[part] >= 0:
@@ -143,6 +133,56 @@ def referred_gravity(adjustment: Adjustment, parts: Parts, ties: TieRows, datum_
     )
 
 
+def _by_roots(design: Design, border: Border, tares: Index, *, least: float) -> tuple[Spread, Spread]:
+    """What freeing biases and drift adds, and then tares, by a factor of the whole border.
+
+    Without a tie the solution itself has shown that nothing is left open, however weak a prior may be: `least` is 0.
+    """
+    size = design.size
+    matrix = border.matrix[: size * size].reshape(size, size)
+    dense = np.zeros((design.n_stations, size))
+    dense[design.touched_station, design.touched_unknown] = -border.mean[:-1]
+    others = np.setdiff1d(np.arange(size), tares)
+    root = _inverse_root(matrix[np.ix_(others, others)] if len(tares) else matrix, least)
+    drift = low_rank(dense[:, others] @ root)
+    if not len(tares):
+        return drift, low_rank(np.zeros((len(dense), 0)))
+    carry = np.zeros((size, len(tares)))
+    across = matrix[np.ix_(others, tares)]
+    carry[others] = -root @ (root.T @ across)
+    carry[tares] = np.eye(len(tares))
+    left = matrix[np.ix_(tares, tares)] + across.T @ carry[others]
+    return drift, low_rank(dense @ carry @ _inverse_root(left, least))
+
+
+def _by_pairs(
+    design: Design, border: Border, tares: Index, own: Array, *, tied: bool
+) -> tuple[Spread, Spread]:
+    """The same where the border is too wide for it: what drift adds is worked out pair by pair."""
+    shape = design.layout
+    pin = UNDETERMINED if tied else 0.0
+    factor = held(shape, border.matrix, tares, pin=pin) if len(tares) else factored(shape, border.matrix, pin=pin)
+    nothing = np.zeros((design.n_stations, 0))
+    wide = WideSpread(
+        design=design, border=border, factor=factor, anchors=np.zeros(0, dtype=np.intp), shares=nothing,
+        answers=np.zeros((design.size, 0)),
+    )
+    # Gravity that stands in the border has its error by readings there too.
+    inside = np.where(design.in_border >= 0, -own, 0.0)
+    drift = Spread(diagonal=inside, columns=nothing, signs=np.zeros(0), wide=(wide,))
+    if not len(tares):
+        return drift, low_rank(nothing)
+    carry = columns_of(shape, border.matrix, tares)
+    among = carry[tares].copy()
+    carry[tares] = 0.0
+    across = carry
+    carry = -factor.solve(across)
+    left = among + across.T @ carry
+    carry[tares] = np.eye(len(tares))
+    root = _inverse_root(left, pin)
+    return drift, low_rank(answer_of_stations(design, border, carry @ root))
+
+
 def _inverse_root(matrix: Array, least: float) -> Array:
     """A factor L with L L^T the inverse of a symmetric matrix, its unknowns scaled first; directions whose
     eigenvalue is not over `least` are left out."""
@@ -157,8 +197,12 @@ def _inverse_root(matrix: Array, least: float) -> Array:
 
 def _tie_columns(solution: Solution, ties: TieRows) -> Array:
     """Answer of every station to one sd of each tie, (s, t)."""
-    columns = solution.mean @ solution.border @ solution.mean[ties.station].T
-    columns[ties.station, np.arange(len(ties.station))] += 1.0 / solution.total[ties.station]
+    one, border = solution.design, solution.border
+    picked = np.zeros((one.n_stations, len(ties.station)))
+    picked[ties.station, np.arange(len(ties.station))] = 1.0
+    sides = np.column_stack([border_of(one, border, column) for column in picked.T] or [np.zeros((one.size, 0))])
+    columns = answer_of_stations(one, border, solution.factor.solve(sides))
+    columns += picked * np.where(one.in_border >= 0, 0.0, 1.0 / border.total)[:, None]
     return columns * np.sqrt(ties.weight)
 
 

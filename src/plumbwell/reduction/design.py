@@ -1,131 +1,98 @@
 """The design of the network: which unknowns each reading touches.
 
 A reading touches one station, the bias of its run, the drift polynomial of its run at its time
-(0 at the run's first used reading, scaled by the run's length) and the tares before it. Visit means are
-the observations; a visit's row of the design is the weighted mean of its readings' rows.
+(0 at the run's first used reading, scaled by the run's length), the tares before it, and the modes of its random walk.
+Visit means are the observations; a visit's row of the design is the weighted mean of its readings' rows.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field, replace
-from typing import Any
+from dataclasses import dataclass, replace
 
 import numpy as np
 
+from plumbwell.reduction.banded import ONE_BLOCK, Layout, layout
+from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
 from plumbwell.reduction.visits import Visits
-from plumbwell.survey.column import Array, Index, frozen, frozen_index
-from plumbwell.survey.instrument import Instrument, Tare
+from plumbwell.reduction.walk_modes import mode_sds, walk_modes
+from plumbwell.survey.column import Array, Index
 
-HIGHEST_ORDER = 3
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class DriftUnknown:
-    """One unknown of the border: kind "bias", "drift" or "tare", its run code, power or number of the tare."""
-
-    kind: str
-    run: int
-    power: int = 0
-    tare: int = -1
+MOST_RUNS = 30
+"""Runs of a station beyond which its gravity stands in the border: eliminated it would join them all."""
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
-class DriftBasis:
-    """The regressors of drift and tares at every row, whatever order is chosen.
+class Priors:
+    """Pseudo-observations of border unknowns: sum of factor times unknown = value +- sd, (m,) of them.
 
     Parameters
     ----------
-    run : (n,) int array
-        Run code of each row.
-    utc : (n,) array
-        s since 2000-01-01.
-    start, length : arrays by run code
-        First used reading of each run and time to its last, s; length 1 where it is 0 or unknown.
-    tares : tuple of Tare
-        Those that lie inside their run, others are left out.
-    tare_run : (m,) int array
-    rate, rate_sd : arrays by run code
-        Expected drift rate and its sd, m/s3, of the run's instrument.
-    made : dict
-        What was derived from this basis before, by all that it was derived with: designs ask for no reading, so
-        that a change of the readings' values finds them again.
+    name : tuple of str
+    value, sd : (m,) arrays
+    row, unknown, factor : (e,) arrays
+        The factors in coordinate form.
     """
 
-    run: Index
-    utc: Array
-    start: Array
-    length: Array
-    tares: tuple[Tare, ...]
-    tare_run: Index
-    rate: Array
-    rate_sd: Array
-    made: dict[Any, Any] = field(default_factory=dict, repr=False)
+    name: tuple[str, ...]
+    value: Array
+    sd: Array
+    row: Index
+    unknown: Index
+    factor: Array
 
-    def time(self, rows: Index) -> Array:
-        """Time since the run's first used reading over the run's length, one a row."""
-        run = self.run[rows]
-        return (self.utc[rows] - self.start[run]) / self.length[run]
+    def __len__(self) -> int:
+        return len(self.name)
 
-    def jumps(self, rows: Index, tare: int) -> Array:
-        """1 for rows of the tare's run at or after it, else 0."""
-        after = self.utc[rows] >= self.tares[tare].time
-        return np.where(after & (self.run[rows] == self.tare_run[tare]), 1.0, 0.0)
+    def joined(self, other: Priors) -> Priors:
+        """These and others."""
+        if not len(other):
+            return self
+        return Priors(
+            name=self.name + other.name,
+            value=np.concatenate([self.value, other.value]),
+            sd=np.concatenate([self.sd, other.sd]),
+            row=np.concatenate([self.row, other.row + len(self)]),
+            unknown=np.concatenate([self.unknown, other.unknown]),
+            factor=np.concatenate([self.factor, other.factor]),
+        )
 
-    def table(self, rows: Index) -> Array:
-        """Every regressor that any order could use at the given rows, (4 + m, n): powers 0 to 3 of time, m jumps."""
-        time = self.time(rows)
-        powers = [np.ones(len(rows)), time, time * time, time * time * time]
-        return np.array(powers + [self.jumps(rows, one) for one in range(len(self.tares))])
+    def row_of(self, name: str) -> int:
+        """Number of the prior of some name, -1 where there is none."""
+        return self.name.index(name) if name in self.name else -1
 
-    def held(self, rows: Index, orders: tuple[int, ...]) -> Array:
-        """Drift that is known: the expected rate of runs of order 0, and tares of stated size, m/s2."""
-        zero = np.array([order == 0 for order in orders])
-        run = self.run[rows]
-        drift = np.where(zero[run], self.rate[run] * (self.utc[rows] - self.start[run]), 0.0)
-        for number, tare in enumerate(self.tares):
-            if tare.size is not None and tare.size_sd is None:
-                drift = drift + tare.size * self.jumps(rows, number)
-        return drift
+    def of(self, unknown: Array) -> Array:
+        """What each prior observes when the unknowns have these values, (m,)."""
+        return np.bincount(self.row, self.factor * unknown[self.unknown], minlength=len(self))
 
 
-def drift_basis(
-    utc: Array,
-    run: Index,
-    run_names: tuple[str, ...],
-    visits: Visits,
-    tares: tuple[Tare, ...],
-    run_instrument: tuple[Instrument, ...],
-) -> DriftBasis:
-    """The drift basis of a survey; tares outside the used readings of their run are left out."""
-    rows = visits.rows
-    inside = []
-    for tare in tares:
-        code = run_names.index(tare.run) if tare.run in run_names else -1
-        times = utc[rows][run[rows] == code]
-        if times.size and times.min() < tare.time <= times.max():
-            inside.append((code, tare))
-    length = np.where(visits.run_length > 0.0, visits.run_length, 1.0)
-    return DriftBasis(
-        run=run,
-        utc=utc,
-        start=frozen(np.nan_to_num(visits.run_start)),
-        length=frozen(np.nan_to_num(length, nan=1.0)),
-        tares=tuple(tare for _, tare in inside),
-        tare_run=frozen_index([code for code, _ in inside]),
-        rate=frozen([one.drift_rate for one in run_instrument]),
-        rate_sd=frozen([one.drift_rate_sd for one in run_instrument]),
-    )
+NO_PRIORS = Priors(
+    name=(),
+    value=np.zeros(0),
+    sd=np.zeros(0),
+    row=np.zeros(0, dtype=np.intp),
+    unknown=np.zeros(0, dtype=np.intp),
+    factor=np.zeros(0),
+)
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
-class Prior:
-    """A pseudo-observation of border unknowns: sum of factor times unknown = value +- sd."""
+class Pairs:
+    """Products of two elements of one row, once for each place of the border matrix that they add to.
 
-    name: str
-    unknowns: Index
-    factors: Array
-    value: float
-    sd: float
+    Parameters
+    ----------
+    first, second : (p,) int arrays
+        The elements.
+    place : (p,) int array
+        Where in the flat matrix.
+    times : (p,) array
+        2 where the product stands for both orders of its elements.
+    """
+
+    first: Index
+    second: Index
+    place: Index
+    times: Array
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -135,24 +102,41 @@ class Design:
     Parameters
     ----------
     unknowns : tuple of DriftUnknown
-        The border unknowns that are solved for.
+        The border unknowns that are solved for: run by run, then the gravity of stations of very many runs.
+    position : dict
+        Number of each unknown.
     orders : tuple of int by run code
+    modes : int
+        Modes of the random walk in each run; 0 for none.
     n_stations : int
-    station : (v,) int array
-        Station of each visit.
+    station, run : (v,) int arrays
+        Station and run of each visit.
+    local : (v,) int array
+        The same, `n_stations` where the station's gravity stands in the border.
+    in_border : (s,) int array
+        Number of the unknown that is a station's gravity; -1 for the others, which are eliminated.
     of_run : (runs, k) int array by run code
         Border unknowns of each run, filled up with -1.
-    table_row : (q + 1,) int array
-        Row of `DriftBasis.table` that each unknown multiplies; the last stands for none.
+    layout : Layout
+        Of the border matrix.
     entry_visit, entry_unknown, entry_value : (e,) arrays
         Non-zero elements of the visits' rows in the border.
-    pair_visit, pair_flat, pair_value : (p,) arrays
-        Products of two elements of one visit, and where they add in the flattened border matrix.
-    entry_flat : (e,) int array
-        Where each element adds in the flattened (station, border) matrix.
-    priors : tuple of Prior
-    prior_matrix, prior_side : (q, q), (q,) arrays
-        What the priors add to the border's normal matrix and right-hand side.
+    entry_at : (e,) int array
+        Element of `touched_*` to which each adds; the number of those for visits at stations in the border.
+    slot_at : (v, k) int array
+        The same for each visit and place of `of_run`; the number of those where nothing is touched.
+    slot_value : (v, k) array
+        The visits' regressors in those places.
+    pairs : Pairs
+        Of the entries.
+    pair_visit, pair_value : (p,) arrays
+        Their visit and product.
+    touched_station, touched_unknown : (t,) int arrays
+        Which border unknowns the visits of each eliminated station touch, by station.
+    touched_pairs : Pairs
+    priors : Priors
+    prior_matrix, prior_side : arrays
+        What the priors add to the flat border matrix and to the right-hand side (q,).
     dropped : tuple of DriftUnknown
         Constants that the datum of a network part makes superfluous: held at 0.
     lost : tuple of DriftUnknown
@@ -160,19 +144,29 @@ class Design:
     """
 
     unknowns: tuple[DriftUnknown, ...]
+    position: dict[DriftUnknown, int]
     orders: tuple[int, ...]
+    modes: int
     n_stations: int
     station: Index
+    run: Index
+    local: Index
+    in_border: Index
     of_run: Index
-    table_row: Index
+    layout: Layout
     entry_visit: Index
     entry_unknown: Index
     entry_value: Array
-    entry_flat: Index
+    entry_at: Index
+    slot_at: Index
+    slot_value: Array
+    pairs: Pairs
     pair_visit: Index
-    pair_flat: Index
     pair_value: Array
-    priors: tuple[Prior, ...]
+    touched_station: Index
+    touched_unknown: Index
+    touched_pairs: Pairs
+    priors: Priors
     prior_matrix: Array
     prior_side: Array
     dropped: tuple[DriftUnknown, ...]
@@ -183,155 +177,309 @@ class Design:
         """Number of border unknowns."""
         return len(self.unknowns)
 
+    def of_run_of_visit(self, visits: Index) -> Index:
+        """Border unknowns of the runs of some visits, (m, k); -1 in places that none fills."""
+        return self.of_run[self.run[visits]]
 
-def regressor(basis: DriftBasis, unknown: DriftUnknown, rows: Index) -> Array:
-    """Value of one border unknown's regressor at the given rows."""
-    if unknown.kind == "tare":
-        return basis.jumps(rows, unknown.tare)
-    mine = basis.run[rows] == unknown.run
-    if unknown.kind == "bias":
-        return np.where(mine, 1.0, 0.0)
-    return np.where(mine, basis.time(rows) ** unknown.power, 0.0)
+    def on_visits(self, unknown: Array) -> Array:
+        """What border unknowns (q,) put on each visit, (v,)."""
+        return np.bincount(
+            self.entry_visit, self.entry_value * unknown[self.entry_unknown], minlength=len(self.station)
+        )
 
-
-@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
-class VisitRegressors:
-    """Weighted visit means of every regressor that any order could use.
-
-    Parameters
-    ----------
-    table : (4 + m, v) array
-        Ones, means of time, its square and cube within the run, and the share of each visit's weight at or
-        after each of m tares.
-    """
-
-    table: Array
+    def prior_at_unit_weight(self, scale: Array) -> Array:
+        """What the priors add to the flat border matrix when each counts as much as one visit."""
+        one = self.priors
+        norm = np.sqrt(np.bincount(one.row, (one.factor * scale[one.unknown]) ** 2, minlength=len(one)))
+        return _prior_matrix(self.layout, one, norm)
 
 
-def visit_regressors(basis: DriftBasis, visits: Visits, row_weight: Array) -> VisitRegressors:
-    """Visit means of the regressors; `row_weight` (u,) sums to 1 within each visit, in the order of `visits.rows`."""
-    means = np.add.reduceat(row_weight * basis.table(visits.rows), visits.start[:-1], axis=1)
-    means[0] = 1.0
-    return VisitRegressors(table=frozen(means))
+def at_times(basis: DriftBasis, one: Design, run: Index, utc: Array) -> Array:
+    """Regressors of the border unknowns of some runs (n,) at some times (n,), (n, k), in the order of `of_run`."""
+    return _regressors(basis, one.unknowns, one.of_run, run, utc)
+
+
+def of_rows(basis: DriftBasis, one: Design, rows: Index) -> Array:
+    """Regressors of the border unknowns of each row's own run, (n, k), in the order of `Design.of_run`."""
+    return at_times(basis, one, basis.run[rows], basis.utc[rows])
+
+
+def drift_of(basis: DriftBasis, one: Design, unknown: Array, rows: Index, *, bias: bool) -> Array:
+    """What the border unknowns put on the given rows, with or without the bias of their run, m/s2."""
+    kept = unknown if bias else np.where([what.kind == "bias" for what in one.unknowns], 0.0, unknown)
+    numbers = one.of_run[basis.run[rows]]
+    coefficient = np.where(numbers >= 0, np.append(kept, 0.0)[numbers], 0.0)
+    return np.einsum("nk,nk->n", of_rows(basis, one, rows), coefficient)
+
+
+def _regressors(
+    basis: DriftBasis, unknowns: tuple[DriftUnknown, ...], of_run: Index, run: Index, utc: Array
+) -> Array:
+    """Values of the unknowns of each row's run at the row's time, (n, k); 0 in places that no unknown fills."""
+    power = np.array([what.power if what.kind == "drift" else 0 for what in unknowns] + [0])
+    jump = np.array([basis.tares[what.tare].time if what.kind == "tare" else np.nan for what in unknowns] + [np.nan])
+    mode = np.array([what.power if what.kind == "walk" else 0 for what in unknowns] + [0])
+    time = (utc - basis.start[run]) / basis.length[run]
+    numbers = of_run[run]
+    value = np.zeros(numbers.shape)
+    shapes = walk_modes(time, int(mode.max())) * basis.length[run][:, None] ** 1.5 if mode.any() else None
+    for slot in range(numbers.shape[1]):
+        number, any_run = numbers[:, slot], of_run[:, slot]
+        grown = np.ones(len(run))
+        if power[any_run].any():
+            grown = time ** power[number]
+        if not np.isnan(jump[any_run]).all():
+            grown = np.where(np.isnan(jump[number]), grown, utc >= jump[number])
+        if shapes is not None and mode[any_run].any():
+            wave = shapes[np.arange(len(run)), np.maximum(mode[number] - 1, 0)]
+            grown = np.where(mode[number] > 0, wave, grown)
+        value[:, slot] = np.where(number >= 0, grown, 0.0)
+    return value
 
 
 def design(
     basis: DriftBasis,
     visits: Visits,
-    regressors: VisitRegressors,
+    weight: Array,
     *,
     n_stations: int,
     orders: tuple[int, ...],
     dropped: tuple[DriftUnknown, ...],
     lost: tuple[DriftUnknown, ...] = (),
+    modes: int = 0,
 ) -> Design:
     """The design for given drift orders.
 
     Parameters
     ----------
-    basis, visits, regressors
-        From `drift_basis`, `visits.visits`, `visit_regressors`.
+    basis, visits
+        From `drift_basis`, `visits.visits`.
+    weight : (u,) array
+        Share of each reading in its visit's mean; sums to 1 within a visit.
     n_stations : int
     orders : tuple of int by run code
         Runs without used readings are ignored.
     dropped, lost : tuples of DriftUnknown
         Constants and undetermined unknowns that are held at 0.
+    modes : int
+        Modes of the random walk in every run that has a drift.
     """
     away = {*dropped, *lost}
-    unknowns = tuple(one for one in _all_unknowns(basis, visits, orders) if one not in away)
+    everything = _unknowns_of_runs(basis, visits, orders, modes)
+    by_run = {run: [one for one in own if one not in away] for run, own in everything.items()}
+    banded = sum(len(own) for own in by_run.values())
+    bases = _stations_of_many_runs(visits, n_stations) if banded > ONE_BLOCK else np.zeros(0, dtype=np.intp)
+    in_border = np.full(n_stations, -1)
+    in_border[bases] = banded + np.arange(len(bases))
+    local = np.where(in_border[visits.station] >= 0, n_stations, visits.station)
+    order = list(by_run) if banded <= ONE_BLOCK else _run_order(visits, local, n_stations, by_run)
+    unknowns = tuple(one for run in order for one in by_run[run]) + tuple(
+        DriftUnknown(kind="gravity", run=-1, station=int(one)) for one in bases.tolist()
+    )
+    position = {one: number for number, one in enumerate(unknowns)}
+    most = max((len(own) for own in by_run.values()), default=0)
+    of_run = np.full((len(basis.start), most), -1, dtype=np.intp)
+    for run, own in by_run.items():
+        of_run[run, : len(own)] = [position[one] for one in own]
+    value = np.add.reduceat(
+        weight[:, None] * _regressors(basis, unknowns, of_run, basis.run[visits.rows], basis.utc[visits.rows]),
+        visits.start[:-1],
+        axis=0,
+    )
+    numbers = of_run[visits.run]
+    is_bias = np.array([one.kind == "bias" for one in unknowns] + [False])
+    value[is_bias[numbers]] = 1.0
+    present = numbers >= 0
+    entry_visit, entry_unknown, entry_value = np.nonzero(present)[0], numbers[present], value[present]
+    at_base = np.flatnonzero(local == n_stations)
+    if at_base.size:
+        entry_visit = np.concatenate([entry_visit, at_base])
+        entry_unknown = np.concatenate([entry_unknown, in_border[visits.station[at_base]]])
+        entry_value = np.concatenate([entry_value, np.ones(at_base.size)])
     size = len(unknowns)
-    by_run: dict[int, list[int]] = {}
-    for number, one in enumerate(unknowns):
-        by_run.setdefault(one.run, []).append(number)
-    # For each run its unknowns and their rows in the table of regressors, filled up with none.
-    most = max((len(numbers) for numbers in by_run.values()), default=0)
-    number_of = np.full((len(basis.start), most), -1, dtype=np.intp)
-    for run, numbers in by_run.items():
-        number_of[run, : len(numbers)] = numbers
-    tare_rows = HIGHEST_ORDER + 1
-    row_of = np.array([tare_rows + one.tare if one.kind == "tare" else one.power for one in unknowns] + [0])
-    unknown = number_of[visits.run]
-    value = regressors.table[row_of[unknown], np.arange(len(visits))[:, None]]
-    present = unknown >= 0
-    visit = np.nonzero(present)[0]
-    first, second = unknown[:, :, None], unknown[:, None, :]
-    both = (first >= 0) & (second >= 0)
-    pair_visit = np.nonzero(both)[0]
-    pair_flat = (first * size + second)[both]
-    pair_value = (value[:, :, None] * value[:, None, :])[both]
-    unknown, value = unknown[present], value[present]
+    key = local[entry_visit] * max(size, 1) + entry_unknown
+    eliminated = local[entry_visit] < n_stations
+    touched, entry_at = np.unique(key[eliminated], return_inverse=True)
+    at = np.full(len(key), len(touched))
+    at[eliminated] = entry_at
+    touched_station, touched_unknown = np.divmod(touched, max(size, 1))
+    slot_at = np.full(numbers.shape, len(touched))
+    slot_at[present] = at[: np.count_nonzero(present)]
+    sorting = np.argsort(entry_visit, kind="stable")
+    first, second = _within(entry_visit[sorting])
+    first, second = sorting[first], sorting[second]
+    near_first, near_second = _within(touched_station)
+    apart = np.abs(touched_unknown[near_first] - touched_unknown[near_second])
+    shape = layout(size, len(bases), int(max(apart.max(initial=0), most)))
+    pairs = _pairs(shape, entry_unknown, first, second)
     none = Design(
         unknowns=unknowns,
+        position=position,
         orders=orders,
+        modes=modes,
         n_stations=n_stations,
         station=visits.station,
-        of_run=number_of,
-        table_row=row_of,
-        entry_visit=visit,
-        entry_unknown=unknown,
-        entry_value=value,
-        entry_flat=visits.station[visit] * size + unknown,
-        pair_visit=pair_visit,
-        pair_flat=pair_flat,
-        pair_value=pair_value,
-        priors=(),
-        prior_matrix=np.zeros((size, size)),
+        run=visits.run,
+        local=local,
+        in_border=in_border,
+        of_run=of_run,
+        layout=shape,
+        entry_visit=entry_visit,
+        entry_unknown=entry_unknown,
+        entry_value=entry_value,
+        entry_at=at,
+        slot_at=slot_at,
+        slot_value=np.where(present, value, 0.0),
+        pairs=pairs,
+        pair_visit=entry_visit[pairs.first],
+        pair_value=entry_value[pairs.first] * entry_value[pairs.second],
+        touched_station=touched_station,
+        touched_unknown=touched_unknown,
+        touched_pairs=_pairs(shape, touched_unknown, near_first, near_second),
+        priors=NO_PRIORS,
+        prior_matrix=np.zeros(shape.starts[3]),
         prior_side=np.zeros(size),
         dropped=dropped,
         lost=lost,
     )
-    return with_priors(none, _priors(basis, unknowns))
+    return with_priors(none, _priors(basis, none))
 
 
-def with_priors(one: Design, priors: tuple[Prior, ...]) -> Design:
+def _within(group: Index) -> tuple[Index, Index]:
+    """All ordered pairs of elements of one group; the groups stand together."""
+    if not len(group):
+        return group, group
+    start = np.flatnonzero(np.diff(group, prepend=group[0] - 1))
+    count = np.diff(np.append(start, len(group)))
+    of_element = np.repeat(count, count)
+    first = np.repeat(np.arange(len(group)), of_element)
+    begin = np.repeat(np.repeat(start, count), of_element)
+    inside = np.arange(len(first)) - np.repeat(np.cumsum(of_element) - of_element, of_element)
+    return first, begin + inside
+
+
+def _pairs(shape: Layout, unknown: Index, first: Index, second: Index) -> Pairs:
+    once = shape.once(unknown[first], unknown[second])
+    first, second = first[once], second[once]
+    one, other = unknown[first], unknown[second]
+    place = shape.place(one, other)
+    alone = (one == other) | shape.once(other, one)
+    return Pairs(first=first, second=second, place=place, times=np.where(alone, 1.0, 2.0))
+
+
+def _stations_of_many_runs(visits: Visits, n_stations: int) -> Index:
+    """Stations of more runs than may be eliminated without filling the border."""
+    pairs = np.unique(visits.station * (int(visits.run.max(initial=0)) + 1) + visits.run)
+    runs = np.bincount(pairs // (int(visits.run.max(initial=0)) + 1), minlength=n_stations)
+    return np.flatnonzero(runs > MOST_RUNS)
+
+
+def _run_order(visits: Visits, local: Index, n_stations: int, by_run: dict[int, list[DriftUnknown]]) -> list[int]:
+    """The order of runs in which those that share a station stand nearest to one another.
+
+    Time order mostly does; else the one of Cuthill & McKee (1969).
+    """
+    from scipy.sparse import coo_array
+    from scipy.sparse.csgraph import reverse_cuthill_mckee
+
+    runs = list(by_run)
+    rank = np.full(max(runs) + 1, -1)
+    rank[runs] = np.arange(len(runs))
+    here = local < n_stations
+    touched = np.unique(local[here] * len(runs) + rank[visits.run[here]])
+    station, run = np.divmod(touched, len(runs))
+    first, second = _within(station)
+    one, other = run[first], run[second]
+    graph = coo_array((np.ones(len(one)), (one, other)), shape=(len(runs), len(runs))).tocsr()
+    better = reverse_cuthill_mckee(graph, symmetric_mode=True)
+    moved = np.empty(len(runs), dtype=np.intp)
+    moved[better] = np.arange(len(runs))
+    if np.abs(moved[one] - moved[other]).max(initial=0) < np.abs(one - other).max(initial=0):
+        return [runs[number] for number in better.tolist()]
+    return runs
+
+
+def with_priors(one: Design, priors: Priors) -> Design:
     """The design with more pseudo-observations of its border unknowns."""
-    matrix, side = one.prior_matrix.copy(), one.prior_side.copy()
-    for prior in priors:
-        factors = prior.factors / prior.sd
-        matrix[prior.unknowns[:, None], prior.unknowns] += factors[:, None] * factors
-        side[prior.unknowns] += factors * (prior.value / prior.sd)
-    return replace(one, priors=one.priors + priors, prior_matrix=matrix, prior_side=side)
+    pull = priors.factor * (priors.value / priors.sd**2)[priors.row]
+    return replace(
+        one,
+        priors=one.priors.joined(priors),
+        prior_matrix=one.prior_matrix + _prior_matrix(one.layout, priors, priors.sd),
+        prior_side=one.prior_side + np.bincount(priors.unknown, pull, minlength=one.size),
+    )
 
 
-def _all_unknowns(basis: DriftBasis, visits: Visits, orders: tuple[int, ...]) -> list[DriftUnknown]:
-    everything: list[DriftUnknown] = []
-    for run in visits.run_order.tolist():
-        everything.append(DriftUnknown(kind="bias", run=run))
-        everything.extend(DriftUnknown(kind="drift", run=run, power=p) for p in range(1, orders[run] + 1))
+def _prior_matrix(shape: Layout, priors: Priors, sd: Array) -> Array:
+    """What priors of these sds add to the flat border matrix."""
+    scaled = priors.factor / sd[priors.row]
+    first, second = _within(priors.row)
+    once = shape.once(priors.unknown[first], priors.unknown[second])
+    first, second = first[once], second[once]
+    place = shape.place(priors.unknown[first], priors.unknown[second])
+    return np.bincount(place, scaled[first] * scaled[second], minlength=shape.starts[3])
+
+
+def _unknowns_of_runs(
+    basis: DriftBasis, visits: Visits, orders: tuple[int, ...], modes: int
+) -> dict[int, list[DriftUnknown]]:
+    tares: dict[int, list[DriftUnknown]] = {}
     for number, tare in enumerate(basis.tares):
         if tare.size is None or tare.size_sd is not None:
-            everything.append(DriftUnknown(kind="tare", run=int(basis.tare_run[number]), tare=number))
-    return everything
+            run = int(basis.tare_run[number])
+            tares.setdefault(run, []).append(DriftUnknown(kind="tare", run=run, tare=number))
+    found = {}
+    for run in visits.run_order.tolist():
+        drift = [DriftUnknown(kind="drift", run=run, power=power) for power in range(1, orders[run] + 1)]
+        walk = [DriftUnknown(kind="walk", run=run, power=mode) for mode in range(1, modes + 1)] if orders[run] else []
+        found[run] = [DriftUnknown(kind="bias", run=run), *drift, *tares.get(run, []), *walk]
+    return found
 
 
-def _priors(basis: DriftBasis, unknowns: tuple[DriftUnknown, ...]) -> tuple[Prior, ...]:
+def _priors(basis: DriftBasis, one: Design) -> Priors:
     """Mean drift rate of each run of order 1 or more, and the tares whose size is stated with an sd."""
-    priors = []
+    name, value, sd = [], [], []
+    row, unknown, factor = [], [], []
     drifts: dict[int, list[int]] = {}
-    for number, one in enumerate(unknowns):
-        if one.kind == "drift":
-            drifts.setdefault(one.run, []).append(number)
-        elif one.kind == "tare" and basis.tares[one.tare].size is not None:
-            tare = basis.tares[one.tare]
-            priors.append(
-                Prior(
-                    name=f"tare {one.tare}",
-                    unknowns=frozen_index([number]),
-                    factors=frozen([1.0]),
-                    value=float(tare.size),  # type: ignore[arg-type]
-                    sd=float(tare.size_sd),  # type: ignore[arg-type]
-                )
-            )
+    for number, what in enumerate(one.unknowns):
+        if what.kind == "drift":
+            drifts.setdefault(what.run, []).append(number)
+        elif what.kind == "tare" and basis.tares[what.tare].size is not None:
+            tare = basis.tares[what.tare]
+            row.append(len(name))
+            unknown.append(number)
+            factor.append(1.0)
+            name.append(f"tare {what.tare}")
+            value.append(tare.size)
+            sd.append(tare.size_sd)
     for run, numbers in drifts.items():
         if basis.rate_sd[run] < np.inf:
             # The mean rate is the drift at the run's last used reading (scaled time 1) over its length.
-            priors.append(
-                Prior(
-                    name=f"drift rate of run {run}",
-                    unknowns=frozen_index(numbers),
-                    factors=frozen(np.full(len(numbers), 1.0 / basis.length[run])),
-                    value=float(basis.rate[run]),
-                    sd=float(basis.rate_sd[run]),
-                )
-            )
-    return tuple(priors)
+            row += [len(name)] * len(numbers)
+            unknown += numbers
+            factor += [1.0 / float(basis.length[run])] * len(numbers)
+            name.append(f"drift rate of run {run}")
+            value.append(float(basis.rate[run]))
+            sd.append(float(basis.rate_sd[run]))
+    return Priors(
+        name=tuple(name),
+        value=np.array(value, dtype=float),
+        sd=np.array(sd, dtype=float),
+        row=np.array(row, dtype=np.intp),
+        unknown=np.array(unknown, dtype=np.intp),
+        factor=np.array(factor, dtype=float),
+    )
+
+
+def walk_priors(basis: DriftBasis, one: Design, strength: float) -> Priors:
+    """The modes of a random walk of given strength, m/s2/s^1.5, each +- its own sd."""
+    numbers = np.array([n for n, what in enumerate(one.unknowns) if what.kind == "walk"], dtype=np.intp)
+    mode = np.array([one.unknowns[n].power for n in numbers.tolist()], dtype=np.intp)
+    return Priors(
+        name=tuple(f"walk of run {one.unknowns[n].run}, mode {one.unknowns[n].power}" for n in numbers.tolist()),
+        value=np.zeros(len(numbers)),
+        sd=strength * mode_sds(int(mode.max(initial=0)))[mode - 1] if len(mode) else np.zeros(0),
+        row=np.arange(len(numbers)),
+        unknown=numbers,
+        factor=np.ones(len(numbers)),
+    )

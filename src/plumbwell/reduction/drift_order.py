@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from plumbwell.reduction.design import HIGHEST_ORDER
+from plumbwell.reduction.drift_basis import HIGHEST_ORDER
 
 CHANCE = 0.01
 LEAST_FREEDOM = 3
@@ -82,4 +82,53 @@ def chosen_orders(
                 orders[run] = HIGHEST_ORDER
             else:
                 break
+    return tuple(orders), tuple(tests)
+
+
+def raised_together(
+    start: tuple[int, ...],
+    automatic: tuple[int, ...],
+    compare: Callable[[tuple[int, ...]], tuple[int, float, dict[int, tuple[float, float]]]],
+) -> tuple[tuple[int, ...], tuple[OrderTest, ...]]:
+    """The orders that the F tests keep where very many degrees of freedom make the runs' tests independent.
+
+    Parameters
+    ----------
+    start, automatic
+        As in `chosen_orders`.
+    compare : callable
+        Orders -> degrees of freedom, weighted sum of squares, and for each run how much of it the next order and the
+        third would explain, all with the weights of the orders given.
+
+    Notes
+    -----
+    All runs are raised at once, step by step as one alone would be. With some hundred degrees of freedom the weights
+    of one order serve the other.
+    """
+    from scipy.special import fdtrc
+
+    orders, tests, waiting = list(start), [], list(automatic)
+    while waiting:
+        freedom, left, gains = compare(tuple(orders))
+        raised = []
+        for run in waiting:
+            one, third = gains[run]
+            order = orders[run]
+            for higher, gain in ((order + 1, one), (HIGHEST_ORDER, third if order == 1 else 0.0)):
+                steps = higher - order
+                if gain <= 0.0 or steps < 1 or higher > HIGHEST_ORDER:
+                    continue
+                f = gain / steps / ((left - gain) / (freedom - steps))
+                p = float(fdtrc(steps, freedom - steps, f))
+                tests.append(
+                    OrderTest(
+                        run=run, lower=order, higher=higher, f=f, freedom=(steps, freedom - steps), p=p,
+                        taken=p < CHANCE,
+                    )
+                )
+                if p < CHANCE:
+                    orders[run] = higher
+                    raised.append(run)
+                    break
+        waiting = [run for run in raised if orders[run] < HIGHEST_ORDER]
     return tuple(orders), tuple(tests)

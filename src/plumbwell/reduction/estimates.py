@@ -12,7 +12,8 @@ import numpy as np
 
 from plumbwell.reduction.adjustment import Adjustment
 from plumbwell.reduction.datums import StationGravity
-from plumbwell.reduction.design import regressor
+from plumbwell.reduction.design import of_rows
+from plumbwell.reduction.network import answer_of_stations, on_border
 from plumbwell.reduction.network_parts import Parts
 from plumbwell.survey.column import (
     Array,
@@ -69,31 +70,28 @@ class Gain:
     def weights(self, at_station: Array, at_border: Array) -> tuple[Array, Array, Array]:
         """Weights of rows, ties and priors in the estimate at_station . gravity + at_border . unknown."""
         one, visits = self.adjustment.solution, self.adjustment.visits
-        border = one.border @ (at_border - one.mean.T @ at_station)
-        station = at_station / one.total - one.mean @ border
         design = one.design
-        of_visit = station[design.station] + np.bincount(
-            design.entry_visit, design.entry_value * border[design.entry_unknown], minlength=len(visits)
-        )
-        of_visit = of_visit * one.weight
+        answer = one.factor.solve(at_border + on_border(design, one.border, at_station))
+        eliminated = np.where(design.in_border >= 0, 0.0, at_station / one.border.total)
+        station = eliminated + answer_of_stations(design, one.border, answer)
+        level = np.append(np.where(design.in_border >= 0, 0.0, station), 0.0)
+        of_visit = (level[design.local] + design.on_visits(answer)) * one.weight
         rows = np.zeros(self.n_rows)
         rows[visits.rows] = self.adjustment.noise.weight * np.repeat(of_visit, np.diff(visits.start))
         ties = station[one.ties.station] * one.ties.weight
-        priors = np.array(
-            [float(border[prior.unknowns] @ prior.factors) / prior.sd**2 for prior in design.priors]
-        )
+        priors = design.priors.of(answer) / design.priors.sd**2
         return rows, ties, priors
 
     def border_row(self, row: int, *, bias: bool) -> Array:
         """The border's regressors at one row, with or without the bias of its run."""
-        at = np.array([row], dtype=np.intp)
-        basis = self.adjustment.basis
-        return np.array(
-            [
-                float(regressor(basis, one, at)[0]) if bias or one.kind != "bias" else 0.0
-                for one in self.adjustment.design.unknowns
-            ]
-        )
+        fit, at = self.adjustment, np.array([row], dtype=np.intp)
+        numbers = fit.design.of_run[fit.basis.run[row]]
+        found = np.zeros(fit.design.size)
+        filled = numbers >= 0
+        found[numbers[filled]] = of_rows(fit.basis, fit.design, at)[0, filled]
+        if not bias:
+            found[[n for n in numbers[filled].tolist() if fit.design.unknowns[n].kind == "bias"]] = 0.0
+        return found
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -144,7 +142,7 @@ def estimates(
     held = constant_column("known_drift", "m/s2", adjustment.held)
     freed = Input("readings", computed("freed", "m/s2", FREED, Input("observed", observed), Input("held", held)))
     ties = Input("ties", constant_column("ties", "m/s2", solution.ties.value))
-    priors = Input("priors", constant_column("priors", "", [prior.value for prior in adjustment.design.priors]))
+    priors = Input("priors", constant_column("priors", "", adjustment.design.priors.value))
     gain = Gain(adjustment, n)
     datum, n_stations, size = station_gravity.datum, len(station_gravity.gravity), adjustment.design.size
     level = station_levels(parts, datum)

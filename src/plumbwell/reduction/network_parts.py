@@ -10,8 +10,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from plumbwell.reduction.design import Design, DriftBasis, DriftUnknown
-from plumbwell.reduction.network import RANK_TOLERANCE, Rank, TieRows, spectrum
+from plumbwell.reduction.design import Design
+from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
+from plumbwell.reduction.network import Rank, TieRows, open_directions, own_size
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index
 
@@ -111,11 +112,11 @@ def undetermined(design: Design, ties: TieRows, rank: Rank) -> DriftUnknown | No
     """
     if rank.lacking == 0:
         return None
-    values, vectors, _ = spectrum(design, ties, priors=True)
-    if values.size == 0 or values[0] > RANK_TOLERANCE:
+    held, directions = open_directions(design, ties, priors=True)
+    if not len(held):
         return None
-    share = np.abs(vectors[:, 0])
+    share = np.abs(directions[:, 0]) * np.sqrt(own_size(design))
     among = np.flatnonzero(share > 0.1 * share.max())
-    order = {"tare": 2, "drift": 1, "bias": 0}
+    order = {"tare": 2, "drift": 1, "bias": 0, "gravity": 0}
     worst = max(among.tolist(), key=lambda n: (order[design.unknowns[n].kind], design.unknowns[n].power))
     return design.unknowns[worst]

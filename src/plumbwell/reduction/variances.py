@@ -7,19 +7,18 @@ alone gives none at all in a third of surveys with one degree of freedom.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 
 from plumbwell.reduction.design import Design
-from plumbwell.reduction.network import NO_TIES, Rank, solve
+from plumbwell.reduction.network import Rank
+from plumbwell.reduction.restricted_likelihood import restricted_variance
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index
 
 ENOUGH_FREEDOM = 5
 STATED_FREEDOM = 4
-PASSES = 60
-SETTLED = 1e-6  # of the re-seating variance: a millionth of it moves no density
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -30,6 +29,8 @@ class ReadingNoise:
     ----------
     sd : (u,) array
         Sd of each reading, m/s2, floors applied.
+    floor : (u,) array
+        No reading is believed better, m/s2.
     weight : (u,) array
         Share of each reading in its visit's mean; sums to 1 within a visit.
     variance : (v,) array
@@ -43,6 +44,7 @@ class ReadingNoise:
     """
 
     sd: Array
+    floor: Array
     weight: Array
     variance: Array
     scale: float
@@ -51,7 +53,14 @@ class ReadingNoise:
 
 
 def reading_noise(
-    visits: Visits, deviation: Array, *, unbroken: Index, stated: Array, floor: Array, estimate: bool
+    visits: Visits,
+    deviation: Array,
+    *,
+    unbroken: Index,
+    stated: Array,
+    floor: Array,
+    estimate: bool,
+    trust: Array | None = None,
 ) -> ReadingNoise:
     """Reading noise from the scatter within visits, or as stated.
 
@@ -68,10 +77,13 @@ def reading_noise(
         `reading_floor` of each reading's instrument.
     estimate : bool
         True: sd = max(floor, s x stated); False: sd = max(floor, stated).
+    trust : (u,) array or None
+        Robust weight of each reading, 0 to 1: its variance is divided by it. None: 1 for all.
     """
     first = visits.start[:-1]
     counts = np.diff(visits.start)
-    freedom = int(np.sum(np.diff(unbroken) - 1))
+    kept = np.ones(len(deviation)) if trust is None else trust
+    freedom = int(np.sum(np.maximum(np.add.reduceat(kept, unbroken[:-1]) - 1.0, 0.0)) + 1e-9)
     known = stated[~np.isnan(stated)]
     relative = np.where(np.isnan(stated), np.median(known) if known.size else np.nan, stated)
     scale = np.nan
@@ -81,7 +93,7 @@ def reading_noise(
         sd = floor
     else:
         shape = relative if known.size else np.ones(len(deviation))
-        weight = 1.0 / shape**2
+        weight = kept / shape**2
         begin = unbroken[:-1]
         mean = np.add.reduceat(weight * deviation, begin) / np.add.reduceat(weight, begin)
         off = deviation - np.repeat(mean, np.diff(unbroken))
@@ -89,10 +101,12 @@ def reading_noise(
         sd = np.maximum(floor, found * shape)
         if known.size:
             scale = found
+    sd = sd / np.sqrt(kept)
     weight = 1.0 / sd**2
     summed = np.add.reduceat(weight, first)
     return ReadingNoise(
         sd=sd,
+        floor=floor,
         weight=weight / np.repeat(summed, counts),
         variance=1.0 / summed,
         scale=scale,
@@ -143,6 +157,9 @@ def reseating(
     rank: Rank,
     stated_variance: Array,
     estimate: bool,
+    doubtful: int = 0,
+    start: float | None = None,
+    walk: Array | None = None,
 ) -> Reseating:
     """Re-seating noise under the rules for many, few and no degrees of freedom.
 
@@ -158,8 +175,14 @@ def reseating(
         u0^2 of each visit.
     estimate : bool
         False: the stated variance holds.
+    doubtful : int
+        Visits that robust weights have as good as taken out: they tie nothing together.
+    start : float or None
+        A variance near which the estimate is looked for.
+    walk : array or None
+        What a random walk adds to the flat border matrix.
     """
-    freedom = len(observed) - rank.rank
+    freedom = max(len(observed) - rank.rank - doubtful, 0)
     if not estimate:
         return Reseating(
             variance=stated_variance,
@@ -172,7 +195,7 @@ def reseating(
         return Reseating(
             variance=stated_variance, estimate=np.nan, freedom=0, few=True, t_freedom=STATED_FREEDOM
         )
-    found = restricted_variance(design, observed, noise.variance, rank=rank)
+    found = restricted_variance(design, observed, noise.variance, rank=rank, start=start, walk=walk)
     if freedom >= ENOUGH_FREEDOM:
         return Reseating(
             variance=np.full(len(observed), found), estimate=found, freedom=freedom, few=False, t_freedom=freedom
@@ -181,56 +204,3 @@ def reseating(
     return Reseating(
         variance=blend, estimate=found, freedom=freedom, few=True, t_freedom=freedom + STATED_FREEDOM
     )
-
-
-def restricted_variance(design: Design, observed: Array, reading_variance: Array, *, rank: Rank) -> float:
-    """The re-seating variance that maximises the restricted likelihood of the visits; 0 where it grows towards 0.
-
-    Ties and priors do not count: where they contradict the visits, that is not re-seating noise. The maximum lies
-    where sum (r_v / v_v)^2 = sum (1 - h_v / v_v) / v_v, r the residual of a visit, v its
-    variance, h the variance of its estimate (Patterson & Thompson 1971). The logarithm of the ratio of the two sides
-    falls by nearly 1 for each unit of log(v), exactly so when all visits have one reading noise; a secant in that
-    variable, kept within its bracket, closes in on the root.
-
-    Parameters
-    ----------
-    design : Design
-    observed, reading_variance : (v,) arrays
-        Visit means m/s2, and their variance by reading noise.
-    rank : Rank
-        Of the visits' design; at least one degree of freedom is left.
-    """
-    values = observed[:, None]
-    typical = float(np.mean(reading_variance))
-    alone = replace(design, priors=(), prior_matrix=rank.pins, prior_side=np.zeros(design.size))
-
-    def excess(variance: float) -> float:
-        weight = typical / (reading_variance + variance)
-        solution = solve(alone, weight, values, NO_TIES)
-        left = float(np.sum((weight * solution.residual[:, 0]) ** 2)) / typical
-        right = float(np.sum(weight * (1.0 - weight * solution.variance_of_fit())))
-        return float(np.log(left / right)) if left > 0.0 and right > 0.0 else -np.inf
-
-    even = solve(alone, np.ones(len(observed)), values, NO_TIES).sum_of_squares() / (len(observed) - rank.rank)
-    x = float(np.log(max(even, typical)))
-    least = float(np.log(typical))
-    low, high = least, np.inf
-    before: tuple[float, float] | None = None
-    at_least: float | None = None
-    for _ in range(PASSES):
-        x = max(x, least)
-        at = excess(float(np.exp(x)) - typical if x > least else 0.0)
-        if x == least:
-            at_least = at
-            if at <= 0.0:
-                return 0.0
-        if abs(at) < SETTLED:
-            break
-        low, high = (x, high) if at > 0.0 else (low, x)
-        slope = -1.0 if before is None or before[0] == x else (at - before[1]) / (x - before[0])
-        before = (x, at)
-        step = at if not slope < -0.05 else -at / slope
-        x = x + step
-        if not low < x < high:
-            x = least if low == least and at_least is None else 0.5 * (low + min(high, low + 4.0))
-    return max(float(np.exp(x)) - typical, 0.0)

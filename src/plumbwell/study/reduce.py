@@ -12,15 +12,12 @@ from time import perf_counter
 
 import numpy as np
 
-from plumbwell.density.interval import LESS_LOG, IntervalDensities, interval_densities, interval_pairs
+from plumbwell.density.interval import LESS_LOG, IntervalDensities, Pairs, interval_densities, interval_pairs
 from plumbwell.density.interval_errors import AlongHole, CommonTerms, IntervalErrors, interval_errors
 from plumbwell.density.layer_boundaries import layer_boundaries
 from plumbwell.density.layers import Layers, plain_layers
 from plumbwell.density.log_mean import log_integrals, log_mean_columns
-from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
-from plumbwell.reduction.calibration import calibrated, instruments_used
-from plumbwell.reduction.datums import StationGravity, datum_stations, referred_gravity
-from plumbwell.reduction.design import drift_basis
+from plumbwell.reduction.calibration import calibrated
 from plumbwell.reduction.effects import (
     anomalies,
     free_air_choice,
@@ -33,21 +30,29 @@ from plumbwell.reduction.effects import (
 from plumbwell.reduction.estimates import OBSERVED, TO_STATION, estimates
 from plumbwell.reduction.located import Located, located
 from plumbwell.reduction.network import TieRows
-from plumbwell.reduction.network_parts import Parts, network_parts
 from plumbwell.reduction.positions import WellPath, well_path
 from plumbwell.reduction.reference_rock import reference_rock
+from plumbwell.reduction.scale_factor import ScaleEstimate, scale_estimates
 from plumbwell.reduction.stations import placement, row_depths
 from plumbwell.reduction.tide_effect import modelled_tide, shifted_tides, tide, tide_comparison, utc_time
 from plumbwell.reduction.tilt_pressure import Pressure, pressure_effect, tilt
 from plumbwell.reduction.to_station import gravity_slopes
-from plumbwell.reduction.visits import Visits, visits
+from plumbwell.reduction.visits import visits
 from plumbwell.study.case import Case
 from plumbwell.study.docket.kinds import docket
 from plumbwell.study.kept import Kept
+from plumbwell.study.network_steps import (
+    NetworkInputs,
+    NetworkWork,
+    doubtful_scales,
+    network_work,
+    noise_terms,
+    rescaled,
+    scales_told,
+)
 from plumbwell.study.overlay import with_notes, with_uses
 from plumbwell.study.results import IntervalResults, NetworkResults, ReadingResults, Results, StationResults
 from plumbwell.survey.column import (
-    Array,
     Column,
     Index,
     Input,
@@ -57,14 +62,15 @@ from plumbwell.survey.column import (
     frozen_index,
 )
 from plumbwell.survey.errors import SurveyError
-from plumbwell.survey.instrument import Instrument, Run
+from plumbwell.survey.instrument import Instrument
 from plumbwell.survey.places import Markers, Ties
 from plumbwell.survey.readings import Readings
 from plumbwell.survey.recipe import Recipe
 from plumbwell.survey.site import Site
 from plumbwell.survey.survey import Survey
 
-AUTOMATIC = "auto"
+SCALE_STEPS = 3
+"""Steps in which an estimated scale settles: each leaves of the last what that was of 1."""
 
 
 def quiet(share: float, what: str) -> None:
@@ -126,8 +132,7 @@ def reduce(
     path = keep(well_path, survey.path, north_correction=site.north_correction)
     where = keep(located, placed, depths, path, site)
     station = where.placement.station
-    stays = keep.settled(visits, readings, station, utc=utc.values, visit_gap=chosen.visit_gap)
-    if len(stays) == 0:
+    if len(keep.settled(visits, readings, station, utc=utc.values, visit_gap=chosen.visit_gap)) == 0:
         raise SurveyError("no reading in use belongs to a station: nothing can be reduced")
     done("stations", 0.1)
     choice = keep(
@@ -158,37 +163,38 @@ def reduce(
     observed = keep(_observed, raw, tidal, tilted, pressure.column, still)
     done("corrections", 0.4)
     ties = keep(_tie_rows, survey.ties, where)
-    basis = keep(
-        drift_basis, utc.values, readings.run.code, readings.run.names, stays, survey.tares,
-        _run_instruments(readings, instruments),
+    noise = keep(noise_terms, measured, instruments, estimate=chosen.noise == "estimate")
+    asked = keep(
+        NetworkInputs, readings=readings, utc=utc.values, station=station, where=where, ties=ties,
+        instruments=instruments, runs=survey.runs, tares=survey.tares,
     )
-    network = keep(network_parts, basis, stays, ties, n_stations=len(where.placement.label))
-    noise = keep(_noise_terms, measured, instruments, estimate=chosen.noise == "estimate")
-    orders = keep(_orders, readings, survey.runs, stays, chosen.drift_order)
-    counts = keep(_visit_counts, stays, len(where.placement.label))
-    pairs = keep.settled(
-        interval_pairs, where.positions, where.placement.role, network.of_station, counts,
-        min_thickness=chosen.min_thickness,
-    )
-    scales = keep(_scales, measured, instruments, raw)
-
-    def solved(values: Column) -> tuple[Adjustment, StationGravity]:
-        fit = keep(
-            adjusted, values.values, basis, stays, ties, network, noise,
-            n_stations=len(where.placement.label), start_orders=orders[0], automatic=orders[1], station=station,
-            responses=scales[1],
-        )
-        return fit, keep(_referred, fit, network, ties, where, counts, chosen.datum_station)
-
-    fit, gravity = solved(observed)
+    scales = keep(doubtful_scales, measured, instruments, raw.values)
+    worked = network_work(keep, asked, observed.values, scales[1], noise, chosen)
+    estimated: tuple[ScaleEstimate, ...] = ()
+    if chosen.scale_factor == "estimate" and len(ties.station):
+        for _ in range(SCALE_STEPS):
+            estimated = keep(
+                scale_estimates, worked.adjustment, worked.gravity.gravity, instrument=readings.instrument.code,
+                station=station, n_instruments=len(readings.instrument.names),
+            )
+            instruments = keep(rescaled, instruments, readings, estimated)
+            raw = keep(calibrated, measured, instruments, remove_tide=chosen.tide != "none")
+            observed = keep(_observed, raw, tidal, tilted, pressure.column, still)
+            scales = keep(doubtful_scales, measured, instruments, raw.values)
+            worked = network_work(keep, asked, observed.values, scales[1], noise, chosen)
+    pairs = _pairs(keep, where, worked, chosen)
     to_station = still
     if np.any(where.placement.off_station):
         slope = keep(
-            gravity_slopes, gravity.gravity, where, pairs.top, pairs.base, reference=reference, choice=choice, site=site
+            gravity_slopes, worked.gravity.gravity, where, pairs.top, pairs.base, reference=reference, choice=choice,
+            site=site,
         )
         to_station = keep(_to_station, where, slope, path, depths.sensor)
         observed = keep(_observed, raw, tidal, tilted, pressure.column, to_station)
-        fit, gravity = solved(observed)
+        worked = network_work(keep, asked, observed.values, scales[1], noise, chosen)
+        pairs = _pairs(keep, where, worked, chosen)
+    stays, network, counts = worked.visits, worked.parts, worked.counts
+    fit, gravity = worked.adjustment, worked.gravity
     columns = keep(estimates, observed, fit, gravity, network, station)
     done("network", 0.6)
     left = keep(anomalies, columns.gravity, parts, gravity.datum)
@@ -227,7 +233,9 @@ def reduce(
         ),
         network=NetworkResults(
             visits=stays, ties=ties, tie_station=tuple(labels[one] for one in ties.station.tolist()),
-            parts=network, adjustment=fit, gravity=gravity,
+            parts=network, adjustment=fit, gravity=gravity, judgement=worked.judgement,
+            proposed_applied=worked.proposed_applied, walk_not_needed=worked.walk_not_needed,
+            scales=keep(scales_told, instruments, readings, estimated),
         ),
         stations=StationResults(
             label=labels, role=where.placement.role, located=where, visits=counts,
@@ -250,6 +258,13 @@ def reduce(
     results = replace(results, findings=docket(results))
     done("docket", 1.0)
     return replace(results, timing=timing)
+
+
+def _pairs(keep: Kept, where: Located, worked: NetworkWork, chosen: Recipe) -> Pairs:
+    return keep.settled(
+        interval_pairs, where.positions, where.placement.role, worked.parts.of_station, worked.counts,
+        min_thickness=chosen.min_thickness,
+    )
 
 
 def _rows_at(station: Index) -> Index:
@@ -304,13 +319,6 @@ def _observed(raw: Column, tidal: Column, tilted: Column, pressed: Column, moved
     )
 
 
-def _run_instruments(readings: Readings, instruments: tuple[Instrument, ...]) -> tuple[Instrument, ...]:
-    """The instrument of each run, by run code: that of its first row."""
-    used = instruments_used(readings, instruments)
-    _, first = np.unique(readings.run.code, return_index=True)
-    return tuple(used[code] for code in readings.instrument.code[first].tolist())
-
-
 def _tie_rows(ties: Ties | None, where: Located) -> TieRows:
     labels = {name: number for number, name in enumerate(where.placement.label)}
     rows = [] if ties is None else [n for n, name in enumerate(ties.station) if name in labels]
@@ -321,63 +329,6 @@ def _tie_rows(ties: Ties | None, where: Located) -> TieRows:
         value=frozen(ties.gravity.values[rows]),
         weight=frozen(1.0 / ties.gravity_sd.values[rows] ** 2),
     )
-
-
-def _noise_terms(readings: Readings, instruments: tuple[Instrument, ...], *, estimate: bool) -> NoiseTerms:
-    used = instruments_used(readings, instruments)
-
-    def of_row(name: str) -> Array:
-        return np.array([getattr(one, name) for one in used])[readings.instrument.code]
-
-    stated = readings.reading_sd
-    return NoiseTerms(
-        reading_sd=np.full(len(readings), np.nan) if stated is None else stated.values,
-        reading_floor=of_row("reading_floor"),
-        reseating_sd=of_row("reseating_sd"),
-        station_floor=of_row("station_floor"),
-        estimate=estimate,
-    )
-
-
-def _orders(
-    readings: Readings, runs: tuple[Run, ...], stays: Visits, of_recipe: str | int
-) -> tuple[tuple[int, ...], tuple[int, ...]]:
-    """Starting order of each run by code, and the codes of those whose order is chosen, in time order."""
-    stated = {run.name: run.drift_order for run in runs if run.drift_order is not None}
-    wanted = [stated.get(name, of_recipe) for name in readings.run.names]
-    start = tuple(1 if isinstance(one, str) else one for one in wanted)
-    return start, tuple(code for code in stays.run_order.tolist() if wanted[code] == AUTOMATIC)
-
-
-def _visit_counts(stays: Visits, n_stations: int) -> Index:
-    return frozen_index(np.bincount(stays.station, minlength=n_stations))
-
-
-def _scales(
-    readings: Readings, instruments: tuple[Instrument, ...], raw: Column
-) -> tuple[tuple[tuple[str, float], ...], tuple[Array, ...]]:
-    """Relative sd of each doubtful scale, and the readings that answer to it."""
-    doubtful = [
-        (code, one) for code, one in enumerate(instruments_used(readings, instruments)) if one.scale_sd > 0.0
-    ]
-    return (
-        tuple((one.name, one.scale_sd / one.scale) for _, one in doubtful),
-        tuple(frozen(np.where(readings.instrument.code == code, raw.values, 0.0)) for code, _ in doubtful),
-    )
-
-
-def _referred(
-    fit: Adjustment, network: Parts, ties: TieRows, where: Located, counts: Index, wanted: str | None
-) -> StationGravity:
-    labels = where.placement.label
-    datum = datum_stations(
-        network,
-        where.placement.role,
-        where.positions.elevation.values,
-        counts > 0,
-        wanted=labels.index(wanted) if wanted in labels else None,
-    )
-    return referred_gravity(fit, network, ties, datum)
 
 
 def _to_station(where: Located, slope: Column, path: WellPath, sensor: Column) -> Column:

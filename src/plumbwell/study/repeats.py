@@ -7,9 +7,8 @@ of its first used reading, so that the hours between can be checked against the 
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
 
-from plumbwell.reduction.design import Design
+from plumbwell.reduction.banded import products
 from plumbwell.reduction.visits import Visits
 from plumbwell.study.results import NetworkResults
 from plumbwell.survey.column import Array, Index
@@ -45,14 +44,22 @@ def repeat_difference_sd(network: NetworkResults) -> Array:
     earlier, later = repeat_pairs(network.visits)
     variance = 1.0 / solution.weight
     whole = variance[earlier] + variance[later]
-    unknown, value = _border_rows(solution.design, len(solution.weight))
+    one = solution.design
+    order = np.lexsort((one.entry_unknown, one.entry_visit))
+    visit, unknown, value = one.entry_visit[order], one.entry_unknown[order], one.entry_value[order]
+    count = np.bincount(visit, minlength=len(variance))
+    begin = np.cumsum(count) - count
     drift = np.zeros(len(earlier))
     for start in range(0, len(earlier), PAIRS_AT_ONCE):
-        part = slice(start, start + PAIRS_AT_ONCE)
-        which = np.hstack([unknown[earlier[part]], unknown[later[part]]])
-        apart = np.hstack([-value[earlier[part]], value[later[part]]])
-        spread = solution.border[which[:, :, None], which[:, None, :]]
-        drift[part] = np.einsum("pi,pij,pj->p", apart, spread, apart)
+        pairs = slice(start, start + PAIRS_AT_ONCE)
+        both = np.stack([earlier[pairs], later[pairs]], axis=1).ravel()
+        sign = np.tile([-1.0, 1.0], len(both) // 2)
+        many = count[both]
+        at = np.repeat(begin[both] - (np.cumsum(many) - many), many) + np.arange(int(many.sum()))
+        pair = np.repeat(np.arange(len(both)) // 2, many)
+        key, where = np.unique(pair * one.size + unknown[at], return_inverse=True)
+        rows = (*np.divmod(key, one.size), np.bincount(where, value[at] * np.repeat(sign, many), minlength=len(key)))
+        drift[pairs] = products(solution.factor, rows, rows, len(both) // 2)
     left = whole - drift
     checked = left > CHECKED * whole
     return np.where(checked, np.sqrt(np.where(checked, left, 0.0)), np.nan)
@@ -67,16 +74,3 @@ def repeat_hours(visits: Visits) -> Array:
     """Time from the earlier to the later visit of each repeat, (p,), h."""
     earlier, later = repeat_pairs(visits)
     return (visits.first[later] - visits.first[earlier]) / 3600.0
-
-
-def _border_rows(design: Design, n_visits: int) -> tuple[NDArray[np.intp], Array]:
-    """Border unknowns that each visit touches and what it puts on them, (v, m); spare places have value 0."""
-    order = np.argsort(design.entry_visit, kind="stable")
-    visit = design.entry_visit[order]
-    start = np.searchsorted(visit, np.arange(n_visits))
-    place = np.arange(len(visit)) - start[visit]
-    most = int(place.max(initial=-1)) + 1
-    unknown, value = np.zeros((n_visits, most), dtype=np.intp), np.zeros((n_visits, most))
-    unknown[visit, place] = design.entry_unknown[order]
-    value[visit, place] = design.entry_value[order]
-    return unknown, value

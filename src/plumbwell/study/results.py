@@ -15,10 +15,12 @@ from plumbwell.reduction.adjustment import Adjustment
 from plumbwell.reduction.datums import StationGravity
 from plumbwell.reduction.effects import Anomalies, FreeAirChoice, KnownParts
 from plumbwell.reduction.estimates import Estimates
+from plumbwell.reduction.judged import Judgement, ProposedTare
 from plumbwell.reduction.located import Located
 from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts
 from plumbwell.reduction.reference_rock import ReferenceLayers
+from plumbwell.reduction.scale_factor import ScaleTold
 from plumbwell.reduction.tide_effect import TideComparison
 from plumbwell.reduction.tilt_pressure import Pressure
 from plumbwell.reduction.visits import Visits
@@ -114,7 +116,22 @@ class IntervalResults:
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class NetworkResults:
-    """The adjusted network: what it rests on, its solution, its datum."""
+    """The adjusted network: what it rests on, its solution, its datum, and what does not fit it.
+
+    Parameters
+    ----------
+    visits, ties, parts, adjustment, gravity
+        As in force.
+    tie_station : tuple of str
+    judgement : Judgement
+        Jumps that nobody listed and readings in error, whether they are taken out or not.
+    proposed_applied : bool
+        True where the jumps are taken out.
+    walk_not_needed : bool
+        True where a walk of the drift is left out because the found jumps explain what it would.
+    scales : tuple of ScaleTold
+        Scales that were asked to be estimated.
+    """
 
     visits: Visits
     ties: TieRows
@@ -122,6 +139,20 @@ class NetworkResults:
     parts: Parts
     adjustment: Adjustment
     gravity: StationGravity
+    judgement: Judgement
+    proposed_applied: bool
+    walk_not_needed: bool
+    scales: tuple[ScaleTold, ...]
+
+    @property
+    def proposed(self) -> tuple[ProposedTare, ...]:
+        """Jumps that nobody listed, in time order."""
+        return self.judgement.proposed
+
+    @property
+    def outlier_rows(self) -> Index:
+        """Rows of the readings that are named as outliers."""
+        return self.judgement.rows
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)

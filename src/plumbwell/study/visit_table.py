@@ -10,8 +10,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from plumbwell.reduction.adjustment import Adjustment, visit_means
-from plumbwell.reduction.design import DriftUnknown
+from plumbwell.reduction.adjustment import Adjustment
+from plumbwell.reduction.checked import visit_means
+from plumbwell.reduction.design import at_times
+from plumbwell.reduction.drift_basis import DriftUnknown
+from plumbwell.reduction.network import on_border
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Array, Index
 from plumbwell.survey.instrument import Tare
@@ -129,19 +132,13 @@ def _line(results: Results, telling: NDArray[np.bool_], run: int) -> DriftLine:
     jumps = [number for number in range(len(basis.tares)) if int(basis.tare_run[number]) == run]
     breaks = [at for number in jumps for at in (basis.tares[number].time - 1e-3, basis.tares[number].time)]
     time = np.unique(np.concatenate([np.linspace(start, start + length, LINE_PLACES), breaks]))
-    past = (time - start) / float(basis.length[run])
     unknowns = fit.design.unknowns
     terms = np.zeros((len(unknowns), len(time)))
-    drift = np.zeros(len(time))
-    for number, what in enumerate(unknowns):
-        if what.run != run:
-            continue
-        if what.kind == "tare":
-            terms[number] = time >= basis.tares[what.tare].time
-        else:
-            terms[number] = past**what.power if what.kind == "drift" else 1.0
-        if what.kind != "bias":
-            drift = drift + float(fit.solution.unknown[number, 0]) * terms[number]
+    own = fit.design.of_run[run]
+    own_terms = at_times(basis, fit.design, np.full(len(time), run), time)
+    terms[own[own >= 0]] = own_terms[:, own >= 0].T
+    is_drift = np.array([what.kind != "bias" for what in unknowns], dtype=float)
+    drift = (fit.solution.unknown[:, 0] * is_drift) @ terms
     if fit.orders[run] == 0:
         drift = drift + float(basis.rate[run]) * (time - start)
     for number in jumps:
@@ -177,13 +174,13 @@ def _variance_among(fit: Adjustment, members: Index, terms: Array) -> Array:
     weight = solution.weight[members]
     at, where = np.unique(fit.visits.station[members], return_inverse=True)
     share = np.bincount(where, weight) / weight.sum()
-    # Gravity of a station is that of its visits less what the border puts on them: D^-1 and -D^-1 B.
-    mean = share @ solution.mean[at]
-    off = terms - mean[:, None]
-    # Only the run's own rows of the terms hold anything: with hundreds of runs the rest would take seconds.
-    own = np.flatnonzero(terms.any(axis=1))
-    grown = solution.border[:, own] @ terms[own] - (solution.border @ mean)[:, None]
-    return float(np.sum(share**2 / solution.total[at])) + np.sum(off * grown, axis=0)
+    level = np.zeros(fit.design.n_stations)
+    level[at] = share
+    # Gravity of a station is that of its visits less what the border puts on them, or stands in the border itself.
+    off = terms + on_border(fit.design, solution.border, level)[:, None]
+    eliminated = fit.design.in_border[at] < 0
+    own = np.where(eliminated, share**2 / solution.border.total[at], 0.0)
+    return float(np.sum(own)) + np.sum(off * solution.factor.solve(off), axis=0)
 
 
 def _mean_rate(fit: Adjustment, run: int) -> tuple[float, float]:
@@ -191,11 +188,15 @@ def _mean_rate(fit: Adjustment, run: int) -> tuple[float, float]:
     if fit.orders[run] == 0:
         return float(fit.basis.rate[run]), float("nan")
     length = float(fit.basis.length[run])
-    members = [n for n, what in enumerate(fit.design.unknowns) if what.kind == "drift" and what.run == run]
-    if not members:  # nothing determines it: it was held at 0
+    members = np.array(
+        [n for n in fit.design.of_run[run].tolist() if n >= 0 and fit.design.unknowns[n].kind == "drift"],
+        dtype=np.intp,
+    )
+    if not members.size:  # nothing determines it: it was held at 0
         return 0.0, float("nan")
     rate = float(np.sum(fit.solution.unknown[members, 0])) / length
-    return rate, float(np.sqrt(np.sum(fit.solution.border[np.ix_(members, members)]))) / length
+    place = fit.design.layout.place(members[:, None], members[None, :])
+    return rate, float(np.sqrt(np.sum(fit.solution.factor.inverse[place]))) / length
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -231,7 +232,7 @@ def tares_in_force(results: Results) -> tuple[TareInForce, ...]:
         unknown = DriftUnknown(kind="tare", run=run, tare=number)
         if tare.size is not None and tare.size_sd is None:
             size = tare.size
-        elif unknown in fit.design.unknowns:
+        elif unknown in fit.design.position:
             size, sd = fit.unknown(unknown)
         if tare.size is None:
             after = int(parts.of_tare[number])
@@ -261,15 +262,7 @@ def correlations(results: Results, chosen: int, reach: int) -> tuple[tuple[int, 
     """
     errors = results.intervals.errors.independent
     rows = list(range(max(chosen - reach, 0), min(chosen + reach + 1, len(results.intervals))))
-    at = np.array(rows, dtype=np.intp)
-    columns = errors.columns[at]
-    matrix = (columns * errors.signs) @ columns.T + np.diag(errors.diagonal[at])
-    for first, row in enumerate(rows):
-        follower = int(errors.follower[row])
-        if follower in rows:
-            second = rows.index(follower)
-            matrix[first, second] += errors.neighbour[row]
-            matrix[second, first] += errors.neighbour[row]
+    matrix = errors.matrix(np.array(rows, dtype=np.intp))
     sd = np.sqrt(np.maximum(np.diag(matrix), 0.0))
     scale = np.outer(sd, sd)
     return tuple(rows), np.where(scale > 0.0, matrix / np.where(scale > 0.0, scale, 1.0), 0.0)

@@ -202,10 +202,6 @@ DEFAULT = Recipe()
 
 # Values that the contract of the recipe knows and this version cannot do; `float` stands for any number.
 UNAVAILABLE: dict[str, tuple[str | type, ...]] = {
-    "drift_walk": ("on", float),
-    "tares": ("proposed",),
-    "outliers": ("downweight", "exclude"),
-    "scale_factor": ("estimate",),
     "layers": ("smooth", "blocky"),
 }
 

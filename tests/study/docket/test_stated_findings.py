@@ -34,9 +34,9 @@ def test_each_thing_left_aside_has_a_finding_of_its_own(invented, found):
 
 def test_a_recipe_that_this_version_cannot_do_is_an_error(invented, found):
     results = invented.survey()
-    asked = replace(results.recipe, outliers="exclude")
+    asked = replace(results.recipe, layers="smooth")
     (one,) = found(reduce(Case(survey=results.survey), recipe=asked), "recipe_not_applied")
-    assert one.severity == "error" and one.place == "recipe, outliers" and one.mend == 'Write "flag".'
+    assert one.severity == "error" and one.place == "recipe, layers" and one.mend == 'Write "plain" or "none".'
     assert not found(results, "recipe_not_applied")
 
 

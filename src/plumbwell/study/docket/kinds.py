@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Iterator
 
-from plumbwell.study.docket import corrections, depths, gravity_with_depth, network, outliers, rock, stated, ties
+from plumbwell.study.docket import corrections, depths, gravity_with_depth, jumps, network, outliers, rock, stated, ties
 from plumbwell.study.docket.wording import listed
 from plumbwell.study.finding import SEVERITIES, Finding
 from plumbwell.study.results import Results
@@ -29,6 +29,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     network.tares_outside,
     ties.tie_far,
     ties.ties_disagree,
+    ties.scale_estimated,
     depths.above_ground,
     depths.places_far,
     gravity_with_depth.gravity_with_depth,
@@ -40,6 +41,8 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     corrections.tilt_partly,
     corrections.pressure_partly,
     corrections.loading_unused,
+    jumps.tares_proposed,
+    outliers.no_majority,
     outliers.outliers,
     depths.crosses_ground,
     depths.far_apart,
@@ -50,7 +53,9 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     corrections.applied_before,
     network.order_chosen,
     network.drift_held,
-    network.walk_untested,
+    jumps.walk_kept,
+    jumps.walk_left_out,
+    jumps.walk_untested,
     network.single_visits,
     outliers.unchecked,
     depths.depth_assumed,

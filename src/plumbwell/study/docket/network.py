@@ -7,8 +7,8 @@ from collections.abc import Iterator
 import numpy as np
 from numpy.typing import NDArray
 
-from plumbwell.reduction.design import DriftUnknown
-from plumbwell.reduction.network import NO_TIES, RANK_TOLERANCE, spectrum
+from plumbwell.reduction.drift_basis import DriftUnknown
+from plumbwell.reduction.network import own_size
 from plumbwell.reduction.visits import Visits
 from plumbwell.study.docket.wording import (
     GRAM_PER_CM3,
@@ -58,17 +58,12 @@ def single_station(results: Results) -> Iterator[Finding]:
 
 def _undetermined_runs(results: Results) -> list[int]:
     """Codes of the runs of order 1 or more whose mean drift the visits alone leave open."""
-    fit, parts = results.network.adjustment, results.network.parts
+    fit = results.network.adjustment
     one = fit.design
-    visited = results.stations.visits > 0
-    deficiency = one.size + int(np.count_nonzero(visited)) - (len(fit.visits) - fit.reseating.freedom)
-    # A tied part keeps its constant, which the visits alone never determine.
-    if deficiency <= int(np.any(parts.tied[parts.of_station[visited]])):
+    if not fit.rank.lacking:
         return []
-    values, vectors = spectrum(one, NO_TIES, priors=False)[:2]
-    own = np.bincount(one.entry_unknown, one.entry_value**2, minlength=one.size)
-    scale = 1.0 / np.sqrt(np.where(own > 0.0, own, 1.0))
-    null = vectors[:, values <= RANK_TOLERANCE]
+    size = np.sqrt(own_size(one))
+    open_ = fit.rank.open / np.linalg.norm(fit.rank.open * size[:, None], axis=0)
     drifts: dict[int, list[int]] = {}
     for number, unknown in enumerate(one.unknowns):
         if unknown.kind == "drift":
@@ -77,7 +72,7 @@ def _undetermined_runs(results: Results) -> list[int]:
     return [
         code
         for code, members in drifts.items()
-        if np.linalg.norm(scale[members] @ null[members]) > UNTOUCHED * np.linalg.norm(scale[members])
+        if np.linalg.norm(open_[members].sum(axis=0)) > UNTOUCHED * np.linalg.norm(1.0 / size[members])
     ]
 
 
@@ -207,18 +202,6 @@ def drift_held(results: Results) -> Iterator[Finding]:
                 f"{rate(float(fit.basis.rate[code]))} mGal/h without error, since drift_order is 0.",
                 mend='Write drift_order = 1 or "auto", if the drift is not known for certain.',
             )
-
-
-def walk_untested(results: Results) -> Iterator[Finding]:
-    """The random walk of the drift, which `auto` does not try here."""
-    if results.recipe.drift_walk == "auto":
-        yield Finding(
-            code="drift_walk_untested",
-            severity="note",
-            place="recipe, drift_walk",
-            text='drift_walk = "auto" acts as "off" in this version: slow drift beyond the polynomial is untested.',
-            mend="Look at the residuals against time; raise drift_order where they wander.",
-        )
 
 
 def single_visits(results: Results) -> Iterator[Finding]:

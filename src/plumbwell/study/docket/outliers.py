@@ -1,19 +1,16 @@
 """Findings about single visits and readings: those that do not fit, and those that nothing checks.
 
-Visits are tested by their means, readings against the other readings of their visit, all together at one
-level: of a hundred clean surveys one shows a finding by chance (Baarda 1968; Pope 1976; Sidak 1967). A ratio
-is told against the sd as the other visits or readings give it.
+What is named was found by `reduction.judged`: of a hundred clean surveys one shows a finding by chance. Errors and
+ratios are as all that is not named tells them.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterator
-from math import expm1, inf, log1p
 
 import numpy as np
+from numpy.typing import NDArray
 
-from plumbwell.reduction.calibration import instruments_used
-from plumbwell.study.docket.ties import accused
 from plumbwell.study.docket.wording import (
     amount,
     counted,
@@ -31,13 +28,6 @@ from plumbwell.study.docket.wording import (
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Array, Index
-from plumbwell.survey.instrument import Instrument
-
-CHANCE = 0.01
-"""Chance that a clean survey shows any outlier."""
-
-LEAST_RATIO = 3.29
-"""Two-sided 0.1 % of the normal distribution: the level of a single test (Baarda 1968)."""
 
 UNCHECKED = 0.05
 """Redundancy under which nothing checks a reading."""
@@ -47,116 +37,63 @@ WORST = 5
 
 LISTED_VISITS = 4
 
-MEDIAN_SQUARE = 0.4549
-"""Median of the square of a normal ratio (chi-square of one degree of freedom)."""
-
-SWOLLEN = 0.25
-"""Share of the variance under which the median says that a few large residuals make most of it."""
-
-MANY = 100
-"""Residuals from which on the median may say so."""
-
-
-def critical_ratio(tests: int) -> float:
-    """Ratio to sd that the largest of so many normal ones exceeds with a chance of 1 %, at least 3.29."""
-    from statistics import NormalDist
-
-    return max(LEAST_RATIO, -NormalDist().inv_cdf(-expm1(log1p(-CHANCE) / tests) / 2.0))
-
-
-def as_normal(ratio: Array, freedom: float) -> Array:
-    """The normal ratios of the same chance as Student's t of so many degrees of freedom, without sign.
-
-    Notes
-    -----
-    (8 f + 1)/(8 f + 3) sqrt(f ln(1 + t2/f)); Wallace 1959, Ann. Math. Stat. 30, 1124-1130. Never above the
-    exact one, and within 0.13 of it from 4 degrees of freedom on for ratios up to 5.
-    """
-    if freedom == inf:
-        return np.abs(ratio)
-    return (8.0 * freedom + 1.0) / (8.0 * freedom + 3.0) * np.sqrt(freedom * np.log1p(ratio**2 / freedom))
-
-
-def beside_the_rest(ratio: Array, *, freedom: float, variance: Array, least: Array) -> Array:
-    """Residuals over their sd as the others alone give it: a large one raises the sd that measures it.
-
-    Parameters
-    ----------
-    ratio : (n,) array
-        Residual over its sd, the variance of all in it; no larger than the root of the degrees of freedom.
-    freedom : float
-        Degrees of freedom from which the variance was estimated; infinity where it is stated.
-    variance, least : (n,) arrays
-        Variance of each observation, and the part of it that the estimate cannot lower.
-
-    Notes
-    -----
-    t = w sqrt((f - 1)/(f - w2)) of f - 1 degrees of freedom (Pope 1976; Cook & Weisberg 1982); the variance
-    without the residual is not taken below its least.
-    """
-    if freedom == inf:
-        return ratio
-    square = ratio**2
-    without = (freedom - square) / (freedom - 1.0)
-    few_large = 2 * np.count_nonzero(square < SWOLLEN * MEDIAN_SQUARE) > len(ratio) >= MANY
-    if few_large:
-        without = np.minimum(without, np.nanmedian(square) / MEDIAN_SQUARE)
-    without = np.maximum(without, least / variance)
-    return ratio / np.sqrt(np.minimum(without, 1.0))
-
 
 def outliers(results: Results) -> Iterator[Finding]:
-    """Visits that disagree with the rest of the network, readings that disagree with their visit.
+    """Visits that disagree with the rest of the network, readings that disagree with their visit."""
+    found, visits = results.network.judgement, results.network.visits
+    named = np.zeros(len(results.survey.readings), dtype=bool)
+    named[found.rows] = True
+    whole = np.logical_and.reduceat(named[visits.rows], visits.start[:-1]) if len(visits) else np.zeros(0, dtype=bool)
+    of_row = visits.of_row[found.rows]
+    if (of_row < 0).any():  # left out by the recipe: told as they stood
+        yield _left_out(results, found.rows[of_row < 0])
+    in_use = of_row >= 0
+    of_visit = in_use & whole[np.maximum(of_row, 0)]
+    bad, first = np.unique(of_row[of_visit], return_index=True)
+    if bad.size:
+        at = np.flatnonzero(of_visit)[first]
+        yield from _visits(results, bad, found.ratio[at], found.error[at], found.alike[at])
+    single = np.flatnonzero(in_use & ~of_visit)
+    if single.size:
+        yield from _readings(results, found.rows[single], found.ratio[single], found.error[single])
 
-    While ties contradict one another none is accused: they bend the network, and all would be.
-    """
-    if accused(results).size:
-        return
-    fit, visits = results.network.adjustment, results.network.visits
-    one, noise, counts = fit.solution, fit.noise, np.diff(visits.start)
-    redundancy = 1.0 - one.weight * one.variance_of_fit()
-    checked = np.flatnonzero(redundancy > UNCHECKED)
-    alike = np.flatnonzero(np.repeat(counts > 1, counts))
-    alike = alike[fit.redundancy[visits.rows[alike]] > UNCHECKED]
-    tests = checked.size + alike.size
-    estimate = results.recipe.noise == "estimate"
-    if checked.size:
-        freedom = float(fit.reseating.t_freedom) if estimate else inf
-        weight, free = one.weight[checked], redundancy[checked]
-        ratio = beside_the_rest(
-            one.residual[checked, 0] * np.sqrt(weight / free),
-            freedom=freedom,
-            variance=1.0 / weight,
-            least=noise.variance[checked],
+
+def _left_out(results: Results, rows: Index) -> Finding:
+    return Finding(
+        code="outliers_left_out",
+        severity="look",
+        place=lines(results, rows),
+        text=f"{counted(rows.size, 'reading does', 'readings do')} not fit and "
+        f"{'is' if rows.size == 1 else 'are'} left out, since outliers is \"exclude\".",
+        mend='Look at the field notes; write outliers = "flag" to keep them, or take them out of use with a reason.',
+        rows=numbers(rows),
+    )
+
+
+def no_majority(results: Results) -> Iterator[Finding]:
+    """So many visits disagree that none can be trusted to be right."""
+    found = results.network.judgement
+    if not found.majority:
+        yield Finding(
+            code="no_majority",
+            severity="look",
+            place="network",
+            text=f"{counted(found.rows.size, 'reading disagrees', 'readings disagree')} with the rest, more than a "
+            "quarter of all visits: there is no majority that the others could be measured against, and which of them "
+            "are right is not known.",
+            mend="Look for one cause: a tare, a wrong depth or station label, a wrong table or scale.",
+            rows=numbers(found.rows),
         )
-        if np.any(np.abs(ratio) > LEAST_RATIO):
-            bad = np.flatnonzero(as_normal(ratio, freedom - 1.0) > critical_ratio(tests))
-            size = one.residual[checked[bad], 0] / free[bad]
-            yield from _visits(results, checked[bad], ratio[bad], size)
-    if alike.size and noise.freedom > 1:
-        freedom = float(noise.freedom) if estimate else inf
-        rows = visits.rows[alike]
-        floors = [each.reading_floor for each in _instruments(results)]
-        ratio = beside_the_rest(
-            fit.standardised[rows],
-            freedom=freedom,
-            variance=noise.sd[alike] ** 2,
-            least=np.array(floors)[results.survey.readings.instrument.code[rows]] ** 2,
-        )
-        if np.any(np.abs(ratio) > LEAST_RATIO):
-            bad = np.flatnonzero(as_normal(ratio, freedom - 1.0) > critical_ratio(tests))
-            yield from _readings(results, rows[bad], ratio[bad])
 
 
-def _instruments(results: Results) -> tuple[Instrument, ...]:
-    return instruments_used(results.survey.readings, results.survey.instruments)
-
-
-def _visits(results: Results, bad: Index, ratio: Array, size: Array) -> Iterator[Finding]:
+def _visits(
+    results: Results, bad: Index, ratio: Array, size: Array, alike: NDArray[np.bool_]
+) -> Iterator[Finding]:
     """One finding a station, worst first; the rest in one, which stands by its deepest station."""
     visits = results.network.visits
     ratio_of = dict(zip(bad.tolist(), ratio.tolist(), strict=True))
     size_of = dict(zip(bad.tolist(), size.tolist(), strict=True))
+    undecided = set(bad[alike].tolist())
     worst: dict[int, int] = {}
     for visit in bad[np.argsort(-np.abs(ratio), kind="stable")].tolist():
         worst.setdefault(int(visits.station[visit]), visit)
@@ -167,7 +104,7 @@ def _visits(results: Results, bad: Index, ratio: Array, size: Array) -> Iterator
         apart = f"{gravity(abs(size_of[visit]))} ({amount(abs(ratio_of[visit]), 1)} sd)"
         members = _rows_of(results, visit)
         at = f"{moment(float(visits.first[visit]))}, run {run(results, int(visits.run[visit]))}"
-        if others.size == 1 and abs(ratio_of.get(int(others[0]), 0.0)) > 0.98 * abs(ratio_of[visit]):
+        if others.size == 1 and visit in undecided:
             first, second = sorted((visit, int(others[0])))
             text = (
                 f"Visits {first + 1} and {second + 1} at {depth(results, where)} disagree by {apart}; "
@@ -217,11 +154,10 @@ def _rows_of(results: Results, visit: int) -> Index:
     return visits.rows[visits.start[visit] : visits.start[visit + 1]]
 
 
-def _readings(results: Results, rows: Index, ratio: Array) -> Iterator[Finding]:
+def _readings(results: Results, rows: Index, ratio: Array, error: Array) -> Iterator[Finding]:
     """The worst readings one by one, the rest counted."""
     bad = np.argsort(-np.abs(ratio), kind="stable")
     placed = results.stations.located.placement.station
-    residual = results.network.adjustment.residual
     for number in bad[:WORST].tolist():
         row = int(rows[number])
         where = int(placed[row])
@@ -231,7 +167,7 @@ def _readings(results: Results, rows: Index, ratio: Array) -> Iterator[Finding]:
             severity="look",
             place=f"{station(results, where)}; {lines(results, [row])}",
             text=f"The reading of row {line(results, row)} at {depth(results, where)} (visit "
-            f"{visit + 1}) lies {gravity(float(residual[row]), signed=True)} "
+            f"{visit + 1}) lies {gravity(float(error[number]), signed=True)} "
             f"({amount(abs(float(ratio[number])), 1)} sd) off the others of its visit.",
             mend="Look at its cell and its note; take it out of use with a reason, if the instrument had not settled.",
             stations=(where,),

@@ -10,6 +10,7 @@ from plumbwell.study.docket.wording import MILLIGAL, amount, gravity, label, lis
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Array, Index
+from plumbwell.survey.errors import shown
 
 CONTRADICTION = 4.0
 """Standard deviations by which a tie must differ from what the others and the network give."""
@@ -43,6 +44,37 @@ def accused(results: Results) -> Index:
     ratio = np.abs(misclosures(results)[1])
     bad = np.flatnonzero(ratio > CONTRADICTION)
     return bad[np.argsort(-ratio[bad], kind="stable")]
+
+
+def scale_estimated(results: Results) -> Iterator[Finding]:
+    """Scales that were estimated from ties, and those that no ties bound."""
+    if results.recipe.scale_factor != "estimate":
+        return
+    if not results.network.scales:
+        yield _scale_untold("There is no tie")
+    for one in results.network.scales:
+        if not one.told:
+            yield _scale_untold(f"Fewer than two ties bound the readings of instrument {shown(one.instrument)}")
+            continue
+        yield Finding(
+            code="scale_estimated",
+            severity="note",
+            place=f"instrument {shown(one.instrument)}",
+            text=f"The scale factor of instrument {shown(one.instrument)} is {one.scale:.6f} ± {one.sd:.6f}, estimated "
+            "from the ties; its error is common to all densities.",
+            mend="Compare it with the calibration; ties farther apart in gravity tell it better.",
+        )
+
+
+def _scale_untold(why: str) -> Finding:
+    return Finding(
+        code="scale_untold",
+        severity="look",
+        place="recipe, scale_factor",
+        text=f'{why}, so that the scale factor cannot be estimated: the given one holds, scale_factor = "estimate" has '
+        "no effect.",
+        mend='Name two ties or more at stations that were read, or write scale_factor = "given".',
+    )
 
 
 def ties_disagree(results: Results) -> Iterator[Finding]:

@@ -1,0 +1,506 @@
+"""What does not fit: readings and visits in error, and jumps of the instrument, searched for together.
+
+One bad visit looks like two jumps, one jump like a bent drift and many bad visits. So all of them compete: at each step
+the term that explains most is taken, in each run and at each station the best alone, and the network is solved anew,
+until nothing explains more than chance would. What was found is then tried against all the rest, and what does not
+stand is given back.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from plumbwell.reduction.adjustment import Adjustment
+from plumbwell.reduction.candidates import jumps, more_drift
+from plumbwell.reduction.drift_basis import HIGHEST_ORDER, DriftUnknown
+from plumbwell.reduction.drift_order import CHANCE as ORDER_CHANCE
+from plumbwell.reduction.visits import Visits
+from plumbwell.survey.column import Array, Index, frozen_index
+from plumbwell.survey.instrument import Tare
+
+CHANCE = 0.01
+"""Chance that a clean survey shows any jump, and any outlier."""
+
+LEAST_FREEDOM = 5
+"""Degrees of freedom under which no jump is looked for."""
+
+LEAST_RATIO = 3.29
+"""Two-sided 0.1 % of the normal distribution: the level of a single test (Baarda 1968)."""
+
+CHECKED = 0.05
+"""Redundancy under which nothing checks a reading."""
+
+MEDIAN_SQUARE = 0.4549
+"""Median of the square of a normal ratio (chi-square of one degree of freedom)."""
+
+FEW = 20
+"""Residuals from which on their median tells their scale."""
+
+SWOLLEN = 0.25
+"""Share of the variance under which the median says that a few large residuals make most of it."""
+
+ALIKE = 0.98
+"""Share of the largest ratio at a station from which on nothing tells which of its visits is off."""
+
+SAME_GAIN = 1e-6
+"""Relative difference of two gains that are one and the same: readings between them check nothing."""
+
+OF_ONE_VISIT = 3.0
+"""What a jump must explain more than one bad visit does: before the last visit of a run both are the same."""
+
+ROUNDS = 30
+OUT = 1e-8
+"""Robust weight of what was found to be in error: as good as none, and the network keeps its shape."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ProposedTare:
+    """A jump of the instrument that the readings show and nobody has listed.
+
+    Parameters
+    ----------
+    run : int
+        Code of its run.
+    time : float
+        UTC, s since 2000-01-01: amid the gap.
+    gap_from, gap_to : float
+        Last reading that is surely before it and first that is surely after it.
+    visits_between : int
+        Visits in the gap that nothing puts on either side.
+    size, sd : float, m/s2
+    gain : float
+        Of the logarithm of the likelihood.
+    p : float
+        Chance of a jump as large in any gap that was tried.
+    """
+
+    run: int
+    time: float
+    gap_from: float
+    gap_to: float
+    visits_between: int
+    size: float
+    sd: float
+    gain: float
+    p: float
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class Judgement:
+    """What was found.
+
+    Parameters
+    ----------
+    proposed : tuple of ProposedTare
+        In time order.
+    rows : (m,) int array
+        Rows of the readings that are in error, whole visits among them.
+    error, ratio : (m,) arrays
+        What each is off by, m/s2, and in sds of its own.
+    alike : (m,) bool array
+        True where nothing tells which of several at the station is off: leaving all of them out would leave none.
+    majority : bool
+        False where so many visits disagree that none can be trusted to be right.
+    """
+
+    proposed: tuple[ProposedTare, ...]
+    rows: Index
+    error: Array
+    ratio: Array
+    alike: NDArray[np.bool_]
+    majority: bool
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Candidate:
+    """One term: worth (fall of the weighted squares in units of noise, less what trying costs) and what it is."""
+
+    worth: float
+    run: int
+    station: int
+    kind: str
+    at: int
+    twin: bool = False
+
+
+Refit = Callable[[tuple[Tare, ...], Array, tuple[int, ...]], Adjustment]
+
+
+def judged(
+    start: Adjustment, refit: Refit, *, automatic: tuple[int, ...], estimate: bool, n_rows: int
+) -> Judgement:
+    """Jumps and readings in error.
+
+    Parameters
+    ----------
+    start : Adjustment
+        Without a walk, at the orders from which automatic runs are raised.
+    refit : callable
+        (further tares, robust weight of every row, orders) -> the network adjusted anew.
+    automatic : tuple of int
+        Runs whose drift order is chosen.
+    estimate : bool
+        False: noise as given, nothing about it is estimated from residuals.
+    n_rows : int
+    """
+    tares: list[Tare] = []
+    trust = np.ones(n_rows)
+    fit, orders = start, start.orders
+    twins: list[int] = []
+    for _ in range(ROUNDS):
+        taken = _best(fit, trust, orders, automatic, estimate)
+        if not taken:
+            break
+        trust = trust.copy()
+        raised = list(orders)
+        for one in taken:
+            if one.kind == "tare":
+                tares.append(_tare(fit, one))
+            elif one.kind == "order":
+                raised[one.run] = one.at
+            else:
+                rows = _rows(fit.visits, one)
+                trust[rows] = OUT
+                if one.twin:
+                    twins += rows.tolist()
+        orders = tuple(raised)
+        fit = refit(tuple(tares), trust, orders)
+    fit, tares, trust = _given_back(fit, refit, tares, trust, orders, estimate, twins)
+    rows = np.flatnonzero(trust < 0.5)
+    alike = np.isin(rows, twins) | _last_ones(start.visits, trust, rows)
+    off = _errors(fit, rows, frozenset(rows[alike].tolist()))
+    found = [_proposed(fit, one, number, len(tares)) for number, one in enumerate(tares)]
+    counted = int(np.count_nonzero(np.maximum.reduceat(trust[start.visits.rows], start.visits.start[:-1]) < 0.5))
+    return Judgement(
+        proposed=tuple(sorted(found, key=lambda one: one.time)),
+        rows=frozen_index(rows),
+        error=np.array([error for _, error, _ in off]),
+        ratio=np.array([ratio for _, _, ratio in off]),
+        alike=alike,
+        majority=counted <= 0.25 * len(start.visits),
+    )
+
+
+def _scale(ratio: Array, estimate: bool) -> float:
+    """Variance of residual ratios by their median where a few large ones have swollen it; at most 1."""
+    if not estimate or len(ratio) < FEW:
+        return 1.0
+    scale = float(np.median(ratio**2)) / MEDIAN_SQUARE
+    return scale if scale < SWOLLEN else 1.0
+
+
+def _best(
+    fit: Adjustment, trust: Array, orders: tuple[int, ...], automatic: tuple[int, ...], estimate: bool
+) -> list[_Candidate]:
+    """The terms that explain more than chance would, no two in one run or at one station."""
+    solution, visits = fit.solution, fit.visits
+    freedom = fit.reseating.freedom
+    kept = trust[visits.rows] > 0.5
+    whole = np.maximum.reduceat(trust[visits.rows], visits.start[:-1]) > 0.5
+    redundancy = 1.0 - solution.weight * solution.variance_of_fit()
+    tested = np.flatnonzero((redundancy > CHECKED) & whole)
+    found: list[_Candidate] = []
+    squares = solution.sum_of_squares()
+    if tested.size and freedom > 1:
+        square = solution.residual[tested, 0] ** 2 * solution.weight[tested] / redundancy[tested]
+        scale = _scale(np.sqrt(square), estimate)
+        least = (fit.noise.variance * solution.weight)[tested]
+        told = square / _left(square, squares, freedom, scale, estimate, least)
+        for n in _over(told, freedom - 1 if estimate else np.inf, tested.size):
+            visit = int(tested[n])
+            found.append(
+                _Candidate(
+                    worth=float(told[n]) - 2.0 * np.log(tested.size), run=int(visits.run[visit]),
+                    station=int(visits.station[visit]), kind="visit", at=visit,
+                )
+            )
+        if freedom >= LEAST_FREEDOM:
+            least = float(np.median(fit.noise.variance * solution.weight))
+            found += _drift_terms(fit, squares, freedom, scale, orders, automatic, estimate, least)
+    found += _readings(fit, kept, estimate)
+    taken: list[_Candidate] = []
+    runs: set[int] = set()
+    stations: set[int] = set()
+    for one in sorted(found, key=lambda each: -each.worth):
+        if one.run in runs or (one.station >= 0 and one.station in stations):
+            continue
+        taken.append(one)
+        runs.add(one.run)
+        stations.add(one.station)
+        others = _twins(one, found) if one.kind == "visit" else []
+        if others:
+            taken[-1] = replace(one, twin=True)
+            taken += [replace(other, twin=True) for other in others]
+    return taken
+
+
+def _twins(one: _Candidate, found: list[_Candidate]) -> list[_Candidate]:
+    """Visits of the same station that are as far off, so that nothing tells which is wrong."""
+    return [
+        other
+        for other in found
+        if other is not one and other.kind == "visit" and other.station == one.station
+        and other.worth > ALIKE**2 * one.worth
+    ]
+
+
+def _left(
+    square: Array, squares: float, freedom: int, scale: float, estimate: bool, least: Array | float
+) -> Array:
+    """Variance of the rest when a term is taken that explains so much, in units of the variance in force.
+
+    `least` is the share of it that no estimate can lower.
+    """
+    if not estimate:
+        return np.ones_like(square)
+    without = np.maximum(squares - square, 0.0) / max(freedom - 1, 1)
+    return np.minimum(np.maximum(np.minimum(without, scale), least), 1.0)
+
+
+def _over(square: Array, freedom: float, tests: int) -> list[int]:
+    """Places where the square of a ratio exceeds what the largest of so many would by chance."""
+    from scipy.special import ndtri, stdtrit
+
+    tail = -np.expm1(np.log1p(-CHANCE) / tests) / 2.0
+    critical = -ndtri(tail) if freedom == np.inf else -stdtrit(freedom, tail)
+    return np.flatnonzero(square > max(float(critical), LEAST_RATIO) ** 2).tolist()
+
+
+def _drift_terms(
+    fit: Adjustment,
+    squares: float,
+    freedom: int,
+    scale: float,
+    orders: tuple[int, ...],
+    automatic: tuple[int, ...],
+    estimate: bool,
+    least: float,
+) -> list[_Candidate]:
+    from scipy.special import fdtrc
+
+    found = []
+    every = jumps(fit.solution)
+    gaps = sum(int(np.count_nonzero(one.gain > 0.0)) for one in every)
+    for one in every:
+        best = int(np.argmax(one.gain))
+        gain = float(one.gain[best])
+        told = gain / float(_left(np.array([gain]), squares, freedom, scale, estimate, least)[0])
+        if gain > 0.0 and float(fdtrc(1, freedom - 1, told)) < CHANCE / gaps:
+            found.append(
+                _Candidate(
+                    worth=told - 2.0 * np.log(gaps) - OF_ONE_VISIT, run=one.run, station=-1, kind="tare",
+                    at=int(one.visit[best]),
+                )
+            )
+    if not automatic:
+        return found
+    for run, gains in more_drift(fit.solution, fit.basis, fit.visits, fit.noise.weight).items():
+        if run not in automatic or orders[run] >= HIGHEST_ORDER or orders[run] < 1:
+            continue
+        for higher, gain in ((orders[run] + 1, gains[0]), (HIGHEST_ORDER, gains[1])):
+            steps = higher - orders[run]
+            if gain <= 0.0 or freedom - steps < 3 or (steps > 1 and orders[run] != 1):
+                continue
+            told = gain / float(_left(np.array([gain]), squares, freedom, scale, estimate, least)[0])
+            if float(fdtrc(steps, freedom - steps, told / steps)) < ORDER_CHANCE:
+                found.append(_Candidate(worth=told - 2.0 * (steps - 1), run=run, station=-1, kind="order", at=higher))
+                break
+    return found
+
+
+def _readings(fit: Adjustment, kept: Array, estimate: bool) -> list[_Candidate]:
+    """Single readings off the others of their visit."""
+    visits, noise = fit.visits, fit.noise
+    count = np.add.reduceat(kept.astype(float), visits.start[:-1])
+    visit = np.repeat(np.arange(len(visits)), np.diff(visits.start))
+    alike = np.flatnonzero((count[visit] > 1.0) & kept)
+    alike = alike[fit.redundancy[visits.rows[alike]] > CHECKED]
+    freedom = noise.freedom
+    if not alike.size or freedom < 2:
+        return []
+    square = np.nan_to_num(fit.standardised[visits.rows[alike]]) ** 2
+    scale = _scale(np.sqrt(square), estimate)
+    least = (noise.floor**2 / noise.sd**2)[alike]
+    told = square / _left(square, float(freedom), freedom, scale, estimate, least)
+    found = []
+    for n in _over(told, freedom - 1 if estimate else np.inf, alike.size):
+        at = int(alike[n])
+        found.append(
+            _Candidate(
+                worth=float(told[n]) - 2.0 * np.log(alike.size), run=int(visits.run[visit[at]]),
+                station=int(visits.station[visit[at]]), kind="reading", at=at,
+            )
+        )
+    return found
+
+
+def _rows(visits: Visits, one: _Candidate) -> Index:
+    if one.kind == "reading":
+        return visits.rows[one.at : one.at + 1]
+    return visits.rows[visits.start[one.at] : visits.start[one.at + 1]]
+
+
+def _tare(fit: Adjustment, one: _Candidate) -> Tare:
+    """The jump as an unknown: it counts from the first reading of the visit after its gap."""
+    return Tare(run=str(one.run), time=float(fit.visits.first[one.at]))
+
+
+def _given_back(
+    fit: Adjustment,
+    refit: Refit,
+    tares: list[Tare],
+    trust: Array,
+    orders: tuple[int, ...],
+    estimate: bool,
+    twins: list[int],
+) -> tuple[Adjustment, list[Tare], Array]:
+    """What stands against all the rest; the weakest goes first.
+
+    Twins stay: without either there is nothing to weigh the other against.
+    """
+    for _ in range(ROUNDS):
+        freedom = fit.reseating.freedom
+        gaps = sum(int(np.count_nonzero(one.gain > 0.0)) for one in jumps(fit.solution)) + len(tares)
+        weak: list[tuple[float, int]] = []
+        for number, tare in enumerate(tares):
+            size, sd = _size(fit, tare, len(tares), number)
+            if not is_told(size, sd, freedom, estimate, gaps=gaps):
+                weak.append((_chance(size, sd, freedom, estimate), number))
+        if weak:
+            tares = [one for number, one in enumerate(tares) if number != max(weak)[1]]
+            fit = refit(tuple(tares), trust, orders)
+            continue
+        rows = np.setdiff1d(np.flatnonzero(trust < 0.5), twins)
+        if rows.size:
+            used = fit.visits.rows
+            least = _critical(freedom if estimate else np.inf, len(used))
+            back = [row for row, _, ratio in _errors(fit, rows) if not abs(ratio) > least]
+            if back:
+                trust = trust.copy()
+                trust[back] = 1.0
+                fit = refit(tuple(tares), trust, orders)
+                continue
+        break
+    return fit, tares, trust
+
+
+def is_told(size: float, sd: float, freedom: int, estimate: bool, *, gaps: int) -> bool:
+    """True where a jump is larger than chance would make it in any of so many gaps."""
+    return _chance(size, sd, freedom, estimate) < CHANCE / max(gaps, 1)
+
+
+def _critical(freedom: float, tests: int) -> float:
+    from scipy.special import ndtri, stdtrit
+
+    tail = -np.expm1(np.log1p(-CHANCE) / tests) / 2.0
+    return max(float(-ndtri(tail) if freedom == np.inf else -stdtrit(max(freedom, 1), tail)), LEAST_RATIO)
+
+
+def _chance(size: float, sd: float, freedom: int, estimate: bool) -> float:
+    from scipy.special import fdtrc, ndtr
+
+    if not sd > 0.0:
+        return 1.0
+    ratio = size / sd
+    return float(fdtrc(1, max(freedom, 1), ratio**2)) if estimate else float(2.0 * ndtr(-abs(ratio)))
+
+
+def _size(fit: Adjustment, tare: Tare, count: int, number: int) -> tuple[float, float]:
+    """Size and sd of a tare that the search has added: the last ones of the basis, in their order."""
+    at = len(fit.basis.tares) - count + number
+    return fit.unknown(DriftUnknown(kind="tare", run=int(fit.basis.tare_run[at]), tare=at))
+
+
+def _last_ones(visits: Visits, trust: Array, rows: Index) -> NDArray[np.bool_]:
+    """True for rows of stations that no other used row is left of."""
+    station = np.repeat(visits.station, np.diff(visits.start))
+    left = np.zeros(int(station.max(initial=-1)) + 1)
+    np.maximum.at(left, station, trust[visits.rows])
+    gone = left[station] < 0.5
+    return np.isin(rows, visits.rows[gone])
+
+
+def _errors(fit: Adjustment, rows: Index, alike: frozenset[int] = frozenset()) -> list[tuple[int, float, float]]:
+    """What rows out of trust are off by, and in sds, by all that is left: row, error, ratio.
+
+    Those that stand alike against one another are weighed so.
+    """
+    error, sd = fit.checked.error, fit.checked.error_sd
+    visits = fit.visits
+    trusted = np.full(len(error), np.nan)
+    trusted[visits.rows] = fit.noise.sd
+    found = []
+    ratios = _visit_errors(fit)
+    for row in rows.tolist():
+        visit = int(visits.of_row[row])
+        members = visits.rows[visits.start[visit] : visits.start[visit + 1]]
+        if row in alike:
+            own = 2.0 * (np.median(fit.noise.variance) + float(np.median(fit.reseating.variance)))
+            found.append((row, float(ratios[0][visit]), float(ratios[0][visit]) / np.sqrt(own)))
+        elif np.all(trusted[members] > 1e3 * np.nanmedian(fit.noise.sd)):
+            found.append((row, float(ratios[0][visit]), float(ratios[1][visit])))
+        else:
+            # Its own noise has been swollen by the square root of its weight: what is left is the error.
+            off = float(error[row])
+            own = np.sqrt(max(float(sd[row]) ** 2 - trusted[row] ** 2, 0.0) + trusted[row] ** 2 * OUT)
+            found.append((row, off, off / own if own > 0.0 else np.inf))
+    return found
+
+
+def _visit_errors(fit: Adjustment) -> tuple[Array, Array]:
+    """What each visit is off by as the others predict it, and in sds."""
+    solution = fit.solution
+    variance = 1.0 / solution.weight
+    left = variance - solution.variance_of_fit()
+    free = left / variance
+    safe = np.where(free > CHECKED, free, np.nan)
+    error = solution.residual[:, 0] / safe
+    # Of a visit without weight the variance of its prediction is what is over its own.
+    predicted = variance / safe - variance
+    own = np.median(fit.noise.variance) + fit.reseating.variance
+    return error, error / np.sqrt(np.maximum(predicted, 0.0) + own)
+
+
+def _proposed(fit: Adjustment, tare: Tare, number: int, count: int) -> ProposedTare:
+    visits, basis = fit.visits, fit.basis
+    run = int(basis.tare_run[len(basis.tares) - count + number])
+    size, sd = _size(fit, tare, count, number)
+    members = np.flatnonzero(visits.run == run)
+    at = int(np.searchsorted(visits.first[members], tare.time))
+    low, high = _gap(fit, members, at)
+    freedom = fit.reseating.freedom
+    ratio = (size / sd) ** 2
+    gaps = max(sum(len(one.gain) for one in jumps(fit.solution)), 1)
+    gap_from, gap_to = float(visits.last[members[low]]), float(visits.first[members[high]])
+    return ProposedTare(
+        run=run,
+        time=0.5 * (gap_from + gap_to),
+        gap_from=gap_from,
+        gap_to=gap_to,
+        visits_between=high - low - 1,
+        size=size,
+        sd=sd,
+        gain=0.5 * (freedom + 1) * float(np.log1p(ratio / max(freedom, 1))),
+        p=min(_chance(size, sd, freedom, True) * gaps, 1.0),
+    )
+
+
+def _gap(fit: Adjustment, members: Index, at: int) -> tuple[int, int]:
+    """Visits of the run, by number in it, surely before and surely after a jump found before visit `at`.
+
+    A visit that nothing checks (its station is read once, or never across the jump) may lie on either side.
+    """
+    solution, visits = fit.solution, fit.visits
+    free = 1.0 - solution.weight * solution.variance_of_fit()
+    tells = free[members] > SAME_GAIN
+    low, high = at - 1, at
+    while low > 0 and not tells[low]:
+        low -= 1
+    while high < len(members) - 1 and not tells[high]:
+        high += 1
+    del visits
+    return low, high
