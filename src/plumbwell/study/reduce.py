@@ -36,6 +36,7 @@ from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts, network_parts
 from plumbwell.reduction.positions import WellPath, well_path
 from plumbwell.reduction.reference_rock import reference_rock
+from plumbwell.reduction.settling import network_settling
 from plumbwell.reduction.stations import placement, row_depths
 from plumbwell.reduction.tide_effect import modelled_tide, shifted_tides, tide, tide_comparison, utc_time
 from plumbwell.reduction.tilt_pressure import Pressure, pressure_effect, tilt
@@ -228,6 +229,7 @@ def reduce(
         network=NetworkResults(
             visits=stays, ties=ties, tie_station=tuple(labels[one] for one in ties.station.tolist()),
             parts=network, adjustment=fit, gravity=gravity,
+            settling=keep(network_settling, observed, columns.drift, fit, noise.reading_floor, noise.estimate),
         ),
         stations=StationResults(
             label=labels, role=where.placement.role, located=where, visits=counts,

@@ -19,6 +19,7 @@ from plumbwell.reduction.located import Located
 from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts
 from plumbwell.reduction.reference_rock import ReferenceLayers
+from plumbwell.reduction.settling import Settling
 from plumbwell.reduction.tide_effect import TideComparison
 from plumbwell.reduction.tilt_pressure import Pressure
 from plumbwell.reduction.visits import Visits
@@ -114,7 +115,7 @@ class IntervalResults:
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class NetworkResults:
-    """The adjusted network: what it rests on, its solution, its datum."""
+    """The adjusted network: what it rests on, its solution, its datum, and how its visits settled."""
 
     visits: Visits
     ties: TieRows
@@ -122,6 +123,7 @@ class NetworkResults:
     parts: Parts
     adjustment: Adjustment
     gravity: StationGravity
+    settling: Settling
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)

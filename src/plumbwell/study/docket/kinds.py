@@ -4,7 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Iterator
 
-from plumbwell.study.docket import corrections, depths, gravity_with_depth, network, outliers, rock, stated, ties
+from plumbwell.study.docket import (
+    corrections,
+    depths,
+    gravity_with_depth,
+    network,
+    outliers,
+    rock,
+    settling,
+    stated,
+    ties,
+)
 from plumbwell.study.docket.wording import listed
 from plumbwell.study.finding import SEVERITIES, Finding
 from plumbwell.study.results import Results
@@ -41,6 +51,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     corrections.pressure_partly,
     corrections.loading_unused,
     outliers.outliers,
+    settling.visit_settling,
     depths.crosses_ground,
     depths.far_apart,
     rock.density_outside,
