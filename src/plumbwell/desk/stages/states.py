@@ -39,6 +39,7 @@ READINGS_CODES = (
     "tide_disagrees", "tide_hour", "tide_of_instrument", "tide_partly_given", "tide_table_unused",
     "tilt_partly_given", "time_next_day", "time_offset_changes", "time_to_minutes", "times_run_back",
     "trailing_comma", "typographic_minus", "unknown_column", "unknown_key", "unused_row_unreadable",
+    "visit_settling",
 )  # fmt: skip
 """What the files hold, the corrections, and single readings: only here can one of them be left out."""
 
@@ -46,7 +47,7 @@ DRIFT_CODES = (
     "visit_disagrees", "unchecked_readings", "drift_held", "drift_order_chosen", "drift_walk_untested",
     "few_degrees_of_freedom", "network_parts", "no_repeat", "noise_untold", "rank_lost", "recipe_not_applied",
     "relative_gravity", "single_visit", "tare_outside", "tie_far_from_normal", "tie_unknown_station",
-    "tie_unvisited", "ties_disagree", "datum_station_unknown", "datum_station_unused",
+    "tie_unvisited", "ties_disagree", "datum_station_unknown", "datum_station_unused", "run_hangs_by_one",
 )  # fmt: skip
 """The network: what ties visits together, and the datum they hang on."""
 
