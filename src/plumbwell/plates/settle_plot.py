@@ -99,7 +99,7 @@ class SettlePlot:
 
 def settle_layout(plot: TimePlot, theme: Theme, *, width: float, height: float) -> TimeLayout:
     """Return the layout of a visit's readings, as `SettlePlot.time_plot` gives them."""
-    low, high = value_window(plot, line_share=LINE_SHARE, left_out_share=LEFT_OUT_SHARE)
+    low, high = value_window(plot, line_share=LINE_SHARE, left_out_share=LEFT_OUT_SHARE, bars=theme.reach)
     top = float(theme.px(HEAD))
     scale = UprightScale(top=top, base=max(height - theme.px(FOOT), top + 2), low=low, high=high)
     left = max(float(theme.px(GUTTER)), numbers_width(theme, upright_ticks(theme, scale)) + theme.px(12))

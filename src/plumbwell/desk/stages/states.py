@@ -12,6 +12,7 @@ import numpy as np
 
 from plumbwell.plates.numbers import PLUS_MINUS, counted, number, sd_decimals
 from plumbwell.plates.stage_line import StageState
+from plumbwell.reduction.chance import student_limit
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
 from plumbwell.study.visit_table import VisitTable, visit_table
@@ -175,8 +176,8 @@ def _rests(results: Results) -> str:
     if freedom < ENOUGH_FREEDOM:
         student = results.intervals.dof
         return (
-            f"Rests on {counted(freedom, 'degree')} of freedom: the noise is hardly known, and two sd hold less often "
-            f"than 95 %; Student's t has {student}."
+            f"Rests on {counted(freedom, 'degree')} of freedom: the noise is hardly known, and 95 % lie within "
+            f"{number(student_limit(0.05, freedom=student), 2)} sd, not within two (Student's t, {student} dof)."
         )
     if any(one.code in STATED_ONLY for one in results.findings):
         return "Rests in part on what is stated, not on readings: see the findings of Drift."
