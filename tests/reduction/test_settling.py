@@ -10,10 +10,11 @@ from scipy import stats
 from made_surveys import HOUR, MICROGAL, MILLIGAL, Row, loop, made_case
 from plumbwell.reduction.settling import CANNOT_TELL, settling
 from plumbwell.study.reduce import reduce
+from plumbwell.survey.instrument import Instrument
 
 SD = 3.0 * MICROGAL
-DEPTH = {"A": 20.0, "B": 70.0, "C": 120.0}
-GRAVITY = {"A": 0.0, "B": 3 * MILLIGAL, "C": 6 * MILLIGAL}
+DEPTH = {name: 20.0 + 50.0 * place for place, name in enumerate("ABCDEFGHIJKLMNOPQRST")}
+GRAVITY = {name: 0.06 * MILLIGAL * depth for name, depth in DEPTH.items()}
 
 
 def settled(values, counts, *, sd=SD, every=60.0, rate_sd=0.0, estimate=True, floor=0.1 * MICROGAL):
@@ -42,19 +43,18 @@ def test_creep_and_its_sd_are_those_of_a_plain_least_squares_fit():
     time = np.concatenate([row[:n] for row, n in zip(time, counts, strict=True)])
     found = settling(
         values, start=start, time=time, sd=sd, floor=np.full(len(sd), 0.1 * MICROGAL),
-        rate_sd=np.full(4, 5e-13), estimate=False,
+        rate_sd=np.full(4, 5e-11), estimate=False,
     )  # fmt: skip
     for visit, (begin, end) in enumerate(pairwise(start.tolist())):
-        # First reading and later half: a level, a step at the first, and a slope that is 0 +- its sd.
+        # First reading and later half: a level, and a step at the first.
         rows = np.concatenate([[begin], np.arange(begin + counts[visit] // 2, end)])
-        matrix = np.column_stack([np.ones(len(rows)), np.arange(len(rows)) == 0, time[rows] - time[begin]])
-        matrix = np.vstack([matrix / sd[rows, None], [0.0, 0.0, 1.0 / 5e-13]])
-        side = np.append(values[rows] / sd[rows], 0.0)
-        covariance = np.linalg.inv(matrix.T @ matrix)
-        # The slope is known from elsewhere: what the plateau itself says of it moves the step by next to nothing.
-        fit = covariance @ matrix.T @ side
-        assert found.creep[visit] == pytest.approx(fit[1], abs=1e-3 * SD)
-        assert found.sd[visit] == pytest.approx(np.sqrt(covariance[1, 1]), rel=1e-3)
+        matrix = np.column_stack([np.ones(len(rows)), np.arange(len(rows)) == 0]) / sd[rows, None]
+        solved = np.linalg.pinv(matrix) / sd[rows]
+        step, variance = solved[1] @ values[rows], solved[1] ** 2 @ sd[rows] ** 2
+        # A rate that errs by its sd bends the step by what a straight line of that slope would.
+        variance += (5e-11 * (solved[1] @ time[rows])) ** 2
+        assert found.creep[visit] == pytest.approx(step, rel=1e-9)
+        assert found.sd[visit] == pytest.approx(np.sqrt(variance), rel=1e-9)
     assert found.freedom == np.inf and found.reading_factor == 1.0
     # Four visits share a chance of 1 %, to both sides.
     assert found.limit == pytest.approx(stats.norm.isf(0.01 / 8), rel=1e-12)
@@ -155,14 +155,16 @@ def drifting(stops, rate):
     return loop(chance, stops, depth=DEPTH, gravity=GRAVITY, drift=(rate * MILLIGAL / HOUR,), counts=(5,))
 
 
-@pytest.mark.parametrize("stops", ["ABCABCABCABCABC", "ABC"])
-def test_drift_of_the_run_is_no_creep(stops):
-    # 2 mGal/h are 33 microgal a minute; a run without returns knows of its rate only what is stated.
-    case = made_case(drifting(stops, 2.0 if len(stops) > 3 else 0.3))
-    case = replace(case, survey=replace(
-        case.survey, instruments=tuple(replace(one, drift_rate_sd=0.3 * MILLIGAL / HOUR) for one in
-        case.survey.instruments)))  # fmt: skip
-    assert np.all(reduce(case).network.settling.leave_out == 0)
+@pytest.mark.parametrize(("stops", "rate"), [("ABCABCABCABCABC", 2.0), ("".join(DEPTH), 0.3)])
+def test_drift_of_the_run_is_no_creep(stops, rate):
+    # 2 mGal/h are 33 microgal a minute; a run without returns knows of its rate only what is stated, 0 +- 0.3 here.
+    meter = Instrument(name="A", drift_rate_sd=0.3 * MILLIGAL / HOUR)
+    settle = reduce(made_case(drifting(stops, rate), instruments=(meter,))).network.settling
+    assert np.all(settle.leave_out == 0)
+    if stops == "".join(DEPTH):
+        # From the first reading to the middle of the last three there are three minutes.
+        sd = np.hypot(3.0 * np.sqrt(4.0 / 3.0), 0.3 * 1000.0 * 3.0 / 60.0) * MICROGAL
+        assert settle.sd == pytest.approx(sd, rel=0.05)
 
 
 def test_creep_is_found_through_drift_tares_and_rows_out_of_use():
