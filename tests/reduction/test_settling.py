@@ -8,6 +8,7 @@ import pytest
 from scipy import stats
 
 from made_surveys import HOUR, MICROGAL, MILLIGAL, Row, loop, made_case
+from plumbwell.reduction.chance import student_limit
 from plumbwell.reduction.settling import CANNOT_TELL, settling
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument
@@ -87,6 +88,31 @@ def test_one_clean_survey_in_a_hundred_has_a_visit_named(counts):
     named = sum(bool(np.any(settled(noise(chance, counts), counts).leave_out > 0)) for _ in range(600))
     # As many as a binomial of 600 with 1 % exceeds once in a thousand; nor may the test be asleep.
     assert 0 < named <= stats.binom.isf(0.001, 600, 0.01)
+
+
+def test_a_creep_that_visits_share_is_found_though_none_is_named():
+    chance, counts = np.random.default_rng(11), np.full(60, 6)
+    found = settled(noise(chance, counts, lambda place: 6.0 * (place == 0)), counts)
+    shared = found.leave_out == 0
+    assert np.count_nonzero(shared) > 55
+    assert found.common == pytest.approx(np.mean(found.creep[shared]), rel=1e-9)
+    sd = found.reading_factor * SD * np.sqrt((1.0 + 1.0 / 3.0) / np.count_nonzero(shared))
+    assert found.common_sd == pytest.approx(sd, rel=1e-9)
+    assert found.common == pytest.approx(6.0 * MICROGAL, abs=4.0 * sd)
+    # Drift rates that err by 0.1 microgal a minute, all alike: four minutes from the first reading to the later half.
+    doubtful = settled(noise(chance, counts), counts, rate_sd=0.1 * MICROGAL / 60.0)
+    noisy = doubtful.reading_factor * SD * np.sqrt((1.0 + 1.0 / 3.0) / 60)
+    assert doubtful.common_sd == pytest.approx(np.hypot(noisy, 0.4 * MICROGAL), rel=1e-6)
+
+
+def test_settled_visits_share_a_creep_no_more_often_than_chance_has_it():
+    chance, counts = np.random.default_rng(12), np.full(20, 5)
+    beyond = 0
+    for _ in range(1000):
+        one = settled(noise(chance, counts), counts)
+        beyond += abs(one.common) > one.common_sd * student_limit(0.05, freedom=one.freedom)
+    low, high = stats.binom.ppf([0.0005, 0.9995], 1000, 0.05)
+    assert low <= beyond <= high
 
 
 def test_where_every_visit_creeps_the_noise_stays_that_of_the_readings_and_every_visit_is_named():

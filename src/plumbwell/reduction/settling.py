@@ -55,6 +55,8 @@ class Settling:
         Degrees of freedom of that noise; infinity where the given sds hold.
     limit : float
         Ratio of creep to sd from which a visit is named; infinity where none can be.
+    common, common_sd : float
+        Creep that the visits share of which none is to be left out, m/s2, and its sd; NaN where there is none.
     """
 
     creep: Array
@@ -65,6 +67,8 @@ class Settling:
     reading_factor: float
     freedom: float
     limit: float
+    common: float
+    common_sd: float
 
 
 def settling(
@@ -103,6 +107,9 @@ def settling(
     bad reading there cannot make a creep. One bad reading between start and plateau takes no part. Of a named visit
     those readings are to be left out that from the first on, without a gap, lie off the plateau to the same side by
     more than chance allows one in twenty.
+
+    The creep that visits share is the mean of theirs, weighted by their variances. Errors of drift rates are taken to
+    be the same in all visits, which is the worst that they can do.
     """
     counts = np.diff(start)
     first, visit = start[:-1], np.repeat(np.arange(len(counts)), counts)
@@ -146,6 +153,9 @@ def settling(
     # The first reading that is not spoiled ends the creep.
     cut = np.minimum.reduceat(np.where(spoiled, len(values), place), first)
     leave_out = np.where(told, np.where(named, cut, 0), CANNOT_TELL)
+    settled = told & ~named
+    bent = np.abs(rate_sd * middle)
+    common, common_sd = _mean_creep(creep[settled], creep_sd[settled], bent[settled])
     whole = _sums(weight * centred, first) / _sums(weight, first)
     kept = weight * (place >= np.maximum(leave_out, 0)[visit])
     plateau = _sums(kept * centred, first) / _sums(kept, first)
@@ -158,6 +168,8 @@ def settling(
         reading_factor=factor,
         freedom=freedom,
         limit=limit,
+        common=common,
+        common_sd=common_sd,
     )
 
 
@@ -236,6 +248,16 @@ def _noise_of_plateaus(
     return float(np.sqrt(np.sum(own[good] * (off - slope * past)[good] ** 2) / freedom)), float(freedom)
 
 
+def _mean_creep(creep: Array, sd: Array, bent: Array) -> tuple[float, float]:
+    """Weighted mean of creeps and its sd; `bent` is the part of each sd by drift rates, which err all alike."""
+    if not creep.size:
+        return np.nan, np.nan
+    share = 1.0 / sd**2
+    share = share / share.sum()
+    own = float(np.sum(share**2 * (sd**2 - bent**2)))
+    return float(share @ creep), float(np.sqrt(own + float(share @ bent) ** 2))
+
+
 def _untold(values: Array, weight: Array, first: Index, counts: Index) -> Settling:
     unknown = frozen(np.full(len(counts), np.nan))
     return Settling(
@@ -247,6 +269,8 @@ def _untold(values: Array, weight: Array, first: Index, counts: Index) -> Settli
         reading_factor=np.nan,
         freedom=0.0,
         limit=inf,
+        common=np.nan,
+        common_sd=np.nan,
     )
 
 

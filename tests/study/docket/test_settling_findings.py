@@ -58,3 +58,23 @@ def test_a_bad_reading_in_the_middle_is_no_creep(invented, found):
 def test_visits_of_one_or_two_readings_cannot_tell(invented, found):
     rows = creeping(invented.visits(LONG, readings=2), 12, (0.080,))
     assert not found(invented.survey(rows), "visit_settling")
+
+
+@pytest.mark.parametrize("counts", [(6,), (4, 8)])
+def test_a_little_creep_that_all_visits_share_is_told(invented, found, counts):
+    rows = []
+    for number, stop in enumerate(LONG * 2):
+        rows += creeping(invented.visits(stop, readings=counts[number % len(counts)], start=number / 6.0), 0, (0.005,))
+    results = invented.survey(rows)
+    (one,) = found(results, "visits_creep_alike")
+    assert one.severity == ("note" if len(counts) == 1 else "look")
+    size, sd = (float(part.split(" µGal")[0]) for part in one.text.split(" on average ")[1].split(" ± "))
+    assert size == pytest.approx(5.0, abs=4.0 * sd) and sd == pytest.approx(3.5 / 40**0.5, rel=0.25)
+    assert ("4 to 8 readings" in one.text) == (len(counts) == 2)
+
+
+def test_a_shared_creep_below_its_noise_is_not_told(invented, found):
+    rows = invented.visits(LONG * 2, readings=6)
+    for first in range(0, len(rows), 6):
+        creeping(rows, first, (0.0008,))
+    assert not found(invented.survey(rows), "visits_creep_alike")

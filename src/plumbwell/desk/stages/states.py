@@ -40,7 +40,7 @@ READINGS_CODES = (
     "tide_disagrees", "tide_hour", "tide_of_instrument", "tide_partly_given", "tide_table_unused",
     "tilt_partly_given", "time_next_day", "time_offset_changes", "time_to_minutes", "times_run_back",
     "trailing_comma", "typographic_minus", "unknown_column", "unknown_key", "unused_row_unreadable",
-    "visit_settling",
+    "visit_settling", "visits_creep_alike",
 )  # fmt: skip
 """What the files hold, the corrections, and single readings: only here can one of them be left out."""
 

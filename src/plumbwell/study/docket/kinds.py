@@ -53,6 +53,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     corrections.loading_unused,
     outliers.outliers,
     settling.visit_settling,
+    settling.visits_creep_alike,
     joins.run_hangs_by_one,
     depths.crosses_ground,
     depths.far_apart,

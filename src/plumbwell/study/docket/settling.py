@@ -1,4 +1,4 @@
-"""The finding about visits that had not settled: by how much they creep, and which first readings to leave out."""
+"""Findings about visits that had not settled: those that creep one by one, and a little creep that all share."""
 
 from __future__ import annotations
 
@@ -6,6 +6,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
+from plumbwell.reduction.chance import student_limit
 from plumbwell.reduction.settling import Settling
 from plumbwell.study.docket.wording import (
     amount,
@@ -28,6 +29,9 @@ WORST = 5
 """Visits that are named one by one; the rest is counted in one more."""
 
 LISTED_VISITS = 12
+
+ALIKE_CHANCE = 0.001
+"""Chance that settled visits show a creep that they share."""
 
 
 def visit_settling(results: Results) -> Iterator[Finding]:
@@ -91,4 +95,34 @@ def _of_rest(results: Results, settle: Settling, named: Index) -> Finding:
         mend="Take the first readings of these visits out of use; where most visits creep, wait longer at each stop.",
         stations=numbers(where),
         rows=numbers(rows),
+    )
+
+
+def visits_creep_alike(results: Results) -> Iterator[Finding]:
+    """A creep that the visits share, each too little to be named alone."""
+    settle = results.network.settling
+    if not settle.freedom > 0.0 or not settle.common_sd > 0.0:
+        return
+    if abs(settle.common) <= settle.common_sd * student_limit(ALIKE_CHANCE, freedom=settle.freedom):
+        return
+    visits = results.network.visits
+    own = np.flatnonzero(settle.leave_out == 0)
+    counts = np.diff(visits.start)
+    fewest, most = int(counts.min()), int(counts.max())
+    even = fewest == most
+    size = f"{gravity(abs(settle.common))} ± {gravity(settle.common_sd)} (1 sd)"
+    way = "above" if settle.common > 0.0 else "below"
+    yield Finding(
+        code="visits_creep_alike",
+        severity="note" if even else "look",
+        place="visits",
+        text=f"In {counted(own.size, 'visit')} none of which creeps beyond its own noise the first reading lies on "
+        f"average {size} {way} the level of the later half: the instrument had not quite settled. "
+        + (
+            "All visits have equally many readings, so differences of gravity hardly feel it."
+            if even
+            else f"Visits have {fewest} to {most} readings, so the mean of a short one holds more of it than that of a "
+            "long one."
+        ),
+        mend="Wait longer before the first reading of a stop; or take the first reading of every visit out of use.",
     )
