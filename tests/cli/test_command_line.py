@@ -19,7 +19,7 @@ CHECKOUT = Path(__file__).resolve().parents[2]
 SHAFT = CHECKOUT / "tests" / "data" / "reiche_zeche_shaft"
 WELL = CHECKOUT / "sample_surveys" / "tolly_bank_well"
 TABLES = {
-    "stations.csv", "intervals.csv", "layers.csv", "readings_reduced.csv", "repeats.csv", "reduced.las",
+    "stations.csv", "intervals.csv", "layers.csv", "readings_reduced.csv", "repeats.csv", "visits.csv", "reduced.las",
     "density_covariance.csv", "common_covariance.csv", "station_covariance.csv", "summary.json",
 }  # fmt: skip
 FIGURES = {"figure.svg", "figure.png"}
@@ -77,7 +77,7 @@ def test_reduce_writes_everything_and_nothing_into_the_survey(survey, tmp_path):
     assert sorted(os.listdir(tmp_path)) == ["out", "survey"]
     text = " ".join(done.stdout.split())
     assert "Reiche Zeche shaft: 4 stations, 3 intervals; 28 readings: all used." in text
-    assert f"12 files in {tmp_path / 'out'}: " in text
+    assert f"13 files in {tmp_path / 'out'}: " in text
     assert all(name in text for name in out)
     assert re.search(r"Findings: \d+ note", text)
     assert "3 densities from 2.327 to 2.570 g/cm3, sd (standard deviation) 0.001 to 0.002, and 0.005 " in text

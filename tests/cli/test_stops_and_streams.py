@@ -91,7 +91,7 @@ def test_ctrl_c_at_any_moment_leaves_all_or_nothing_and_no_traceback(place, tmp_
     assert done.returncode == 130, done.stderr
     assert done.stderr == "\nStopped. Nothing was left half written.\n" and done.stdout == ""
     if place.endswith((":_move", ":_remove")):
-        assert os.listdir(tmp_path / "a") == ["out"] and len(os.listdir(tmp_path / "a" / "out")) == 12
+        assert os.listdir(tmp_path / "a") == ["out"] and len(os.listdir(tmp_path / "a" / "out")) == 13
     else:
         assert os.listdir(tmp_path) == []
 
@@ -108,7 +108,7 @@ def test_a_request_to_end_is_as_good_as_ctrl_c(place, tmp_path):
 def test_a_stop_after_the_work_changes_nothing(tmp_path):
     done = stopped_at("no.such.module", signal.SIGINT, "reduce", SHAFT, "--out", tmp_path / "out")
     assert done.returncode == 0 and done.stderr == ""
-    assert len(os.listdir(tmp_path / "out")) == 12
+    assert len(os.listdir(tmp_path / "out")) == 13
 
 
 @POSIX
@@ -172,7 +172,7 @@ def test_what_cannot_be_printed_changes_neither_files_nor_status(streams, heard,
         ["sh", "-c", line], env=environment(), capture_output=True, text=True, check=False, timeout=120
     )
     assert done.returncode == 0 and done.stderr == heard
-    assert len(os.listdir(tmp_path / "out")) == 12
+    assert len(os.listdir(tmp_path / "out")) == 13
     assert (tmp_path / "out" / "stations.csv").read_text("utf-8").startswith("station,")
 
 

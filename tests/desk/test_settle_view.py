@@ -1,5 +1,7 @@
 """The settle-down of a visit: its readings about their mean, chosen by click and keys, and words when there is none."""
 
+from dataclasses import replace
+
 import pytest
 from PySide6.QtCore import QPoint, Qt
 from PySide6.QtGui import QColor
@@ -155,3 +157,18 @@ def test_no_word_is_cut_off(view, look, scale, width):
     for one in placed:
         assert one.drawn == one.words and one.needed.left() >= 0 and one.needed.right() <= width + 0.01, one
         assert one.needed.bottom() <= 190, one
+
+
+def test_the_cut_of_a_visit_that_creeps_is_drawn_and_said(view):
+    assert "leave out" not in view.accessibleDescription()
+    view.set_visit(replace(VISIT, excluded=False, leave_out=2, cut=1.6, plateau=-6.0))
+    with text_placed() as placed:
+        image = view.grab().toImage()
+    assert "leave out 2" in [one.drawn for one in placed]
+    assert "creeps, 2 first to leave out" in view.accessibleDescription()
+    layout, theme = view.settle_layout(), view._look.theme
+    (panel,) = layout.axis.shown()
+    cut, scale = round(panel.x(96.0)), layout.frames[0].scale
+    assert has(image, cut, round(scale.base - 3), "amber", theme)
+    assert has(image, round(panel.x(60 * 3.7)), round(scale.y(-6.0)), "amber", theme), "the plateau after the cut"
+    assert not has(image, round(panel.x(60 * 0.5)), round(scale.y(-6.0)), "amber", theme), "and none before"

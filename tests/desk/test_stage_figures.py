@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 import pytest
+from scipy import stats
 
 from made_surveys import loop, made_case
 from plumbwell.desk.stages import states
@@ -129,7 +130,8 @@ def test_under_five_degrees_of_freedom_nothing_that_rests_on_them_is_in_order(st
             assert one.state in ("look", "error", "resting"), (key, one.state)
             assert one.mark is not None and one.hint
     student = stage(replace(results, findings=()), states.DENSITY).hint
-    assert f"Student's t has {results.intervals.dof}" in student
+    limit = stats.t.ppf(0.975, results.intervals.dof)
+    assert f"95 % lie within {limit:.2f} sd, not within two (Student's t, {results.intervals.dof} dof)" in student
 
 
 def test_what_rests_on_a_stated_drift_is_not_in_order_either():

@@ -219,6 +219,24 @@ def test_the_settle_down_of_a_visit_is_its_readings_about_their_mean_with_its_sd
     np.testing.assert_allclose(plot.minutes, (utc - utc[0]) / 60.0)
 
 
+def test_of_a_visit_that_creeps_the_cut_and_the_plateau_are_shown():
+    rows = loop(
+        np.random.default_rng(9), "ABCABCABC", depth={"A": 20.0, "B": 70.0, "C": 120.0},
+        gravity={"A": 0.0, "B": 3e-5, "C": 6e-5}, counts=(6,),
+    )  # fmt: skip
+    for row, size in ((18, 9e-7), (19, 5e-7)):
+        rows[row] = replace(rows[row], reading=rows[row].reading + size)
+    case = made_case(rows)
+    one = shown(case, reduce(case), DepthScale())
+    plot, still = settle_view(one, 3), settle_view(one, 4)
+    assert plot is not None and still is not None
+    # Readings are a minute apart: the cut lies between the second and the third.
+    assert plot.leave_out == 2 and plot.cut == pytest.approx(1.5)
+    assert plot.plateau == pytest.approx(np.mean(plot.values[2:]), abs=1e-6)
+    assert plot.cut_words() == "leave out 2"
+    assert still.leave_out == 0 and still.cut is None and still.cut_words() == ""
+
+
 def test_a_reading_left_out_is_shown_with_its_visit_and_moves_no_mean(well):
     visit = int(np.argmax(np.diff(well.network.visits.start)))
     rows = np.flatnonzero(well.network.visits.of_row == visit).tolist()

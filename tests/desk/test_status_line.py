@@ -32,7 +32,7 @@ def line(qtbot, look):
     qtbot.addWidget(line)
     line.resize(1440, line.height())
     line.set_left(PAIRS)
-    line.set_right(2, "m", "MD", "10:42")
+    line.set_right("2 sd", "m", "MD", "10:42")
     line.show()
     return line
 
@@ -78,7 +78,7 @@ def test_each_switch_is_a_word_for_mouse_and_keyboard(line, words, signal):
 
 
 def test_switches_tell_the_state_they_are_told(line):
-    line.set_right(1, "ft", "elevation", "")
+    line.set_right("1 sd", "ft", "elevation", "")
     _, texts = shown(line)
     assert {"bars and bands 1 sd", "feet,", "elevation"} <= set(texts)
     assert not any(words.startswith("saved") for words in texts)

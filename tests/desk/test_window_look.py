@@ -58,7 +58,7 @@ def test_switches_change_everything_live_and_nothing_is_clipped(driven):
     window.open(WELL)
     window.stage(states.DENSITY)
     light = window.shell.grab().toImage().pixelColor(3, 3)
-    for wish in ("theme dark", "unit ft", "depth elevation", "bars 1", "larger", "larger"):
+    for wish in ("theme dark", "unit ft", "depth elevation", "bars 95", "larger", "larger"):
         window.desk.do(wish)
         window.settle()
         assert not clipped(painted(window)), wish

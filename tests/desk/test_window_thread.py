@@ -8,9 +8,11 @@ from PySide6.QtCore import QPoint, QPointF, Qt
 from PySide6.QtGui import QGuiApplication, QWheelEvent
 from PySide6.QtTest import QTest
 from PySide6.QtWidgets import QApplication
+from scipy import stats
 
 from plumbwell.desk.stages import states
 from reduced_surveys import MINE, WELL
+from shown_texts import shown_words
 
 
 @pytest.fixture
@@ -145,10 +147,39 @@ def test_units_and_depth_kinds_are_one_switch_each(well):
     assert well.work.shown.plate.intervals[5].base > well.work.shown.plate.intervals[5].top
 
 
-def test_bars_are_one_or_two_standard_deviations_at_one_click(well):
+def gravity_scale(well):
+    """Length of the value scale of what is left of gravity."""
+    track = well.work.tracks._scene.tracks[1]
+    return track.high - track.low
+
+
+def test_bars_are_one_or_two_standard_deviations_or_95_per_cent_at_one_click(well):
     assert well.look.theme.bars == 2
     well.desk.status.bars_clicked.emit()
     assert well.look.theme.bars == 1 and well.settings["bars"] == 1
+    shorter = gravity_scale(well)
+    well.desk.status.bars_clicked.emit()
+    dof = well.work.shown.results.intervals.dof
+    assert well.look.theme.bars == 95 and well.settings["bars"] == 95
+    assert well.look.theme.reach == pytest.approx(stats.t.ppf(0.975, dof), rel=1e-9)
+    assert f"bars and bands 95 % (t, {dof} dof)" in shown_words(well.desk.status)
+    assert gravity_scale(well) > shorter, "the scale holds the longer bars"
+    well.desk.status.bars_clicked.emit()
+    assert well.look.theme.bars == 2
+
+
+def test_bars_of_95_per_cent_follow_the_degrees_of_freedom_of_the_numbers_shown(well):
+    well.desk.do("bars 95")
+    assert well.look.theme.freedom == well.work.shown.results.intervals.dof
+    changes = []
+    well.look.changed.connect(lambda: changes.append(well.look.theme.freedom))
+    well.look.take_freedom(3)
+    well.look.take_freedom(3)
+    assert changes == [3] and "95 % (t, 3 dof)" in " ".join(shown_words(well.desk.status))
+    well.desk.do("bars 2")
+    changes.clear()
+    well.look.take_freedom(9)
+    assert not changes, "bars in sd do not care"
 
 
 def test_places_without_measured_depth_are_shown_by_vertical_depth(driven):

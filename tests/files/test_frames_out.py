@@ -13,7 +13,7 @@ from plumbwell.files.tables_out import csv_texts
 def test_frames_have_the_headings_and_values_of_the_files(shaft):
     texts = csv_texts(shaft)
     tables = frames(shaft)
-    assert list(tables) == ["stations", "intervals", "layers", "readings_reduced", "repeats"]
+    assert list(tables) == ["stations", "intervals", "layers", "readings_reduced", "repeats", "visits"]
     for name, table in tables.items():
         back = pd.read_csv(io.StringIO(texts[f"{name}.csv"]), keep_default_na=False, dtype=str)
         assert list(table.columns) == list(back.columns)

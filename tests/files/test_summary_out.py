@@ -34,8 +34,8 @@ def test_keys_are_those_of_the_contract(shaft):
     told = json.loads(summary_text(shaft, outputs=["stations.csv"]))
     assert list(told) == [
         "format", "program_version", "survey", "recipe", "counts", "free_air_gradient", "drift", "tares", "outliers",
-        "scale_factors", "variance_components", "chi_square", "absolute", "findings", "inputs", "outputs", "cautions", "notes",
-        "timing",
+        "scale_factors", "variance_components", "chi_square", "absolute", "findings", "inputs", "outputs", "cautions",
+        "notes", "timing",
     ]  # fmt: skip
     assert told["format"] == "plumbwell-summary/1" and told["program_version"] == __version__
     assert set(told["recipe"]) == set(KEYS)

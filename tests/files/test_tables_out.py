@@ -44,7 +44,7 @@ def matrix_of(text):
 
 
 ALL = [
-    "stations.csv", "intervals.csv", "layers.csv", "readings_reduced.csv", "repeats.csv",
+    "stations.csv", "intervals.csv", "layers.csv", "readings_reduced.csv", "repeats.csv", "visits.csv",
     "density_covariance.csv", "common_covariance.csv", "station_covariance.csv",
 ]  # fmt: skip
 

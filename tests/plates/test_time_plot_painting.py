@@ -66,14 +66,14 @@ def lone_plot(value=10.0, sd=4.0, **changes):
     return TimePlot(title="residual", unit="µGal", panels=(run,), low=-30.0, high=50.0, **changes)
 
 
-@pytest.mark.parametrize("bars", [1, 2])
-def test_whiskers_reach_as_many_standard_deviations_as_the_theme_says(bars):
-    theme = replace(theme_named("light"), bars=bars)
+@pytest.mark.parametrize(("bars", "reach"), [(1, 1.0), (2, 2.0), (95, 3.182)])
+def test_whiskers_reach_as_many_standard_deviations_as_the_theme_says(bars, reach):
+    theme = replace(theme_named("light"), bars=bars, freedom=3)
     image, layout, _ = painted((lone_plot(),), theme)
     scale, x = layout.frames[0].scale, layout.axis.panels()[0].x(at(14, 12))
     column = [y for y in range(int(scale.top), int(scale.base)) if like(image, x, y, theme.roles["run_1"], within=200)]
     a_unit = (scale.base - scale.top) / 80.0
-    assert max(column) - min(column) == pytest.approx(2 * bars * 4.0 * a_unit, abs=3)
+    assert max(column) - min(column) == pytest.approx(2 * reach * 4.0 * a_unit, abs=3)
 
 
 def test_a_gross_outlier_flattens_nothing_and_is_told_at_the_edge():

@@ -44,17 +44,19 @@ def inked(image, row, theme, colour="ground"):
     return [x for x in range(image.width()) if image.pixelColor(x, row) != ground]
 
 
-@pytest.mark.parametrize("bars", [1, 2])
-def test_bands_and_whiskers_reach_one_or_two_sd(qapp, light, bars):
-    theme = replace(light, bars=bars)
+@pytest.mark.parametrize(("bars", "reach"), [(1, 1.0), (2, 2.0), (95, 3.182)])
+def test_bands_and_whiskers_reach_one_or_two_sd_or_95_per_cent(qapp, light, bars, reach):
+    # 3.182: Student's t of 3 degrees of freedom (scipy.stats.t.ppf).
+    theme = replace(light, bars=bars, freedom=3)
+    assert theme.reach == pytest.approx(reach, abs=5e-4)
     steps = (Step(top=0.0, base=40.0, value=2.4, sd=0.05),)
     points = (Point(depth=70.0, value=2.4, sd=0.05),)
     track = track_of(steps=steps, points=points)
     image = drawn(theme, lambda painter: draw_track(painter, track, FRAME, theme))
     for row in (FRAME.y(20.0), FRAME.y(70.0)):
         columns = inked(image, round(row), theme)
-        assert columns[0] == pytest.approx(track.x(2.4 - bars * 0.05, FRAME), abs=1.5)
-        assert columns[-1] == pytest.approx(track.x(2.4 + bars * 0.05, FRAME), abs=1.5)
+        assert columns[0] == pytest.approx(track.x(2.4 - reach * 0.05, FRAME), abs=1.5)
+        assert columns[-1] == pytest.approx(track.x(2.4 + reach * 0.05, FRAME), abs=1.5)
 
 
 def test_a_second_recipe_is_dashed_and_has_no_band(qapp, light):

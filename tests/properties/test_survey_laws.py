@@ -123,7 +123,8 @@ def test_stated_sds_are_weights_where_noise_is_estimated_and_errors_where_it_is_
     scaled = [replace(row, reading_sd=row.reading_sd * factor) for row in rows]
     densities_agree(reduced(rows), reduced(scaled), room=1e-6)
     still = replace(METER, reseating_sd=0.0, drift_rate_sd=np.inf)
-    one, other = (reduced(part, still, noise="as_given", drift_order=1, drift_walk="off", depth_sd=0.0) for part in (rows, scaled))
+    held = {"noise": "as_given", "drift_order": 1, "drift_walk": "off", "depth_sd": 0.0}
+    one, other = (reduced(part, still, **held) for part in (rows, scaled))
     np.testing.assert_allclose(other.intervals.density.values, one.intervals.density.values, rtol=1e-9)
     np.testing.assert_allclose(
         other.intervals.density_sd.values, factor * one.intervals.density_sd.values, rtol=1e-6

@@ -31,6 +31,24 @@ def survey():
 
 
 @pytest.fixture(scope="module")
+def alone(tmp_path_factory):
+    """The survey reduced group by group: the rows of the other groups are out of use."""
+    found = {}
+    for group in ("1", "2", "3"):
+        folder = tmp_path_factory.mktemp("groups") / group
+        shutil.copytree(FOLDER, folder)
+        lines = (folder / "readings.csv").read_text("utf-8").splitlines()
+        lines = [
+            line if line.startswith("#") else f"{line},use" if line.startswith("time,")
+            else f"{line},{'yes' if line.split(',')[1] == group else 'no'}"
+            for line in lines
+        ]  # fmt: skip
+        (folder / "readings.csv").write_text("\n".join(lines) + "\n", "utf-8")
+        found[group] = reduce(Case(survey=read_survey(folder)))
+    return found
+
+
+@pytest.fixture(scope="module")
 def results(survey):
     """The survey reduced."""
     return reduce(Case(survey=survey))
@@ -91,14 +109,10 @@ def test_densities_agree_with_the_plain_method(results):
 
 def test_drift_is_that_of_the_base_readings(results):
     # Straight line through the readings at P0 with their tide: 0.157, 0.162, 0.147 mGal/h for groups 1, 2, 3.
-    fit, names = results.network.adjustment, results.survey.readings.run.names
-    assert set(fit.orders) == {1}
+    assert set(results.network.adjustment.orders) == {1}
     for group, rate in (("1", 0.157), ("2", 0.162), ("3", 0.147)):
-        code = names.index(group)
-        (slope,) = (one for one in fit.design.unknowns if one.kind == "drift" and one.run == code)
-        value, sd = fit.unknown(slope)
-        hours = fit.basis.length[code] / 3600.0
-        assert value / MGAL / hours == pytest.approx(rate, abs=max(0.005, 2.0 * sd / MGAL / hours))
+        value, sd = rate_of(results, group)
+        assert value == pytest.approx(rate, abs=max(0.005, 2.0 * sd))
 
 
 def test_the_normal_gradient_lowers_the_slab_density(survey, results):
@@ -130,23 +144,38 @@ def test_the_tide_in_the_readings_is_reproduced_and_a_wrong_hour_is_not(tmp_path
         assert np.abs(shifted(hours, tmp_path / f"moved{hours}")).max() > 0.01
 
 
-def test_the_groups_agree_one_by_one_and_together(results, tmp_path):
+def rate_of(results, group):
+    """Drift rate of a run and its sd, mGal/h."""
+    fit, code = results.network.adjustment, results.survey.readings.run.names.index(group)
+    (slope,) = (one for one in fit.design.unknowns if one.kind == "drift" and one.run == code)
+    return tuple(part / MGAL / (fit.basis.length[code] / 3600.0) for part in fit.unknown(slope))
+
+
+@pytest.mark.parametrize(("group", "place"), [("1", 0), ("2", 1), ("3", 2)])
+def test_each_group_alone_agrees_with_the_plain_method_on_its_own_readings(alone, group, place):
+    results, hand = alone[group], by_hand()
+    assert results.stations.visits.sum() == sum(row["run"] == group for row in rows())
+    density = np.array([
+        (0.3086 - (hand[b][place] - hand[a][place]) / (DEPTH[b] - DEPTH[a])) * MGAL / FOUR_PI_G for a, b in PAIRS
+    ])  # fmt: skip
+    parts = results.intervals.errors.parts
+    own = np.sqrt(parts["reading"].variance() + parts["drift"].variance())
+    # The same readings, weighed otherwise: they part by less than the error of one of the two.
+    assert np.all(np.abs(results.intervals.density_slab.values - density) < own)
+    # Straight line through the group's readings at the base: 0.157, 0.162, 0.147 mGal/h.
+    rate, sd = rate_of(results, group)
+    assert rate == pytest.approx((0.157, 0.162, 0.147)[place], abs=max(0.005, 2.0 * sd))
+    # Each visit holds one reading, so nothing says whether it had settled.
+    assert np.all(results.network.settling.leave_out == -1)
+    assert not any(one.code == "visit_settling" for one in results.findings)
+
+
+def test_the_groups_agree_one_by_one_and_together(results, alone):
     densities, sds = [], []
-    for group in ("1", "2", "3"):
-        folder = tmp_path / group
-        shutil.copytree(FOLDER, folder)
-        lines = (folder / "readings.csv").read_text("utf-8").splitlines()
-        lines = [
-            line if line.startswith("#") else f"{line},use" if line.startswith("time,")
-            else f"{line},{'yes' if line.split(',')[1] == group else 'no'}"
-            for line in lines
-        ]  # fmt: skip
-        (folder / "readings.csv").write_text("\n".join(lines) + "\n", "utf-8")
-        alone = reduce(Case(survey=read_survey(folder)))
-        assert alone.stations.visits.sum() == sum(row["run"] == group for row in rows())
-        parts = alone.intervals.errors.parts
+    for one in alone.values():
+        parts = one.intervals.errors.parts
         sds.append(np.sqrt(parts["reading"].variance() + parts["drift"].variance()))
-        densities.append(alone.intervals.density.values)
+        densities.append(one.intervals.density.values)
     densities, sds = np.array(densities), np.array(sds)
     together = results.intervals.density.values
     np.testing.assert_allclose(

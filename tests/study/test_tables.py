@@ -11,7 +11,7 @@ from plumbwell.study.case import Case
 from plumbwell.study.finding import Finding
 from plumbwell.study.reduce import reduce
 from plumbwell.study.tables import TABLES, TEXT, TIME
-from reduced_surveys import SHAFT, column, reduced
+from reduced_surveys import MINE, SHAFT, column, reduced, residual_covariance
 
 HEADINGS = {
     "stations": [
@@ -37,7 +37,17 @@ HEADINGS = {
         "station", "run_1", "time_1", "run_2", "time_2", "difference [mGal]", "difference_sd [mGal]",
         "standardised", "hours_between",
     ],
+    "visits": [
+        "run", "station", "time", "readings", "level [mGal]", "level_sd [mGal]", "residual [mGal]",
+        "residual_sd [mGal]", "standardised", "redundancy", "creep [mGal]", "creep_sd [mGal]", "leave_out",
+    ],
 }  # fmt: skip
+
+
+@pytest.fixture(scope="module")
+def mine():
+    """The mine sample, reduced."""
+    return reduced(MINE)
 
 
 def test_headings_are_those_of_the_contract_in_its_order():
@@ -187,24 +197,10 @@ def test_repeat_difference_is_that_of_the_readings_freed_of_everything_known(sha
     assert column(shaft, "repeats", "difference") == pytest.approx(by_hand, abs=1e-9)
 
 
-@pytest.mark.parametrize("name", ["shaft", "well"])
+@pytest.mark.parametrize("name", ["shaft", "well", "mine"])
 def test_repeat_sd_agrees_with_the_whole_covariance_of_the_residuals(name, request):
-    """Cov(r) = V - A (A^T V^-1 A + priors)^-1 A^T written out with full matrices, stations not eliminated."""
     results = request.getfixturevalue(name)
-    solution = results.network.adjustment.solution
-    design, n = solution.design, len(solution.weight)
-    whole = np.zeros((n, design.n_stations + design.size))
-    whole[np.arange(n), design.station] = 1.0
-    np.add.at(whole, (design.entry_visit, design.n_stations + design.entry_unknown), design.entry_value)
-    normal = whole.T @ (solution.weight[:, None] * whole)
-    np.add.at(normal, (solution.ties.station, solution.ties.station), solution.ties.weight)
-    priors = np.zeros((len(design.priors), design.size))
-    np.add.at(priors, (design.priors.row, design.priors.unknown), design.priors.factor)
-    priors /= design.priors.sd[:, None]
-    normal[design.n_stations :, design.n_stations :] += priors.T @ priors
-    scale = 1.0 / np.sqrt(np.diagonal(normal))
-    inverse = scale[:, None] * np.linalg.inv(normal * np.outer(scale, scale)) * scale
-    spread = np.diag(1.0 / solution.weight) - whole @ inverse @ whole.T
+    spread = residual_covariance(results)
     starts = results.network.visits.first.tolist()
     run = [results.survey.readings.run.names[code] for code in results.network.visits.run.tolist()]
     visit = {pair: number for number, pair in enumerate(zip(run, starts, strict=True))}

@@ -1,4 +1,4 @@
-"""The look in force: theme, text scale, bars of one or two sd, depth kind and unit; one switch each.
+"""The look in force: theme, text scale, bars of one or two sd or 95 %, depth kind and unit; one switch each.
 
 Every widget of the desk holds the one `Look`, paints with `look.theme` and repaints when it has `changed`.
 """
@@ -13,10 +13,12 @@ from PySide6.QtWidgets import QApplication
 
 from plumbwell.plates.depth_scale import DepthScale
 from plumbwell.plates.lettering import face_font
-from plumbwell.plates.theme import Theme, theme_named
+from plumbwell.plates.theme import CONFIDENCE, Theme, theme_named
 
 SYSTEM, LIGHT, DARK = "system", "light", "dark"
 LEAST_SCALE, MOST_SCALE = 0.9, 1.6
+BARS = (2, 1, CONFIDENCE)
+"""What bars can be, the usual one first."""
 
 
 class Look(QObject):
@@ -54,13 +56,20 @@ class Look(QObject):
     def choose(
         self, *, wanted: str | None = None, text_scale: float | None = None, bars: int | None = None
     ) -> None:
-        """Take another theme ("system", "light", "dark"), text scale (0.9 to 1.6), or bars of 1 or 2 sd."""
+        """Take another theme ("system", "light", "dark"), text scale (0.9 to 1.6), or bars: 1 or 2 (sd), 95 (%)."""
         self.wanted = self.wanted if wanted is None else wanted
         scale = self.theme.text_scale if text_scale is None else min(max(text_scale, LEAST_SCALE), MOST_SCALE)
         bars = self.theme.bars if bars is None else bars
-        self.theme = replace(theme_named(self._named(), round(scale, 2)), bars=bars)
+        self.theme = replace(theme_named(self._named(), round(scale, 2)), bars=bars, freedom=self.theme.freedom)
         self.apply()
         self.changed.emit()
+
+    def take_freedom(self, freedom: int | None) -> None:
+        """Take the degrees of freedom of the numbers shown; bars of 95 % reach accordingly."""
+        if freedom != self.theme.freedom:
+            self.theme = replace(self.theme, freedom=freedom)
+            if self.theme.bars == CONFIDENCE:
+                self.changed.emit()
 
     def choose_depth(self, *, kind: str | None = None, unit: str | None = None) -> None:
         """Take another depth kind ("MD", "TVD", "elevation") or unit ("m", "ft")."""
@@ -76,6 +85,11 @@ class Look(QObject):
             # A style sheet makes every widget measure itself anew, so an equal one is not set again.
             if application.styleSheet() != (sheet := style_sheet(self.theme)):
                 application.setStyleSheet(sheet)
+
+
+def next_bars(bars: int) -> int:
+    """The bars that come after some at one click."""
+    return BARS[(BARS.index(bars) + 1) % len(BARS)]
 
 
 def palette(theme: Theme) -> QPalette:

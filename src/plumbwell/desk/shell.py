@@ -14,7 +14,7 @@ from PySide6.QtCore import QByteArray
 from PySide6.QtGui import QCloseEvent, QDragEnterEvent, QDropEvent, QGuiApplication, QResizeEvent
 from PySide6.QtWidgets import QMainWindow
 
-from plumbwell.desk.look import DARK, LIGHT, SYSTEM, Look
+from plumbwell.desk.look import BARS, DARK, LIGHT, SYSTEM, Look
 from plumbwell.desk.settings import Settings
 from plumbwell.plates.depth_scale import ELEVATION, FOOT, MD, METRE, TVD, DepthScale
 
@@ -58,7 +58,7 @@ class Shell(QMainWindow):
         look.choose(
             wanted=one_of(settings.text("theme", SYSTEM), SYSTEM, LIGHT, DARK),
             text_scale=settings.number("text scale", 1.0),
-            bars=1 if settings.number("bars", 2) == 1 else 2,
+            bars=next((one for one in BARS if one == settings.number("bars", BARS[0])), BARS[0]),
         )
         geometry = settings.text("geometry", "")
         if not geometry or not self.restoreGeometry(QByteArray.fromBase64(geometry.encode())):

@@ -25,6 +25,7 @@ from plumbwell.desk.frame.status import status_words
 from plumbwell.desk.frame.status_line import StatusLine
 from plumbwell.desk.handing_over import HandingOver
 from plumbwell.desk.jobs import Stopped
+from plumbwell.desk.look import next_bars
 from plumbwell.desk.opening.doors import Doors
 from plumbwell.desk.opening.failure_log import LOG_NAME
 from plumbwell.desk.opening.problems import Problems
@@ -127,7 +128,7 @@ class Desk(QObject):
         self.doors.door_chosen.connect(self._door)
         self.doors.recent_chosen.connect(lambda path: self.open(Path(path)))
         self.problems.read_again.connect(lambda: self.do("again"))
-        self.status.bars_clicked.connect(lambda: self.do(f"bars {3 - self.look.theme.bars}"))
+        self.status.bars_clicked.connect(lambda: self.do(f"bars {next_bars(self.look.theme.bars)}"))
         self.status.unit_clicked.connect(lambda: self.do(f"unit {'ft' if self.look.depth.unit == 'm' else 'm'}"))
         self.status.kind_clicked.connect(self._next_kind)
         self.status.stop_clicked.connect(document.stop)
@@ -435,7 +436,7 @@ class Desk(QObject):
         saved = self.document.saved
         kind = look.depth.kind if work.shown is None else work.shown.scale.kind
         self.status.set_right(
-            bars=look.theme.bars if work.shown is not None and work.stage != states.HANDOVER else None,
+            bars=look.theme.reach_words if work.shown is not None and work.stage != states.HANDOVER else None,
             unit=look.depth.unit,
             kind=kind,
             saved="" if saved is None else datetime.fromtimestamp(saved).strftime("%H:%M"),

@@ -66,6 +66,7 @@ class Workspace(Views):
         self._narrow = False
         self.page_keys: tuple[str, ...] = ()
         self._scale = look.theme.text_scale
+        self._reach = 0.0
         self.front = front
         front.addWidget(self.body)
         self._lay_out()
@@ -189,6 +190,7 @@ class Workspace(Views):
         document.working.connect(self._take_working)
         self._look.depth_changed.connect(self._change_depths)
         self._look.changed.connect(self._measure)
+        self._look.changed.connect(self._take_bars)
         self.stage_line.stage_chosen.connect(self.go_to_stage)
         self.ledger.use_toggled.connect(lambda rows: self.use_wanted.emit(self.readings_of(rows)))
         self.body.shared.connect(self._keep_share)
@@ -196,6 +198,13 @@ class Workspace(Views):
         self.docket.go_there.connect(self.go_to_finding)
 
     # -- results ---------------------------------------------------------------------------------------------
+
+    def _take_bars(self) -> None:
+        """Scales hold the bars: where these reach farther than before, the plots are made anew."""
+        if self._look.theme.reach != self._reach:
+            self._reach = self._look.theme.reach
+            if self.shown is not None:
+                show_plots(self, self._look, self._document.case, self.shown, self._why_not or REDUCING)
 
     def _take_survey(self) -> None:
         self.shown, self._why_not = None, ""
@@ -249,6 +258,7 @@ class Workspace(Views):
             self.shown = None
             selection.choose(selection.level, rows)
         self.shown = after
+        self._look.take_freedom(after.results.intervals.dof)
         self._show_survey(fresh=before is None)
 
     def _take_refusal(self, error: Exception) -> None:

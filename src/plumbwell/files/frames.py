@@ -13,13 +13,13 @@ from plumbwell.study.tables import TABLES, TEXT, TIME
 
 
 def frame(results: Results, name: str) -> pd.DataFrame:
-    """One output table as a data frame, a row a station, interval, layer, reading or repeat.
+    """One output table as a data frame, a row a station, interval, layer, reading, repeat or visit.
 
     Parameters
     ----------
     results : Results
     name : str
-        "stations", "intervals", "layers", "readings_reduced" or "repeats".
+        "stations", "intervals", "layers", "readings_reduced", "repeats" or "visits".
 
     Returns
     -------

@@ -190,7 +190,7 @@ def draw_figure(painter: QPainter, plate: SurveyPlate, size: tuple[int, int], th
         measured=(low, high),
         head_room=head_room,
     )
-    tracks = survey_tracks(plate, wide=layout.excerpt is None, bars=theme.bars)
+    tracks = survey_tracks(plate, wide=layout.excerpt is None, bars=theme.reach)
     across = body.across(axis.right + track_gap(theme) / 2, body.right)
     draw_grid(
         painter,

@@ -34,7 +34,7 @@ FINDINGS_ABOVE, FINDINGS_RIGHT = 24, 16
 
 def scale_remark(theme: Theme) -> str:
     """Return in words how far drawn bars and bands reach."""
-    return f"bars and bands {theme.bars} sd"
+    return f"bars and bands {theme.reach_words}"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -152,7 +152,7 @@ def _named_curves(track: Track, frame: Frame, theme: Theme) -> list[NamedCurve]:
     """Return the curves of a track, in the order in which they are named; none where none has a name."""
     if not (track.step_name or track.line_name or track.beside_name or track.lines):
         return []
-    stair, band = step_extent(track, frame), step_extent(track, frame, theme.bars)
+    stair, band = step_extent(track, frame), step_extent(track, frame, theme.reach)
     curves = [NamedCurve(names=(track.step_name,), role="ink", rows=stair, band=band)]
     if track.line is not None:
         pieces = log_pieces(track.line, track.low, track.high, frame)
@@ -242,7 +242,7 @@ def draw_layer_names(
         if frame.depth_top <= depth < frame.depth_base and baseline + 4 <= frame.base and not crossed:
             named.append((words, baseline))
     at = np.array([baseline for _, baseline in named], dtype=np.float64)
-    sides = [rows.within(at - cap - 2, at + 4) for rows in all_extents(track, frame, theme.bars)]
+    sides = [rows.within(at - cap - 2, at + 4) for rows in all_extents(track, frame, theme.reach)]
     lefts, rights = np.min([side[0] for side in sides], axis=0), np.max([side[1] for side in sides], axis=0)
     absent = ~np.isfinite(lefts)
     lefts, rights = (np.where(absent, frame.left, side).tolist() for side in (lefts, rights))
@@ -292,7 +292,7 @@ def draw_base_name(
     rows = np.arange(frame.top + cap + CLEAR, frame.base - CLEAR, 4.0)
     if not len(rows):
         return []
-    sides = [extent.within(rows - cap - 3, rows + 5) for extent in all_extents(track, frame, theme.bars)]
+    sides = [extent.within(rows - cap - 3, rows + 5) for extent in all_extents(track, frame, theme.reach)]
     left, right = np.min([side[0] for side in sides], axis=0), np.max([side[1] for side in sides], axis=0)
     for row, low, high in zip(rows.tolist(), left.tolist(), right.tolist(), strict=True):
         for x, free in ((frame.right - width, high + CLEAR), (frame.left + 2, frame.right)):

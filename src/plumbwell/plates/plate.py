@@ -1,7 +1,8 @@
 """What a survey's plate shows, as plain values in the units of people.
 
 Depths in `depth_unit`, gravity in `gravity_unit`, densities in g/cm3; plain floats, strings and
-tuples, no arrays but in the log. Standard deviations are one standard deviation; drawn bars and bands are two.
+tuples, no arrays but in the log. Standard deviations are one standard deviation; drawn bars and bands reach
+`Theme.reach` of them.
 """
 
 from __future__ import annotations

@@ -1,7 +1,7 @@
 """How one visit settled: its readings against the minutes since its first one, about the mean of those used.
 
 Values relative to the mean, in the unit of the plot. The readings are painted as those of any plot against time;
-here are the values, the frame with its minutes, and the layout.
+here are the values, the frame with its minutes, the layout, and the cut that is proposed where the visit creeps.
 """
 
 from __future__ import annotations
@@ -57,6 +57,12 @@ class SettlePlot:
         Left out of the mean.
     mean_sd : float or None
         Standard deviation of the mean; None draws no band.
+    leave_out : int
+        How many first readings are proposed to be left out.
+    cut : float or None
+        Minutes of the cut after those readings; None draws none.
+    plateau : float
+        Level of the readings after the cut.
     """
 
     title: str
@@ -68,6 +74,13 @@ class SettlePlot:
     sds: Sequence[float] | None = None
     excluded: Sequence[bool] | bool = False
     mean_sd: float | None = None
+    leave_out: int = 0
+    cut: float | None = None
+    plateau: float = 0.0
+
+    def cut_words(self) -> str:
+        """The proposal as it stands at the cut, "" where there is none: "leave out 2"."""
+        return "" if self.cut is None else f"leave out {self.leave_out}"
 
     def time_plot(self) -> TimePlot:
         """Return the readings as a plot against time with one run; its times are s since the first row."""
@@ -86,7 +99,7 @@ class SettlePlot:
 
 def settle_layout(plot: TimePlot, theme: Theme, *, width: float, height: float) -> TimeLayout:
     """Return the layout of a visit's readings, as `SettlePlot.time_plot` gives them."""
-    low, high = value_window(plot, line_share=LINE_SHARE, left_out_share=LEFT_OUT_SHARE)
+    low, high = value_window(plot, line_share=LINE_SHARE, left_out_share=LEFT_OUT_SHARE, bars=theme.reach)
     top = float(theme.px(HEAD))
     scale = UprightScale(top=top, base=max(height - theme.px(FOOT), top + 2), low=low, high=high)
     left = max(float(theme.px(GUTTER)), numbers_width(theme, upright_ticks(theme, scale)) + theme.px(12))
@@ -167,3 +180,32 @@ def draw_settle_frame(painter: QPainter, plot: TimePlot, layout: TimeLayout, the
         align="right",
         room=(0.0, layout.axis.left),
     )
+
+
+def draw_settle_cut(painter: QPainter, visit: SettlePlot, layout: TimeLayout, theme: Theme) -> None:
+    """Draw the proposed cut of a visit that creeps, in `amber`: a line, its words, and the plateau after it."""
+    if visit.cut is None:
+        return
+    scale, amber = layout.frames[0].scale, theme.colour("amber")
+    for panel in layout.axis.shown():
+        x = panel.x(MINUTE * visit.cut)
+        hairline_down(painter, x, scale.top, scale.base, amber, 2)
+        if scale.low <= visit.plateau <= scale.high:
+            hairline_across(painter, x, panel.right, scale.y(visit.plateau), amber, 2)
+        # The words stand at the end of the plot that the creep leaves free.
+        above = visit.plateau > 0.0
+        baseline = scale.base - theme.px(6) if above else scale.top + theme.px(4) + text_height(theme, "small")
+        words, beside = visit.cut_words(), theme.px(6)
+        fits = x + beside + text_width(theme, "small", words) <= panel.right
+        draw_text(
+            painter,
+            theme,
+            words,
+            x=x + beside if fits else x - beside,
+            baseline=baseline,
+            face="small",
+            role="amber",
+            align="left" if fits else "right",
+            room=(0.0, layout.width),
+            knock_out=True,
+        )

@@ -29,7 +29,7 @@ LONG_NUMBERS = 1e4
 """From here on the numbers of a scale are too long for its ticks, and count from a round one."""
 
 
-def _station_track(plate: SurveyPlate, *, anomaly: bool, weight: float, bars: int) -> Track | None:
+def _station_track(plate: SurveyPlate, *, anomaly: bool, weight: float, bars: float) -> Track | None:
     points = []
     for station in sorted(plate.stations, key=lambda station: station.depth):
         value, sd = (
@@ -64,7 +64,7 @@ def point_track(
     weight: float = 1.0,
     signed: bool = False,
     narrow: bool = True,
-    bars: int = 2,
+    bars: float = 2,
     least_span: float = 0.02,
 ) -> Track | None:
     """Return a track of one value a station, joined within each part; None without any point.
@@ -76,7 +76,7 @@ def point_track(
     title, unit : str
     weight : float
     signed, narrow : bool
-    bars : int
+    bars : float
         Standard deviations that bars reach to each side; the scale holds them.
     least_span : float
         The value scale is at least this long.
@@ -116,7 +116,7 @@ def _difference_steps(plate: SurveyPlate | None) -> tuple[Step, ...]:
 
 
 def _density_range(
-    plate: SurveyPlate, steps: tuple[Step, ...], beside: tuple[Step, ...], bars: int
+    plate: SurveyPlate, steps: tuple[Step, ...], beside: tuple[Step, ...], bars: float
 ) -> tuple[float, float] | None:
     """Return ends of the density scale: with the whole log in view unless that stretches the scale much.
 
@@ -140,7 +140,7 @@ def _density_range(
     return whole if whole[1] - whole[0] <= MOST_STRETCH * (usual[1] - usual[0]) else usual
 
 
-def _density_track(plate: SurveyPlate, beside: SurveyPlate | None, bars: int, beside_name: str) -> Track | None:
+def _density_track(plate: SurveyPlate, beside: SurveyPlate | None, bars: float, beside_name: str) -> Track | None:
     steps, others = _density_steps(plate), _density_steps(beside)
     ends = _density_range(plate, steps, others, bars)
     if ends is None:
@@ -162,7 +162,7 @@ def _density_track(plate: SurveyPlate, beside: SurveyPlate | None, bars: int, be
     )
 
 
-def _difference_track(plate: SurveyPlate, beside: SurveyPlate | None, bars: int) -> Track | None:
+def _difference_track(plate: SurveyPlate, beside: SurveyPlate | None, bars: float) -> Track | None:
     steps, others = _difference_steps(plate), _difference_steps(beside)
     if not steps:
         return None
@@ -191,7 +191,7 @@ def survey_tracks(
     plate: SurveyPlate,
     *,
     wide: bool,
-    bars: int = 2,
+    bars: float = 2,
     beside: SurveyPlate | None = None,
     beside_name: str = "",
 ) -> list[Track]:
@@ -203,7 +203,7 @@ def survey_tracks(
     wide : bool
         There is room for gravity beside what is left over; without it gravity stands only where nothing is
         known to be left over.
-    bars : int
+    bars : float
         Standard deviations that bars and bands reach to each side; the scales hold them.
     beside : SurveyPlate, optional
         The same survey by a second recipe: its steps are dashed.
@@ -345,7 +345,7 @@ def effect_tracks(
     left_over_label: str = "left over",
     unit: str = "mGal",
     sd_unit: str = "\u00b5Gal",
-    bars: int = 2,
+    bars: float = 2,
 ) -> list[Track]:
     """Return the tracks of the Reduction stage that have something to show: effects, left over, sd by origin.
 
@@ -366,7 +366,7 @@ def effect_tracks(
     parts : sequence of int, optional
         Part of each station: gravity of unlike parts has no common level and is not joined.
     left_over_label, unit, sd_unit : str
-    bars : int
+    bars : float
         Standard deviations that bars reach to each side.
     """
     tracks = [large_terms_track(depths, large, parts=parts, unit=unit)]

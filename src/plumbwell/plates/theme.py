@@ -10,15 +10,18 @@ import json
 from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cache
-from math import floor
+from math import floor, inf
 from types import MappingProxyType
 
 from PySide6.QtGui import QColor
 
+from plumbwell.reduction.chance import student_limit
 from plumbwell.resources import resource
 
 TONE_LIGHTEST, TONE_HEAVIEST = 1.6, 3.4
 THEMES = ("light", "dark", "print")
+CONFIDENCE = 95
+"""Per cent; the choice of bars that are limits of confidence."""
 
 # OKLab (L, a, b), one stop each 0.1 g/cm3 from 1.6 to 3.4.
 TONE_STOPS = (
@@ -110,7 +113,9 @@ class Theme:
     hairline, step : float
         Width of hairlines and of gravity-derived steps in px.
     bars : int
-        Standard deviations that drawn bars and bands reach to each side: 1 or 2.
+        What drawn bars and bands reach to each side: 1 or 2 standard deviations, or 95, the limits of 95 % confidence.
+    freedom : int or None
+        Degrees of freedom of the standard deviations drawn; None where they are not known: the normal distribution.
     """
 
     name: str
@@ -120,6 +125,21 @@ class Theme:
     hairline: float = 1.0
     step: float = 1.6
     bars: int = 2
+    freedom: int | None = None
+
+    @property
+    def reach(self) -> float:
+        """Standard deviations that bars and bands reach to each side: 1, 2, or the limit of Student's t."""
+        if self.bars != CONFIDENCE:
+            return float(self.bars)
+        return student_limit(1.0 - CONFIDENCE / 100.0, freedom=inf if self.freedom is None else self.freedom)
+
+    @property
+    def reach_words(self) -> str:
+        """How far bars and bands reach, in words: "2 sd", "95 % (t, 12 dof)"."""
+        if self.bars != CONFIDENCE:
+            return f"{self.bars} sd"
+        return f"{CONFIDENCE} %" + ("" if self.freedom is None else f" (t, {self.freedom} dof)")
 
     def px(self, length: float) -> int:
         """Return a length of the unscaled design, in px, grown with the text and whole."""

@@ -66,7 +66,9 @@ def _box(panel: Panel, scale: UprightScale) -> Frame:
     )
 
 
-def _line_places(panel: Panel, line: DriftLine, scale: UprightScale, bars: int) -> tuple[Floats, Floats, Floats | None]:
+def _line_places(
+    panel: Panel, line: DriftLine, scale: UprightScale, bars: float
+) -> tuple[Floats, Floats, Floats | None]:
     """Return columns, rows and half band width in px of a drift line, at no more places than its px columns."""
     x = panel_columns(panel, np.array(line.times, dtype=np.float64))
     every = max(int(len(x) / max(float(np.ptp(x)), 2.0)), 1)
@@ -79,7 +81,7 @@ def _line_places(panel: Panel, line: DriftLine, scale: UprightScale, bars: int) 
 def _draw_lines(painter: QPainter, theme: Theme, panel: Panel, run: RunPanel, scale: UprightScale) -> None:
     """Draw the bands of drift lines, then the lines."""
     bands = QPainterPath()
-    lines = [_line_places(panel, line, scale, theme.bars) for line in run.lines]
+    lines = [_line_places(panel, line, scale, theme.reach) for line in run.lines]
     for x, y, reach in lines:
         if reach is not None and len(x) > 1:
             columns, upper, lower = x.tolist(), (y - reach).tolist(), (y + reach).tolist()
@@ -160,7 +162,7 @@ def _draw_points(
     width = panel.right - panel.left
     role = run_role(run.run_index)
     if points.sds is not None and len(used) * WHISKER_GAP <= width:
-        reach = theme.bars * known_sds(points.sds[used]) / (scale.high - scale.low) * (scale.base - scale.top)
+        reach = theme.reach * known_sds(points.sds[used]) / (scale.high - scale.low) * (scale.base - scale.top)
         upper, lower = np.maximum(y[used] - reach, scale.top), np.minimum(y[used] + reach, scale.base)
         rows = zip(x[used].tolist(), upper.tolist(), lower.tolist(), strict=True)
         draw_whiskers(painter, theme, list(rows), role=role)

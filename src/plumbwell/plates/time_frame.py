@@ -88,7 +88,7 @@ def tare_lines(theme: Theme, height: float) -> int:
 
 def _roomy(plot: TimePlot, theme: Theme, height: float) -> tuple[float, float]:
     """Return the value window of a plot with room for the words of tares above and of slopes below."""
-    low, high = value_window(plot)
+    low, high = value_window(plot, bars=theme.reach)
     words = TARE_LINE * tare_lines(theme, height) + 8
     above = words if any(panel.tares for panel in plot.panels) else EDGE_ROOM
     below = RATE_ROOM if any(panel.rate_words for panel in plot.panels) else EDGE_ROOM

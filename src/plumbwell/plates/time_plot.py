@@ -248,12 +248,16 @@ def _belonging(panels: Sequence[RunPanel]) -> list[tuple[Floats, Floats]]:
 
 @lru_cache(maxsize=8)
 def value_window(
-    plot: TimePlot, *, line_share: float = LINE_SHARE, left_out_share: float = LEFT_OUT_SHARE
+    plot: TimePlot,
+    *,
+    line_share: float = LINE_SHARE,
+    left_out_share: float = LEFT_OUT_SHARE,
+    bars: float = BARS_HELD,
 ) -> tuple[float, float]:
     """Return the ends of a plot's value scale: those given, or such as hold all values that belong together.
 
-    Whiskers of two standard deviations are held too, except where one is wider than three times the usual. The last
-    few windows are kept: each step of a zoom asks again.
+    Whiskers are held too, of two standard deviations at least, except where one is wider than three times the usual.
+    The last few windows are kept: each step of a zoom asks again.
 
     Parameters
     ----------
@@ -261,6 +265,8 @@ def value_window(
     line_share, left_out_share : float
         How far drift lines with their bands, and values that are left out, may stretch the scale to each side, as
         shares of the range of the other values; a value left out that lies farther away has no say.
+    bars : float
+        Standard deviations that whiskers and bands reach.
     """
     if plot.low is not None and plot.high is not None:
         return plot.low, plot.high
@@ -271,12 +277,13 @@ def value_window(
     sds = np.concatenate([part for _, part in kept])
     known = sds[sds > 0]
     usual = float(np.median(known)) if len(known) else 0.0
-    reach = BARS_HELD * np.minimum(sds, 3 * usual)
+    held = max(bars, BARS_HELD)
+    reach = held * np.minimum(sds, 3 * usual)
     low, high = float((values - reach).min()), float((values + reach).max())
     values_low, values_high, span = low, high, high - low
     for line in (line for run in plot.panels for line in run.lines if line.times):
         along = np.array(line.values, dtype=np.float64)
-        half = BARS_HELD * np.array(line.band or (0.0,) * len(along), dtype=np.float64)
+        half = held * np.array(line.band or (0.0,) * len(along), dtype=np.float64)
         low = min(low, max(float(np.min(along - half)), values_low - line_share * span))
         high = max(high, min(float(np.max(along + half)), values_high + line_share * span))
     left_out = np.concatenate([run.points.values[run.points.excluded] for run in plot.panels])

@@ -1,7 +1,7 @@
 """What a track shows: value against depth, as staircases, points, logs, curves and stacked bars; plain values.
 
 `plumbwell.plates.track_curves` paints them, `plumbwell.plates.naming` writes the names at the curves. Depths grow
-downward. Standard deviations are one standard deviation; bars and bands drawn from them reach `Theme.bars` of them.
+downward. Standard deviations are one standard deviation; bars and bands drawn from them reach `Theme.reach` of them.
 """
 
 from __future__ import annotations
@@ -292,7 +292,7 @@ def value_range(
     *,
     least_span: float,
     plausible: tuple[float, float],
-    bars: int = 2,
+    bars: float = 2,
 ) -> tuple[float, float]:
     """Return ends of a value scale that hold all values which belong together, and their bands.
 
@@ -310,7 +310,7 @@ def value_range(
         The scale is at least this long.
     plausible : tuple of float
         Least and greatest value that always belong.
-    bars : int
+    bars : float
         Standard deviations that a band reaches to each side.
     """
     low, high = plausible

@@ -47,7 +47,7 @@ def _draw_bands(painter: QPainter, track: Track, frame: Frame, theme: Theme) -> 
     upper, lower = columns.rows(frame, which)
     thin = lower - upper < LEAST_BAND
     many_thin = int(thin.sum()) > len(which) / MANY_THIN
-    reach = theme.bars * columns.sd[which]
+    reach = theme.reach * columns.sd[which]
     left = track.held_x_of(columns.value[which] - reach, frame)
     right = track.held_x_of(columns.value[which] + reach, frame)
     known = np.isfinite(reach)
@@ -150,7 +150,7 @@ def _draw_points(painter: QPainter, track: Track, frame: Frame, theme: Theme) ->
         draw_line_of(painter, *piece, theme.colour("strong"), 1)
     which = columns.shown(frame)
     radius = disc_radius(track, frame)
-    reach = theme.bars * columns.sd[which]
+    reach = theme.reach * columns.sd[which]
     values, rows = columns.value[which], y[which]
     if radius is None:
         reach = np.where(np.isfinite(reach), reach, 0.0)

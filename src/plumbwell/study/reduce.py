@@ -33,6 +33,7 @@ from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.positions import WellPath, well_path
 from plumbwell.reduction.reference_rock import reference_rock
 from plumbwell.reduction.scale_factor import ScaleEstimate, scale_estimates
+from plumbwell.reduction.settling import network_settling
 from plumbwell.reduction.stations import placement, row_depths
 from plumbwell.reduction.tide_effect import modelled_tide, shifted_tides, tide, tide_comparison, utc_time
 from plumbwell.reduction.tilt_pressure import Pressure, pressure_effect, tilt
@@ -236,6 +237,7 @@ def reduce(
             parts=network, adjustment=fit, gravity=gravity, judgement=worked.judgement,
             proposed_applied=worked.proposed_applied, walk_not_needed=worked.walk_not_needed,
             scales=keep(scales_told, instruments, readings, estimated),
+            settling=keep(network_settling, observed, columns.drift, fit, noise.reading_floor, noise.estimate),
         ),
         stations=StationResults(
             label=labels, role=where.placement.role, located=where, visits=counts,

@@ -21,6 +21,7 @@ from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts
 from plumbwell.reduction.reference_rock import ReferenceLayers
 from plumbwell.reduction.scale_factor import ScaleTold
+from plumbwell.reduction.settling import Settling
 from plumbwell.reduction.tide_effect import TideComparison
 from plumbwell.reduction.tilt_pressure import Pressure
 from plumbwell.reduction.visits import Visits
@@ -131,6 +132,8 @@ class NetworkResults:
         True where a walk of the drift is left out because the found jumps explain what it would.
     scales : tuple of ScaleTold
         Scales that were asked to be estimated.
+    settling : Settling
+        How the visits settled.
     """
 
     visits: Visits
@@ -143,6 +146,7 @@ class NetworkResults:
     proposed_applied: bool
     walk_not_needed: bool
     scales: tuple[ScaleTold, ...]
+    settling: Settling
 
     @property
     def proposed(self) -> tuple[ProposedTare, ...]:

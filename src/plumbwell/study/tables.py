@@ -22,6 +22,7 @@ from plumbwell.study.repeats import (
     repeat_standardised,
 )
 from plumbwell.study.results import Results
+from plumbwell.study.visit_table import visit_redundancy, visit_table
 from plumbwell.survey.column import Array
 from plumbwell.survey.units import LABELS
 
@@ -398,6 +399,56 @@ REPEAT_COLUMNS = (
     _number("hours_between", None, "time_2 less time_1, h", lambda r: repeat_hours(r.network.visits)),
 )
 
+
+def _visit_run(results: Results) -> tuple[str, ...]:
+    names = results.survey.readings.run.names
+    return tuple(names[code] for code in results.network.visits.run.tolist())
+
+
+def _visit_station(results: Results) -> tuple[str, ...]:
+    label = results.stations.label
+    return tuple(label[one] for one in results.network.visits.station.tolist())
+
+
+def _of_visits(name: str) -> Callable[[Results], Array]:
+    """Values that stand in the table of visits."""
+    find = attrgetter(name)
+    return lambda results: np.asarray(find(visit_table(results)), dtype=np.float64)
+
+
+def _visit_standardised(results: Results) -> Array:
+    visits = visit_table(results)
+    return visits.residual / visits.residual_sd
+
+
+def _leave_out(results: Results) -> Array:
+    settle = results.network.settling
+    return np.where(settle.leave_out < 0, np.nan, settle.leave_out.astype(np.float64))
+
+
+VISIT_COLUMNS = (
+    _text("run", "label of the run", _visit_run),
+    _text("station", "label of the station", _visit_station),
+    _time("time", "first used reading of the visit", lambda r: r.network.visits.first),
+    _number("readings", None, "used readings of the visit", _of_visits("count")),
+    _number("level", "mGal", "its mean less run bias and gravity of the station", _of_visits("level")),
+    _number("level_sd", "mGal", "its sd, by reading and re-seating noise", _of_visits("level_sd")),
+    _number("residual", "mGal", "what drift and tares leave of the level", _of_visits("residual")),
+    _number("residual_sd", "mGal", "its sd; empty where nothing checks the visit", _of_visits("residual_sd")),
+    _number("standardised", None, "residual over residual_sd", _visit_standardised),
+    _number("redundancy", None, "share of the visit's mean that others check, 0 to 1", visit_redundancy),
+    _number(
+        "creep",
+        "mGal",
+        "first reading less the mean of the visit's later half, drift out",
+        lambda r: r.network.settling.creep,
+    ),
+    _number("creep_sd", "mGal", "its sd, by reading noise and drift rate", lambda r: r.network.settling.sd),
+    _number(
+        "leave_out", None, "first readings that creep, to be left out; empty: cannot be told", _leave_out
+    ),
+)
+
 TABLES: dict[str, Table] = {
     "stations": Table(file="stations.csv", columns=STATION_COLUMNS, rows=lambda r: len(r.stations)),
     "intervals": Table(file="intervals.csv", columns=INTERVAL_COLUMNS, rows=lambda r: len(r.intervals)),
@@ -415,4 +466,5 @@ TABLES: dict[str, Table] = {
     "repeats": Table(
         file="repeats.csv", columns=REPEAT_COLUMNS, rows=lambda r: len(repeat_pairs(r.network.visits)[0])
     ),
+    "visits": Table(file="visits.csv", columns=VISIT_COLUMNS, rows=lambda r: len(r.network.visits)),
 }

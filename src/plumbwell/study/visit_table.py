@@ -76,6 +76,12 @@ def visit_table(results: Results) -> VisitTable:
     )
 
 
+def visit_redundancy(results: Results) -> Array:
+    """Share of each visit's mean that other visits check, (v,), 0 to 1: the variance of its residual over its own."""
+    table = visit_table(results)
+    return np.where(np.isnan(table.residual_sd), 0.0, (table.residual_sd / table.level_sd) ** 2)
+
+
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class DriftLine:
     """The drift of one run at a row of times, tares in it.

@@ -81,7 +81,10 @@ def test_few_degrees_of_freedom_want_a_look(invented, found):
     results = invented.survey(invented.visits("ABCDABC"))
     (one,) = found(results, "few_degrees_of_freedom")
     assert one.severity == "look"
-    assert one.text.startswith("Only 2 degrees of freedom tie visits together") and one.text.endswith("with 6.")
+    assert one.text.startswith("Only 2 degrees of freedom tie visits together") and one.text.endswith(
+        # t.ppf(0.975, 6) = 2.447
+        "95 % lie within 2.45 sd (Student's t, 6 degrees of freedom), not within two."
+    )
     assert not found(results, "noise_untold")
 
 

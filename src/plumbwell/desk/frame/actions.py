@@ -97,7 +97,7 @@ class Actions(QObject):
         self._choices(menu.addMenu("&Unit of depth"), ("unit m", "Metres", ""), ("unit ft", "Feet", ""))
         self._choices(
             menu.addMenu("&Bars and bands"), ("bars 1", "One standard deviation", ""),
-            ("bars 2", "Two standard deviations", ""),
+            ("bars 2", "Two standard deviations", ""), ("bars 95", "95 % confidence (Student's t)", ""),
         )  # fmt: skip
         menu.addSeparator()
         self._action(menu, "columns", "&Columns of the ledger…")

@@ -101,20 +101,20 @@ class StatusLine(QWidget):
             self._say()
             self.update()
 
-    def set_right(self, bars: int | None, unit: str | None, kind: str | None, saved: str) -> None:
+    def set_right(self, bars: str | None, unit: str | None, kind: str | None, saved: str) -> None:
         """Take what stands at the right; None and "" are left out.
 
         Parameters
         ----------
-        bars : int or None
-            Standard deviations that drawn bars and bands reach.
+        bars : str or None
+            What drawn bars and bands reach: "2 sd".
         unit, kind : str or None
             Depth unit, "m" or "ft", and kind, "MD", "TVD" or "elevation".
         saved : str
             When the survey was saved: "10:42".
         """
-        self._bars.setText("" if bars is None else f"bars and bands {bars} sd")
-        self._bars.setAccessibleName(f"bars and bands reach {bars} standard deviations: switch")
+        self._bars.setText("" if bars is None else f"bars and bands {bars}")
+        self._bars.setAccessibleName(f"bars and bands reach {bars}: switch")
         self._unit.setText("" if unit is None else UNITS.get(unit, unit) + ("," if kind else ""))
         self._unit.setAccessibleName(f"depths in {UNITS.get(unit or '', unit)}: switch")
         self._kind.setText(kind or "")

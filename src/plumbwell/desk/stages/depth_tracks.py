@@ -15,12 +15,12 @@ SEEN = 5e-4
 """mGal: a change of normal gravity along the hole that the ledger's decimals show."""
 
 
-def density_tracks(shown: Shown, bars: int) -> list[Track]:
-    """Gravity, what is left over, density with log, difference; `bars` are 1 or 2 sd."""
+def density_tracks(shown: Shown, bars: float) -> list[Track]:
+    """Gravity, what is left over, density with log, difference; bars reach so many sd."""
     return survey_tracks(shown.plate, wide=True, bars=bars)
 
 
-def reduction_tracks(shown: Shown, bars: int) -> list[Track]:
+def reduction_tracks(shown: Shown, bars: float) -> list[Track]:
     """Each effect on gravity, what is left over, and the sd of gravity by origin."""
     results = shown.results
     at = np.flatnonzero(shown.depths.column)

@@ -20,6 +20,7 @@ HOLDS = {
     "layers.csv": "densities of layers",
     "readings_reduced.csv": "every row with drift and residual",
     "repeats.csv": "how repeated visits agree",
+    "visits.csv": "every visit: residual, redundancy, creep",
     "density_covariance.csv": "covariance of the densities",
     "common_covariance.csv": "covariance of what all densities share",
     "station_covariance.csv": "covariance of station gravity",

@@ -103,7 +103,7 @@ def show_plots(work: Views, look: Look, case: Case | None, one: Shown | None, wa
                 measured=(0.0, 1.0), stage=stage,
             )  # fmt: skip
             return
-        bars = look.theme.bars
+        bars = look.theme.reach
         work.tracks.set_tracks(
             density_tracks(one, bars) if stage == states.DENSITY else reduction_tracks(one, bars),
             depth_label=one.plate.depth_label,

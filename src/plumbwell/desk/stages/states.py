@@ -12,6 +12,7 @@ import numpy as np
 
 from plumbwell.plates.numbers import PLUS_MINUS, counted, number, sd_decimals
 from plumbwell.plates.stage_line import StageState
+from plumbwell.reduction.chance import student_limit
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
 from plumbwell.study.visit_table import VisitTable, visit_table
@@ -39,6 +40,7 @@ READINGS_CODES = (
     "tide_disagrees", "tide_hour", "tide_of_instrument", "tide_partly_given", "tide_table_unused",
     "tilt_partly_given", "time_next_day", "time_offset_changes", "time_to_minutes", "times_run_back",
     "trailing_comma", "typographic_minus", "unknown_column", "unknown_key", "unused_row_unreadable",
+    "visit_settling", "visits_creep_alike",
 )  # fmt: skip
 """What the files hold, the corrections, and single readings: only here can one of them be left out."""
 
@@ -46,7 +48,7 @@ DRIFT_CODES = (
     "visit_disagrees", "unchecked_readings", "drift_held", "drift_order_chosen", "drift_walk_untested",
     "few_degrees_of_freedom", "network_parts", "no_repeat", "noise_untold", "rank_lost", "recipe_not_applied",
     "relative_gravity", "single_visit", "tare_outside", "tie_far_from_normal", "tie_unknown_station",
-    "tie_unvisited", "ties_disagree", "datum_station_unknown", "datum_station_unused",
+    "tie_unvisited", "ties_disagree", "datum_station_unknown", "datum_station_unused", "run_hangs_by_one",
 )  # fmt: skip
 """The network: what ties visits together, and the datum they hang on."""
 
@@ -174,8 +176,8 @@ def _rests(results: Results) -> str:
     if freedom < ENOUGH_FREEDOM:
         student = results.intervals.dof
         return (
-            f"Rests on {counted(freedom, 'degree')} of freedom: the noise is hardly known, and two sd hold less often "
-            f"than 95 %; Student's t has {student}."
+            f"Rests on {counted(freedom, 'degree')} of freedom: the noise is hardly known, and 95 % lie within "
+            f"{number(student_limit(0.05, freedom=student), 2)} sd, not within two (Student's t, {student} dof)."
         )
     if any(one.code in STATED_ONLY for one in results.findings):
         return "Rests in part on what is stated, not on readings: see the findings of Drift."

@@ -71,6 +71,9 @@ def settle_view(shown: Shown, visit: int | None) -> SettlePlot | None:
     station = int(network.visits.station[visit])
     depth = shown.depths.stations[station]
     where = f"{number(shown.scale.number_of(float(depth)), 1)} {shown.scale.unit}" if np.isfinite(depth) else ""
+    settle, own = network.settling, network.visits.rows[at]
+    leave_out = max(int(settle.leave_out[visit]), 0)
+    times = (results.readings.utc.values[own] - utc[0]) / 60.0
     codes = np.argsort(_first_times(shown), kind="stable").tolist()
     return SettlePlot(
         title=", ".join(filter(None, (f"Settle-down of visit {visit + 1}", results.stations.label[station], where))),
@@ -82,6 +85,9 @@ def settle_view(shown: Shown, visit: int | None) -> SettlePlot | None:
         sds=[sd.get(row, float("nan")) / MICROGAL for row in rows],
         excluded=[not one for one in used.tolist()],
         mean_sd=float(np.sqrt(network.adjustment.noise.variance[visit])) / MICROGAL,
+        leave_out=leave_out,
+        cut=float(times[leave_out - 1 : leave_out + 1].mean()) if leave_out else None,
+        plateau=(float(settle.plateau[visit]) - mean) / MICROGAL,
     )
 
 

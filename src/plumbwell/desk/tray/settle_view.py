@@ -12,7 +12,7 @@ from plumbwell.desk.look import Look
 from plumbwell.desk.times.time_pointing import nearest_row
 from plumbwell.desk.tray.small_picture import SmallPicture
 from plumbwell.plates.numbers import counted, number
-from plumbwell.plates.settle_plot import SettlePlot, draw_settle_frame, settle_layout
+from plumbwell.plates.settle_plot import SettlePlot, draw_settle_cut, draw_settle_frame, settle_layout
 from plumbwell.plates.time_curves import draw_time_curves
 from plumbwell.plates.time_frame import TimeLayout
 from plumbwell.plates.time_plot import TimePlot
@@ -112,6 +112,8 @@ class SettleView(SmallPicture):
             left_out = int(self._plot.panels[0].points.excluded.sum())
             if left_out:
                 parts.append(f"{left_out} left out")
+            if visit.cut is not None:
+                parts.append(f"creeps, {visit.leave_out} first to leave out")
             chosen = [place for place, row in enumerate(self._in_order(), 1) if row in self._rows]
             if len(chosen) == 1:
                 place = [row for row in self._in_order() if row in self._rows][0]
@@ -129,6 +131,8 @@ class SettleView(SmallPicture):
             return
         plots = (self._plot,)
         draw_settle_frame(painter, self._plot, layout, theme)
+        if self._visit is not None:
+            draw_settle_cut(painter, self._visit, layout, theme)
         draw_time_curves(painter, plots, layout, theme)
         if self._hovered is not None:
             draw_hovered_point(painter, plots, layout, theme, self._hovered)

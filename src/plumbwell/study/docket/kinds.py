@@ -4,7 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Iterator
 
-from plumbwell.study.docket import corrections, depths, gravity_with_depth, jumps, network, outliers, rock, stated, ties
+from plumbwell.study.docket import (
+    corrections,
+    depths,
+    gravity_with_depth,
+    joins,
+    jumps,
+    network,
+    outliers,
+    rock,
+    settling,
+    stated,
+    ties,
+)
 from plumbwell.study.docket.wording import listed
 from plumbwell.study.finding import SEVERITIES, Finding
 from plumbwell.study.results import Results
@@ -44,6 +56,9 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     jumps.tares_proposed,
     outliers.no_majority,
     outliers.outliers,
+    settling.visit_settling,
+    settling.visits_creep_alike,
+    joins.run_hangs_by_one,
     depths.crosses_ground,
     depths.far_apart,
     rock.density_outside,

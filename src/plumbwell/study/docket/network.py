@@ -7,6 +7,7 @@ from collections.abc import Iterator
 import numpy as np
 from numpy.typing import NDArray
 
+from plumbwell.reduction.chance import student_limit
 from plumbwell.reduction.drift_basis import DriftUnknown
 from plumbwell.reduction.network import own_size
 from plumbwell.reduction.visits import Visits
@@ -381,6 +382,8 @@ def few_freedom(results: Results) -> Iterator[Finding]:
         code="few_degrees_of_freedom",
         severity="look",
         place="network",
-        text=f"{text}; limits of confidence use Student's t with {seat.t_freedom}.",
+        text=f"{text}; 95 % lie within "
+        f"{amount(student_limit(0.05, freedom=seat.t_freedom), 2)} sd (Student's t, {seat.t_freedom} degrees of "
+        "freedom), not within two.",
         mend="Bring in repeat visits; each adds a degree of freedom.",
     )
