@@ -379,22 +379,23 @@ def best_estimate(one: Simulated) -> Best:
     """Densities by dense generalised least squares with the true noise, drift order, walk, tares and gross rows.
 
     Unknown are station gravity (less that of station 0), a bias and the drift of each run and the sizes of the
-    tares; what is known beforehand of a run's mean rate enters as an observation. Rows with gross errors are left
-    out. Where a stop has many readings their slope within the stop tells of drift too, as the reduction does not
-    ask: without any return that makes the best estimate better, else it is nothing.
+    tares; what is known beforehand of a run's mean rate enters as an observation. Rows with gross errors count with
+    the mean square of such errors added to their variance. Where a stop has many readings their slope within the stop
+    tells of drift too, as the reduction does not ask: without any return that makes the best estimate better, else
+    it is nothing.
     """
-    scheme, good = one.scheme, ~one.gross
-    time, station, run, visit = one.time[good], one.station[good], one.run[good], one.visit[good]
-    observed = one.case.survey.readings.reading.values[good]
+    scheme, time, station, run, visit = one.scheme, one.time, one.station, one.run, one.visit
+    observed = one.case.survey.readings.reading.values
     order = 2 if scheme.bend else 1
     columns = [station == number for number in range(1, scheme.stations)]
     known: list[tuple[list[int], float]] = []
-    covariance = scheme.reading_noise**2 * np.eye(len(time)) + scheme.reseating**2 * (visit[:, None] == visit)
+    least, most = scheme.gross_least, scheme.gross_most
+    wrong = one.gross * (least**2 + least * most + most**2) / 3.0
+    covariance = np.diag(scheme.reading_noise**2 + wrong) + scheme.reseating**2 * (visit[:, None] == visit)
     for number in range(len(scheme.stops)):
         mine = run == number
-        of_run = one.time[one.run == number]
-        length = of_run[-1] - of_run[0]
-        past = np.where(mine, time - of_run[0], 0.0)
+        length = np.ptp(time[mine])
+        past = np.where(mine, time - time[mine][0], 0.0)
         columns.append(mine)
         known.append(([len(columns) + power for power in range(order)], length))
         columns += [mine * (past / length) ** power for power in range(1, order + 1)]

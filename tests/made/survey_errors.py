@@ -98,9 +98,9 @@ def over_best(found: Sequence[Missed]) -> float:
 
 
 def over_other(found: Sequence[Missed], other: Sequence[Missed]) -> float:
-    """Root mean square error over that of other reductions of the same surveys, in the units of `over_best`."""
-    ours = np.concatenate([one.error / one.best_sd for one in found])
-    theirs = np.concatenate([one.error / two.best_sd for one, two in zip(other, found, strict=True)])
+    """Root mean square error over that of other reductions with the same noise, in units of their best sds."""
+    ours = np.concatenate([one.error / two.best_sd for one, two in zip(found, other, strict=True)])
+    theirs = np.concatenate([one.error / one.best_sd for one in other])
     return float(np.sqrt(np.sum(ours**2) / np.sum(theirs**2)))
 
 
