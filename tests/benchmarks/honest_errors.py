@@ -57,6 +57,7 @@ from survey_errors import (  # noqa: E402
 )
 
 UGAL = MICROGAL
+BENT = replace(QUIET, bend=10.0 * QUIET.visit_sd)
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -219,6 +220,13 @@ def tares(seeds: Seeds) -> Figures:
             applied = all_missed(replace(QUIET, tares=1), seeds, recipe=recipe)
             yield Figure(what=f"found tares applied, walk {setting}: rms error over best", value=over_best(applied))
             yield Figure(what=f"found tares applied, walk {setting}: rms error/sd", value=scaled_rms(applied))
+    for name, scheme in (("wander of 12 uGal", replace(QUIET, wander=12.0 * UGAL)), ("bend of 10 sd", BENT)):
+        without = all_missed(scheme, seeds)
+        false = float(np.mean([len(one.results.network.proposed) > 0 for one in without]))
+        yield Figure(what=f"{name} and no tare: share with one proposed", value=false)
+        with_tare = all_missed(replace(scheme, tares=1), seeds)
+        right = float(np.mean([right_tare(one.one, one.results) for one in with_tare]))
+        yield Figure(what=f"{name} and a tare of 40 uGal: proposed rightly", value=right)
     once = replace(QUIET, stops=base_returns(37, 12), tares=1)
     found = [(one, reduce(one.case)) for one in (simulated(once, seed) for seed in seeds)]
     proposed = [pair for pair in found if pair[1].network.proposed]
