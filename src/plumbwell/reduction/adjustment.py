@@ -300,17 +300,20 @@ def adjusted(
         elif walk_tried and seat.freedom > 0:
             variance = noise.variance + seat.variance
             unit = float(np.median(variance))
-            strength, gain = likeliest_strength(
+            strengths, gain = likeliest_strength(
                 visits_alone(final, unit / variance, mean, rank, None), basis, visits, weighted,
                 freedom=seat.freedom, typical=unit, estimate=terms.estimate,
             )
             wanted = enough_gain(seat.freedom)
             # What all noise scaled together says and what the network says differ little: far below is none.
-            if gain > 0.0 and (walk == "on" or gain > HOPELESS * wanted):
-                modes = modes_of(strength)
-                gained = walked(strength, modes)[3]
-                if walk == "on" or gained - likelihood > wanted:
-                    walking = WalkFit(strength=strength, modes=modes, likelihood=gained)
+            if strengths and (walk == "on" or gain > HOPELESS * wanted):
+                tried = [
+                    WalkFit(strength=one, modes=modes_of(one), likelihood=walked(one, modes_of(one))[3])
+                    for one in strengths
+                ]
+                best = max(tried, key=lambda one: one.likelihood)
+                if walk == "on" or best.likelihood - likelihood > wanted:
+                    walking = best
         if walking is not None:
             final, rank, seat, likelihood = walked(walking.strength, walking.modes)
             walking = replace(walking, likelihood=likelihood)

@@ -17,14 +17,17 @@ from plumbwell.reduction.drift_basis import DriftBasis
 from plumbwell.reduction.network import Solution
 from plumbwell.reduction.visits import Visits
 from plumbwell.reduction.walk_modes import mode_sds, walk_modes
-from plumbwell.survey.column import Array
+from plumbwell.survey.column import Array, Index
 
 LEAST_FREEDOM = 10
 """Degrees of freedom under which a walk is not tried."""
 
-MODES = 16
-JOINT_RUNS = 6
-"""Runs up to which what two of them share is counted; more are taken one by one."""
+MODES, LEAST_MODES = 16, 4
+MOST_TOGETHER = 320
+"""Modes of all runs that are weighed together; of more runs each is weighed alone."""
+
+FURTHER = (1.0, 2.0, 4.0)
+"""What the first step from no walk is tried at in the network, where runs were weighed alone."""
 
 STRENGTHS = 81
 FINER = 41
@@ -53,8 +56,10 @@ def likeliest_strength(
     freedom: int,
     typical: float,
     estimate: bool,
-) -> tuple[float, float]:
-    """The strength of greatest restricted likelihood, m/s2/s^1.5, and its gain of the logarithm; 0, 0 for none.
+) -> tuple[tuple[float, ...], float]:
+    """Strengths at which the restricted likelihood may be greatest, m/s2/s^1.5, and its gain of the logarithm.
+
+    None where it falls from no walk on. One where all runs could be weighed together.
 
     Parameters
     ----------
@@ -75,15 +80,28 @@ def likeliest_strength(
     weights, the squares left at strength s are S0 - s2 z^T (1 + s2 N)^-1 z, and log det(1 + s2 N) is added (Harville
     1977, by the identity of Woodbury).
     """
-    modes = walk_modes(basis.time(visits.rows), MODES) * mode_sds(MODES)
+    one, terms = solution.design, RunTerms(solution)
+    runs = [(run, members) for run, members in terms.runs() if one.orders[run] > 0 and len(members) > 2]
+    if not runs or freedom < 1:
+        return (), 0.0
+    together = one.layout.count == 1 and not one.layout.corner and LEAST_MODES * len(runs) <= MOST_TOGETHER
+    count = int(np.clip(MOST_TOGETHER // len(runs), LEAST_MODES, MODES))
+    modes = walk_modes(basis.time(visits.rows), count) * mode_sds(count)
     modes *= basis.length[basis.run[visits.rows]][:, None] ** 1.5
     columns = visit_means(weight, modes, visits.start)
-    values, squares = _spectrum(solution, columns)
+    if not together:
+        return _first_step(solution, terms, runs, columns, typical)
+    wide = np.zeros((len(columns), len(runs) * count))
+    for number, (_, members) in enumerate(runs):
+        wide[members, number * count : (number + 1) * count] = columns[members]
+    gradient, left_of = _whole_normal(solution, wide)
+    values, vectors = np.linalg.eigh(0.5 * (left_of + left_of.T))
+    squares = (vectors.T @ gradient) ** 2
     known = values > 1e-12 * max(float(values.max(initial=0.0)), 1e-300)
     values, squares = values[known], squares[known]
-    if not values.size or freedom < 1:
-        return 0.0, 0.0
     whole = solution.sum_of_squares()
+    if not values.size or not whole > 0.0:
+        return (), 0.0
 
     def gain(strength2: Array) -> Array:
         grown = 1.0 + strength2[:, None] * values
@@ -100,32 +118,28 @@ def likeliest_strength(
     gains = gain(tried)
     best = int(np.argmax(gains))
     if not gains[best] > 0.0:
-        return 0.0, 0.0
+        return (), 0.0
     strength2 = float(tried[best])
     noise = typical
     if estimate:
         noise = max(whole - float(np.sum(strength2 * squares / (1.0 + strength2 * values))), 0.0) / freedom
-    return float(np.sqrt(strength2 * noise)), float(gains[best])
+    strength = float(np.sqrt(strength2 * noise))
+    return ((strength,), float(gains[best])) if strength > 0.0 else ((), 0.0)
 
 
-def _spectrum(solution: Solution, columns: Array) -> tuple[Array, Array]:
-    """Eigenvalues of N, and the squares of z along its eigenvectors."""
-    one, terms = solution.design, RunTerms(solution)
-    runs = [(run, members) for run, members in terms.runs() if one.orders[run] > 0 and len(members) > 2]
-    blocks = []
-    if 1 < len(runs) <= JOINT_RUNS and one.layout.count == 1 and not one.layout.corner:
-        wide = np.zeros((len(columns), len(runs) * MODES))
-        for number, (_, members) in enumerate(runs):
-            wide[members, number * MODES : (number + 1) * MODES] = columns[members]
-        blocks.append(_whole_normal(solution, wide))
-    else:
-        blocks += [normal(solution, terms, members, columns[members])[:2] for _, members in runs]
-    values, squares = [np.zeros(0)], [np.zeros(0)]
-    for gradient, left in blocks:
-        own, vectors = np.linalg.eigh(0.5 * (left + left.T))
-        values.append(np.maximum(own, 0.0))
-        squares.append((vectors.T @ gradient) ** 2)
-    return np.concatenate(values), np.concatenate(squares)
+def _first_step(
+    solution: Solution, terms: RunTerms, runs: list[tuple[int, Index]], columns: Array, typical: float
+) -> tuple[tuple[float, ...], float]:
+    """Strengths by one step of scoring from no walk, runs taken as independent (Rao 1948), and what it gains."""
+    slope, information = 0.0, 0.0
+    for _, members in runs:
+        gradient, left, _ = normal(solution, terms, members, columns[members])
+        slope += 0.5 * (float(gradient @ gradient) / typical - float(np.trace(left))) / typical
+        information += 0.5 * float(np.sum(left**2)) / typical**2
+    if not slope > 0.0:
+        return (), 0.0
+    strength = float(np.sqrt(slope / information))
+    return tuple(strength * one for one in FURTHER), slope**2 / (2.0 * information)
 
 
 def _whole_normal(solution: Solution, columns: Array) -> tuple[Array, Array]:
