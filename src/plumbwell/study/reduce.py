@@ -35,6 +35,7 @@ from plumbwell.reduction.located import Located, located
 from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts, network_parts
 from plumbwell.reduction.positions import WellPath, well_path
+from plumbwell.reduction.rank_lost import OpenDirections, open_directions, told_estimates
 from plumbwell.reduction.reference_rock import reference_rock
 from plumbwell.reduction.stations import placement, row_depths
 from plumbwell.reduction.tide_effect import modelled_tide, shifted_tides, tide, tide_comparison, utc_time
@@ -190,6 +191,8 @@ def reduce(
         observed = keep(_observed, raw, tidal, tilted, pressure.column, to_station)
         fit, gravity = solved(observed)
     columns = keep(estimates, observed, fit, gravity, network, station)
+    untold = keep(_open_directions, fit, stays, ties, counts)
+    columns = keep(told_estimates, columns, untold, basis, stays, network, gravity.datum)
     done("network", 0.6)
     left = keep(anomalies, columns.gravity, parts, gravity.datum)
     densities = keep(interval_densities, pairs, columns.gravity, where.positions, parts, left, choice)
@@ -227,7 +230,7 @@ def reduce(
         ),
         network=NetworkResults(
             visits=stays, ties=ties, tie_station=tuple(labels[one] for one in ties.station.tolist()),
-            parts=network, adjustment=fit, gravity=gravity,
+            parts=network, adjustment=fit, gravity=gravity, open=untold,
         ),
         stations=StationResults(
             label=labels, role=where.placement.role, located=where, visits=counts,
@@ -378,6 +381,11 @@ def _referred(
         wanted=labels.index(wanted) if wanted in labels else None,
     )
     return referred_gravity(fit, network, ties, datum)
+
+
+def _open_directions(fit: Adjustment, stays: Visits, ties: TieRows, counts: Index) -> OpenDirections:
+    one = fit.design
+    return open_directions(fit.basis, stays, ties, unknowns=one.unknowns, lost=one.lost, n_stations=len(counts))
 
 
 def _to_station(where: Located, slope: Column, path: WellPath, sensor: Column) -> Column:

@@ -18,6 +18,7 @@ from plumbwell.reduction.estimates import Estimates
 from plumbwell.reduction.located import Located
 from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts
+from plumbwell.reduction.rank_lost import OpenDirections
 from plumbwell.reduction.reference_rock import ReferenceLayers
 from plumbwell.reduction.tide_effect import TideComparison
 from plumbwell.reduction.tilt_pressure import Pressure
@@ -114,7 +115,7 @@ class IntervalResults:
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class NetworkResults:
-    """The adjusted network: what it rests on, its solution, its datum."""
+    """The adjusted network: what it rests on, its solution, its datum, and what the readings leave open."""
 
     visits: Visits
     ties: TieRows
@@ -122,6 +123,7 @@ class NetworkResults:
     parts: Parts
     adjustment: Adjustment
     gravity: StationGravity
+    open: OpenDirections
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)

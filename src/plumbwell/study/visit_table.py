@@ -209,8 +209,9 @@ class TareInForce:
     tare : Tare
         As it is listed.
     size, sd : float, float or None
-        m/s2. The sd is None where the size is held: as stated, or at 0 where nothing tells it. A tare of unknown size
-        that parts the network has no size at all (NaN), for the levels before and after it cannot be compared.
+        m/s2. The sd is None where the size is held as stated. A tare of unknown size has none at all (NaN) where it
+        parts the network, for the levels before and after it cannot be compared, and where the readings do not tell it
+        from another.
     """
 
     run: int
@@ -231,6 +232,8 @@ def tares_in_force(results: Results) -> tuple[TareInForce, ...]:
         unknown = DriftUnknown(kind="tare", run=run, tare=number)
         if tare.size is not None and tare.size_sd is None:
             size = tare.size
+        elif results.network.open.moves(unknown):
+            size = float("nan")
         elif unknown in fit.design.unknowns:
             size, sd = fit.unknown(unknown)
         if tare.size is None:

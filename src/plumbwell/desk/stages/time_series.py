@@ -96,8 +96,7 @@ def _tare_words(one: TareInForce) -> str:
     if not np.isfinite(one.size):
         return "tare of unknown size"
     if one.sd is None:
-        held = "held" if one.tare.size is None else "as stated"
-        return f"tare {number(one.size / MICROGAL, 1, signed=True)} µGal, {held}"
+        return f"tare {number(one.size / MICROGAL, 1, signed=True)} µGal, as stated"
     decimals = column_decimals([one.sd / MICROGAL], default=0)
     return (
         f"tare {number(one.size / MICROGAL, decimals, signed=True)} {PLUS_MINUS} "
