@@ -4,7 +4,18 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Iterator
 
-from plumbwell.study.docket import corrections, depths, gravity_with_depth, network, outliers, rock, stated, ties
+from plumbwell.study.docket import (
+    corrections,
+    depths,
+    drift,
+    gravity_with_depth,
+    network,
+    noise,
+    outliers,
+    rock,
+    stated,
+    ties,
+)
 from plumbwell.study.docket.wording import listed
 from plumbwell.study.finding import SEVERITIES, Finding
 from plumbwell.study.results import Results
@@ -14,14 +25,21 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     stated.recipe_left,
     network.single_station,
     network.network_parts,
+    drift.tares_part,
     network.noise_untold,
     network.rank_lost,
     network.no_repeat,
+    drift.drift_contradicts,
     depths.second_places,
     depths.places_disagree,
     rock.no_density,
     corrections.pressure_refused,
     network.few_freedom,
+    noise.no_majority,
+    noise.noise_at_floor,
+    noise.one_station_repeated,
+    noise.weights_far_apart,
+    drift.drift_large,
     network.equal_times,
     network.datum_station,
     network.tie_unvisited,
@@ -57,6 +75,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     depths.path_assumed,
     depths.path_ends,
     depths.close_stations,
+    rock.density_unsure,
     rock.log_uncovered,
     rock.layers_untold,
     rock.reference_from_log,
