@@ -1,19 +1,11 @@
-"""Small invented surveys for the tests of the docket, and their findings."""
+"""The findings of a reduction, by code and by severity."""
 
 from collections.abc import Callable
-from pathlib import Path
 
 import pytest
 
-from invented_surveys import Invented
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
-
-
-@pytest.fixture
-def invented(tmp_path: Path) -> Invented:
-    """A maker of invented surveys in a folder of their own."""
-    return Invented(tmp_path)
 
 
 @pytest.fixture
