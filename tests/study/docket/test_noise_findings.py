@@ -73,6 +73,21 @@ def test_noise_far_below_the_floor_is_told_from_one_chance_in_a_thousand_on(inve
     assert len(found(invented.survey(invented.visits(quiet=quiet)), "noise_at_floor")) == told
 
 
+def test_noise_that_one_bad_visit_gave_to_all_is_told_as_such(invented, found):
+    rows = invented.visits("ABCDEDCBADCBAE", readings=1)
+    rows.insert(5, {**rows[4], "time": rows[4]["time"].replace(":00Z", ":30Z")})
+    rows[5]["reading [mGal]"] = f"{float(rows[4]['reading [mGal]']) + 0.06:.4f}"
+    results = invented.survey(rows)
+    assert not found(results, "noise_at_floor")
+    (one,) = found(results, "noise_of_few")
+    # Two readings 60 microgal apart, 0.2 of it drift: that over the root of 2.
+    assert one.severity == "look" and "the noise of a reading, 42.3 µGal, is what 1 degree of freedom" in one.text
+
+
+def test_noise_that_many_visits_share_is_not_that_of_few(invented, found):
+    assert not found(invented.survey(), "noise_of_few")
+
+
 def test_a_base_that_is_the_only_repeat_tells_its_own_noise_only(invented, found):
     (one,) = found(invented.survey(invented.visits("ABACADAEA")), "one_station_repeated")
     assert (one.severity, one.place, one.stations) == ("look", "A, 20.0 m", (1, 2, 3, 4))

@@ -12,6 +12,7 @@ from plumbwell.study.docket.wording import (
     MILLIGAL,
     amount,
     counted,
+    gravity,
     line,
     lines,
     numbers,
@@ -78,7 +79,7 @@ def _sd(value: float) -> str:
 
 
 def noise_at_floor(results: Results) -> Iterator[Finding]:
-    """Visits that agree better than the stated noise allows: every sd is then what the instrument states."""
+    """Visits that agree better than their noise allows: every sd is then what is stated, or what few readings gave."""
     fit = results.network.adjustment
     freedom = fit.reseating.freedom
     if freedom < 1:
@@ -86,13 +87,31 @@ def noise_at_floor(results: Results) -> Iterator[Finding]:
     value = float(np.sum(_visit_residuals(results) ** 2 / (fit.noise.variance + fit.reseating.variance)))
     if chi_square_chance(value, freedom=freedom) < TOO_WELL:
         return
+    better = (
+        f"The visits agree better than their noise allows (chi-square {value:.2g} with "
+        f"{counted(freedom, 'degree of freedom', 'degrees of freedom')}): "
+    )
+    instruments = instruments_used(results.survey.readings, results.survey.instruments)
+    code = results.survey.readings.instrument.code[results.network.visits.rows]
+    floor = np.array([one.reading_floor for one in instruments])[code]
+    inside = fit.noise.freedom
+    if results.recipe.noise == "estimate" and inside > 0 and np.median(fit.noise.sd / floor) > 1.0:
+        yield Finding(
+            code="noise_of_few",
+            severity="look",
+            place="network",
+            text=better + f"the noise of a reading, {gravity(float(np.median(fit.noise.sd)))}, is what "
+            f"{counted(inside, 'degree of freedom', 'degrees of freedom')} within visits "
+            f"{'gives' if inside == 1 else 'give'}, and is too large for the whole.",
+            mend="Look at the visits with several readings: an unsettled one among them, or two stops taken for one "
+            "visit, makes every sd too large.",
+        )
+        return
     yield Finding(
         code="noise_at_floor",
         severity="look",
         place="network",
-        text=f"The visits agree better than their noise allows (chi-square {value:.2g} with "
-        f"{counted(freedom, 'degree of freedom', 'degrees of freedom')}): every sd rests on what is stated "
-        "(reading_floor, reseating_sd), not on what the survey shows.",
+        text=better + "every sd rests on what is stated (reading_floor, reseating_sd), not on what the survey shows.",
         mend="See that the readings were not averaged, rounded or copied; lower the stated noise, if the instrument "
         "is so good.",
     )
