@@ -378,7 +378,10 @@ def test_two_tares_that_no_reading_tells_apart_have_no_size():
     found = tares_in_force(results)
     assert [one.sd for one in found] == [None, None] and all(np.isnan(one.size) for one in found)
     (line,) = drift_lines(results)
-    assert np.isfinite(line.sd).all() and np.abs(line.drift).max() < 500 * UGAL
+    assert np.isfinite(line.sd).all() and np.nanmax(np.abs(line.drift)) < 500 * UGAL
+    # No reading stands between them, and nothing is drawn there.
+    between = (line.time >= at - 60.0) & (line.time < at)
+    assert between.any() and np.isnan(line.drift).tolist() == between.tolist()
 
 
 def test_a_run_with_one_instant_has_a_line_of_one_place():
