@@ -116,8 +116,10 @@ def half_of_the_visits(share):
     return bad, [chance.choice([-1.0, 1.0]) * chance.uniform(1.0, 5.0) for _ in bad]
 
 
-def test_visits_of_which_half_are_off_have_no_majority(invented, found):
-    results = invented.survey(moved(invented.visits(STOPS), *half_of_the_visits(0.5)))
+@pytest.mark.parametrize("stated", [0.0, 0.003])
+def test_visits_of_which_half_are_off_have_no_majority(invented, found, stated):
+    rows = moved(invented.visits(STOPS), *half_of_the_visits(0.5))
+    results = invented.survey(rows, instrument=f'applied = ["tide"]\nreseating_sd = {stated}')
     (one,) = found(results, "no_majority")
     assert one.severity == "look" and one.place == "network" and one.stations
     assert "only 8 degrees of freedom check them: no consistent majority tells which are wrong" in one.text

@@ -6,6 +6,8 @@ from collections.abc import Iterator
 
 import numpy as np
 
+from plumbwell.reduction.design import DriftUnknown
+from plumbwell.reduction.visits import Visits
 from plumbwell.study.docket.wording import (
     HOUR,
     MILLIGAL,
@@ -31,11 +33,11 @@ def drift_large(results: Results) -> Iterator[Finding]:
     """Runs whose drift is larger than what gravity changes by between their stations."""
     visits, at = results.network.visits, results.stations.gravity.values
     part = results.network.parts.of_station
-    for code in visits.run_order.tolist():
-        read = np.unique(visits.station[visits.run == code])
+    for code, members in _by_run(visits):
+        read = np.unique(visits.station[members])
         read = read[np.isfinite(at[read])]
         signal = max((float(np.ptp(at[read[part[read] == one]])) for one in np.unique(part[read])), default=0.0)
-        span = _drift_span(results, code)
+        span = _drift_span(results, code, members)
         if len(read) < 2 or not span > signal:
             continue
         times = f"{amount(span / signal, 1)} times" if signal > 0.0 else "beside nothing at all,"
@@ -60,10 +62,13 @@ def drift_contradicts(results: Results) -> Iterator[Finding]:
     """
     fit = results.network.adjustment
     basis = fit.basis
-    for code in results.network.visits.run_order.tolist():
+    terms_of: dict[int, list[DriftUnknown]] = {}
+    for one in fit.design.unknowns:
+        if one.kind == "drift":
+            terms_of.setdefault(one.run, []).append(one)
+    for code, terms in terms_of.items():
         stated, stated_sd = float(basis.rate[code]), float(basis.rate_sd[code])
-        terms = [one for one in fit.design.unknowns if one.kind == "drift" and one.run == code]
-        if not terms or not stated_sd < np.inf:
+        if not stated_sd < np.inf:
             continue
         length = float(basis.length[code])
         # Scaled time ends at 1, so that the powers add up to the drift over the whole run.
@@ -95,10 +100,17 @@ def _rate(value: float) -> str:
     return f"{value / MILLIGAL * HOUR:.3g}".replace("-", "\u2212")
 
 
-def _drift_span(results: Results, code: int) -> float:
+def _by_run(visits: Visits) -> Iterator[tuple[int, slice]]:
+    """Each run with its visits, which stand together."""
+    first = np.flatnonzero(np.diff(visits.run, prepend=-1)).tolist()
+    for start, end in zip(first, [*first[1:], len(visits)], strict=True):
+        yield int(visits.run[start]), slice(start, end)
+
+
+def _drift_span(results: Results, code: int, members: slice) -> float:
     """How far the drift of a run goes over its used readings, jumps at tares left out, m/s2."""
     visits, basis = results.network.visits, results.network.adjustment.basis
-    rows = visits.rows[basis.run[visits.rows] == code]
+    rows = visits.rows[visits.start[members.start] : visits.start[members.stop]]
     utc, drift = basis.utc[rows], results.readings.estimates.drift.values[rows]
     edges = [tare.time for tare, of in zip(basis.tares, basis.tare_run.tolist(), strict=True) if of == code]
     stretch = np.searchsorted(np.sort(np.array(edges, dtype=np.float64)), utc, side="right")

@@ -142,16 +142,19 @@ def no_majority(results: Results) -> Iterator[Finding]:
     visits, freedom = results.network.visits, fit.reseating.freedom
     instruments = instruments_used(results.survey.readings, results.survey.instruments)
     code = results.survey.readings.instrument.code[visits.rows]
-    floor, off_median = np.array([one.reading_floor for one in instruments])[code], np.abs(_off_the_median(results))
+    floor = np.array([one.reading_floor for one in instruments])[code]
     if freedom >= LEAST_CHECKS:
         seat = np.array([one.reseating_sd for one in instruments])[code[visits.start[:-1]]]
-        # Half of the readings off would make the mean square of any noise large, and so hide themselves.
-        several = np.repeat(np.diff(visits.start) > 2, np.diff(visits.start))
-        middle = NORMAL_OF_MEDIAN * float(np.median(off_median[several])) if several.any() else 0.0
-        usual = np.sqrt(seat**2 + np.maximum(floor[visits.start[:-1]], middle) ** 2 / np.diff(visits.start))
-        residual = _visit_residuals(results)
-        # The fit is made only where least squares already leaves much more than noise.
-        if np.sum((residual / usual) ** 2) > freedom * (0.5 * WIDE_VISITS) ** 2:
+        counts, residual, noise = np.diff(visits.start), _visit_residuals(results), floor[visits.start[:-1]]
+        # Medians and the fit are made only where least squares already leaves much more than noise.
+        wide = freedom * (0.5 * WIDE_VISITS) ** 2
+        if np.sum(residual**2 / (seat**2 + noise**2 / counts)) > wide:
+            # Half of the readings off would make the mean square of any noise large, and so hide themselves.
+            off_median = np.abs(_off_the_median(results))[np.repeat(counts > 2, counts)]
+            middle = NORMAL_OF_MEDIAN * float(np.median(off_median)) if off_median.size else 0.0
+            noise = np.maximum(noise, middle)
+        usual = np.sqrt(seat**2 + noise**2 / counts)
+        if np.sum((residual / usual) ** 2) > wide:
             off = np.flatnonzero(np.abs(_least_deviations(results, residual, usual)) > WIDE_VISITS * usual)
             if 2 * off.size >= freedom:
                 yield Finding(
@@ -169,7 +172,10 @@ def no_majority(results: Results) -> Iterator[Finding]:
         stated = results.survey.readings.reading_sd
         if stated is not None and results.recipe.noise == "as_given":
             floor = np.fmax(floor, stated.values[visits.rows])
-        odd = visits.rows[off_median > WIDE_READINGS * floor]
+        left = fit.residual[visits.rows]
+        if float(np.mean((left / floor) ** 2)) < (0.2 * WIDE_READINGS) ** 2:
+            return
+        odd = visits.rows[np.abs(_off_the_median(results)) > WIDE_READINGS * floor]
         if 2 * odd.size >= inside:
             yield Finding(
                 code="no_majority",
