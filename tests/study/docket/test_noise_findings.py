@@ -128,6 +128,12 @@ def test_visits_of_which_half_are_off_have_no_majority(invented, found, stated):
     assert results.stations.gravity_sd.values[1:].min() > 5e-6
 
 
+def test_stated_noise_does_not_count_the_scatter_and_that_is_said(invented, found):
+    rows = moved(invented.visits(STOPS), *half_of_the_visits(0.5))
+    (one,) = found(invented.survey(rows, recipe='tide = "none"\nnoise = "as_given"'), "no_majority")
+    assert one.text.endswith("No sd counts this scatter, since the noise is the stated one.")
+
+
 def test_half_of_many_visits_hide_behind_no_noise(invented, found):
     stops = "ABCDECBDAE" * 3
     chance = random.Random(8)

@@ -143,6 +143,9 @@ def no_majority(results: Results) -> Iterator[Finding]:
     instruments = instruments_used(results.survey.readings, results.survey.instruments)
     code = results.survey.readings.instrument.code[visits.rows]
     floor = np.array([one.reading_floor for one in instruments])[code]
+    counts_it = "Every sd counts this scatter."
+    if results.recipe.noise == "as_given":
+        counts_it = "No sd counts this scatter, since the noise is the stated one."
     if freedom >= LEAST_CHECKS:
         seat = np.array([one.reseating_sd for one in instruments])[code[visits.start[:-1]]]
         counts, residual, noise = np.diff(visits.start), _visit_residuals(results), floor[visits.start[:-1]]
@@ -163,7 +166,7 @@ def no_majority(results: Results) -> Iterator[Finding]:
                     place="network",
                     text=f"{counted(off.size, 'visit lies', 'visits lie')} more than {WIDE_VISITS:g} times the stated "
                     f"noise off the best fit, and only {counted(freedom, 'degree of freedom checks', _CHECK)} them: "
-                    "no consistent majority tells which are wrong. Every sd counts this scatter.",
+                    f"no consistent majority tells which are wrong. {counts_it}",
                     mend="See whether a tare, a wrong label or a wrong clock explains it; bring in more repeats.",
                     stations=numbers(np.unique(visits.station[off])),
                 )
@@ -184,7 +187,7 @@ def no_majority(results: Results) -> Iterator[Finding]:
                 text=f"{counted(odd.size, 'reading lies', 'readings lie')} more than {WIDE_READINGS:g} times "
                 f"reading_floor off the middle reading of the visit, and only "
                 f"{counted(inside, 'degree of freedom checks', _CHECK)} the readings within visits: no consistent "
-                "majority tells which are wrong. Every sd counts this scatter.",
+                f"majority tells which are wrong. {counts_it}",
                 mend="Take what was read before the instrument had settled out of use, with a reason; see the unit.",
                 rows=numbers(np.sort(odd)),
             )
