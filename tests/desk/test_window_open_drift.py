@@ -7,6 +7,7 @@ import pytest
 
 from invented_surveys import Invented
 from plumbwell.desk.stages import states
+from plumbwell.desk.stages.depth_tracks import reduction_tracks
 from plumbwell.desk.stages.time_series import drift_plots
 
 TARES = '[[tare]]\nrun = "1"\ntime = "2026-05-04T08:33:00Z"\n[[tare]]\nrun = "1"\ntime = "2026-05-04T08:33:30Z"\n'
@@ -28,5 +29,8 @@ def test_what_the_readings_leave_open_is_shown_in_every_stage(driven, tmp_path, 
         window.picture(tmp_path / f"{stage}.png")
     first = next(panel for panel in drift_plots(window.work.shown)[0].panels if "1" in panel.name)
     assert bool(first.lines) == (order == 1)
+    bars = next(track.bars for track in reduction_tracks(window.work.shown, 1) if track.bars)
+    depths = results.stations.located.mark_depth.values[1:]
+    assert [bar.depth for bar in bars] == depths[~without[1:]].tolist()
     densities = window.strip_densities
     assert [one is None or np.isnan(one) for one in densities] == np.isnan(results.intervals.density.values).tolist()
