@@ -97,6 +97,17 @@ def test_a_visit_ten_gal_off_is_told_and_kept(invented, command):
     assert one["place"] == "C, 120.0 m" and "reads 10\u00a0000.0" in one["text"]
 
 
+def test_a_reading_ten_gal_off_that_nothing_checks_shows_in_its_densities(invented, command):
+    """No repeat at C: what is told is a density of 10 000/(50 x 0.0838717) = 2 385 g/cm3 less above it, more below."""
+    rows = [moved(row, 10_000.0) if row["station"] == "C" else row for row in invented.visits("ABCDBADBA", readings=1)]
+    done = command(invented.written(rows))
+    assert "unchecked_readings" in {one["code"] for one in done.summary["findings"]}
+    for row, sign in zip(done.intervals[1:], (-1.0, 1.0), strict=True):
+        assert float(row["density [g/cm3]"]) == pytest.approx(2.4 + sign * 10_000.0 / 50.0 / 0.0838717, abs=0.2)
+        assert "density_outside" in row["flags"]
+    assert done.intervals[0]["flags"] == ""
+
+
 def test_half_of_the_visits_off_have_no_majority(invented, command):
     rows, chance = invented.visits(STOPS), random.Random(21)
     for visit in chance.sample(range(14), 7):
