@@ -163,7 +163,7 @@ def walk(seeds: Seeds) -> Figures:
         scheme = Scheme(stops=stops, wander=12.0 * UGAL, exactly=exactly)
         found = all_missed(scheme, seeds, drift_walk="auto")
         held = all_missed(scheme, seeds, drift_walk="off")
-        taken = float(np.mean([one.results.network.adjustment.walk > 0.0 for one in found]))
+        taken = float(np.mean([one.results.network.adjustment.walk is not None for one in found]))
         what = f"wander of 12 uGal, {scheme.freedom} dof, {name}"
         yield Figure(what=f"{what}: rms error/sd", value=scaled_rms(found), least=0.9, most=1.2)
         yield Figure(what=f"{what}: rms error over best", value=over_best(found))
@@ -173,7 +173,7 @@ def walk(seeds: Seeds) -> Figures:
     for name, scheme in (("three loops", SEVENTEEN), ("second pass", EVERY_FIFTH)):
         found = all_missed(scheme, seeds, drift_walk="auto")
         off = all_missed(scheme, seeds, drift_walk="off")
-        taken = float(np.mean([one.results.network.adjustment.walk > 0.0 for one in found]))
+        taken = float(np.mean([one.results.network.adjustment.walk is not None for one in found]))
         yield Figure(what=f"no wander, {name}: rms error over that of no walk", value=over_other(found, off), most=1.05)
         yield Figure(what=f"no wander, {name}: share with a walk", value=taken)
         yield Figure(what=f"no wander, {name}: rms error/sd", value=scaled_rms(found))

@@ -370,16 +370,18 @@ def test_a_tare_that_parts_the_network_has_no_size():
     )
 
 
-def test_a_tare_that_nothing_tells_is_held_at_zero():
+def test_two_tares_that_no_reading_tells_apart_have_no_size():
     rows = loop(np.random.default_rng(3), "ABAB", depth=DEPTH, gravity=GRAVITY, counts=(2,))
     at = next_stop(rows, 2)
     tares = (Tare(run="1", time=at), Tare(run="1", time=at - 60.0))
     results = reduce(made_case(rows, instruments=(METER,), tares=tares, noise="as_given", drift_order=1))
     found = tares_in_force(results)
-    assert sorted(one.sd is None for one in found) == [False, True]
-    assert next(one.size for one in found if one.sd is None) == 0.0
+    assert [one.sd for one in found] == [None, None] and all(np.isnan(one.size) for one in found)
     (line,) = drift_lines(results)
-    assert np.isfinite(line.sd).all() and np.abs(line.drift).max() < 500 * UGAL
+    assert np.isfinite(line.sd).all() and np.nanmax(np.abs(line.drift)) < 500 * UGAL
+    # No reading stands between them, and nothing is drawn there.
+    between = (line.time >= at - 60.0) & (line.time < at)
+    assert between.any() and np.isnan(line.drift).tolist() == between.tolist()
 
 
 def test_a_run_with_one_instant_has_a_line_of_one_place():

@@ -178,7 +178,7 @@ def interval_errors(
         factors["datum"] = common.datum_sd * shared(np.where(tied, 0.0, 1.0))
     for number in range(gravity.ties.shape[1]):
         factors[f"tie {number + 1}"] = shared(gravity.ties[:, number])
-    known = np.where(pairs.joined, 1.0, np.nan)
+    known = np.where(np.isnan(densities.density.values), np.nan, 1.0)
     part_sd = {
         name: constant_column(f"density_sd_{name}", "kg/m3", known * np.sqrt(spread.variance()))
         for name, spread in spreads.items()

@@ -143,6 +143,8 @@ def drift(results: Results) -> list[dict[str, Any]]:
         for power in range(1, order + 1):
             unknown = DriftUnknown(kind="drift", run=run, power=power)
             value, sd = fit.unknown(unknown)
+            if results.network.open.moves(unknown):
+                value, sd = math.nan, math.nan
             unit = MILLIGAL * hours**power
             coefficients.append(
                 {

@@ -95,7 +95,8 @@ def closing_residuals(cells: dict[str, Sequence[str]], results: Results) -> list
     def written(heading: str) -> Array:
         return np.array([float(text) if text else np.nan for text in cells[heading]])
 
-    gravity = np.array([float(text) for text in column_cells(TABLES["stations"].column("gravity"), results)])
+    cells_of_gravity = column_cells(TABLES["stations"].column("gravity"), results)
+    gravity = np.array([float(text) if text else np.nan for text in cells_of_gravity])
     station = results.stations.located.placement.station
     at_station = np.where(station >= 0, gravity[np.maximum(station, 0)], np.nan)
     # The large numbers meet first, so that the double precision of their sum is that of the small remainder.
@@ -103,7 +104,10 @@ def closing_residuals(cells: dict[str, Sequence[str]], results: Results) -> list
     left = left + written("tide [mGal]") + written("tilt [mGal]") - written("pressure_effect [mGal]")
     left = left + written("to_station [mGal]") - written("drift [mGal]")
     left = left - np.nan_to_num(written("visit_effect [mGal]"))
-    return number_cells(np.where(np.isnan(results.readings.estimates.residual.values), np.nan, left))
+    residual = results.readings.estimates.residual.values
+    # Where gravity or drift is not known nothing is to close, and the residual is still the same.
+    left = np.where(np.isnan(left), residual / MILLIGAL, left)
+    return number_cells(np.where(np.isnan(residual), np.nan, left))
 
 
 def _whole(corner: str, labels: Sequence[str], covariance: Array) -> str:
@@ -171,7 +175,7 @@ def station_covariance(results: Results) -> str:
         return _whole("station", labels, _symmetric((spread.matrix() + ties @ ties.T) / unit, variance))
     upper = np.arange(len(labels) - 1)
     beside = spread.between(upper, upper + 1) + np.sum(ties[:-1] * ties[1:], axis=1)
-    return _neighbours(labels, variance, beside / unit)
+    return _neighbours(labels, variance, beside / unit + 0.0 * (variance[1:] + variance[:-1]))
 
 
 COVARIANCES = {

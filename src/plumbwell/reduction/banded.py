@@ -24,6 +24,11 @@ SMALLEST_PIVOT = 1e-14
 SOLVED_AT_ONCE = 256
 
 
+def summed(where: Index, values: Array, count: int) -> Array:
+    """Sums of values by the place each belongs to, (count,)."""
+    return np.bincount(where, values, minlength=count).astype(np.float64, copy=False)
+
+
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class Layout:
     """Where the elements of such a matrix stand in one flat array.
@@ -332,7 +337,7 @@ def products(factor: Factor, one: Rows, other: Rows, count: int) -> Array:
     place = factor.layout.place(unknown[first], their_unknown[second])
     known = place >= 0
     product = value[first] * their_value[second] * np.where(known, factor.inverse[place], 0.0)
-    found = np.bincount(row[first], product, minlength=count)
+    found = summed(row[first], product, count)
     apart = np.unique(row[first[~known]])
     for start in range(0, len(apart), SOLVED_AT_ONCE):
         part = apart[start : start + SOLVED_AT_ONCE]

@@ -168,7 +168,7 @@ def normal(
     return gradient, left - on_border.T @ inverse @ on_border, np.diagonal(own)
 
 
-def jumps(solution: Solution) -> list[Jumps]:
+def jumps(solution: Solution, visits: Visits) -> list[Jumps]:
     """Jumps of unknown size in every gap between neighbouring visits of a run."""
     one, terms = solution.design, RunTerms(solution)
     total = np.append(solution.border.total, np.inf)
@@ -188,7 +188,9 @@ def jumps(solution: Solution) -> list[Jumps]:
         step = (2.0 * later * weight + weight**2) / total[station]
         at_stations = np.cumsum(step[::-1])[::-1][1:]
         left = own - at_stations - np.einsum("gu,uv,gv->g", after, inverse, after)
-        told = left > TOLD * own
+        # A gap without length is none: which of the readings came first is not known.
+        gap = visits.first[members[1:]] > np.maximum.accumulate(visits.last[members])[:-1]
+        told = (left > TOLD * own) & gap
         safe = np.where(told, left, 1.0)
         found.append(
             Jumps(

@@ -30,7 +30,8 @@ class Checked:
         1 - d(A x)/dl of the whole estimate without visit effects; NaN for unused rows.
     error : array, m/s2
         What a gross error of the reading would be by all others, and NaN where nothing checks it.
-    error_sd : array, m/s2
+    predicted : array, m2/s4
+        Variance of what all others say of the reading, its own noise left out.
     """
 
     visit_effect: Array
@@ -38,7 +39,7 @@ class Checked:
     standardised: Array
     redundancy: Array
     error: Array
-    error_sd: Array
+    predicted: Array
 
 
 def visit_means(weight: Array, values: Array, start: Index) -> Array:
@@ -68,7 +69,7 @@ def checked(
     element of V^-1 Q V^-1 (Baarda 1968; Teunissen 2000, for correlated observations).
     """
     n = len(level)
-    effect, standardised, redundancy, error, error_sd = (np.full(n, np.nan) for _ in range(5))
+    effect, standardised, redundancy, error, predicted_variance = (np.full(n, np.nan) for _ in range(5))
     one, gravity = solution.design, solution.gravity[:, 0]
     predicted = np.where(station >= 0, gravity[np.maximum(station, 0)], np.nan)
     read = np.zeros(len(basis.start), dtype=bool)
@@ -90,8 +91,8 @@ def checked(
         both = (numbers >= 0)[:, None] & (numbers >= 0)
         place = one.layout.place(np.maximum(numbers, 0)[:, None], np.maximum(numbers, 0)[None, :])
         block = np.where(both, inverse[place] if one.size else 0.0, 0.0)
-        own = slice(visit_edges[number], visit_edges[number + 1])
-        turned[start:end], turned_mean[own] = z[start:end] @ block, z_mean[own] @ block
+        mine = slice(visit_edges[number], visit_edges[number + 1])
+        turned[start:end], turned_mean[mine] = z[start:end] @ block, z_mean[mine] @ block
     base, cross = _with_station(solution)
     of_mean = np.einsum("vm,vm->v", z_mean, cross)
     own_fit = (
@@ -106,20 +107,22 @@ def checked(
     effect[rows] = (kept * visit_means(share, residual[rows], visits.start))[visit]
     residual[rows] -= effect[rows]
     free = np.maximum(1.0 - fit / variance, 0.0)
-    sd2 = noise.sd**2 - noise.variance[visit] + ((1.0 - kept) ** 2 * variance * free)[visit] + tilt
+    own = noise.sd**2
+    fitted = (noise.variance - (1.0 - kept) ** 2 * variance * free)[visit] - tilt
+    sd2 = own - fitted
     enough = sd2 > 1e-9 * noise.sd**2
     safe = np.where(enough, sd2, 1.0)
     standardised[rows] = np.where(enough, residual[rows] / np.sqrt(safe), np.nan)
     redundancy[rows] = 1.0 - own_fit * share / variance[visit]
     error[rows] = np.where(enough, residual[rows] * noise.sd**2 / safe, np.nan)
-    error_sd[rows] = np.where(enough, noise.sd**2 / np.sqrt(safe), np.nan)
+    predicted_variance[rows] = np.where(enough, own * fitted / safe, np.nan)
     return Checked(
         visit_effect=effect,
         residual=residual,
         standardised=standardised,
         redundancy=redundancy,
         error=error,
-        error_sd=error_sd,
+        predicted=predicted_variance,
     )
 
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from plumbwell.reduction.banded import ONE_BLOCK, Layout, layout
+from plumbwell.reduction.banded import ONE_BLOCK, Layout, layout, summed
 from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
 from plumbwell.reduction.visits import Visits
 from plumbwell.reduction.walk_modes import mode_sds, walk_modes
@@ -62,7 +62,7 @@ class Priors:
 
     def of(self, unknown: Array) -> Array:
         """What each prior observes when the unknowns have these values, (m,)."""
-        return np.bincount(self.row, self.factor * unknown[self.unknown], minlength=len(self))
+        return summed(self.row, self.factor * unknown[self.unknown], len(self))
 
 
 NO_PRIORS = Priors(
@@ -183,14 +183,12 @@ class Design:
 
     def on_visits(self, unknown: Array) -> Array:
         """What border unknowns (q,) put on each visit, (v,)."""
-        return np.bincount(
-            self.entry_visit, self.entry_value * unknown[self.entry_unknown], minlength=len(self.station)
-        )
+        return summed(self.entry_visit, self.entry_value * unknown[self.entry_unknown], len(self.station))
 
     def prior_at_unit_weight(self, scale: Array) -> Array:
         """What the priors add to the flat border matrix when each counts as much as one visit."""
         one = self.priors
-        norm = np.sqrt(np.bincount(one.row, (one.factor * scale[one.unknown]) ** 2, minlength=len(one)))
+        norm = np.sqrt(summed(one.row, (one.factor * scale[one.unknown]) ** 2, len(one)))
         return _prior_matrix(self.layout, one, norm)
 
 
@@ -406,7 +404,7 @@ def with_priors(one: Design, priors: Priors) -> Design:
         one,
         priors=one.priors.joined(priors),
         prior_matrix=one.prior_matrix + _prior_matrix(one.layout, priors, priors.sd),
-        prior_side=one.prior_side + np.bincount(priors.unknown, pull, minlength=one.size),
+        prior_side=one.prior_side + summed(priors.unknown, pull, one.size),
     )
 
 
@@ -417,7 +415,7 @@ def _prior_matrix(shape: Layout, priors: Priors, sd: Array) -> Array:
     once = shape.once(priors.unknown[first], priors.unknown[second])
     first, second = first[once], second[once]
     place = shape.place(priors.unknown[first], priors.unknown[second])
-    return np.bincount(place, scaled[first] * scaled[second], minlength=shape.starts[3])
+    return summed(place, scaled[first] * scaled[second], shape.starts[3])
 
 
 def _unknowns_of_runs(
@@ -438,20 +436,26 @@ def _unknowns_of_runs(
 
 def _priors(basis: DriftBasis, one: Design) -> Priors:
     """Mean drift rate of each run of order 1 or more, and the tares whose size is stated with an sd."""
-    name, value, sd = [], [], []
-    row, unknown, factor = [], [], []
+    name: list[str] = []
+    value: list[float] = []
+    sd: list[float] = []
+    row: list[int] = []
+    unknown: list[int] = []
+    factor: list[float] = []
     drifts: dict[int, list[int]] = {}
     for number, what in enumerate(one.unknowns):
         if what.kind == "drift":
             drifts.setdefault(what.run, []).append(number)
-        elif what.kind == "tare" and basis.tares[what.tare].size is not None:
-            tare = basis.tares[what.tare]
+        elif what.kind == "tare":
+            size, size_sd = basis.tares[what.tare].size, basis.tares[what.tare].size_sd
+            if size is None or size_sd is None:
+                continue
             row.append(len(name))
             unknown.append(number)
             factor.append(1.0)
             name.append(f"tare {what.tare}")
-            value.append(tare.size)
-            sd.append(tare.size_sd)
+            value.append(size)
+            sd.append(size_sd)
     for run, numbers in drifts.items():
         if basis.rate_sd[run] < np.inf:
             # The mean rate is the drift at the run's last used reading (scaled time 1) over its length.

@@ -121,3 +121,11 @@ def drift_basis(
         rate=frozen([one.drift_rate for one in run_instrument]),
         rate_sd=frozen([one.drift_rate_sd for one in run_instrument]),
     )
+
+
+def regressor(basis: DriftBasis, unknown: DriftUnknown, rows: Index) -> Array:
+    """Value of the regressor of a bias, a power of drift or a tare at the given rows, (n,)."""
+    if unknown.kind == "tare":
+        return basis.jumps(rows, unknown.tare)
+    mine = basis.run[rows] == unknown.run
+    return np.where(mine, 1.0 if unknown.kind == "bias" else basis.time(rows) ** unknown.power, 0.0)

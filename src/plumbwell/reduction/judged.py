@@ -16,23 +16,29 @@ from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment
 from plumbwell.reduction.candidates import jumps, more_drift
-from plumbwell.reduction.drift_basis import HIGHEST_ORDER, DriftUnknown
+from plumbwell.reduction.drift_basis import HIGHEST_ORDER
 from plumbwell.reduction.drift_order import CHANCE as ORDER_CHANCE
+from plumbwell.reduction.found_errors import (
+    CHANCE,
+    CHECKED,
+    LEAST_RATIO,
+    OUT,
+    ProposedTare,
+    chance_of,
+    critical_ratio,
+    errors_of,
+    is_told,
+    jumps_at_ends,
+    last_of_station,
+    proposed_tare,
+    size_of,
+)
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index, frozen_index
 from plumbwell.survey.instrument import Tare
 
-CHANCE = 0.01
-"""Chance that a clean survey shows any jump, and any outlier."""
-
 LEAST_FREEDOM = 5
 """Degrees of freedom under which no jump is looked for."""
-
-LEAST_RATIO = 3.29
-"""Two-sided 0.1 % of the normal distribution: the level of a single test (Baarda 1968)."""
-
-CHECKED = 0.05
-"""Redundancy under which nothing checks a reading."""
 
 MEDIAN_SQUARE = 0.4549
 """Median of the square of a normal ratio (chi-square of one degree of freedom)."""
@@ -46,49 +52,10 @@ SWOLLEN = 0.25
 ALIKE = 0.98
 """Share of the largest ratio at a station from which on nothing tells which of its visits is off."""
 
-SAME_GAIN = 1e-6
-"""Relative difference of two gains that are one and the same: readings between them check nothing."""
-
 OF_ONE_VISIT = 3.0
 """What a jump must explain more than one bad visit does: before the last visit of a run both are the same."""
 
 ROUNDS = 30
-OUT = 1e-8
-"""Robust weight of what was found to be in error: as good as none, and the network keeps its shape."""
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class ProposedTare:
-    """A jump of the instrument that the readings show and nobody has listed.
-
-    Parameters
-    ----------
-    run : int
-        Code of its run.
-    time : float
-        UTC, s since 2000-01-01: amid the gap.
-    gap_from, gap_to : float
-        Last reading that is surely before it and first that is surely after it.
-    visits_between : int
-        Visits in the gap that nothing puts on either side.
-    size, sd : float, m/s2
-    gain : float
-        Of the logarithm of the likelihood.
-    p : float
-        Chance of a jump as large in any gap that was tried.
-    """
-
-    run: int
-    time: float
-    gap_from: float
-    gap_to: float
-    visits_between: int
-    size: float
-    sd: float
-    gain: float
-    p: float
-
-
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class Judgement:
     """What was found.
@@ -103,8 +70,6 @@ class Judgement:
         What each is off by, m/s2, and in sds of its own.
     alike : (m,) bool array
         True where nothing tells which of several at the station is off: leaving all of them out would leave none.
-    majority : bool
-        False where so many visits disagree that none can be trusted to be right.
     """
 
     proposed: tuple[ProposedTare, ...]
@@ -112,7 +77,6 @@ class Judgement:
     error: Array
     ratio: Array
     alike: NDArray[np.bool_]
-    majority: bool
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -124,6 +88,7 @@ class _Candidate:
     station: int
     kind: str
     at: int
+    visit: int = -1
     twin: bool = False
 
 
@@ -167,21 +132,24 @@ def judged(
                 trust[rows] = OUT
                 if one.twin:
                     twins += rows.tolist()
+                if one.twin and one.kind == "reading":
+                    # Without a majority in the visit those that went before are no surer.
+                    mates = _rows(fit.visits, replace(one, kind="visit", at=one.visit))
+                    twins += mates[trust[mates] < 0.5].tolist()
         orders = tuple(raised)
         fit = refit(tuple(tares), trust, orders)
     fit, tares, trust = _given_back(fit, refit, tares, trust, orders, estimate, twins)
     rows = np.flatnonzero(trust < 0.5)
-    alike = np.isin(rows, twins) | _last_ones(start.visits, trust, rows)
-    off = _errors(fit, rows, frozenset(rows[alike].tolist()))
-    found = [_proposed(fit, one, number, len(tares)) for number, one in enumerate(tares)]
-    counted = int(np.count_nonzero(np.maximum.reduceat(trust[start.visits.rows], start.visits.start[:-1]) < 0.5))
+    alike = np.isin(rows, twins) | last_of_station(start.visits, trust, rows)
+    off = errors_of(fit, rows, frozenset(rows[alike].tolist()))
+    found = [proposed_tare(fit, one, number, len(tares)) for number, one in enumerate(tares)]
+    found += jumps_at_ends(fit, rows[~alike], {row: (error, ratio) for row, error, ratio in off})
     return Judgement(
         proposed=tuple(sorted(found, key=lambda one: one.time)),
         rows=frozen_index(rows),
         error=np.array([error for _, error, _ in off]),
         ratio=np.array([ratio for _, _, ratio in off]),
         alike=alike,
-        majority=counted <= 0.25 * len(start.visits),
     )
 
 
@@ -219,8 +187,8 @@ def _best(
                 )
             )
         if freedom >= LEAST_FREEDOM:
-            least = float(np.median(fit.noise.variance * solution.weight))
-            found += _drift_terms(fit, squares, freedom, scale, orders, automatic, estimate, least)
+            share = float(np.median(fit.noise.variance * solution.weight))
+            found += _drift_terms(fit, squares, freedom, scale, orders, automatic, estimate, share)
     found += _readings(fit, kept, estimate)
     taken: list[_Candidate] = []
     runs: set[int] = set()
@@ -231,7 +199,7 @@ def _best(
         taken.append(one)
         runs.add(one.run)
         stations.add(one.station)
-        others = _twins(one, found) if one.kind == "visit" else []
+        others = _twins(one, found)
         if others:
             taken[-1] = replace(one, twin=True)
             taken += [replace(other, twin=True) for other in others]
@@ -239,11 +207,14 @@ def _best(
 
 
 def _twins(one: _Candidate, found: list[_Candidate]) -> list[_Candidate]:
-    """Visits of the same station that are as far off, so that nothing tells which is wrong."""
+    """What is as far off, so that nothing tells which is wrong: visits of one station, two readings of a visit."""
+    if one.kind not in ("visit", "reading"):
+        return []
     return [
         other
         for other in found
-        if other is not one and other.kind == "visit" and other.station == one.station
+        if other is not one and other.kind == one.kind and other.station == one.station
+        and (one.kind == "visit" or other.visit == one.visit)
         and other.worth > ALIKE**2 * one.worth
     ]
 
@@ -283,7 +254,7 @@ def _drift_terms(
     from scipy.special import fdtrc
 
     found = []
-    every = jumps(fit.solution)
+    every = jumps(fit.solution, fit.visits)
     gaps = sum(int(np.count_nonzero(one.gain > 0.0)) for one in every)
     for one in every:
         best = int(np.argmax(one.gain))
@@ -312,7 +283,7 @@ def _drift_terms(
     return found
 
 
-def _readings(fit: Adjustment, kept: Array, estimate: bool) -> list[_Candidate]:
+def _readings(fit: Adjustment, kept: NDArray[np.bool_], estimate: bool) -> list[_Candidate]:
     """Single readings off the others of their visit."""
     visits, noise = fit.visits, fit.noise
     count = np.add.reduceat(kept.astype(float), visits.start[:-1])
@@ -332,7 +303,7 @@ def _readings(fit: Adjustment, kept: Array, estimate: bool) -> list[_Candidate]:
         found.append(
             _Candidate(
                 worth=float(told[n]) - 2.0 * np.log(alike.size), run=int(visits.run[visit[at]]),
-                station=int(visits.station[visit[at]]), kind="reading", at=at,
+                station=int(visits.station[visit[at]]), kind="reading", at=at, visit=int(visit[at]),
             )
         )
     return found
@@ -364,12 +335,12 @@ def _given_back(
     """
     for _ in range(ROUNDS):
         freedom = fit.reseating.freedom
-        gaps = sum(int(np.count_nonzero(one.gain > 0.0)) for one in jumps(fit.solution)) + len(tares)
+        gaps = sum(int(np.count_nonzero(one.gain > 0.0)) for one in jumps(fit.solution, fit.visits)) + len(tares)
         weak: list[tuple[float, int]] = []
         for number, tare in enumerate(tares):
-            size, sd = _size(fit, tare, len(tares), number)
+            size, sd = size_of(fit, tare, len(tares), number)
             if not is_told(size, sd, freedom, estimate, gaps=gaps):
-                weak.append((_chance(size, sd, freedom, estimate), number))
+                weak.append((chance_of(size, sd, freedom, estimate), number))
         if weak:
             tares = [one for number, one in enumerate(tares) if number != max(weak)[1]]
             fit = refit(tuple(tares), trust, orders)
@@ -377,8 +348,8 @@ def _given_back(
         rows = np.setdiff1d(np.flatnonzero(trust < 0.5), twins)
         if rows.size:
             used = fit.visits.rows
-            least = _critical(freedom if estimate else np.inf, len(used))
-            back = [row for row, _, ratio in _errors(fit, rows) if not abs(ratio) > least]
+            least = critical_ratio(freedom if estimate else np.inf, len(used))
+            back = [row for row, _, ratio in errors_of(fit, rows) if not abs(ratio) > least]
             if back:
                 trust = trust.copy()
                 trust[back] = 1.0
@@ -388,119 +359,3 @@ def _given_back(
     return fit, tares, trust
 
 
-def is_told(size: float, sd: float, freedom: int, estimate: bool, *, gaps: int) -> bool:
-    """True where a jump is larger than chance would make it in any of so many gaps."""
-    return _chance(size, sd, freedom, estimate) < CHANCE / max(gaps, 1)
-
-
-def _critical(freedom: float, tests: int) -> float:
-    from scipy.special import ndtri, stdtrit
-
-    tail = -np.expm1(np.log1p(-CHANCE) / tests) / 2.0
-    return max(float(-ndtri(tail) if freedom == np.inf else -stdtrit(max(freedom, 1), tail)), LEAST_RATIO)
-
-
-def _chance(size: float, sd: float, freedom: int, estimate: bool) -> float:
-    from scipy.special import fdtrc, ndtr
-
-    if not sd > 0.0:
-        return 1.0
-    ratio = size / sd
-    return float(fdtrc(1, max(freedom, 1), ratio**2)) if estimate else float(2.0 * ndtr(-abs(ratio)))
-
-
-def _size(fit: Adjustment, tare: Tare, count: int, number: int) -> tuple[float, float]:
-    """Size and sd of a tare that the search has added: the last ones of the basis, in their order."""
-    at = len(fit.basis.tares) - count + number
-    return fit.unknown(DriftUnknown(kind="tare", run=int(fit.basis.tare_run[at]), tare=at))
-
-
-def _last_ones(visits: Visits, trust: Array, rows: Index) -> NDArray[np.bool_]:
-    """True for rows of stations that no other used row is left of."""
-    station = np.repeat(visits.station, np.diff(visits.start))
-    left = np.zeros(int(station.max(initial=-1)) + 1)
-    np.maximum.at(left, station, trust[visits.rows])
-    gone = left[station] < 0.5
-    return np.isin(rows, visits.rows[gone])
-
-
-def _errors(fit: Adjustment, rows: Index, alike: frozenset[int] = frozenset()) -> list[tuple[int, float, float]]:
-    """What rows out of trust are off by, and in sds, by all that is left: row, error, ratio.
-
-    Those that stand alike against one another are weighed so.
-    """
-    error, sd = fit.checked.error, fit.checked.error_sd
-    visits = fit.visits
-    trusted = np.full(len(error), np.nan)
-    trusted[visits.rows] = fit.noise.sd
-    found = []
-    ratios = _visit_errors(fit)
-    for row in rows.tolist():
-        visit = int(visits.of_row[row])
-        members = visits.rows[visits.start[visit] : visits.start[visit + 1]]
-        if row in alike:
-            own = 2.0 * (np.median(fit.noise.variance) + float(np.median(fit.reseating.variance)))
-            found.append((row, float(ratios[0][visit]), float(ratios[0][visit]) / np.sqrt(own)))
-        elif np.all(trusted[members] > 1e3 * np.nanmedian(fit.noise.sd)):
-            found.append((row, float(ratios[0][visit]), float(ratios[1][visit])))
-        else:
-            # Its own noise has been swollen by the square root of its weight: what is left is the error.
-            off = float(error[row])
-            own = np.sqrt(max(float(sd[row]) ** 2 - trusted[row] ** 2, 0.0) + trusted[row] ** 2 * OUT)
-            found.append((row, off, off / own if own > 0.0 else np.inf))
-    return found
-
-
-def _visit_errors(fit: Adjustment) -> tuple[Array, Array]:
-    """What each visit is off by as the others predict it, and in sds."""
-    solution = fit.solution
-    variance = 1.0 / solution.weight
-    left = variance - solution.variance_of_fit()
-    free = left / variance
-    safe = np.where(free > CHECKED, free, np.nan)
-    error = solution.residual[:, 0] / safe
-    # Of a visit without weight the variance of its prediction is what is over its own.
-    predicted = variance / safe - variance
-    own = np.median(fit.noise.variance) + fit.reseating.variance
-    return error, error / np.sqrt(np.maximum(predicted, 0.0) + own)
-
-
-def _proposed(fit: Adjustment, tare: Tare, number: int, count: int) -> ProposedTare:
-    visits, basis = fit.visits, fit.basis
-    run = int(basis.tare_run[len(basis.tares) - count + number])
-    size, sd = _size(fit, tare, count, number)
-    members = np.flatnonzero(visits.run == run)
-    at = int(np.searchsorted(visits.first[members], tare.time))
-    low, high = _gap(fit, members, at)
-    freedom = fit.reseating.freedom
-    ratio = (size / sd) ** 2
-    gaps = max(sum(len(one.gain) for one in jumps(fit.solution)), 1)
-    gap_from, gap_to = float(visits.last[members[low]]), float(visits.first[members[high]])
-    return ProposedTare(
-        run=run,
-        time=0.5 * (gap_from + gap_to),
-        gap_from=gap_from,
-        gap_to=gap_to,
-        visits_between=high - low - 1,
-        size=size,
-        sd=sd,
-        gain=0.5 * (freedom + 1) * float(np.log1p(ratio / max(freedom, 1))),
-        p=min(_chance(size, sd, freedom, True) * gaps, 1.0),
-    )
-
-
-def _gap(fit: Adjustment, members: Index, at: int) -> tuple[int, int]:
-    """Visits of the run, by number in it, surely before and surely after a jump found before visit `at`.
-
-    A visit that nothing checks (its station is read once, or never across the jump) may lie on either side.
-    """
-    solution, visits = fit.solution, fit.visits
-    free = 1.0 - solution.weight * solution.variance_of_fit()
-    tells = free[members] > SAME_GAIN
-    low, high = at - 1, at
-    while low > 0 and not tells[low]:
-        low -= 1
-    while high < len(members) - 1 and not tells[high]:
-        high += 1
-    del visits
-    return low, high

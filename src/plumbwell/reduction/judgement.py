@@ -5,10 +5,12 @@ from __future__ import annotations
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
 from plumbwell.reduction.drift_basis import DriftBasis, drift_basis
-from plumbwell.reduction.judged import Judgement, ProposedTare, judged
+from plumbwell.reduction.found_errors import ProposedTare
+from plumbwell.reduction.judged import Judgement, judged
 from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts
 from plumbwell.reduction.visits import Visits
@@ -172,7 +174,7 @@ def _weights(fit: Adjustment, trust: Array, named: Index, alike: Array) -> Array
     return new
 
 
-def used_rows(use: Array, found: Judgement) -> Array:
+def used_rows(use: NDArray[np.bool_], found: Judgement) -> NDArray[np.bool_]:
     """Which rows are in use when those in error are left out, (n,) bool; of those that stand alike none is."""
     kept = np.array(use, dtype=bool)
     kept[found.rows[~found.alike]] = False

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from plumbwell.reduction.banded import Factor, factored
+from plumbwell.reduction.banded import Factor, factored, summed
 from plumbwell.reduction.design import Design
 from plumbwell.survey.column import Array, Index
 
@@ -94,18 +94,14 @@ class Solution:
         pairs, mean = one.touched_pairs, self.border.mean
         on = inverse[pairs.place]
         count = len(mean)
-        found = np.bincount(pairs.first, on * mean[pairs.second], minlength=count)
+        found = summed(pairs.first, on * mean[pairs.second], count)
         twice = pairs.times > 1.0
-        return found + np.bincount(
-            pairs.second[twice], on[twice] * mean[pairs.first[twice]], minlength=count
-        )
+        return found + summed(pairs.second[twice], on[twice] * mean[pairs.first[twice]], count)
 
     def station_variance(self, carried: Array) -> Array:
         """Variance of each station's gravity, (s + 1,), from `carried`; 0 for the last."""
         one = self.design
-        own = 1.0 * np.bincount(
-            one.touched_station, carried[:-1] * self.border.mean[:-1], minlength=one.n_stations + 1
-        )
+        own = summed(one.touched_station, carried[:-1] * self.border.mean[:-1], one.n_stations + 1)
         own[: one.n_stations] += 1.0 / self.border.total
         based = np.flatnonzero(one.in_border >= 0)
         own[based] = self.unknown_variance(one.in_border[based])
@@ -121,15 +117,16 @@ class Solution:
         count = len(self.weight)
         carried = self.carried()
         inverse = self.factor.inverse
-        own = np.bincount(one.pair_visit, one.pairs.times * one.pair_value * inverse[one.pairs.place], minlength=count)
-        cross = np.bincount(one.entry_visit, one.entry_value * carried[one.entry_at], minlength=count)
+        own = summed(one.pair_visit, one.pairs.times * one.pair_value * inverse[one.pairs.place], count)
+        cross = summed(one.entry_visit, one.entry_value * carried[one.entry_at], count)
         at_station = self.station_variance(carried)
         at_station[np.flatnonzero(one.in_border >= 0)] = 0.0  # there the pairs of entries hold it
         return own - 2.0 * cross + at_station[one.local]
 
     def unknown_sd(self) -> Array:
         """Sd of every border unknown, (q,)."""
-        return np.sqrt(self.unknown_variance(np.arange(self.design.size)))
+        sd: Array = np.sqrt(self.unknown_variance(np.arange(self.design.size)))
+        return sd
 
     def sum_of_squares(self) -> float:
         """Weighted sum of squares of the first right-hand side's visit residuals."""
@@ -139,9 +136,7 @@ class Solution:
 def answer_of_stations(one: Design, border: Border, unknown: Array) -> Array:
     """P times border unknowns (q,) or (q, r): -D^-1 B, and 1 where a station's gravity is one of them."""
     if unknown.ndim == 1:
-        answer = -1.0 * np.bincount(
-            one.touched_station, border.mean[:-1] * unknown[one.touched_unknown], minlength=one.n_stations
-        )
+        answer = -summed(one.touched_station, border.mean[:-1] * unknown[one.touched_unknown], one.n_stations)
     else:
         answer = np.column_stack(
             [answer_of_stations(one, border, column) for column in unknown.T]
@@ -155,9 +150,7 @@ def answer_of_stations(one: Design, border: Border, unknown: Array) -> Array:
 
 def on_border(one: Design, border: Border, stations: Array) -> Array:
     """P^T times station quantities (s,): what they put on the border, (q,)."""
-    found = -1.0 * np.bincount(
-        one.touched_unknown, border.mean[:-1] * stations[one.touched_station], minlength=one.size
-    )
+    found = -summed(one.touched_unknown, border.mean[:-1] * stations[one.touched_station], one.size)
     based = np.flatnonzero(one.in_border >= 0)
     found[one.in_border[based]] += stations[based]
     return found
@@ -165,20 +158,20 @@ def on_border(one: Design, border: Border, stations: Array) -> Array:
 
 def normal_equations(design: Design, weight: Array, ties: TieRows, *, priors: bool = True) -> Border:
     """The border for given visit weights, with or without the priors."""
-    total = np.bincount(design.local, weight, minlength=design.n_stations + 1)[: design.n_stations]
+    total = summed(design.local, weight, design.n_stations + 1)[: design.n_stations]
     if len(ties.station):
-        total = total + np.bincount(ties.station, ties.weight, minlength=design.n_stations)
+        total = total + summed(ties.station, ties.weight, design.n_stations)
     based = design.in_border >= 0
     safe = np.where((total > 0.0) & ~based, total, 1.0)
     count = len(design.touched_station)
-    put = 1.0 * np.bincount(design.entry_at, weight[design.entry_visit] * design.entry_value, minlength=count + 1)
+    put = summed(design.entry_at, weight[design.entry_visit] * design.entry_value, count + 1)
     put[count] = 0.0
     mean = put.copy()
     mean[:count] /= safe[design.touched_station]
     length = design.layout.starts[3]
-    matrix = np.bincount(design.pairs.place, weight[design.pair_visit] * design.pair_value, minlength=length)
+    matrix = summed(design.pairs.place, weight[design.pair_visit] * design.pair_value, length)
     near = design.touched_pairs
-    matrix = matrix - np.bincount(near.place, put[near.first] * mean[near.second], minlength=length)
+    matrix = matrix - summed(near.place, put[near.first] * mean[near.second], length)
     if based.any() and len(ties.station):
         number = design.in_border[ties.station]
         held = number >= 0
@@ -219,7 +212,7 @@ NO_RANK = Rank(rank=0, held=np.zeros(0, dtype=np.intp), open=np.zeros((0, 0)), p
 def rank_of_visits(design: Design) -> Rank:
     """What the visits alone determine."""
     visited = int(np.count_nonzero(np.bincount(design.local, minlength=design.n_stations)[: design.n_stations]))
-    held, directions = open_directions(design, NO_TIES, priors=False)
+    held, directions = held_and_open(design, NO_TIES, priors=False)
     rank = visited + design.size - len(held)
     return Rank(rank=rank, held=held, open=directions, pins=_pins(design, held))
 
@@ -241,11 +234,11 @@ def rank_beside_walk(rank: Rank, plain: Design, walking: Design) -> Rank:
 
 def own_size(design: Design) -> Array:
     """Sum of squares of each border unknown's regressor over the visits, (q,); 1 where no visit has any."""
-    own = np.bincount(design.entry_unknown, design.entry_value**2, minlength=design.size)
+    own = summed(design.entry_unknown, design.entry_value**2, design.size)
     return np.where(own > 0.0, own, 1.0)
 
 
-def open_directions(design: Design, ties: TieRows, *, priors: bool) -> tuple[Index, Array]:
+def held_and_open(design: Design, ties: TieRows, *, priors: bool) -> tuple[Index, Array]:
     """Border unknowns that have to be held for the rest to be determined, (m,), and the open directions, (q, m).
 
     Priors, when they count, count as much as one visit: rank is asked for, not strength.
@@ -296,21 +289,17 @@ def solve(design: Design, weight: Array, observed: Array, ties: TieRows, *, pins
     gravity, unknown, residual = [], [], []
     for column, values in enumerate(observed.T):
         weighted = weight * values
-        at_station = np.bincount(design.local, weighted, minlength=n_stations + 1)[:n_stations]
-        at_border = np.bincount(
-            design.entry_unknown, weighted[design.entry_visit] * design.entry_value, minlength=design.size
-        )
+        at_station = summed(design.local, weighted, n_stations + 1)[:n_stations]
+        at_border = summed(design.entry_unknown, weighted[design.entry_visit] * design.entry_value, design.size)
         if column == 0:
             if pins is None:
                 at_border = at_border + design.prior_side
-            pull = np.bincount(ties.station, ties.weight * ties.value, minlength=n_stations)
-            at_border = 1.0 * at_border
+            pull = summed(ties.station, ties.weight * ties.value, n_stations)
             at_border[design.in_border[based]] += pull[based]
             pull = np.where(design.in_border >= 0, 0.0, pull)
             at_station = at_station + pull
-        at_border = at_border - np.bincount(
-            design.touched_unknown, border.mean[:-1] * at_station[design.touched_station], minlength=design.size
-        )
+        on_stations = border.mean[:-1] * at_station[design.touched_station]
+        at_border = at_border - summed(design.touched_unknown, on_stations, design.size)
         answer = factor.solve(at_border)
         level = at_station / border.total + answer_of_stations(design, border, answer)
         gravity.append(level)

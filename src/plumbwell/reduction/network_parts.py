@@ -12,7 +12,7 @@ import numpy as np
 
 from plumbwell.reduction.design import Design
 from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
-from plumbwell.reduction.network import Rank, TieRows, open_directions, own_size
+from plumbwell.reduction.network import Rank, TieRows, held_and_open, own_size
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index
 
@@ -112,7 +112,7 @@ def undetermined(design: Design, ties: TieRows, rank: Rank) -> DriftUnknown | No
     """
     if rank.lacking == 0:
         return None
-    held, directions = open_directions(design, ties, priors=True)
+    held, directions = held_and_open(design, ties, priors=True)
     if not len(held):
         return None
     share = np.abs(directions[:, 0]) * np.sqrt(own_size(design))

@@ -26,8 +26,9 @@ def wave_numbers(count: int) -> Array:
     for _ in range(8):
         off = np.cos(b) + 1.0 / np.cosh(b)
         b = b + off / (np.sin(b) + np.sinh(b) / np.cosh(b) ** 2)
-    b.flags.writeable = False
-    return b
+    roots: Array = b.astype(np.float64)
+    roots.flags.writeable = False
+    return roots
 
 
 def mode_sds(count: int) -> Array:

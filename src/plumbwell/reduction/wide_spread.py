@@ -10,7 +10,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from plumbwell.reduction.banded import Factor, Rows, products
+from plumbwell.reduction.banded import Factor, Rows, products, summed
 from plumbwell.reduction.design import Design
 from plumbwell.reduction.network import Border, answer_of_stations, on_border
 from plumbwell.survey.column import Array, Index
@@ -99,7 +99,7 @@ class WideSpread:
             found -= np.einsum("ma,ma->m", share, self._answer(their_rows, len(one)))
             found -= np.einsum("ma,ma->m", their_share, self._answer(rows, len(one)))
             found += np.einsum("ma,ab,mb->m", share, at_anchors, their_share)
-            found[self._nothing(one) | self._nothing(other)] = 0.0
+            found[np.logical_or(self._nothing(one), self._nothing(other))] = 0.0
         return found
 
     def _at_anchors(self) -> Array:
@@ -140,7 +140,7 @@ class WideSpread:
         row, unknown, value = (np.concatenate(part) for part in (rows, unknowns, values))
         key, where = np.unique(row * design.size + unknown, return_inverse=True)
         row, unknown = np.divmod(key, design.size)
-        return row, unknown, np.bincount(where, value, minlength=len(key))
+        return row, unknown, summed(where, value, len(key))
 
     def matrix(self, one: Sums) -> Array:
         """The whole covariance of quantities, (m, m)."""

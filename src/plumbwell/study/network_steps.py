@@ -14,7 +14,8 @@ from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
 from plumbwell.reduction.calibration import instruments_used
 from plumbwell.reduction.datums import StationGravity, datum_stations, referred_gravity
 from plumbwell.reduction.drift_basis import DriftUnknown, drift_basis
-from plumbwell.reduction.judged import Judgement, is_told
+from plumbwell.reduction.found_errors import is_told
+from plumbwell.reduction.judged import Judgement
 from plumbwell.reduction.judgement import alike_weights, as_tares, judgement, robust_weights, used_rows
 from plumbwell.reduction.located import Located
 from plumbwell.reduction.network import TieRows
@@ -130,19 +131,21 @@ def network_work(
         run_instrument=meters,
     )
     walk_not_needed = False
-    if fit.walk is not None and found.proposed:
+    if fit.walk is not None and any(not one.one_visit for one in found.proposed):
         found, needed = keep(
             _beside_walk, fit, found, observed, asked, noise, start, automatic, asked_walk
         )
         if asked_walk == "auto" and not needed:
             walk_not_needed, fit, asked_walk = True, plain, "off"
-    apply = recipe.tares == "proposed" and bool(found.proposed)
+    # A bad visit at the end of its run is a jump as well: out of use it needs none.
+    jumps = tuple(one for one in found.proposed if not one.one_visit or recipe.outliers == "flag")
+    apply = recipe.tares == "proposed" and bool(jumps)
     trust = None
     if recipe.outliers == "exclude" and len(found.rows):
         readings = keep(_in_use, readings, found)
         stays = keep.settled(visits, readings, asked.station, utc=utc, visit_gap=recipe.visit_gap)
         trust = keep(alike_weights, found, len(readings)) if found.alike.any() else None
-    tares = asked.tares + as_tares(found.proposed, names) if apply else asked.tares
+    tares = asked.tares + as_tares(jumps, names) if apply else asked.tares
     if apply or stays is not fit.visits:
         basis = keep(drift_basis, utc, readings.run.code, names, stays, tares, meters)
         parts = keep(network_parts, basis, stays, asked.ties, n_stations=n_stations)
@@ -180,7 +183,9 @@ def _beside_walk(
     """The found jumps that stand beside a walk of the drift, and whether a walk is needed beside them."""
     names, n_stations = asked.readings.run.names, len(asked.where.placement.label)
     meters = _run_instruments(asked.readings, asked.instruments)
-    proposed = list(found.proposed)
+    # What a bad visit at an end may be too says nothing against a walk.
+    at_ends = [one for one in found.proposed if one.one_visit]
+    proposed = [one for one in found.proposed if not one.one_visit]
     while True:
         basis = drift_basis(
             asked.utc, asked.readings.run.code, names, fit.visits,
@@ -198,10 +203,11 @@ def _beside_walk(
             if not is_told(size, sd, both.reseating.freedom, noise.estimate, gaps=len(fit.visits)):
                 weak.append((abs(size) / sd if sd > 0.0 else 0.0, number))
         if not weak:
-            return replace(found, proposed=tuple(proposed)), both.walk is not None
+            kept = sorted(proposed + at_ends, key=lambda one: one.time)
+            return replace(found, proposed=tuple(kept)), both.walk is not None
         del proposed[min(weak)[1]]
         if not proposed:
-            return replace(found, proposed=()), True
+            return replace(found, proposed=tuple(at_ends)), True
 
 
 def _in_use(readings: Readings, found: Judgement) -> Readings:

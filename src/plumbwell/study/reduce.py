@@ -17,6 +17,7 @@ from plumbwell.density.interval_errors import AlongHole, CommonTerms, IntervalEr
 from plumbwell.density.layer_boundaries import layer_boundaries
 from plumbwell.density.layers import Layers, plain_layers
 from plumbwell.density.log_mean import log_integrals, log_mean_columns
+from plumbwell.reduction.adjustment import Adjustment
 from plumbwell.reduction.calibration import calibrated
 from plumbwell.reduction.effects import (
     anomalies,
@@ -31,6 +32,7 @@ from plumbwell.reduction.estimates import OBSERVED, TO_STATION, estimates
 from plumbwell.reduction.located import Located, located
 from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.positions import WellPath, well_path
+from plumbwell.reduction.rank_lost import OpenDirections, open_directions, told_estimates
 from plumbwell.reduction.reference_rock import reference_rock
 from plumbwell.reduction.scale_factor import ScaleEstimate, scale_estimates
 from plumbwell.reduction.settling import network_settling
@@ -38,7 +40,7 @@ from plumbwell.reduction.stations import placement, row_depths
 from plumbwell.reduction.tide_effect import modelled_tide, shifted_tides, tide, tide_comparison, utc_time
 from plumbwell.reduction.tilt_pressure import Pressure, pressure_effect, tilt
 from plumbwell.reduction.to_station import gravity_slopes
-from plumbwell.reduction.visits import visits
+from plumbwell.reduction.visits import Visits, visits
 from plumbwell.study.case import Case
 from plumbwell.study.docket.kinds import docket
 from plumbwell.study.kept import Kept
@@ -197,6 +199,8 @@ def reduce(
     stays, network, counts = worked.visits, worked.parts, worked.counts
     fit, gravity = worked.adjustment, worked.gravity
     columns = keep(estimates, observed, fit, gravity, network, station)
+    untold = keep(_open_directions, fit, stays, ties, counts)
+    columns = keep(told_estimates, columns, untold, fit.basis, stays, network, gravity.datum)
     done("network", 0.6)
     left = keep(anomalies, columns.gravity, parts, gravity.datum)
     densities = keep(interval_densities, pairs, columns.gravity, where.positions, parts, left, choice)
@@ -237,6 +241,7 @@ def reduce(
             parts=network, adjustment=fit, gravity=gravity, judgement=worked.judgement,
             proposed_applied=worked.proposed_applied, walk_not_needed=worked.walk_not_needed,
             scales=keep(scales_told, instruments, readings, estimated),
+            open=untold,
             settling=keep(network_settling, observed, columns.drift, fit, noise.reading_floor, noise.estimate),
         ),
         stations=StationResults(
@@ -331,6 +336,12 @@ def _tie_rows(ties: Ties | None, where: Located) -> TieRows:
         value=frozen(ties.gravity.values[rows]),
         weight=frozen(1.0 / ties.gravity_sd.values[rows] ** 2),
     )
+
+
+def _open_directions(fit: Adjustment, stays: Visits, ties: TieRows, counts: Index) -> OpenDirections:
+    # Modes of a walk have a variance of their own, and gravity that stands in the border belongs to its station.
+    asked = tuple(one for one in fit.design.unknowns if one.kind in ("bias", "drift", "tare"))
+    return open_directions(fit.basis, stays, ties, unknowns=asked, lost=fit.design.lost, n_stations=len(counts))
 
 
 def _to_station(where: Located, slope: Column, path: WellPath, sensor: Column) -> Column:

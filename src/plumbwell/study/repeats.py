@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from plumbwell.reduction.banded import products
+from plumbwell.reduction.banded import products, summed
 from plumbwell.reduction.visits import Visits
 from plumbwell.study.results import NetworkResults
 from plumbwell.survey.column import Array, Index
@@ -58,7 +58,8 @@ def repeat_difference_sd(network: NetworkResults) -> Array:
         at = np.repeat(begin[both] - (np.cumsum(many) - many), many) + np.arange(int(many.sum()))
         pair = np.repeat(np.arange(len(both)) // 2, many)
         key, where = np.unique(pair * one.size + unknown[at], return_inverse=True)
-        rows = (*np.divmod(key, one.size), np.bincount(where, value[at] * np.repeat(sign, many), minlength=len(key)))
+        row, touched = np.divmod(key, one.size)
+        rows = (row, touched, summed(where, value[at] * np.repeat(sign, many), len(key)))
         drift[pairs] = products(solution.factor, rows, rows, len(both) // 2)
     left = whole - drift
     checked = left > CHECKED * whole

@@ -15,10 +15,12 @@ from plumbwell.reduction.adjustment import Adjustment
 from plumbwell.reduction.datums import StationGravity
 from plumbwell.reduction.effects import Anomalies, FreeAirChoice, KnownParts
 from plumbwell.reduction.estimates import Estimates
-from plumbwell.reduction.judged import Judgement, ProposedTare
+from plumbwell.reduction.found_errors import ProposedTare
+from plumbwell.reduction.judged import Judgement
 from plumbwell.reduction.located import Located
 from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts
+from plumbwell.reduction.rank_lost import OpenDirections
 from plumbwell.reduction.reference_rock import ReferenceLayers
 from plumbwell.reduction.scale_factor import ScaleTold
 from plumbwell.reduction.settling import Settling
@@ -134,6 +136,8 @@ class NetworkResults:
         Scales that were asked to be estimated.
     settling : Settling
         How the visits settled.
+    open : OpenDirections
+        What the readings leave open.
     """
 
     visits: Visits
@@ -147,6 +151,7 @@ class NetworkResults:
     walk_not_needed: bool
     scales: tuple[ScaleTold, ...]
     settling: Settling
+    open: OpenDirections
 
     @property
     def proposed(self) -> tuple[ProposedTare, ...]:

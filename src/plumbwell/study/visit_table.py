@@ -15,6 +15,7 @@ from plumbwell.reduction.checked import visit_means
 from plumbwell.reduction.design import at_times
 from plumbwell.reduction.drift_basis import DriftUnknown
 from plumbwell.reduction.network import on_border
+from plumbwell.reduction.rank_lost import UNTOUCHED
 from plumbwell.study.results import Results
 from plumbwell.survey.column import Array, Index
 from plumbwell.survey.instrument import Tare
@@ -93,7 +94,8 @@ class DriftLine:
     time : (n,) array
         UTC, s since 2000-01-01, rising; a tare has a place just before and one at its time.
     drift, sd : (n,) arrays, m/s2
-        Drift and tares, run bias left out, and the sd of the line among its own visits (see Notes).
+        Drift and tares, run bias left out, NaN where the readings do not tell it; and the sd of the line among its own
+        visits (see Notes).
     rate, rate_sd : float
         Mean drift rate over the run, m/s3, and its sd; the sd NaN where the rate is held.
 
@@ -139,6 +141,7 @@ def _line(results: Results, telling: NDArray[np.bool_], run: int) -> DriftLine:
     breaks = [at for number in jumps for at in (basis.tares[number].time - 1e-3, basis.tares[number].time)]
     time = np.unique(np.concatenate([np.linspace(start, start + length, LINE_PLACES), breaks]))
     unknowns = fit.design.unknowns
+    past = (time - start) / float(basis.length[run])
     terms = np.zeros((len(unknowns), len(time)))
     own = fit.design.of_run[run]
     own_terms = at_times(basis, fit.design, np.full(len(time), run), time)
@@ -152,6 +155,7 @@ def _line(results: Results, telling: NDArray[np.bool_], run: int) -> DriftLine:
         held = basis.tares[number]
         fixed = held.size if held.size is not None and held.size_sd is None else 0.0
         drift = drift + np.where(after, fixed + float(shift[number]), 0.0)
+    drift = np.where(_left_open(results, run, time, past), np.nan, drift)
     variance = np.zeros(len(time))
     edges = [-np.inf, *sorted(basis.tares[number].time for number in jumps), np.inf]
     for first, last in zip(edges[:-1], edges[1:], strict=True):
@@ -159,6 +163,17 @@ def _line(results: Results, telling: NDArray[np.bool_], run: int) -> DriftLine:
         variance[inside] = _variance_among(fit, _visits_between(fit, telling, run, first, last), terms[:, inside])
     rate, rate_sd = _mean_rate(fit, run)
     return DriftLine(run=run, time=time, drift=drift, sd=np.sqrt(np.maximum(variance, 0.0)), rate=rate, rate_sd=rate_sd)
+
+
+def _left_open(results: Results, run: int, time: Array, past: Array) -> NDArray[np.bool_]:
+    """True for the times at which the readings do not tell a run's drift, (n,)."""
+    found, tares = results.network.open, results.network.adjustment.basis.tares
+    moved = np.zeros((len(time), found.border.shape[1]))
+    for number, what in enumerate(found.unknowns):
+        if what.run == run and what.kind != "bias":
+            shape = time >= tares[what.tare].time if what.kind == "tare" else past**what.power
+            moved += shape[:, None] * found.border[number]
+    return np.any(np.abs(moved) > UNTOUCHED, axis=1)
 
 
 def _visits_between(fit: Adjustment, telling: NDArray[np.bool_], run: int, first: float, last: float) -> Index:
@@ -216,8 +231,9 @@ class TareInForce:
     tare : Tare
         As it is listed.
     size, sd : float, float or None
-        m/s2. The sd is None where the size is held: as stated, or at 0 where nothing tells it. A tare of unknown size
-        that parts the network has no size at all (NaN), for the levels before and after it cannot be compared.
+        m/s2. The sd is None where the size is held as stated. A tare of unknown size has none at all (NaN) where it
+        parts the network, for the levels before and after it cannot be compared, and where the readings do not tell it
+        from another.
     """
 
     run: int
@@ -238,6 +254,8 @@ def tares_in_force(results: Results) -> tuple[TareInForce, ...]:
         unknown = DriftUnknown(kind="tare", run=run, tare=number)
         if tare.size is not None and tare.size_sd is None:
             size = tare.size
+        elif results.network.open.moves(unknown):
+            size = float("nan")
         elif unknown in fit.design.position:
             size, sd = fit.unknown(unknown)
         if tare.size is None:

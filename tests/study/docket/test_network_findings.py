@@ -116,10 +116,26 @@ def test_one_shared_station_joins_two_runs(invented, found):
 TARE = '[[tare]]\nrun = "1"\ntime = "2026-05-04T{}Z"\n'
 
 
-def test_a_tare_that_nothing_bounds_is_held_at_zero(invented, found):
+def test_two_tares_in_one_gap_cannot_be_told_apart(invented, found):
     tables = TARE.format("09:05:00") + TARE.format("09:06:00")
     (one,) = found(invented.survey(tables=tables), "rank_lost")
-    assert one.severity == "error" and "the tare at 2026-05-04 09:0" in one.text and "held at 0" in one.text
+    assert (one.severity, one.place, one.stations, one.intervals) == ("error", "run 1", (), ())
+    assert one.text == (
+        "The readings cannot tell the tare at 2026-05-04 09:05:00 UTC of run 1 from the tare at 2026-05-04 09:06:00 "
+        "UTC: none of them is known, and gravity rests on none of them."
+    )
+    assert one.mend.startswith("Remove this tare, state size and size_sd of it")
+
+
+def test_a_bend_of_the_drift_that_no_repeat_shows_takes_gravity_with_it(invented, found):
+    results = invented.survey(invented.visits("ABCD"), recipe='tide = "none"\ndrift_order = 2')
+    (one,) = found(results, "rank_lost")
+    assert one.severity == "error" and one.stations == (1, 2) and one.intervals == (0, 1, 2)
+    assert one.text == (
+        "The readings cannot tell the drift term of order 2 of run 1 from the drift term of order 1 and gravity at B "
+        "and C: 2 stations have no gravity, and no density rests on it."
+    )
+    assert one.mend.startswith("Lower drift_order of the run")
 
 
 def test_a_tare_between_repeats_is_determined(invented, found):

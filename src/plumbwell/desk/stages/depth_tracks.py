@@ -33,11 +33,12 @@ def reduction_tracks(shown: Shown, bars: float) -> list[Track]:
 
     along = along_hole(results)
     gravity = results.network.gravity
+    told = np.where(np.isfinite(results.stations.gravity.values), 1.0, np.nan)
     origins = [
-        (name, known(np.sqrt(spread.variance()) / MICROGAL))
+        (name, known(told * np.sqrt(spread.variance()) / MICROGAL))
         for name, spread in (("reading", gravity.reading), ("drift", gravity.drift), ("tare", gravity.tare))
     ]
-    origins.append(("tie", known(np.sqrt(np.sum(gravity.ties**2, axis=1)) / MICROGAL)))
+    origins.append(("tie", known(told * np.sqrt(np.sum(gravity.ties**2, axis=1)) / MICROGAL)))
     sd: list[float | None] = [one or None for one in stations("gravity_sd")]
     latitude = [("latitude", known(along), None)] if at.size and np.ptp(along[at]) > SEEN else []
     return effect_tracks(

@@ -40,7 +40,7 @@ READINGS_CODES = (
     "tide_disagrees", "tide_hour", "tide_of_instrument", "tide_partly_given", "tide_table_unused",
     "tilt_partly_given", "time_next_day", "time_offset_changes", "time_to_minutes", "times_run_back",
     "trailing_comma", "typographic_minus", "unknown_column", "unknown_key", "unused_row_unreadable",
-    "visit_settling", "visits_creep_alike",
+    "visit_settling", "visits_creep_alike", "weights_far_apart",
 )  # fmt: skip
 """What the files hold, the corrections, and single readings: only here can one of them be left out."""
 
@@ -48,7 +48,10 @@ DRIFT_CODES = (
     "visit_disagrees", "unchecked_readings", "drift_held", "drift_order_chosen", "drift_walk_untested",
     "few_degrees_of_freedom", "network_parts", "no_repeat", "noise_untold", "rank_lost", "recipe_not_applied",
     "relative_gravity", "single_visit", "tare_outside", "tie_far_from_normal", "tie_unknown_station",
-    "tie_unvisited", "ties_disagree", "datum_station_unknown", "datum_station_unused", "run_hangs_by_one",
+    "tie_unvisited", "ties_disagree", "datum_station_unknown", "datum_station_unused", "drift_large",
+    "drift_not_as_stated", "no_majority", "noise_at_floor", "noise_of_few", "one_station_repeated", "run_hangs_by_one",
+    "tare_confounded", "tare_proposed", "tare_applied", "drift_walk", "drift_walk_left_out", "outliers_left_out",
+    "scale_estimated", "scale_untold",
 )  # fmt: skip
 """The network: what ties visits together, and the datum they hang on."""
 
@@ -61,8 +64,8 @@ REDUCTION_CODES = (
 """Where the stations lie, and what is taken out of their gravity."""
 
 DENSITY_CODES = (
-    "crosses_ground", "density_as_of_feet", "density_far_from_expected", "density_outside", "far_apart",
-    "interval_thick", "las_commas", "las_comment_in_data", "las_curve_twice", "las_end_mark", "las_null",
+    "crosses_ground", "density_as_of_feet", "density_far_from_expected", "density_outside", "density_unsure",
+    "far_apart", "interval_thick", "las_commas", "las_comment_in_data", "las_curve_twice", "las_end_mark", "las_null",
     "las_range", "las_section_unknown", "las_step", "las_unreadable", "las_version", "las_wrap", "layers_untold",
     "log_depth_twice", "log_disagrees", "log_several_densities", "log_turned", "log_uncovered", "log_unordered",
     "markers_ordered", "no_density", "single_station",
@@ -80,7 +83,7 @@ STAGE_OF_CODE = {
     for code in codes
 }  # fmt: skip
 
-STATED_ONLY = ("no_repeat", "noise_untold", "rank_lost")
+STATED_ONLY = ("drift_not_as_stated", "no_repeat", "noise_at_floor", "noise_untold")
 """Findings that say that a number rests on what is stated and on no reading."""
 
 LAYER_KEYS = ("recipe, layers", "recipe, layer_boundaries")

@@ -96,8 +96,7 @@ def _tare_words(one: TareInForce) -> str:
     if not np.isfinite(one.size):
         return "tare of unknown size"
     if one.sd is None:
-        held = "held" if one.tare.size is None else "as stated"
-        return f"tare {number(one.size / MICROGAL, 1, signed=True)} µGal, {held}"
+        return f"tare {number(one.size / MICROGAL, 1, signed=True)} µGal, as stated"
     decimals = column_decimals([one.sd / MICROGAL], default=0)
     return (
         f"tare {number(one.size / MICROGAL, decimals, signed=True)} {PLUS_MINUS} "
@@ -168,19 +167,22 @@ def drift_plots(shown: Shown) -> tuple[TimePlot, ...]:
 def _pieces(
     time: Array, drift: Array, sd: Array, tares: list[tuple[int, TareInForce]]
 ) -> tuple[DriftLine, ...]:
-    """The drift line of a run, cut at its tares."""
+    """The drift line of a run, cut at its tares and where nothing tells it."""
     edges = [-np.inf, *(one.tare.time for _, one in tares), np.inf]
     found = []
     for first, last in zip(edges, edges[1:], strict=False):
-        inside = (time >= first) & (time < last)
-        if inside.any():
-            found.append(
-                DriftLine(
-                    times=tuple(time[inside].tolist()),
-                    values=tuple((drift[inside] / MICROGAL).tolist()),
-                    band=tuple((sd[inside] / MICROGAL).tolist()),
+        inside = np.flatnonzero((time >= first) & (time < last))
+        told = inside[np.isfinite(drift[inside])]
+        for piece in np.split(told, np.flatnonzero(np.diff(told) > 1) + 1):
+            # A single place amid what is not told is no line.
+            if piece.size > 1 or piece.size == inside.size == 1:
+                found.append(
+                    DriftLine(
+                        times=tuple(time[piece].tolist()),
+                        values=tuple((drift[piece] / MICROGAL).tolist()),
+                        band=tuple((sd[piece] / MICROGAL).tolist()),
+                    )
                 )
-            )
     return tuple(found)
 
 

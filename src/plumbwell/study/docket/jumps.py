@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from plumbwell.reduction.judged import ProposedTare
+from plumbwell.reduction.found_errors import ProposedTare
 from plumbwell.reduction.walk import LEAST_FREEDOM
 from plumbwell.study.docket.wording import amount, counted, gravity, listed, moment, numbers, run, stations
 from plumbwell.study.finding import Finding
@@ -26,6 +26,8 @@ def tares_proposed(results: Results) -> Iterator[Finding]:
                 f"{'is' if between.size == 1 else 'are'} read on one side only, and nothing tells on which; their "
                 "gravity may be off by the whole jump."
             )
+        if one.one_visit:
+            where = " Only one visit lies beyond it, at the end of the run: a bad visit would look the same."
         done = "It is taken out, as tares = \"proposed\" asks." if applied else "It is not taken out."
         yield Finding(
             code="tare_applied" if applied else "tare_proposed",

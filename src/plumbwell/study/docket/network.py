@@ -111,20 +111,34 @@ def _unknown(results: Results, one: DriftUnknown) -> str:
 
 
 def rank_lost(results: Results) -> Iterator[Finding]:
-    """Unknowns that readings and priors cannot determine and that were held at 0."""
+    """Unknowns that readings and priors cannot determine, and the gravity that is not known for it."""
+    found, names = results.network.open, results.survey.readings.run.names
     for one in results.network.adjustment.design.lost:
-        name = run(results, one.run)
+        name = shown(names[one.run])
+        lost = np.flatnonzero(found.undetermined(results.network.gravity.datum, held=one))
+        others = [
+            _unknown(results, other) + ("" if other.run == one.run else f" of run {shown(names[other.run])}")
+            for other in found.partners(one)
+        ]
+        if lost.size:
+            others.append(f"gravity at {stations(results, lost)}")
+        then = "none of them is known, and gravity rests on none of them"
+        if lost.size:
+            then = f"{counted(lost.size, 'station has', 'stations have')} no gravity, and no density rests on it"
         mend = {
-            "tare": "Remove the tare, state size and size_sd of it, or read a station before and after it.",
+            "tare": "Remove this tare, state size and size_sd of it, or read a station before and after it.",
             "drift": "Lower drift_order of the run, or bring in more returns to a station.",
         }.get(one.kind, "Bring in a station that this run shares with another.")
+        pairs = results.intervals.densities.pairs
         yield Finding(
             code="rank_lost",
             severity="error",
             place=f"run {name}",
-            text=f"The readings cannot tell {_unknown(results, one)} of run {name} from the other unknowns: "
-            "it was held at 0, and no error of it is in the densities.",
+            text=f"The readings cannot tell {_unknown(results, one)} of run {name} from "
+            f"{listed(others) if others else 'the other unknowns'}: {then}.",
             mend=mend,
+            stations=numbers(lost),
+            intervals=numbers(np.flatnonzero(np.isin(pairs.top, lost) | np.isin(pairs.base, lost))),
         )
 
 
@@ -230,8 +244,8 @@ def relative(results: Results) -> Iterator[Finding]:
         return
     own = sorted({one for one in datum.tolist() if one >= 0})
     factor, share = results.intervals.errors.factors.get("datum"), ""
-    if factor is not None and factor.size:
-        most = amount(float(np.max(np.abs(factor))) / GRAM_PER_CM3, 4)
+    if factor is not None and np.any(np.isfinite(factor)):
+        most = amount(float(np.nanmax(np.abs(factor))) / GRAM_PER_CM3, 4)
         share = f", which adds {most} g/cm³ or less to density_common_sd"
     sd = amount(results.recipe.datum_sd / MILLIGAL, 0)
     yield Finding(

@@ -70,22 +70,6 @@ def _left_out(results: Results, rows: Index) -> Finding:
     )
 
 
-def no_majority(results: Results) -> Iterator[Finding]:
-    """So many visits disagree that none can be trusted to be right."""
-    found = results.network.judgement
-    if not found.majority:
-        yield Finding(
-            code="no_majority",
-            severity="look",
-            place="network",
-            text=f"{counted(found.rows.size, 'reading disagrees', 'readings disagree')} with the rest, more than a "
-            "quarter of all visits: there is no majority that the others could be measured against, and which of them "
-            "are right is not known.",
-            mend="Look for one cause: a tare, a wrong depth or station label, a wrong table or scale.",
-            rows=numbers(found.rows),
-        )
-
-
 def _visits(
     results: Results, bad: Index, ratio: Array, size: Array, alike: NDArray[np.bool_]
 ) -> Iterator[Finding]:

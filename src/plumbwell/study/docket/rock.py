@@ -60,6 +60,27 @@ def density_outside(results: Results) -> Iterator[Finding]:
         )
 
 
+def density_unsure(results: Results) -> Iterator[Finding]:
+    """Densities outside 0.5 to 6 g/cm3 by no more than three sd: their error is too large to tell of rock."""
+    one = results.intervals
+    value = one.density.values
+    outside = np.maximum(LIGHTEST - value, value - HEAVIEST)
+    sd = np.hypot(one.density_sd.values, one.density_common_sd.values)
+    unsure = np.flatnonzero((outside > 0.0) & (outside <= BEYOND_DOUBT * sd))
+    if unsure.size:
+        worst = int(unsure[np.argmax(sd[unsure])])
+        yield Finding(
+            code="density_unsure",
+            severity="note",
+            place=interval(results, worst),
+            text=f"{counted(unsure.size, 'interval has', 'intervals have')} a density outside "
+            f"{density(LIGHTEST, 1)} to {density(HEAVIEST, 1)} within its error, up to "
+            f"{density(float(value[worst]), 2)} ± {density(float(sd[worst]), 2)}: that says nothing of the rock.",
+            mend="Take it for what its sd says; join thin intervals by a larger min_thickness.",
+            intervals=numbers(unsure),
+        )
+
+
 def no_density(results: Results) -> Iterator[Finding]:
     """Intervals, and none of them with a density: nothing could be computed."""
     value = results.intervals.density.values

@@ -1,0 +1,211 @@
+"""How large what was found in error is, and how sure: readings, visits and jumps, as all that is left tells them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from plumbwell.reduction.adjustment import Adjustment
+from plumbwell.reduction.candidates import jumps
+from plumbwell.reduction.drift_basis import DriftUnknown
+from plumbwell.reduction.visits import Visits
+from plumbwell.survey.column import Array, Index
+from plumbwell.survey.instrument import Tare
+
+CHANCE = 0.01
+"""Chance that a clean survey shows any jump, and any outlier."""
+
+LEAST_RATIO = 3.29
+"""Two-sided 0.1 % of the normal distribution: the level of a single test (Baarda 1968)."""
+
+CHECKED = 0.05
+"""Redundancy under which nothing checks a reading."""
+
+OUT = 1e-14
+"""Robust weight of what was found to be in error: as good as none even of an error of Gals, and the network keeps its
+shape."""
+
+SAME_GAIN = 1e-6
+"""Relative difference of two gains that are one and the same: readings between them check nothing."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ProposedTare:
+    """A jump of the instrument that the readings show and nobody has listed.
+
+    Parameters
+    ----------
+    run : int
+        Code of its run.
+    time : float
+        UTC, s since 2000-01-01: amid the gap.
+    gap_from, gap_to : float
+        Last reading that is surely before it and first that is surely after it.
+    visits_between : int
+        Visits in the gap that nothing puts on either side.
+    size, sd : float, m/s2
+    gain : float
+        Of the logarithm of the likelihood.
+    p : float
+        Chance of a jump as large in any gap that was tried.
+    one_visit : bool
+        True where only the first or the last visit of the run lies beyond the jump: it is named as an outlier too, for
+        nothing tells a jump there from a bad visit.
+    """
+
+    run: int
+    time: float
+    gap_from: float
+    gap_to: float
+    visits_between: int
+    size: float
+    sd: float
+    gain: float
+    p: float
+    one_visit: bool = False
+
+
+def is_told(size: float, sd: float, freedom: int, estimate: bool, *, gaps: int) -> bool:
+    """True where a jump is larger than chance would make it in any of so many gaps."""
+    return chance_of(size, sd, freedom, estimate) < CHANCE / max(gaps, 1)
+
+
+def critical_ratio(freedom: float, tests: int) -> float:
+    from scipy.special import ndtri, stdtrit
+
+    tail = -np.expm1(np.log1p(-CHANCE) / tests) / 2.0
+    return max(float(-ndtri(tail) if freedom == np.inf else -stdtrit(max(freedom, 1), tail)), LEAST_RATIO)
+
+
+def chance_of(size: float, sd: float, freedom: int, estimate: bool) -> float:
+    from scipy.special import fdtrc, ndtr
+
+    if not sd > 0.0:
+        return 1.0
+    ratio = size / sd
+    return float(fdtrc(1, max(freedom, 1), ratio**2)) if estimate else float(2.0 * ndtr(-abs(ratio)))
+
+
+def size_of(fit: Adjustment, tare: Tare, count: int, number: int) -> tuple[float, float]:
+    """Size and sd of a tare that the search has added: the last ones of the basis, in their order."""
+    at = len(fit.basis.tares) - count + number
+    return fit.unknown(DriftUnknown(kind="tare", run=int(fit.basis.tare_run[at]), tare=at))
+
+
+def last_of_station(visits: Visits, trust: Array, rows: Index) -> NDArray[np.bool_]:
+    """True for rows of stations that no other used row is left of."""
+    station = np.repeat(visits.station, np.diff(visits.start))
+    left = np.zeros(int(station.max(initial=-1)) + 1)
+    np.maximum.at(left, station, trust[visits.rows])
+    gone = left[station] < 0.5
+    return np.isin(rows, visits.rows[gone])
+
+
+def errors_of(fit: Adjustment, rows: Index, alike: frozenset[int] = frozenset()) -> list[tuple[int, float, float]]:
+    """What rows out of trust are off by, and in sds, by all that is left: row, error, ratio.
+
+    Those that stand alike against one another are weighed so.
+    """
+    error, predicted = fit.checked.error, fit.checked.predicted
+    visits = fit.visits
+    trusted = np.full(len(error), np.nan)
+    trusted[visits.rows] = fit.noise.sd
+    found = []
+    ratios = _visit_errors(fit)
+    for row in rows.tolist():
+        visit = int(visits.of_row[row])
+        members = visits.rows[visits.start[visit] : visits.start[visit + 1]]
+        if row in alike and not np.isfinite(ratios[0][visit]):
+            # Readings of one visit that nothing else checks: off their median, and no nearer than it is told.
+            level = fit.residual[members] + fit.checked.visit_effect[members]
+            apart = level - np.median(level)
+            far = np.hypot(apart, np.median(np.abs(apart)))[members == row][0]
+            found.append((row, float(apart[members == row][0]), float(far / (trusted[row] * np.sqrt(OUT)))))
+        elif row in alike:
+            twice = 2.0 * float(np.median(fit.noise.variance) + np.median(fit.reseating.variance))
+            found.append((row, float(ratios[0][visit]), float(ratios[0][visit]) / twice**0.5))
+        elif np.all(trusted[members] > 1e3 * np.nanmedian(fit.noise.sd)):
+            found.append((row, float(ratios[0][visit]), float(ratios[1][visit])))
+        else:
+            off = float(error[row])
+            own = np.sqrt(max(float(predicted[row]), 0.0) + trusted[row] ** 2 * OUT)
+            found.append((row, off, off / own if own > 0.0 else np.inf))
+    return found
+
+
+def _visit_errors(fit: Adjustment) -> tuple[Array, Array]:
+    """What each visit is off by as the others predict it, and in sds."""
+    solution = fit.solution
+    fitted = solution.variance_of_fit()
+    free = 1.0 - solution.weight * fitted
+    safe = np.where(free > CHECKED, free, np.nan)
+    error, predicted = solution.residual[:, 0] / safe, fitted / safe
+    own = np.median(fit.noise.variance) + fit.reseating.variance
+    return error, error / np.sqrt(np.maximum(predicted, 0.0) + own)
+
+
+def proposed_tare(fit: Adjustment, tare: Tare, number: int, count: int) -> ProposedTare:
+    visits, basis = fit.visits, fit.basis
+    run = int(basis.tare_run[len(basis.tares) - count + number])
+    size, sd = size_of(fit, tare, count, number)
+    members = np.flatnonzero(visits.run == run)
+    at = int(np.searchsorted(visits.first[members], tare.time))
+    low, high = _gap(fit, members, at)
+    freedom = fit.reseating.freedom
+    ratio = (size / sd) ** 2
+    gaps = max(sum(len(one.gain) for one in jumps(fit.solution, fit.visits)), 1)
+    gap_from, gap_to = float(visits.last[members[low]]), float(visits.first[members[high]])
+    return ProposedTare(
+        run=run,
+        time=0.5 * (gap_from + gap_to),
+        gap_from=gap_from,
+        gap_to=gap_to,
+        visits_between=high - low - 1,
+        size=size,
+        sd=sd,
+        gain=0.5 * (freedom + 1) * float(np.log1p(ratio / max(freedom, 1))),
+        p=min(chance_of(size, sd, freedom, True) * gaps, 1.0),
+    )
+
+
+def jumps_at_ends(fit: Adjustment, rows: Index, off: dict[int, tuple[float, float]]) -> list[ProposedTare]:
+    """Bad visits at the ends of their runs as jumps, which they may be as well."""
+    visits, freedom = fit.visits, fit.reseating.freedom
+    named, found = np.isin(visits.rows, rows), []
+    gaps = max(sum(len(one.gain) for one in jumps(fit.solution, visits)), 1)
+    for run in visits.run_order.tolist():
+        members = np.flatnonzero(visits.run == run)
+        for visit, other, sign in ((members[0], members[1:2], -1.0), (members[-1], members[-2:-1], 1.0)):
+            own = slice(int(visits.start[visit]), int(visits.start[visit + 1]))
+            if not other.size or not named[own].all():
+                continue
+            error, ratio = off[int(visits.rows[own.start])]
+            gap = sorted(float(one) for one in (visits.last[min(visit, other[0])], visits.first[max(visit, other[0])]))
+            found.append(
+                ProposedTare(
+                    run=run, time=0.5 * (gap[0] + gap[1]), gap_from=gap[0], gap_to=gap[1], visits_between=0,
+                    size=sign * error, sd=abs(error / ratio),
+                    gain=0.5 * (freedom + 1) * float(np.log1p(ratio**2 / max(freedom, 1))),
+                    p=min(chance_of(ratio, 1.0, freedom, True) * gaps, 1.0), one_visit=True,
+                )
+            )
+    return found
+
+
+def _gap(fit: Adjustment, members: Index, at: int) -> tuple[int, int]:
+    """Visits of the run, by number in it, surely before and surely after a jump found before visit `at`.
+
+    A visit that nothing checks (its station is read once, or never across the jump) may lie on either side.
+    """
+    solution, visits = fit.solution, fit.visits
+    free = 1.0 - solution.weight * solution.variance_of_fit()
+    tells = free[members] > SAME_GAIN
+    low, high = at - 1, at
+    while low > 0 and not tells[low]:
+        low -= 1
+    while high < len(members) - 1 and not tells[high]:
+        high += 1
+    del visits
+    return low, high
