@@ -35,6 +35,7 @@ from plumbwell.reduction.found_errors import (
 )
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index, frozen_index
+from plumbwell.survey.errors import NumericalError
 from plumbwell.survey.instrument import Tare
 
 LEAST_FREEDOM = 5
@@ -120,6 +121,7 @@ def judged(
         taken = _best(fit, trust, orders, automatic, estimate)
         if not taken:
             break
+        before = (tuple(tares), trust, orders, tuple(twins))
         trust = trust.copy()
         raised = list(orders)
         for one in taken:
@@ -137,7 +139,12 @@ def judged(
                     mates = _rows(fit.visits, replace(one, kind="visit", at=one.visit))
                     twins += mates[trust[mates] < 0.5].tolist()
         orders = tuple(raised)
-        fit = refit(tuple(tares), trust, orders)
+        try:
+            fit = refit(tuple(tares), trust, orders)
+        except (NumericalError, np.linalg.LinAlgError):
+            # Without them nothing would join some part of the network to the rest: there is nothing to judge them by.
+            tares, trust, orders, twins = list(before[0]), before[1], before[2], list(before[3])
+            break
     fit, tares, trust = _given_back(fit, refit, tares, trust, orders, estimate, twins)
     rows = np.flatnonzero(trust < 0.5)
     alike = np.isin(rows, twins) | last_of_station(start.visits, trust, rows)
