@@ -12,9 +12,9 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from plumbwell.reduction.broken_visits import contrasts, unbroken_stretches
-from plumbwell.reduction.candidates import more_drift
+from plumbwell.reduction.candidates import RunTerms, more_drift
 from plumbwell.reduction.checked import Checked, checked, visit_means
-from plumbwell.reduction.design import Design, design, drift_of, walk_priors, with_priors
+from plumbwell.reduction.design import Design, crossings, design, drift_of, walk_priors, with_priors
 from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
 from plumbwell.reduction.drift_order import Comparison, OrderTest, chosen_orders, raised_together
 from plumbwell.reduction.network import NO_RANK, Rank, Solution, TieRows, rank_beside_walk, rank_of_visits, solve
@@ -262,7 +262,7 @@ def adjusted(
 
         def compare_all(chosen: tuple[int, ...]) -> tuple[int, float, dict[int, tuple[float, float]]]:
             seat, solution = fit(chosen) or _nothing()
-            return seat.freedom, solution.sum_of_squares(), more_drift(solution, basis, visits, weighted)
+            return seat.freedom, solution.sum_of_squares(), more_drift(RunTerms(solution), basis, visits, weighted)
 
         orders, tests = raised_together(orders, automatic, compare_all)
     elif automatic:
@@ -291,8 +291,10 @@ def adjusted(
         longest = float(max(basis.length[run] for run in drifting))
         visit_sd = float(np.sqrt(np.median(noise.variance + seat.variance)))
 
+        crossed = crossings(visits)
+
         def modes_of(strength: float) -> int:
-            return modes_for(strength * np.sqrt(longest**3 / 3.0) / visit_sd, len(visits))
+            return modes_for(strength * np.sqrt(longest**3 / 3.0) / visit_sd, crossed)
 
         walk_tried = not isinstance(walk, str) or walk == "on" or seat.freedom >= LEAST_FREEDOM
         if isinstance(walk, float):

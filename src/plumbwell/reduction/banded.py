@@ -14,7 +14,7 @@ import numpy as np
 
 from plumbwell.survey.column import Array, Index
 
-ONE_BLOCK = 384
+ONE_BLOCK = 160
 """Unknowns up to which one dense block is quicker than blocks."""
 
 LEAST_BLOCK = 48
@@ -82,12 +82,20 @@ class Layout:
         return place
 
     def once(self, first: Index, second: Index) -> Index:
-        """True for the ordered pairs that are to be added, so that what stands once is not added twice."""
-        if self.count == 1 and not self.corner:
-            return np.ones(len(first), dtype=bool)
-        both = (first >= self.banded) & (second >= self.banded)
-        banded = (first < self.banded) & (second < self.banded)
-        return (first >= second) | both | (banded & (first // self.block == second // self.block))
+        """True for the ordered pairs that are to be added, so that nothing is added twice: see `mirrored`."""
+        return first >= second
+
+    def mirrored(self, flat: Array) -> Array:
+        """The flat matrix of which only elements at and below the diagonal have been filled, with those above."""
+        p, c, (beside, _, corner, _) = self.block, self.corner, self.starts
+        for part, size in ((flat[:beside], p), (flat[corner:], c)):
+            if size:
+                blocks = part.reshape(-1, size, size)
+                whole = blocks + blocks.transpose(0, 2, 1)
+                at = np.arange(size)
+                whole[:, at, at] -= blocks[:, at, at]
+                blocks[:] = whole
+        return flat
 
     def diagonal(self) -> Index:
         """Places of the diagonal elements, (size,)."""

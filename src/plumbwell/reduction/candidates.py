@@ -12,6 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from plumbwell.reduction.banded import summed
 from plumbwell.reduction.checked import visit_means
 from plumbwell.reduction.drift_basis import HIGHEST_ORDER, DriftBasis
 from plumbwell.reduction.network import Solution
@@ -60,6 +61,7 @@ class RunTerms:
         self._count = count
         self._edges = np.flatnonzero(np.diff(one.run, prepend=-1, append=-1)).tolist()
         self._inverse = solution.factor.inverse
+        self._found: dict[int, tuple[Index, Array, Array]] = {}
 
     def runs(self) -> list[tuple[int, Index]]:
         """Code of each run and its visits, in time order."""
@@ -70,8 +72,14 @@ class RunTerms:
         ]
 
     def rows(self, visits: Index) -> tuple[Index, Array, Array]:
-        """Border unknowns that some visits of one run and their stations touch, (u,), the visits' rows less their
+        """Border unknowns that the visits of one run and their stations touch, (u,), the visits' rows less their
         stations' mean, (m, u), and the inverse there, (u, u)."""
+        key = int(visits[0])
+        if key not in self._found:
+            self._found[key] = self._rows(visits)
+        return self._found[key]
+
+    def _rows(self, visits: Index) -> tuple[Index, Array, Array]:
         one, solution = self.solution.design, self.solution
         stations = one.station[visits]
         mine = np.unique(stations[one.in_border[stations] < 0])
@@ -100,13 +108,14 @@ class RunTerms:
 
 
 def more_drift(
-    solution: Solution, basis: DriftBasis, visits: Visits, weight: Array
+    terms: RunTerms, basis: DriftBasis, visits: Visits, weight: Array
 ) -> dict[int, tuple[float, float]]:
     """What the next drift order of each run would explain, and the third: falls of the weighted sum of squares.
 
     Parameters
     ----------
-    solution : Solution
+    terms : RunTerms
+        Of the solution.
     basis, visits
     weight : (u,) array
         Share of each reading in its visit's mean.
@@ -116,8 +125,7 @@ def more_drift(
     dict of run code to (float, float)
         0 where the order cannot be told or is the highest.
     """
-    one = solution.design
-    terms = RunTerms(solution)
+    solution, one = terms.solution, terms.solution.design
     time = basis.time(visits.rows)
     powers = visit_means(weight, np.column_stack([time**2, time**3]), visits.start)
     found = {}
@@ -149,8 +157,7 @@ def normal(
     weighted = weight[:, None] * columns
     unknowns, rows, inverse = terms.rows(members)
     at, where = np.unique(one.local[members], return_inverse=True)
-    at_station = np.zeros((len(at), columns.shape[1]))
-    np.add.at(at_station, where, weighted)
+    at_station = np.column_stack([summed(where, column, len(at)) for column in weighted.T])
     total = np.append(solution.border.total, np.inf)[at]
     own = weighted.T @ columns
     on_border = rows.T @ weighted
@@ -168,9 +175,9 @@ def normal(
     return gradient, left - on_border.T @ inverse @ on_border, np.diagonal(own)
 
 
-def jumps(solution: Solution, visits: Visits) -> list[Jumps]:
+def jumps(terms: RunTerms, visits: Visits) -> list[Jumps]:
     """Jumps of unknown size in every gap between neighbouring visits of a run."""
-    one, terms = solution.design, RunTerms(solution)
+    solution, one = terms.solution, terms.solution.design
     total = np.append(solution.border.total, np.inf)
     found = []
     for run, members in terms.runs():

@@ -17,6 +17,9 @@ from plumbwell.reduction.visits import Visits
 from plumbwell.reduction.walk_modes import mode_sds, walk_modes
 from plumbwell.survey.column import Array, Index
 
+NEAR = 12
+"""Runs between two that share a station up to which no better order than that in time is looked for."""
+
 MOST_RUNS = 30
 """Runs of a station beyond which its gravity stands in the border: eliminated it would join them all."""
 
@@ -360,9 +363,7 @@ def _pairs(shape: Layout, unknown: Index, first: Index, second: Index) -> Pairs:
     once = shape.once(unknown[first], unknown[second])
     first, second = first[once], second[once]
     one, other = unknown[first], unknown[second]
-    place = shape.place(one, other)
-    alone = (one == other) | shape.once(other, one)
-    return Pairs(first=first, second=second, place=place, times=np.where(alone, 1.0, 2.0))
+    return Pairs(first=first, second=second, place=shape.place(one, other), times=np.where(one == other, 1.0, 2.0))
 
 
 def _stations_of_many_runs(visits: Visits, n_stations: int) -> Index:
@@ -372,14 +373,18 @@ def _stations_of_many_runs(visits: Visits, n_stations: int) -> Index:
     return np.flatnonzero(runs > MOST_RUNS)
 
 
+def crossings(visits: Visits) -> int:
+    """Visits, and for each station that is eliminated the square of its runs: products of two unknowns go with it."""
+    runs = int(visits.run.max(initial=0)) + 1
+    of_station = np.bincount(np.unique(visits.station * runs + visits.run) // runs)
+    return len(visits) + int(np.sum(of_station[of_station <= MOST_RUNS] ** 2))
+
+
 def _run_order(visits: Visits, local: Index, n_stations: int, by_run: dict[int, list[DriftUnknown]]) -> list[int]:
     """The order of runs in which those that share a station stand nearest to one another.
 
     Time order mostly does; else the one of Cuthill & McKee (1969).
     """
-    from scipy.sparse import coo_array
-    from scipy.sparse.csgraph import reverse_cuthill_mckee
-
     runs = list(by_run)
     rank = np.full(max(runs) + 1, -1)
     rank[runs] = np.arange(len(runs))
@@ -388,6 +393,11 @@ def _run_order(visits: Visits, local: Index, n_stations: int, by_run: dict[int, 
     station, run = np.divmod(touched, len(runs))
     first, second = _within(station)
     one, other = run[first], run[second]
+    if np.abs(one - other).max(initial=0) <= NEAR:
+        return runs
+    from scipy.sparse import coo_array
+    from scipy.sparse.csgraph import reverse_cuthill_mckee
+
     graph = coo_array((np.ones(len(one)), (one, other)), shape=(len(runs), len(runs))).tocsr()
     better = reverse_cuthill_mckee(graph, symmetric_mode=True)
     moved = np.empty(len(runs), dtype=np.intp)
@@ -415,7 +425,7 @@ def _prior_matrix(shape: Layout, priors: Priors, sd: Array) -> Array:
     once = shape.once(priors.unknown[first], priors.unknown[second])
     first, second = first[once], second[once]
     place = shape.place(priors.unknown[first], priors.unknown[second])
-    return summed(place, scaled[first] * scaled[second], shape.starts[3])
+    return shape.mirrored(summed(place, scaled[first] * scaled[second], shape.starts[3]))
 
 
 def _unknowns_of_runs(

@@ -8,7 +8,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment
-from plumbwell.reduction.candidates import jumps
 from plumbwell.reduction.drift_basis import DriftUnknown
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index
@@ -22,6 +21,9 @@ LEAST_RATIO = 3.29
 
 CHECKED = 0.05
 """Redundancy under which nothing checks a reading."""
+
+TRUSTED = 1e3
+"""Times the typical sd of a reading up to which one in a visit is trusted."""
 
 OUT = 1e-14
 """Robust weight of what was found to be in error: as good as none even of an error of Gals, and the network keeps its
@@ -67,6 +69,11 @@ class ProposedTare:
     one_visit: bool = False
 
 
+def gaps_of(visits: Visits) -> int:
+    """Gaps between neighbouring visits of a run, at least 1."""
+    return max(len(visits) - len(visits.run_order), 1)
+
+
 def is_told(size: float, sd: float, freedom: int, estimate: bool, *, gaps: int) -> bool:
     """True where a jump is larger than chance would make it in any of so many gaps."""
     return chance_of(size, sd, freedom, estimate) < CHANCE / max(gaps, 1)
@@ -103,36 +110,35 @@ def last_of_station(visits: Visits, trust: Array, rows: Index) -> NDArray[np.boo
     return np.isin(rows, visits.rows[gone])
 
 
-def errors_of(fit: Adjustment, rows: Index, alike: frozenset[int] = frozenset()) -> list[tuple[int, float, float]]:
-    """What rows out of trust are off by, and in sds, by all that is left: row, error, ratio.
+def errors_of(fit: Adjustment, rows: Index, alike: Index | None = None) -> tuple[Array, Array]:
+    """What rows out of trust are off by, m/s2, and in sds, by all that is left, (m,) each.
 
-    Those that stand alike against one another are weighed so.
+    Those that stand `alike` against one another are weighed so.
     """
-    error, predicted = fit.checked.error, fit.checked.predicted
     visits = fit.visits
-    trusted = np.full(len(error), np.nan)
-    trusted[visits.rows] = fit.noise.sd
-    found = []
-    ratios = _visit_errors(fit)
-    for row in rows.tolist():
-        visit = int(visits.of_row[row])
-        members = visits.rows[visits.start[visit] : visits.start[visit + 1]]
-        if row in alike and not np.isfinite(ratios[0][visit]):
-            # Readings of one visit that nothing else checks: off their median, and no nearer than it is told.
-            level = fit.residual[members] + fit.checked.visit_effect[members]
-            apart = level - np.median(level)
-            far = np.hypot(apart, np.median(np.abs(apart)))[members == row][0]
-            found.append((row, float(apart[members == row][0]), float(far / (trusted[row] * np.sqrt(OUT)))))
-        elif row in alike:
-            twice = 2.0 * float(np.median(fit.noise.variance) + np.median(fit.reseating.variance))
-            found.append((row, float(ratios[0][visit]), float(ratios[0][visit]) / twice**0.5))
-        elif np.all(trusted[members] > 1e3 * np.nanmedian(fit.noise.sd)):
-            found.append((row, float(ratios[0][visit]), float(ratios[1][visit])))
-        else:
-            off = float(error[row])
-            own = np.sqrt(max(float(predicted[row]), 0.0) + trusted[row] ** 2 * OUT)
-            found.append((row, off, off / own if own > 0.0 else np.inf))
-    return found
+    visit = visits.of_row[rows]
+    # Its own noise has been swollen by the square root of its weight.
+    swollen = np.full(len(fit.residual), np.nan)
+    swollen[visits.rows] = fit.noise.sd
+    quiet = np.minimum.reduceat(fit.noise.sd, visits.start[:-1]) < TRUSTED * float(np.median(fit.noise.sd))
+    own = np.maximum(fit.checked.predicted[rows], 0.0) + swollen[rows] ** 2 * OUT
+    of_visit, in_sds = _visit_errors(fit)
+    error = np.where(quiet[visit], fit.checked.error[rows], of_visit[visit])
+    ratio = np.where(quiet[visit], error / np.sqrt(np.where(own > 0.0, own, 1.0)), in_sds[visit])
+    apart = np.flatnonzero(np.isin(rows, alike)) if alike is not None else np.zeros(0, dtype=np.intp)
+    twice = 2.0 * float(np.median(fit.noise.variance) + np.median(fit.reseating.variance))
+    for n in apart.tolist():
+        if np.isfinite(of_visit[visit[n]]):
+            error[n], ratio[n] = of_visit[visit[n]], of_visit[visit[n]] / np.sqrt(twice)
+            continue
+        # Readings of one visit that nothing else checks: off their median, and no nearer than it is told.
+        members = visits.rows[visits.start[visit[n]] : visits.start[visit[n] + 1]]
+        level = fit.residual[members] + fit.checked.visit_effect[members]
+        off = level - np.median(level)
+        far = float(np.hypot(off, np.median(np.abs(off)))[members == rows[n]][0])
+        error[n] = off[members == rows[n]][0]
+        ratio[n] = far / (swollen[rows[n]] * np.sqrt(OUT))
+    return error, ratio
 
 
 def _visit_errors(fit: Adjustment) -> tuple[Array, Array]:
@@ -155,7 +161,7 @@ def proposed_tare(fit: Adjustment, tare: Tare, number: int, count: int) -> Propo
     low, high = _gap(fit, members, at)
     freedom = fit.reseating.freedom
     ratio = (size / sd) ** 2
-    gaps = max(sum(len(one.gain) for one in jumps(fit.solution, fit.visits)), 1)
+    gaps = gaps_of(visits)
     gap_from, gap_to = float(visits.last[members[low]]), float(visits.first[members[high]])
     return ProposedTare(
         run=run,
@@ -174,7 +180,7 @@ def jumps_at_ends(fit: Adjustment, rows: Index, off: dict[int, tuple[float, floa
     """Bad visits at the ends of their runs as jumps, which they may be as well."""
     visits, freedom = fit.visits, fit.reseating.freedom
     named, found = np.isin(visits.rows, rows), []
-    gaps = max(sum(len(one.gain) for one in jumps(fit.solution, visits)), 1)
+    gaps = gaps_of(visits)
     for run in visits.run_order.tolist():
         members = np.flatnonzero(visits.run == run)
         for visit, other, sign in ((members[0], members[1:2], -1.0), (members[-1], members[-2:-1], 1.0)):

@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment
-from plumbwell.reduction.candidates import jumps, more_drift
+from plumbwell.reduction.candidates import RunTerms, jumps, more_drift
 from plumbwell.reduction.drift_basis import HIGHEST_ORDER
 from plumbwell.reduction.drift_order import CHANCE as ORDER_CHANCE
 from plumbwell.reduction.found_errors import (
@@ -27,6 +27,7 @@ from plumbwell.reduction.found_errors import (
     chance_of,
     critical_ratio,
     errors_of,
+    gaps_of,
     is_told,
     jumps_at_ends,
     last_of_station,
@@ -148,14 +149,15 @@ def judged(
     fit, tares, trust = _given_back(fit, refit, tares, trust, orders, estimate, twins)
     rows = np.flatnonzero(trust < 0.5)
     alike = np.isin(rows, twins) | last_of_station(start.visits, trust, rows)
-    off = errors_of(fit, rows, frozenset(rows[alike].tolist()))
+    error, ratio = errors_of(fit, rows, rows[alike])
     found = [proposed_tare(fit, one, number, len(tares)) for number, one in enumerate(tares)]
-    found += jumps_at_ends(fit, rows[~alike], {row: (error, ratio) for row, error, ratio in off})
+    off = {row: (float(error[n]), float(ratio[n])) for n, row in enumerate(rows.tolist())}
+    found += jumps_at_ends(fit, rows[~alike], off)
     return Judgement(
         proposed=tuple(sorted(found, key=lambda one: one.time)),
         rows=frozen_index(rows),
-        error=np.array([error for _, error, _ in off]),
-        ratio=np.array([ratio for _, _, ratio in off]),
+        error=error,
+        ratio=ratio,
         alike=alike,
     )
 
@@ -261,7 +263,8 @@ def _drift_terms(
     from scipy.special import fdtrc
 
     found = []
-    every = jumps(fit.solution, fit.visits)
+    terms = RunTerms(fit.solution)
+    every = jumps(terms, fit.visits)
     gaps = sum(int(np.count_nonzero(one.gain > 0.0)) for one in every)
     for one in every:
         best = int(np.argmax(one.gain))
@@ -276,7 +279,7 @@ def _drift_terms(
             )
     if not automatic:
         return found
-    for run, gains in more_drift(fit.solution, fit.basis, fit.visits, fit.noise.weight).items():
+    for run, gains in more_drift(terms, fit.basis, fit.visits, fit.noise.weight).items():
         if run not in automatic or orders[run] >= HIGHEST_ORDER or orders[run] < 1:
             continue
         for higher, gain in ((orders[run] + 1, gains[0]), (HIGHEST_ORDER, gains[1])):
@@ -342,7 +345,7 @@ def _given_back(
     """
     for _ in range(ROUNDS):
         freedom = fit.reseating.freedom
-        gaps = sum(int(np.count_nonzero(one.gain > 0.0)) for one in jumps(fit.solution, fit.visits)) + len(tares)
+        gaps = gaps_of(fit.visits)
         weak: list[tuple[float, int]] = []
         for number, tare in enumerate(tares):
             size, sd = size_of(fit, tare, len(tares), number)
@@ -356,8 +359,8 @@ def _given_back(
         if rows.size:
             used = fit.visits.rows
             least = critical_ratio(freedom if estimate else np.inf, len(used))
-            back = [row for row, _, ratio in errors_of(fit, rows) if not abs(ratio) > least]
-            if back:
+            back = rows[~(np.abs(errors_of(fit, rows)[1]) > least)]
+            if back.size:
                 trust = trust.copy()
                 trust[back] = 1.0
                 fit = refit(tuple(tares), trust, orders)

@@ -176,6 +176,7 @@ def normal_equations(design: Design, weight: Array, ties: TieRows, *, priors: bo
         number = design.in_border[ties.station]
         held = number >= 0
         np.add.at(matrix, design.layout.place(number[held], number[held]), ties.weight[held])
+    matrix = design.layout.mirrored(matrix)
     return Border(matrix=matrix + design.prior_matrix if priors else matrix, total=safe, mean=mean)
 
 

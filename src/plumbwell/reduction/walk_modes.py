@@ -14,7 +14,7 @@ import numpy as np
 
 from plumbwell.survey.column import Array
 
-LEAST_MODES, MOST_MODES = 8, 96
+LEAST_MODES, MOST_MODES = 4, 96
 MOST_PRODUCTS = 4e6
 """Products of two unknowns of one visit that are held at a time."""
 
@@ -58,13 +58,15 @@ def walk_modes(time: Array, count: int) -> Array:
     return value
 
 
-def modes_for(wander: float, visits: int) -> int:
-    """How many modes a walk needs whose end sd is so many times the sd of a visit, for so many visits.
+def modes_for(wander: float, rows: int) -> int:
+    """How many modes a walk needs whose end sd is so many times the sd of a visit.
+
+    `rows` counts visits, and for each station the square of its runs: that many squares of the modes are held.
 
     What is left out has a variance of at most 4/(3 pi^4) (m - 1/2)^-3 of the strength squared at any time, the walk's
-    end one of 1/3: modes are taken until what is left out is under a fiftieth of a visit's sd. Very many visits get
-    no more than may be held, and no fewer than leave out a hundredth of the wander.
+    end one of 1/3: modes are taken until what is left out is under a fiftieth of a visit's sd. Very many rows get
+    no more than may be held, and no fewer than leave out a fiftieth of the wander.
     """
     left = 4.0 / np.pi**4 * (50.0 * wander) ** 2
-    most = np.clip(np.sqrt(MOST_PRODUCTS / max(visits, 1)) - 4.0, LEAST_MODES, MOST_MODES)
+    most = np.clip(np.sqrt(MOST_PRODUCTS / max(rows, 1)) - 4.0, LEAST_MODES, MOST_MODES)
     return int(np.clip(np.ceil(left ** (1.0 / 3.0) + 0.5), LEAST_MODES, most))

@@ -14,7 +14,7 @@ from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
 from plumbwell.reduction.calibration import instruments_used
 from plumbwell.reduction.datums import StationGravity, datum_stations, referred_gravity
 from plumbwell.reduction.drift_basis import DriftUnknown, drift_basis
-from plumbwell.reduction.found_errors import is_told
+from plumbwell.reduction.found_errors import gaps_of, is_told
 from plumbwell.reduction.judged import Judgement
 from plumbwell.reduction.judgement import alike_weights, as_tares, judgement, robust_weights, used_rows
 from plumbwell.reduction.located import Located
@@ -197,15 +197,15 @@ def _beside_walk(
             automatic=automatic, station=asked.station, walk=walk,
         )
         first = len(basis.tares) - len(proposed)
-        weak = []
+        told = []
         for number, one in enumerate(proposed):
             size, sd = both.unknown(DriftUnknown(kind="tare", run=one.run, tare=first + number))
-            if not is_told(size, sd, both.reseating.freedom, noise.estimate, gaps=len(fit.visits)):
-                weak.append((abs(size) / sd if sd > 0.0 else 0.0, number))
-        if not weak:
+            if is_told(size, sd, both.reseating.freedom, noise.estimate, gaps=gaps_of(fit.visits)):
+                told.append(one)
+        if len(told) == len(proposed):
             kept = sorted(proposed + at_ends, key=lambda one: one.time)
             return replace(found, proposed=tuple(kept)), both.walk is not None
-        del proposed[min(weak)[1]]
+        proposed = told
         if not proposed:
             return replace(found, proposed=tuple(at_ends)), True
 
