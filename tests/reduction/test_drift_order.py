@@ -9,6 +9,7 @@ from made_surveys import loop, made_case
 from plumbwell.reduction.candidates import more_drift
 from plumbwell.reduction.design import design
 from plumbwell.reduction.network import NO_TIES, solve
+from plumbwell.reduction.run_terms import RunTerms
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run
 
@@ -145,7 +146,7 @@ def test_columns_added_to_a_solution_leave_what_solving_anew_leaves(higher):
     whole = design(fit.basis, visits, weight, n_stations=len(results.stations), orders=(higher,), dropped=parts.dropped)
     anew = solve(whole, fit.solution.weight, fit.visit_mean[:, None], NO_TIES)
     before, after = (everything(one) for one in (fit.solution, anew))
-    gain = more_drift(fit.solution, fit.basis, visits, weight)[0][higher - 2]
+    gain = more_drift(RunTerms(fit.solution), fit.basis, visits, weight)[0][higher - 2]
     assert gain == pytest.approx(before - after, rel=1e-9)
     assert gain > 0.5 * before
 

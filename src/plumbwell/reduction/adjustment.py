@@ -12,14 +12,15 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from plumbwell.reduction.broken_visits import contrasts, unbroken_stretches
-from plumbwell.reduction.candidates import RunTerms, more_drift
+from plumbwell.reduction.candidates import more_drift
 from plumbwell.reduction.checked import Checked, checked, visit_means
-from plumbwell.reduction.design import Design, crossings, design, drift_of, walk_priors, with_priors
+from plumbwell.reduction.design import Design, crossings, design, drift_of, reweighted, walk_priors, with_priors
 from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
 from plumbwell.reduction.drift_order import Comparison, OrderTest, chosen_orders, raised_together
 from plumbwell.reduction.network import NO_RANK, Rank, Solution, TieRows, rank_beside_walk, rank_of_visits, solve
 from plumbwell.reduction.network_parts import Parts, undetermined
 from plumbwell.reduction.restricted_likelihood import log_likelihood, visits_alone
+from plumbwell.reduction.run_terms import RunTerms
 from plumbwell.reduction.variances import ReadingNoise, Reseating, reading_noise, reseating, stated_reseating
 from plumbwell.reduction.visits import Visits
 from plumbwell.reduction.walk import LEAST_FREEDOM, WalkFit, enough_gain, likeliest_strength
@@ -152,6 +153,7 @@ def adjusted(
     walk: str | float = "off",
     responses: tuple[Array, ...] = (),
     trust: Array | None = None,
+    near: Adjustment | None = None,
 ) -> Adjustment:
     """The adjusted network.
 
@@ -174,6 +176,9 @@ def adjusted(
         stand in the further columns of `solution.gravity`.
     trust : (n,) array or None
         Robust weight of each row, 0 to 1. None: 1 for all.
+    near : Adjustment or None
+        One of the same visits with much the same drift, from which reading noise is taken and re-seating noise looked
+        for; the likelihood is left out then.
     """
     rows = visits.rows
     orders = tuple(
@@ -201,12 +206,16 @@ def adjusted(
     while (missing := undetermined(first, ties, rank)) is not None:
         lost.append(missing)
         first, rank = designed(orders, even)
-    means = np.add.reduceat(values, visits.start[:-1]) / counts
-    typical = float(np.mean(terms.reseating_sd[rows] ** 2 + terms.reading_floor[rows] ** 2))
-    rough = _solved(first, np.full(len(visits), 1.0 / typical), means, ties)
+    if near is None:
+        means = np.add.reduceat(values, visits.start[:-1]) / counts
+        typical = float(np.mean(terms.reseating_sd[rows] ** 2 + terms.reading_floor[rows] ** 2))
+        rough = _solved(first, np.full(len(visits), 1.0 / typical), means, ties)
+        drift = drift_of(basis, first, rough.unknown[:, 0], None, bias=True)
+    else:
+        drift = near.border_drift[rows]
     noise = reading_noise(
         visits,
-        values - drift_of(basis, first, rough.unknown[:, 0], rows, bias=True),
+        values - drift,
         unbroken=unbroken,
         stated=terms.reading_sd[rows],
         floor=terms.reading_floor[rows],
@@ -226,12 +235,12 @@ def adjusted(
     if trust is not None:
         doubtful = int(np.count_nonzero(np.maximum.reduceat(trust[rows], visits.start[:-1]) < DOUBTED))
     mean = visit_means(noise.weight, values, visits.start)
-    latest: list[float] = []
+    latest: list[float] = [] if near is None or not near.reseating.estimate > 0.0 else [near.reseating.estimate]
 
     def seated(one: Design, rank: Rank, modes: Array | None = None) -> Reseating:
         found = reseating(
             one, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate, doubtful=doubtful,
-            start=latest[-1] if latest else None, walk=modes,
+            start=latest[-1] if latest else None, walk=modes, nearly=near is not None,
         )
         if np.isfinite(found.estimate):
             latest.append(found.estimate)
@@ -270,7 +279,7 @@ def adjusted(
     final, rank = designed(orders, weighted)
     seat = solved[orders][0] if orders in solved else seated(final, rank)
     likelihood = np.nan
-    if seat.freedom > 0:
+    if seat.freedom > 0 and near is None:
         likelihood = log_likelihood(final, mean, noise.variance + seat.variance, rank=rank)
     walking, walk_tried = None, False
     drifting = [run for run in visits.run_order.tolist() if orders[run] > 0]
@@ -367,13 +376,19 @@ def _designed(
     made = basis.made
     if len(made) > DESIGNS_HELD:
         made.clear()
-    key = (visits, weight.tobytes(), n_stations, orders, dropped, lost, modes)
-    if key not in made:
+    shape = (visits, n_stations, orders, dropped, lost, modes)
+    key = (*shape, weight.tobytes())
+    if key in made:
+        return made[key]  # type: ignore[no-any-return]
+    if shape in made:
+        one, rank = made[shape]
+        made[key] = (reweighted(one, visits, weight), rank)
+    else:
         one = design(
             basis, visits, weight, n_stations=n_stations, orders=orders, dropped=dropped, lost=lost, modes=modes
         )
         # The modes of a walk are no fixed unknowns: the rank beside them is that of the design without.
-        made[key] = (one, rank_of_visits(one) if not modes else NO_RANK)
+        made[key] = made[shape] = (one, rank_of_visits(one) if not modes else NO_RANK)
     return made[key]  # type: ignore[no-any-return]
 
 

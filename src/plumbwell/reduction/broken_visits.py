@@ -73,6 +73,7 @@ def contrasts(
                 row=np.zeros(len(moved), dtype=np.intp),
                 unknown=numbers[moved],
                 factor=factors[moved],
+                run=np.full(1, -1),
             )
         )
     return found

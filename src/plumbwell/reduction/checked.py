@@ -6,12 +6,14 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from plumbwell.reduction.design import of_rows
 from plumbwell.reduction.drift_basis import DriftBasis
 from plumbwell.reduction.network import Solution
 from plumbwell.reduction.variances import ReadingNoise, Reseating
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index
+
+FEW_RUNS, FEW_UNKNOWNS = 12, 8
+"""Runs beyond which, unknowns of a run up to which, all rows are worked through at once."""
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -80,19 +82,24 @@ def checked(
     share = noise.weight
     # Regressors of the unknowns of each row's own run, z; their means over its visit; and what the border's
     # covariance makes of both.
-    z = of_rows(basis, one, rows)
+    z = one.row_value
     z_mean = visit_means(share, z, visits.start)
     turned, turned_mean = np.empty_like(z), np.empty_like(z_mean)
     inverse, run = solution.factor.inverse, basis.run[rows]
-    edges = np.flatnonzero(np.diff(run, prepend=-1, append=-1))
-    visit_edges = np.flatnonzero(np.diff(visits.run, prepend=-1, append=-1)).tolist()
-    for number, (start, end) in enumerate(zip(edges[:-1].tolist(), edges[1:].tolist(), strict=True)):
-        numbers = one.of_run[run[start]]
-        both = (numbers >= 0)[:, None] & (numbers >= 0)
-        place = one.layout.place(np.maximum(numbers, 0)[:, None], np.maximum(numbers, 0)[None, :])
-        block = np.where(both, inverse[place] if one.size else 0.0, 0.0)
-        mine = slice(visit_edges[number], visit_edges[number + 1])
-        turned[start:end], turned_mean[mine] = z[start:end] @ block, z_mean[mine] @ block
+    numbers = one.of_run
+    both = (numbers >= 0)[:, :, None] & (numbers >= 0)[:, None, :]
+    known = np.maximum(numbers, 0)
+    place = one.layout.place(known[:, :, None], known[:, None, :])
+    blocks = np.where(both, inverse[place] if one.size else 0.0, 0.0)
+    if len(blocks) > FEW_RUNS and z.shape[1] <= FEW_UNKNOWNS:
+        turned, turned_mean = (np.einsum("nk,nkl->nl", of, blocks[at]) for of, at in ((z, run), (z_mean, visits.run)))
+    else:
+        edges = np.flatnonzero(np.diff(run, prepend=-1, append=-1)).tolist()
+        visit_edges = np.flatnonzero(np.diff(visits.run, prepend=-1, append=-1)).tolist()
+        for turn, (start, end) in enumerate(zip(edges[:-1], edges[1:], strict=True)):
+            mine = slice(visit_edges[turn], visit_edges[turn + 1])
+            block = blocks[run[start]]
+            turned[start:end], turned_mean[mine] = z[start:end] @ block, z_mean[mine] @ block
     base, cross = _with_station(solution)
     of_mean = np.einsum("vm,vm->v", z_mean, cross)
     own_fit = (

@@ -8,6 +8,7 @@ Visit means are the observations; a visit's row of the design is the weighted me
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 
@@ -34,6 +35,8 @@ class Priors:
     value, sd : (m,) arrays
     row, unknown, factor : (e,) arrays
         The factors in coordinate form.
+    run : (m,) int array
+        Run whose mean drift rate a prior holds; -1 for other priors.
     """
 
     name: tuple[str, ...]
@@ -42,6 +45,7 @@ class Priors:
     row: Index
     unknown: Index
     factor: Array
+    run: Index
 
     def __len__(self) -> int:
         return len(self.name)
@@ -57,11 +61,8 @@ class Priors:
             row=np.concatenate([self.row, other.row + len(self)]),
             unknown=np.concatenate([self.unknown, other.unknown]),
             factor=np.concatenate([self.factor, other.factor]),
+            run=np.concatenate([self.run, other.run]),
         )
-
-    def row_of(self, name: str) -> int:
-        """Number of the prior of some name, -1 where there is none."""
-        return self.name.index(name) if name in self.name else -1
 
     def of(self, unknown: Array) -> Array:
         """What each prior observes when the unknowns have these values, (m,)."""
@@ -75,6 +76,7 @@ NO_PRIORS = Priors(
     row=np.zeros(0, dtype=np.intp),
     unknown=np.zeros(0, dtype=np.intp),
     factor=np.zeros(0),
+    run=np.zeros(0, dtype=np.intp),
 )
 
 
@@ -112,8 +114,8 @@ class Design:
     modes : int
         Modes of the random walk in each run; 0 for none.
     n_stations : int
-    station, run : (v,) int arrays
-        Station and run of each visit.
+    station, run, readings : (v,) int arrays
+        Station, run and number of used readings of each visit.
     local : (v,) int array
         The same, `n_stations` where the station's gravity stands in the border.
     in_border : (s,) int array
@@ -130,6 +132,8 @@ class Design:
         The same for each visit and place of `of_run`; the number of those where nothing is touched.
     slot_value : (v, k) array
         The visits' regressors in those places.
+    row_value : (u, k) array
+        The same of every used reading.
     pairs : Pairs
         Of the entries.
     pair_visit, pair_value : (p,) arrays
@@ -144,6 +148,8 @@ class Design:
         Constants that the datum of a network part makes superfluous: held at 0.
     lost : tuple of DriftUnknown
         Unknowns that the visits and priors cannot determine: held at 0.
+    kept_layouts : dict
+        What else was derived from the same unknowns and visits, whatever the weights within visits.
     """
 
     unknowns: tuple[DriftUnknown, ...]
@@ -153,6 +159,7 @@ class Design:
     n_stations: int
     station: Index
     run: Index
+    readings: Index
     local: Index
     in_border: Index
     of_run: Index
@@ -163,6 +170,7 @@ class Design:
     entry_at: Index
     slot_at: Index
     slot_value: Array
+    row_value: Array
     pairs: Pairs
     pair_visit: Index
     pair_value: Array
@@ -174,11 +182,23 @@ class Design:
     prior_side: Array
     dropped: tuple[DriftUnknown, ...]
     lost: tuple[DriftUnknown, ...]
+    kept_layouts: dict[str, Any]
 
     @property
     def size(self) -> int:
         """Number of border unknowns."""
         return len(self.unknowns)
+
+    def rate_priors(self) -> Index:
+        """Number of the prior of each run's mean drift rate, by run code; -1 where there is none."""
+        found = np.full(len(self.of_run), -1)
+        held = np.flatnonzero(self.priors.run >= 0)
+        found[self.priors.run[held]] = held
+        return found
+
+    def run_of_unknown(self) -> Index:
+        """Run code of each border unknown, (q,); -1 for gravity."""
+        return np.array([one.run for one in self.unknowns], dtype=np.intp)
 
     def of_run_of_visit(self, visits: Index) -> Index:
         """Border unknowns of the runs of some visits, (m, k); -1 in places that none fills."""
@@ -205,12 +225,17 @@ def of_rows(basis: DriftBasis, one: Design, rows: Index) -> Array:
     return at_times(basis, one, basis.run[rows], basis.utc[rows])
 
 
-def drift_of(basis: DriftBasis, one: Design, unknown: Array, rows: Index, *, bias: bool) -> Array:
-    """What the border unknowns put on the given rows, with or without the bias of their run, m/s2."""
+def drift_of(basis: DriftBasis, one: Design, unknown: Array, rows: Index | None, *, bias: bool) -> Array:
+    """What the border unknowns put on the given rows, with or without the bias of their run, m/s2.
+
+    None: on the used rows, visit by visit.
+    """
     kept = unknown if bias else np.where([what.kind == "bias" for what in one.unknowns], 0.0, unknown)
-    numbers = one.of_run[basis.run[rows]]
-    coefficient = np.where(numbers >= 0, np.append(kept, 0.0)[numbers], 0.0)
-    return np.einsum("nk,nk->n", of_rows(basis, one, rows), coefficient)
+    of_run = np.where(one.of_run >= 0, np.append(kept, 0.0)[one.of_run], 0.0)
+    if rows is None:
+        visit_run = np.repeat(one.run, one.readings)
+        return np.einsum("nk,nk->n", one.row_value, of_run[visit_run])
+    return np.einsum("nk,nk->n", of_rows(basis, one, rows), of_run[basis.run[rows]])
 
 
 def _regressors(
@@ -282,21 +307,14 @@ def design(
     of_run = np.full((len(basis.start), most), -1, dtype=np.intp)
     for run, own in by_run.items():
         of_run[run, : len(own)] = [position[one] for one in own]
-    value = np.add.reduceat(
-        weight[:, None] * _regressors(basis, unknowns, of_run, basis.run[visits.rows], basis.utc[visits.rows]),
-        visits.start[:-1],
-        axis=0,
-    )
+    row_value = _regressors(basis, unknowns, of_run, basis.run[visits.rows], basis.utc[visits.rows])
     numbers = of_run[visits.run]
-    is_bias = np.array([one.kind == "bias" for one in unknowns] + [False])
-    value[is_bias[numbers]] = 1.0
     present = numbers >= 0
-    entry_visit, entry_unknown, entry_value = np.nonzero(present)[0], numbers[present], value[present]
+    entry_visit, entry_unknown = np.nonzero(present)[0], numbers[present]
     at_base = np.flatnonzero(local == n_stations)
     if at_base.size:
         entry_visit = np.concatenate([entry_visit, at_base])
         entry_unknown = np.concatenate([entry_unknown, in_border[visits.station[at_base]]])
-        entry_value = np.concatenate([entry_value, np.ones(at_base.size)])
     size = len(unknowns)
     key = local[entry_visit] * max(size, 1) + entry_unknown
     eliminated = local[entry_visit] < n_stations
@@ -321,19 +339,21 @@ def design(
         n_stations=n_stations,
         station=visits.station,
         run=visits.run,
+        readings=np.diff(visits.start),
         local=local,
         in_border=in_border,
         of_run=of_run,
         layout=shape,
         entry_visit=entry_visit,
         entry_unknown=entry_unknown,
-        entry_value=entry_value,
+        entry_value=np.zeros(0),
         entry_at=at,
         slot_at=slot_at,
-        slot_value=np.where(present, value, 0.0),
+        slot_value=np.zeros(0),
+        row_value=row_value,
         pairs=pairs,
         pair_visit=entry_visit[pairs.first],
-        pair_value=entry_value[pairs.first] * entry_value[pairs.second],
+        pair_value=np.zeros(0),
         touched_station=touched_station,
         touched_unknown=touched_unknown,
         touched_pairs=_pairs(shape, touched_unknown, near_first, near_second),
@@ -342,8 +362,25 @@ def design(
         prior_side=np.zeros(size),
         dropped=dropped,
         lost=lost,
+        kept_layouts={},
     )
-    return with_priors(none, _priors(basis, none))
+    return reweighted(with_priors(none, _priors(basis, none)), visits, weight)
+
+
+def reweighted(one: Design, visits: Visits, weight: Array) -> Design:
+    """The design with other weights within visits: `weight` (u,) sums to 1 within each."""
+    value = np.add.reduceat(weight[:, None] * one.row_value, visits.start[:-1], axis=0)
+    numbers = one.of_run[visits.run]
+    is_bias = np.array([what.kind == "bias" for what in one.unknowns] + [False])
+    value[is_bias[numbers]] = 1.0
+    present = numbers >= 0
+    entries = np.concatenate([value[present], np.ones(np.count_nonzero(one.local == one.n_stations))])
+    return replace(
+        one,
+        entry_value=entries,
+        slot_value=np.where(present, value, 0.0),
+        pair_value=entries[one.pairs.first] * entries[one.pairs.second],
+    )
 
 
 def _within(group: Index) -> tuple[Index, Index]:
@@ -449,6 +486,7 @@ def _priors(basis: DriftBasis, one: Design) -> Priors:
     name: list[str] = []
     value: list[float] = []
     sd: list[float] = []
+    runs: list[int] = []
     row: list[int] = []
     unknown: list[int] = []
     factor: list[float] = []
@@ -466,6 +504,7 @@ def _priors(basis: DriftBasis, one: Design) -> Priors:
             name.append(f"tare {what.tare}")
             value.append(size)
             sd.append(size_sd)
+            runs.append(-1)
     for run, numbers in drifts.items():
         if basis.rate_sd[run] < np.inf:
             # The mean rate is the drift at the run's last used reading (scaled time 1) over its length.
@@ -475,6 +514,7 @@ def _priors(basis: DriftBasis, one: Design) -> Priors:
             name.append(f"drift rate of run {run}")
             value.append(float(basis.rate[run]))
             sd.append(float(basis.rate_sd[run]))
+            runs.append(run)
     return Priors(
         name=tuple(name),
         value=np.array(value, dtype=float),
@@ -482,6 +522,7 @@ def _priors(basis: DriftBasis, one: Design) -> Priors:
         row=np.array(row, dtype=np.intp),
         unknown=np.array(unknown, dtype=np.intp),
         factor=np.array(factor, dtype=float),
+        run=np.array(runs, dtype=np.intp),
     )
 
 
@@ -496,4 +537,5 @@ def walk_priors(basis: DriftBasis, one: Design, strength: float) -> Priors:
         row=np.arange(len(numbers)),
         unknown=numbers,
         factor=np.ones(len(numbers)),
+        run=np.full(len(numbers), -1),
     )

@@ -15,9 +15,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment
-from plumbwell.reduction.candidates import RunTerms, jumps, more_drift
+from plumbwell.reduction.candidates import jumps, more_drift
 from plumbwell.reduction.drift_basis import HIGHEST_ORDER
 from plumbwell.reduction.drift_order import CHANCE as ORDER_CHANCE
+from plumbwell.reduction.drift_order import LEAST_FREEDOM as LEAST_LEFT
 from plumbwell.reduction.found_errors import (
     CHANCE,
     CHECKED,
@@ -34,6 +35,7 @@ from plumbwell.reduction.found_errors import (
     proposed_tare,
     size_of,
 )
+from plumbwell.reduction.run_terms import RunTerms
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index, frozen_index
 from plumbwell.survey.errors import NumericalError
@@ -53,6 +55,9 @@ SWOLLEN = 0.25
 
 ALIKE = 0.98
 """Share of the largest ratio at a station from which on nothing tells which of its visits is off."""
+
+MANY_READINGS, MANY_SHARE = 50, 0.002
+"""Readings in error at one step, and their share, from which on drift and jumps wait."""
 
 OF_ONE_VISIT = 3.0
 """What a jump must explain more than one bad visit does: before the last visit of a run both are the same."""
@@ -94,7 +99,7 @@ class _Candidate:
     twin: bool = False
 
 
-Refit = Callable[[tuple[Tare, ...], Array, tuple[int, ...]], Adjustment]
+Refit = Callable[[tuple[Tare, ...], Array, tuple[int, ...], Adjustment], Adjustment]
 
 
 def judged(
@@ -107,7 +112,7 @@ def judged(
     start : Adjustment
         Without a walk, at the orders from which automatic runs are raised.
     refit : callable
-        (further tares, robust weight of every row, orders) -> the network adjusted anew.
+        (further tares, robust weight of every row, orders, the network before) -> the network adjusted anew.
     automatic : tuple of int
         Runs whose drift order is chosen.
     estimate : bool
@@ -141,7 +146,7 @@ def judged(
                     twins += mates[trust[mates] < 0.5].tolist()
         orders = tuple(raised)
         try:
-            fit = refit(tuple(tares), trust, orders)
+            fit = refit(tuple(tares), trust, orders, fit)
         except (NumericalError, np.linalg.LinAlgError):
             # Without them nothing would join some part of the network to the rest: there is nothing to judge them by.
             tares, trust, orders, twins = list(before[0]), before[1], before[2], list(before[3])
@@ -180,7 +185,9 @@ def _best(
     whole = np.maximum.reduceat(trust[visits.rows], visits.start[:-1]) > 0.5
     redundancy = 1.0 - solution.weight * solution.variance_of_fit()
     tested = np.flatnonzero((redundancy > CHECKED) & whole)
-    found: list[_Candidate] = []
+    found = _readings(fit, kept, estimate)
+    # While many single readings are wrong they hide what the drift does: they go first.
+    many = len(found) > max(MANY_READINGS, MANY_SHARE * len(visits.rows))
     squares = solution.sum_of_squares()
     if tested.size and freedom > 1:
         square = solution.residual[tested, 0] ** 2 * solution.weight[tested] / redundancy[tested]
@@ -192,40 +199,48 @@ def _best(
             found.append(
                 _Candidate(
                     worth=float(told[n]) - 2.0 * np.log(tested.size), run=int(visits.run[visit]),
-                    station=int(visits.station[visit]), kind="visit", at=visit,
+                    station=int(visits.station[visit]), kind="visit", at=visit, visit=visit,
                 )
             )
-        if freedom >= LEAST_FREEDOM:
+        if freedom >= LEAST_FREEDOM and not many:
             share = float(np.median(fit.noise.variance * solution.weight))
             found += _drift_terms(fit, squares, freedom, scale, orders, automatic, estimate, share)
-    found += _readings(fit, kept, estimate)
+    near: dict[tuple[str, int], list[_Candidate]] = {}
+    for one in found:
+        if one.kind in ("visit", "reading"):
+            near.setdefault(_place(one), []).append(one)
     taken: list[_Candidate] = []
     runs: set[int] = set()
     stations: set[int] = set()
+    looked_at: set[int] = set()
     for one in sorted(found, key=lambda each: -each.worth):
-        if one.run in runs or (one.station >= 0 and one.station in stations):
+        # A reading stands against its own visit, whatever else is wrong; only its visit and its run have to wait.
+        if one.kind == "reading":
+            if one.visit in looked_at:
+                continue
+        elif one.run in runs or (one.station >= 0 and one.station in stations):
             continue
+        looked_at.add(one.visit)
         taken.append(one)
         runs.add(one.run)
-        stations.add(one.station)
-        others = _twins(one, found)
+        if one.kind != "reading":
+            stations.add(one.station)
+        others = _twins(one, near)
         if others:
             taken[-1] = replace(one, twin=True)
             taken += [replace(other, twin=True) for other in others]
     return taken
 
 
-def _twins(one: _Candidate, found: list[_Candidate]) -> list[_Candidate]:
+def _twins(one: _Candidate, near: dict[tuple[str, int], list[_Candidate]]) -> list[_Candidate]:
     """What is as far off, so that nothing tells which is wrong: visits of one station, two readings of a visit."""
-    if one.kind not in ("visit", "reading"):
-        return []
-    return [
-        other
-        for other in found
-        if other is not one and other.kind == one.kind and other.station == one.station
-        and (one.kind == "visit" or other.visit == one.visit)
-        and other.worth > ALIKE**2 * one.worth
-    ]
+    others = near.get(_place(one), [])
+    return [other for other in others if other is not one and other.worth > ALIKE**2 * one.worth]
+
+
+def _place(one: _Candidate) -> tuple[str, int]:
+    """Where twins would stand: at the station of a visit, in the visit of a reading."""
+    return one.kind, one.station if one.kind == "visit" else one.visit
 
 
 def _left(
@@ -266,30 +281,36 @@ def _drift_terms(
     terms = RunTerms(fit.solution)
     every = jumps(terms, fit.visits)
     gaps = sum(int(np.count_nonzero(one.gain > 0.0)) for one in every)
-    for one in every:
-        best = int(np.argmax(one.gain))
-        gain = float(one.gain[best])
-        told = gain / float(_left(np.array([gain]), squares, freedom, scale, estimate, least)[0])
-        if gain > 0.0 and float(fdtrc(1, freedom - 1, told)) < CHANCE / gaps:
-            found.append(
-                _Candidate(
-                    worth=told - 2.0 * np.log(gaps) - OF_ONE_VISIT, run=one.run, station=-1, kind="tare",
-                    at=int(one.visit[best]),
-                )
+
+    def told(gain: Array, steps: int) -> tuple[Array, Array]:
+        """Gains in units of the variance of the rest, and the chance of each."""
+        grown = gain / _left(gain, squares, freedom, scale, estimate, least)
+        return grown, fdtrc(steps, max(freedom - steps, 1), grown / steps)
+
+    best = [int(np.argmax(one.gain)) for one in every]
+    gain, chance = told(np.array([float(one.gain[at]) for one, at in zip(every, best, strict=True)]), 1)
+    for n in np.flatnonzero((gain > 0.0) & (chance < CHANCE / max(gaps, 1))).tolist():
+        found.append(
+            _Candidate(
+                worth=float(gain[n]) - 2.0 * np.log(gaps) - OF_ONE_VISIT, run=every[n].run, station=-1, kind="tare",
+                at=int(every[n].visit[best[n]]),
             )
-    if not automatic:
+        )
+    runs = [run for run in automatic if 1 <= orders[run] < HIGHEST_ORDER]
+    if not runs or freedom - 2 < LEAST_LEFT:
         return found
-    for run, gains in more_drift(terms, fit.basis, fit.visits, fit.noise.weight).items():
-        if run not in automatic or orders[run] >= HIGHEST_ORDER or orders[run] < 1:
-            continue
-        for higher, gain in ((orders[run] + 1, gains[0]), (HIGHEST_ORDER, gains[1])):
-            steps = higher - orders[run]
-            if gain <= 0.0 or freedom - steps < 3 or (steps > 1 and orders[run] != 1):
-                continue
-            told = gain / float(_left(np.array([gain]), squares, freedom, scale, estimate, least)[0])
-            if float(fdtrc(steps, freedom - steps, told / steps)) < ORDER_CHANCE:
-                found.append(_Candidate(worth=told - 2.0 * (steps - 1), run=run, station=-1, kind="order", at=higher))
-                break
+    more = more_drift(terms, fit.basis, fit.visits, fit.noise.weight)
+    next_one, its_chance = told(np.array([more.get(run, (0.0, 0.0))[0] for run in runs]), 1)
+    third, third_chance = told(np.array([more.get(run, (0.0, 0.0))[1] for run in runs]), 2)
+    for n, run in enumerate(runs):
+        if next_one[n] > 0.0 and its_chance[n] < ORDER_CHANCE:
+            found.append(
+                _Candidate(worth=float(next_one[n]), run=run, station=-1, kind="order", at=orders[run] + 1)
+            )
+        elif orders[run] == 1 and third[n] > 0.0 and third_chance[n] < ORDER_CHANCE:
+            found.append(
+                _Candidate(worth=float(third[n]) - 2.0, run=run, station=-1, kind="order", at=HIGHEST_ORDER)
+            )
     return found
 
 
@@ -352,8 +373,13 @@ def _given_back(
             if not is_told(size, sd, freedom, estimate, gaps=gaps):
                 weak.append((chance_of(size, sd, freedom, estimate), number))
         if weak:
-            tares = [one for number, one in enumerate(tares) if number != max(weak)[1]]
-            fit = refit(tuple(tares), trust, orders)
+            # Runs hardly know of one another: in each the weakest goes.
+            worst: dict[str, tuple[float, int]] = {}
+            for chance, number in weak:
+                worst[tares[number].run] = max(worst.get(tares[number].run, (chance, number)), (chance, number))
+            gone = {number for _, number in worst.values()}
+            tares = [one for number, one in enumerate(tares) if number not in gone]
+            fit = refit(tuple(tares), trust, orders, fit)
             continue
         rows = np.setdiff1d(np.flatnonzero(trust < 0.5), twins)
         if rows.size:
@@ -363,7 +389,7 @@ def _given_back(
             if back.size:
                 trust = trust.copy()
                 trust[back] = 1.0
-                fit = refit(tuple(tares), trust, orders)
+                fit = refit(tuple(tares), trust, orders, fit)
                 continue
         break
     return fit, tares, trust

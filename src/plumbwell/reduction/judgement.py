@@ -24,8 +24,8 @@ LEAST_TRUST = 1e-6
 SOFT = 1e-6
 """Share of the weight of ties that joins parts of the network and bends nothing."""
 
-PASSES = 25
-SETTLED = 1e-3
+PASSES = 10
+SETTLED = 0.01
 
 
 def with_found(
@@ -76,11 +76,11 @@ def judgement(
     # Ties that contradict one another bend the network, and readings would be accused of it: here they only join it.
     soft = replace(ties, weight=ties.weight * SOFT)
 
-    def refit(found: tuple[Tare, ...], trust: Array, orders: tuple[int, ...]) -> Adjustment:
+    def refit(found: tuple[Tare, ...], trust: Array, orders: tuple[int, ...], near: Adjustment) -> Adjustment:
         return adjusted(
             observed, with_found(base.basis, base.visits, run_names, tares, found, run_instrument), base.visits, soft,
             parts, terms, n_stations=n_stations, start_orders=orders, automatic=(), station=station,
-            trust=None if trust.all() and trust.min(initial=1.0) == 1.0 else trust,
+            trust=None if trust.min(initial=1.0) == 1.0 else trust, near=near,
         )
 
     lowest = tuple(1 if run in automatic else order for run, order in enumerate(start_orders))
@@ -88,7 +88,7 @@ def judgement(
     if base.walk is None and base.orders == lowest and len(ties.station) < 2:
         start = base
     else:
-        start = refit((), np.ones(len(observed)), lowest)
+        start = refit((), np.ones(len(observed)), lowest, base)
     return judged(start, refit, automatic=automatic, estimate=terms.estimate, n_rows=len(observed))
 
 
@@ -147,7 +147,7 @@ def robust_weights(
             break
         fit = adjusted(
             observed, basis, visits, ties, parts, terms, n_stations=n_stations, start_orders=fit.orders,
-            automatic=(), station=station, trust=frozen(trust),
+            automatic=(), station=station, trust=frozen(trust), near=fit,
         )
     return trust
 

@@ -14,6 +14,7 @@ from plumbwell.survey.column import Array
 
 PASSES = 60
 SETTLED = 1e-6  # of the re-seating variance: a millionth of it moves no density
+NEARLY = 1e-3  # where the estimate serves a search alone
 
 
 def visits_alone(design: Design, weight: Array, values: Array, rank: Rank, walk: Array | None) -> Solution:
@@ -30,6 +31,7 @@ def restricted_variance(
     rank: Rank,
     start: float | None = None,
     walk: Array | None = None,
+    nearly: bool = False,
 ) -> float:
     """The re-seating variance that maximises the restricted likelihood of the visits; 0 where it grows towards 0.
 
@@ -49,6 +51,8 @@ def restricted_variance(
         A variance near which to begin; None: that of even weights.
     walk : array or None
         What a random walk adds to the flat border matrix, s4/m2.
+    nearly : bool
+        True: to a thousandth is enough.
     """
     values = observed[:, None]
     typical = float(np.median(reading_variance))
@@ -79,7 +83,7 @@ def restricted_variance(
             at_least = at
             if at <= 0.0:
                 return 0.0
-        if abs(at) < SETTLED:
+        if abs(at) < (NEARLY if nearly else SETTLED):
             break
         low, high = (x, high) if at > 0.0 else (low, x)
         slope = -1.0 if before is None or before[0] == x else (at - before[1]) / (x - before[0])

@@ -160,6 +160,7 @@ def reseating(
     doubtful: int = 0,
     start: float | None = None,
     walk: Array | None = None,
+    nearly: bool = False,
 ) -> Reseating:
     """Re-seating noise under the rules for many, few and no degrees of freedom.
 
@@ -181,6 +182,8 @@ def reseating(
         A variance near which the estimate is looked for.
     walk : array or None
         What a random walk adds to the flat border matrix.
+    nearly : bool
+        True: the estimate serves a search alone.
     """
     freedom = max(len(observed) - rank.rank - doubtful, 0)
     if not estimate:
@@ -195,7 +198,7 @@ def reseating(
         return Reseating(
             variance=stated_variance, estimate=np.nan, freedom=0, few=True, t_freedom=STATED_FREEDOM
         )
-    found = restricted_variance(design, observed, noise.variance, rank=rank, start=start, walk=walk)
+    found = restricted_variance(design, observed, noise.variance, rank=rank, start=start, walk=walk, nearly=nearly)
     if freedom >= ENOUGH_FREEDOM:
         return Reseating(
             variance=np.full(len(observed), found), estimate=found, freedom=freedom, few=False, t_freedom=freedom

@@ -11,10 +11,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from plumbwell.reduction.candidates import RunTerms, normal
 from plumbwell.reduction.checked import visit_means
 from plumbwell.reduction.drift_basis import DriftBasis
 from plumbwell.reduction.network import Solution
+from plumbwell.reduction.run_terms import RunTerms
 from plumbwell.reduction.visits import Visits
 from plumbwell.reduction.walk_modes import mode_sds, walk_modes
 from plumbwell.survey.column import Array, Index
@@ -81,18 +81,19 @@ def likeliest_strength(
     1977, by the identity of Woodbury).
     """
     one, terms = solution.design, RunTerms(solution)
-    runs = [(run, members) for run, members in terms.runs() if one.orders[run] > 0 and len(members) > 2]
-    if not runs or freedom < 1:
+    drifting = np.flatnonzero(np.array(one.orders)[terms.layout.runs] > 0)
+    if not drifting.size or freedom < 1:
         return (), 0.0
-    together = one.layout.count == 1 and not one.layout.corner and LEAST_MODES * len(runs) <= MOST_TOGETHER
-    count = int(np.clip(MOST_TOGETHER // len(runs), LEAST_MODES, MODES))
+    together = one.layout.count == 1 and not one.layout.corner and LEAST_MODES * len(drifting) <= MOST_TOGETHER
+    count = int(np.clip(MOST_TOGETHER // len(drifting), LEAST_MODES, MODES))
     modes = walk_modes(basis.time(visits.rows), count) * mode_sds(count)
     modes *= basis.length[basis.run[visits.rows]][:, None] ** 1.5
     columns = visit_means(weight, modes, visits.start)
     if not together:
-        return _first_step(solution, terms, runs, columns, typical)
-    wide = np.zeros((len(columns), len(runs) * count))
-    for number, (_, members) in enumerate(runs):
+        return _first_step(terms, drifting, columns, typical)
+    wide = np.zeros((len(columns), len(drifting) * count))
+    for number, run in enumerate(drifting.tolist()):
+        members = terms.layout.run_of == run
         wide[members, number * count : (number + 1) * count] = columns[members]
     gradient, left_of = _whole_normal(solution, wide)
     values, vectors = np.linalg.eigh(0.5 * (left_of + left_of.T))
@@ -128,14 +129,14 @@ def likeliest_strength(
 
 
 def _first_step(
-    solution: Solution, terms: RunTerms, runs: list[tuple[int, Index]], columns: Array, typical: float
+    terms: RunTerms, drifting: Index, columns: Array, typical: float
 ) -> tuple[tuple[float, ...], float]:
     """Strengths by one step of scoring from no walk, runs taken as independent (Rao 1948), and what it gains."""
-    slope, information = 0.0, 0.0
-    for _, members in runs:
-        gradient, left, _ = normal(solution, terms, members, columns[members])
-        slope += 0.5 * (float(gradient @ gradient) / typical - float(np.trace(left))) / typical
-        information += 0.5 * float(np.sum(left**2)) / typical**2
+    gradient, left, _ = terms.normal(columns)
+    gradient, left = gradient[drifting], left[drifting]
+    trace = float(np.sum(np.diagonal(left, axis1=1, axis2=2)))
+    slope = 0.5 * (float(np.sum(gradient**2)) / typical - trace) / typical
+    information = 0.5 * float(np.sum(left**2)) / typical**2
     if not slope > 0.0:
         return (), 0.0
     strength = float(np.sqrt(slope / information))
