@@ -11,7 +11,6 @@ from PySide6.QtWidgets import QApplication
 from plumbwell.desk.parts.words import Chooser
 from plumbwell.desk.tray.recipe_editors import number_typed, value_text
 from plumbwell.desk.tray.recipe_page import GROUPS, WITHOUT_EFFECT, RecipePage, spread
-from plumbwell.desk.tray.recipe_row import what_of
 from plumbwell.survey.recipe import DEFAULT, KEYS, UNAVAILABLE, as_written, is_unavailable, with_written
 from shown_texts import SCALES, cut_short, look_of, shown_words
 
@@ -210,10 +209,6 @@ def test_what_this_version_cannot_do_is_not_offered(look, qtbot):
         offered = [chooser.itemText(index) for index in range(chooser.count())]
         assert offered == [word for word in KEYS[key].words if not is_unavailable(key, word)]
         assert not chooser.isEditable()
-    single = editor(page, "tares").chooser
-    QTest.keyClick(single, Qt.Key.Key_Down)
-    assert single.is_plain and not single.view().isVisible()
-    assert "This version has no other" in what_of("tares")
 
 
 def test_a_value_that_cannot_be_done_is_shown_and_can_be_left(look, qtbot):

@@ -8,6 +8,7 @@ from PySide6.QtGui import QAccessible, QGuiApplication
 from PySide6.QtWidgets import QAbstractButton, QComboBox, QLineEdit, QWidget
 
 from plumbwell.desk.stages import states
+from plumbwell.desk.tray.blocks import Block
 from plumbwell.plates.lettering import text_placed
 from reduced_surveys import MINE, SHAFT, WELL
 
@@ -123,11 +124,14 @@ def test_every_control_has_a_name_and_can_be_reached_by_keyboard(driven):
                 interface = QAccessible.queryAccessibleInterface(control)
                 if not interface.text(QAccessible.Text.Name).strip():
                     nameless.append(f"{stage}, {page}: {type(control).__name__}")
+                # Words of a block are reached from the block itself, which the arrow keys make the current one.
+                if isinstance(control.parentWidget(), Block) and not control.parentWidget().hasFocus():
+                    continue
                 if control.isEnabled() and control.focusPolicy() == Qt.FocusPolicy.NoFocus:
                     unreached.append(f"{stage}, {page}: {type(control).__name__} {control.accessibleName()}")
     inner = ("QTabBar", "CloseButton", "QToolButton")
     assert not [one for one in set(nameless) if not any(word in one for word in inner)]
-    assert not [one for one in set(unreached) if "Word" in one and "docket" not in one]
+    assert not [one for one in set(unreached) if "Word" in one]
 
 
 def test_plots_say_in_words_what_they_show(driven):

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from PySide6.QtCore import QPoint, QPointF, Qt
@@ -197,7 +199,8 @@ def test_going_to_a_finding_chooses_its_rows_or_opens_the_setting_it_is_about(we
     well.settle()
     assert well.work.stage == states.DRIFT
     assert set(well.work.shown.stations_of("visit", well.work.selection.rows)) == set(single.stations)
-    well.work.go_to_finding(findings["drift_walk_untested"])
+    about_recipe = replace(single, place="recipe, depth_sd", stations=(), rows=())
+    well.work.go_to_finding(about_recipe)
     assert "recipe" in well.work.tray.open_pages
 
 

@@ -11,6 +11,7 @@ from dataclasses import dataclass, field, replace
 from functools import cached_property
 
 import numpy as np
+from numpy.typing import NDArray
 
 from plumbwell.survey.column import Array, Index
 
@@ -81,7 +82,7 @@ class Layout:
             place = np.where(both, corner + (first - self.banded) * c + (second - self.banded), place)
         return place
 
-    def once(self, first: Index, second: Index) -> Index:
+    def once(self, first: Index, second: Index) -> NDArray[np.bool_]:
         """True for the ordered pairs that are to be added, so that nothing is added twice: see `mirrored`."""
         return first >= second
 

@@ -8,8 +8,9 @@ from __future__ import annotations
 
 import numpy as np
 
-from plumbwell.reduction.design import NO_PRIORS, Design, Priors, of_rows
+from plumbwell.reduction.design import Design, of_rows
 from plumbwell.reduction.drift_basis import DriftBasis
+from plumbwell.reduction.priors import NO_PRIORS, Priors
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index
 

@@ -14,6 +14,7 @@ import numpy as np
 
 from plumbwell.reduction.banded import ONE_BLOCK, Layout, layout, summed
 from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
+from plumbwell.reduction.priors import NO_PRIORS, Priors
 from plumbwell.reduction.visits import Visits
 from plumbwell.reduction.walk_modes import mode_sds, walk_modes
 from plumbwell.survey.column import Array, Index
@@ -23,61 +24,6 @@ NEAR = 12
 
 MOST_RUNS = 30
 """Runs of a station beyond which its gravity stands in the border: eliminated it would join them all."""
-
-
-@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
-class Priors:
-    """Pseudo-observations of border unknowns: sum of factor times unknown = value +- sd, (m,) of them.
-
-    Parameters
-    ----------
-    name : tuple of str
-    value, sd : (m,) arrays
-    row, unknown, factor : (e,) arrays
-        The factors in coordinate form.
-    run : (m,) int array
-        Run whose mean drift rate a prior holds; -1 for other priors.
-    """
-
-    name: tuple[str, ...]
-    value: Array
-    sd: Array
-    row: Index
-    unknown: Index
-    factor: Array
-    run: Index
-
-    def __len__(self) -> int:
-        return len(self.name)
-
-    def joined(self, other: Priors) -> Priors:
-        """These and others."""
-        if not len(other):
-            return self
-        return Priors(
-            name=self.name + other.name,
-            value=np.concatenate([self.value, other.value]),
-            sd=np.concatenate([self.sd, other.sd]),
-            row=np.concatenate([self.row, other.row + len(self)]),
-            unknown=np.concatenate([self.unknown, other.unknown]),
-            factor=np.concatenate([self.factor, other.factor]),
-            run=np.concatenate([self.run, other.run]),
-        )
-
-    def of(self, unknown: Array) -> Array:
-        """What each prior observes when the unknowns have these values, (m,)."""
-        return summed(self.row, self.factor * unknown[self.unknown], len(self))
-
-
-NO_PRIORS = Priors(
-    name=(),
-    value=np.zeros(0),
-    sd=np.zeros(0),
-    row=np.zeros(0, dtype=np.intp),
-    unknown=np.zeros(0, dtype=np.intp),
-    factor=np.zeros(0),
-    run=np.zeros(0, dtype=np.intp),
-)
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)

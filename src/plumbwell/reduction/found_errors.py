@@ -80,6 +80,7 @@ def is_told(size: float, sd: float, freedom: int, estimate: bool, *, gaps: int) 
 
 
 def critical_ratio(freedom: float, tests: int) -> float:
+    """Ratio to its sd that the largest of so many clean ones exceeds with a chance of 1 %, at least 3.29."""
     from scipy.special import ndtri, stdtrit
 
     tail = -np.expm1(np.log1p(-CHANCE) / tests) / 2.0
@@ -87,6 +88,7 @@ def critical_ratio(freedom: float, tests: int) -> float:
 
 
 def chance_of(size: float, sd: float, freedom: int, estimate: bool) -> float:
+    """Chance of a jump so large where there is none: of F with 1 and `freedom`, or normal where noise is given."""
     from scipy.special import fdtrc, ndtr
 
     if not sd > 0.0:
@@ -153,6 +155,7 @@ def _visit_errors(fit: Adjustment) -> tuple[Array, Array]:
 
 
 def proposed_tare(fit: Adjustment, tare: Tare, number: int, count: int) -> ProposedTare:
+    """A jump that the search has added to the basis, the `number`th of `count`, as it is proposed."""
     visits, basis = fit.visits, fit.basis
     run = int(basis.tare_run[len(basis.tares) - count + number])
     size, sd = size_of(fit, tare, count, number)

@@ -19,7 +19,7 @@ from plumbwell.desk.tray.recipe_editors import GradientEditor, editor_of, unit_t
 from plumbwell.plates.lettering import draw_text, text_width, wrapped
 from plumbwell.plates.painting import draw_mark, painting
 from plumbwell.plates.theme import Theme
-from plumbwell.survey.recipe import DEFAULT, KEYS, as_written, expected_of, from_written, is_unavailable
+from plumbwell.survey.recipe import DEFAULT, KEYS, as_written, expected_of, from_written
 
 ROW, SMALL_LINE = 28, 19
 MARK_X, LABEL_X, GAP = 5, 14, 8
@@ -50,11 +50,8 @@ def what_of(key: str) -> str:
     """Return what a key does, its default and its source, in sentences."""
     one = KEYS[key]
     what = unit_text(one.what[:1].upper() + one.what[1:])
-    only = (
-        sum(1 for word in one.words if not is_unavailable(key, word)) == 1 and one.factor is None and key != "free_air"
-    )
     default = written_with_unit(key, as_written(DEFAULT)[key])
-    return f"{what}. {'This version has no other' if only else f'Default {default}'}. Source: {one.source}."
+    return f"{what}. Default {default}. Source: {one.source}."
 
 
 def refusal_of(key: str) -> str:
