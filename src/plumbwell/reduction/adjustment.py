@@ -10,6 +10,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from plumbwell.reduction.broken_visits import contrasts, unbroken_stretches
 from plumbwell.reduction.candidates import more_drift
@@ -249,13 +250,15 @@ def adjusted(
             solved[chosen] = (seat, _solved(one, 1.0 / (noise.variance + seat.variance), mean, ties))
         return solved[chosen]
 
-    def compare(chosen: tuple[int, ...], run: int, higher: int) -> Comparison | None:
-        above = fit((*chosen[:run], higher, *chosen[run + 1 :]))
+    def compare(lower: tuple[int, ...], higher: tuple[int, ...]) -> Comparison | None:
+        above = fit(higher)
         if above is None:
             return None
         seat, solution = above
-        added = np.array([one.kind == "drift" and one.power > chosen[one.run] for one in solution.design.unknowns])
-        return Comparison(low=_without(solution, added), high=solution.sum_of_squares(), freedom=seat.freedom)
+        added = np.array([one.kind == "drift" and one.power > lower[one.run] for one in solution.design.unknowns])
+        return Comparison(
+            low=squares_without(solution, added), high=solution.sum_of_squares(), freedom=seat.freedom
+        )
 
     tests: tuple[OrderTest, ...] = ()
     if automatic and len(visits) - rank.rank > MANY_FREEDOM:
@@ -375,12 +378,22 @@ def _designed(
     return made[key]  # type: ignore[no-any-return]
 
 
-def _without(above: Solution, left_out: Array) -> float:
+def squares_without(above: Solution, left_out: NDArray[np.bool_]) -> float:
     """Weighted sum of squares of visit residuals when some border unknowns are held at 0, weights kept.
 
+    Parameters
+    ----------
+    above : Solution
+    left_out : (q,) bool array
+        None of them: what the solution itself leaves.
+
+    Notes
+    -----
     The solution moves by C e (e^T C e)^-1 x_e, e the unknowns left out, C the covariance, x their estimates.
     """
     gone = np.flatnonzero(left_out)
+    if not gone.size:
+        return above.sum_of_squares()
     picked = np.zeros((above.design.size, len(gone)))
     picked[gone, np.arange(len(gone))] = 1.0
     columns = above.factor.solve(picked)
