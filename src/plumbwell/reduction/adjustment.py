@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 from plumbwell.reduction.broken_visits import contrasts, unbroken_stretches
 from plumbwell.reduction.candidates import more_drift
 from plumbwell.reduction.checked import Checked, checked, visit_means
-from plumbwell.reduction.design import Design, design, drift_of, walk_priors, with_priors
+from plumbwell.reduction.design import Design, design, drift_of, matrix_of, walk_priors, with_priors
 from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
 from plumbwell.reduction.drift_order import Comparison, OrderTest, chosen_orders, raised_together
 from plumbwell.reduction.network import NO_RANK, Rank, Solution, TieRows, rank_beside_walk, rank_of_visits, solve
@@ -284,7 +284,7 @@ def adjusted(
             one, _ = designed(orders, weighted, modes)
             along = rank_beside_walk(plain_rank, plain, one)
             prior = walk_priors(basis, one, strength)
-            extra = with_priors(replace(one, prior_matrix=np.zeros_like(one.prior_matrix)), prior).prior_matrix
+            extra = matrix_of(one, prior)
             found = seated(one, along, extra)
             gained = np.nan
             if found.freedom > 0:
@@ -379,13 +379,13 @@ def _designed(
 
 
 def squares_without(above: Solution, left_out: NDArray[np.bool_]) -> float:
-    """Weighted sum of squares of visit residuals when some border unknowns are held at 0, weights kept.
+    """Weighted sum of squares of visit residuals when some border unknowns (q,) are held at 0, weights kept."""
+    residual, _ = held_at_nought(above, left_out)
+    return float(above.weight @ residual**2)
 
-    Parameters
-    ----------
-    above : Solution
-    left_out : (q,) bool array
-        None of them: what the solution itself leaves.
+
+def held_at_nought(above: Solution, left_out: NDArray[np.bool_]) -> tuple[Array, Array]:
+    """Visit residuals (v,) and border unknowns (q,) when some unknowns (q,) are held at 0, weights kept.
 
     Notes
     -----
@@ -393,13 +393,12 @@ def squares_without(above: Solution, left_out: NDArray[np.bool_]) -> float:
     """
     gone = np.flatnonzero(left_out)
     if not gone.size:
-        return above.sum_of_squares()
+        return above.residual[:, 0], above.unknown[:, 0]
     picked = np.zeros((above.design.size, len(gone)))
     picked[gone, np.arange(len(gone))] = 1.0
     columns = above.factor.solve(picked)
     moved = columns @ np.linalg.solve(columns[gone], above.unknown[gone, 0])
-    residual = above.residual[:, 0] + above.fitted(moved)
-    return float(above.weight @ residual**2)
+    return above.residual[:, 0] + above.fitted(moved), above.unknown[:, 0] - moved
 
 
 def _instant(visits: Visits, run: int) -> bool:

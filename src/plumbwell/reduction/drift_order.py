@@ -11,6 +11,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 
+from plumbwell.reduction.chance import f_chance
 from plumbwell.reduction.drift_basis import HIGHEST_ORDER
 
 CHANCE = 0.01
@@ -23,9 +24,10 @@ EVERY_RUN = -1
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class OrderTest:
-    """One F test: run code (`EVERY_RUN`: all automatic runs that stood at the lower order were raised together), the two
-    orders, F, its degrees of freedom, the chance p, and whether the higher was taken (of all together: whether what came
-    of it stayed)."""
+    """One F test: run code, the two orders, F, its degrees of freedom, the chance p, and whether the higher was taken.
+
+    Run `EVERY_RUN`: all automatic runs that stood at the lower order, raised together; taken when what came of it stayed.
+    """
 
     run: int
     lower: int
@@ -46,12 +48,10 @@ class Comparison:
 
     def test(self, run: int, lower: int, higher: int, steps: int) -> OrderTest | None:
         """The F test of so many terms more; None where too few degrees of freedom are left."""
-        from scipy.special import fdtrc
-
         if self.freedom < LEAST_FREEDOM or self.high <= 0.0:
             return None
         f = max(self.low - self.high, 0.0) / steps / (self.high / self.freedom)
-        p = float(fdtrc(steps, self.freedom, f))
+        p = f_chance(f, steps=steps, freedom=self.freedom)
         return OrderTest(
             run=run, lower=lower, higher=higher, f=f, freedom=(steps, self.freedom), p=p, taken=p < CHANCE
         )
@@ -185,8 +185,6 @@ def raised_together(
     All runs are raised at once, step by step as one alone would be. With some hundred degrees of freedom the weights
     of one order serve the other.
     """
-    from scipy.special import fdtrc
-
     orders, tests, waiting = list(start), [], list(automatic)
     while waiting:
         freedom, left, gains = compare(tuple(orders))
@@ -199,7 +197,7 @@ def raised_together(
                 if gain <= 0.0 or steps < 1 or higher > HIGHEST_ORDER:
                     continue
                 f = gain / steps / ((left - gain) / (freedom - steps))
-                p = float(fdtrc(steps, freedom - steps, f))
+                p = f_chance(f, steps=steps, freedom=freedom - steps)
                 tests.append(
                     OrderTest(
                         run=run, lower=order, higher=higher, f=f, freedom=(steps, freedom - steps), p=p,
