@@ -26,7 +26,7 @@ EVERY_RUN = -1
 class OrderTest:
     """One F test: run code, the two orders, F, its degrees of freedom, the chance p, and whether the higher was taken.
 
-    Run `EVERY_RUN`: all automatic runs that stood at the lower order, raised together; taken when what came of it stayed.
+    Run `EVERY_RUN`: all automatic runs that stood at the lower order together; taken when what came of it stayed.
     """
 
     run: int

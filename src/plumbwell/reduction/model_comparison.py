@@ -3,8 +3,9 @@
 The restricted likelihood is that of what is left when the fixed unknowns are taken out. Models with different fixed
 unknowns leave different things, in different numbers, and their restricted likelihoods are densities in different
 spaces: a change of the unit of gravity alone would change their difference. What all models here share are the
-gravity of stations and the biases of runs. Freed of these alone, the visits are the same data to every model, and the
-drift and the tares are then parameters of their mean.
+gravity of stations and the biases of runs. Freed of these alone, the visits are the same data to every model, and drift
+and tares are parameters of their mean, to be integrated over a prior that is the same whatever noise or walk goes with
+them.
 """
 
 from __future__ import annotations
@@ -16,9 +17,9 @@ from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment, held_at_nought
 from plumbwell.reduction.chance import f_chance
-from plumbwell.reduction.design import matrix_of, walk_priors
+from plumbwell.reduction.design import design, walk_priors
 from plumbwell.reduction.drift_basis import DriftUnknown
-from plumbwell.reduction.network import Solution
+from plumbwell.reduction.network import Solution, rank_of_visits
 from plumbwell.reduction.restricted_likelihood import visits_alone
 from plumbwell.survey.column import Array
 
@@ -74,47 +75,66 @@ def same_levels(one: Adjustment, other: Adjustment) -> bool:
     )
 
 
-def levels_likelihood(fit: Adjustment) -> float:
+def comparable_likelihood(fit: Adjustment, reference: Array) -> float:
     """Logarithm of the likelihood of the visits freed of stations and biases alone; NaN without degrees of freedom.
 
     Up to a constant that all models with the same stations and biases share (see `same_levels`): their differences are
-    logarithms of likelihood ratios, whatever their drift orders, tares and walks.
+    logarithms of likelihood ratios, whatever their drift orders, tares and walks. Where orders and tares are the same
+    they are those of the restricted likelihoods.
+
+    Parameters
+    ----------
+    fit : Adjustment
+    reference : (v,) array
+        Variances of the visits by which the prior of drift and tares is scaled, the same for all that is compared.
 
     Notes
     -----
-    With X0 the columns of stations and biases and X1 those of drift and tares, the whole X = (X0, X1),
+    With X0 the columns of stations and biases, X1 those of drift and tares, b, and X = (X0, X1), the restricted
+    likelihood of X is that of X0 integrated over b with a density of 1 a unit of b (Harville 1974). Units of one model
+    are not those of another. A density of |2 pi C|^-1/2, C the covariance of b by the reference variances without a
+    walk, has no units and asks nothing of the model's own noise:
 
-        -1/2 (log|V| + log|X0^T V^-1 X0| + y^T P y),    P the projection by the whole X,
+        -1/2 (log|V| + log|X^T V^-1 X| + y^T P y) - 1/2 log|C| .
 
-    is the restricted likelihood of X0 alone at its greatest over the parameters of X1. As |X^T V^-1 X| =
-    |X0^T V^-1 X0| / |C1|, C1 the covariance of the drift and the tares by the visits alone, it is the restricted
-    likelihood of the whole X less 1/2 log|C1| (Harville 1977). Noise is that in force, estimated with the whole X.
-    Unknowns that the visits leave open are pinned on both sides, and their pins fall out.
+    A model whose noise is the reference thus has its likelihood at the best b. A prior that knows as much of b as one
+    of n readings does has the covariance n C, whose root of the determinant is n^(q/2) times as large: that is BIC (Kass
+    & Wasserman 1995). Unknowns that the visits leave open are pinned in both terms, and their pins fall out.
     """
     if not np.isfinite(fit.likelihood):
         return np.nan
-    variance = fit.noise.variance + fit.reseating.variance
-    typical = float(np.median(variance))
-    walk = None
+    one, rank = fit.design, fit.rank
     if fit.walk is not None:
-        walk = typical * matrix_of(fit.design, walk_priors(fit.basis, fit.design, fit.walk.strength))
-    solution = visits_alone(fit.design, typical / variance, fit.visit_mean, fit.rank, walk)
-    own = list(_numbers(fit).values())
-    both = np.array([*own, *fit.rank.held.tolist()], dtype=np.intp)
+        one = design(
+            fit.basis, fit.visits, fit.noise.weight, n_stations=one.n_stations, orders=fit.orders, dropped=one.dropped,
+            lost=one.lost,
+        )
+        rank = rank_of_visits(one)
+    held = rank.held.tolist()
+    own = [
+        number
+        for number, what in enumerate(one.unknowns)
+        if what.kind in ("drift", "tare") and number not in held
+    ]
+    both = np.array([*own, *held], dtype=np.intp)
     if not both.size:
         return fit.likelihood
-    picked = np.zeros((fit.design.size, len(both)))
+    typical = float(np.median(reference))
+    solution = visits_alone(one, typical / reference, fit.visit_mean, rank, None)
+    picked = np.zeros((one.size, len(both)))
     picked[both, np.arange(len(both))] = 1.0
     covariance = solution.factor.solve(picked)[both]
     return fit.likelihood - 0.5 * (float(np.linalg.slogdet(covariance)[1]) + len(own) * float(np.log(typical)))
 
 
-def information_criterion(fit: Adjustment, *, variances: int) -> float:
-    """BIC: -2 `levels_likelihood` + q ln(n), lower is better; it compares what `same_levels` compares.
+def information_criterion(fit: Adjustment, likelihood: float, *, variances: int) -> float:
+    """BIC: -2 `comparable_likelihood` + q ln(n), lower is better; it compares what that compares.
 
     Parameters
     ----------
     fit : Adjustment
+    likelihood : float
+        Logarithm of its comparable likelihood.
     variances : int
         How many parameters of the noise, walk included, are estimated. q counts the drift and the tares besides.
 
@@ -124,7 +144,7 @@ def information_criterion(fit: Adjustment, *, variances: int) -> float:
     """
     terms = drift_terms(fit)
     freedom = fit.reseating.freedom + terms
-    return -2.0 * levels_likelihood(fit) + (terms + variances) * float(np.log(max(freedom, 1)))
+    return -2.0 * likelihood + (terms + variances) * float(np.log(max(freedom, 1)))
 
 
 def _walk_squares(fit: Adjustment, unknown: Array) -> float:

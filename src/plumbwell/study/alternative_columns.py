@@ -88,10 +88,10 @@ COLUMNS = (
     ),
     _number(
         "gain", None,
-        "of the log likelihood of the visits freed of stations and biases alone, over the one in force; comparable",
+        "of the log likelihood of the visits freed of stations and biases alone, over the one in force: compares all rows",
         "gain",
     ),
-    _number("bic", None, "information criterion of that likelihood; lower is better; comparable", "bic"),
+    _number("bic", None, "information criterion of that likelihood, lower is better: compares all rows", "bic"),
     _number("f", None, "F of the change where one holds the other", "f"),
     _of_test("f_steps", "degrees of freedom of the change", "f_steps"),
     _of_test("f_dof", "degrees of freedom of the larger of both", "f_freedom"),

@@ -14,8 +14,8 @@ import numpy as np
 from plumbwell.reduction.chance import chi_square_chance
 from plumbwell.reduction.model_comparison import (
     change_test,
+    comparable_likelihood,
     information_criterion,
-    levels_likelihood,
     same_levels,
     squares,
 )
@@ -77,11 +77,12 @@ class Alternative:
         and off, say. See `gain` for all others.
     gain : float
         Of the logarithm of the likelihood of the visits freed of stations and biases alone, over the adjustment in
-        force (see `reduction.model_comparison`). It compares all rows that have it: whatever their orders, tares and
-        walks. NaN where readings are used that the one in force leaves out, or the other way round, where readings
-        have robust weights, or stations hang together in another way. More terms gain by chance alone: how much that
-        may be, `bic` and `f_chance` say. The noise of each row is that of its restricted likelihood, so that terms that
-        explain nothing may lose a little.
+        force (see `reduction.model_comparison.comparable_likelihood`). It compares all rows that have it with each
+        other, whatever their orders, tares and walks; where orders and tares are the same it is the difference of
+        `likelihood`. NaN where readings are used that the one in force leaves out, or the other way round, where
+        readings have robust weights, or stations hang together in another way. More terms gain by chance alone: how
+        much that may be, `bic` and `f_chance` say. The noise of each row is that of its restricted likelihood, so that
+        terms that explain nothing may lose a little.
     bic : float
         -2 likelihood (that of `gain`) + q ln(n), q the powers of drift, tares and estimated variances, n the degrees of
         freedom of the visits freed of stations and biases. Lower is better; it compares what `gain` compares.
@@ -92,7 +93,7 @@ class Alternative:
     largest_change : float
         Largest change of any interval density from the one in force, kg/m3, with its sign.
     largest_change_at : str
-        That interval.
+        That interval; empty where none moves.
     largest_change_sds : float
         The same over the interval's sd in force.
     most_sds : float
@@ -222,10 +223,12 @@ def _row(change: Change, results: Results, base: Results) -> Alternative:
     gain = bic = UNKNOWN
     test = None
     if comparable:
-        gain = 0.0 if results is base else levels_likelihood(fit) - levels_likelihood(first)
+        reference = first.noise.variance + first.reseating.variance
+        likelihood = comparable_likelihood(fit, reference)
+        gain = likelihood - comparable_likelihood(first, reference)
         estimated = results.recipe.noise == "estimate" and freedom > 0
         walking = fit.walk is not None and isinstance(results.recipe.drift_walk, str)
-        bic = information_criterion(fit, variances=int(estimated) + int(walking))
+        bic = information_criterion(fit, likelihood, variances=int(estimated) + int(walking))
         test = change_test(fit, first)
     largest = _changes(results, base)
     return Alternative(
@@ -244,7 +247,7 @@ def _row(change: Change, results: Results, base: Results) -> Alternative:
         reading_sd=float(np.median(fit.noise.sd)),
         walk=0.0 if fit.walk is None else fit.walk.strength,
         likelihood=fit.likelihood,
-        gain=gain if np.isfinite(first.likelihood) else UNKNOWN,
+        gain=gain,
         bic=bic,
         f=UNKNOWN if test is None else test.f,
         f_steps=0 if test is None else test.steps,
@@ -287,7 +290,7 @@ def _changes(results: Results, base: Results) -> _Changes:
     told = np.abs(ratio[np.isfinite(ratio)])
     return _Changes(
         size=float(moved[worst]),
-        at=theirs.label(rows[worst][1]),
+        at=theirs.label(rows[worst][1]) if moved[worst] else "",
         sds=float(ratio[worst]),
         most_sds=float(told.max()) if told.size else UNKNOWN,
         rms=float(np.sqrt(np.mean(moved[known] ** 2))),

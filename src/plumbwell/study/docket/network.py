@@ -200,8 +200,8 @@ def order_chosen(results: Results) -> Iterator[Finding]:
                 code="drift_order_chosen",
                 severity="note",
                 place=f"{counted(steps, 'run')} together",
-                text=f"The drifts of {counted(steps, 'run')} are bent: raised together to order {test.higher}, over order "
-                f"{test.lower} {told} Runs whose own bend is no more than chance were lowered again.",
+                text=f"The drifts of {counted(steps, 'run')}, raised together to order {test.higher}, are bent: over "
+                f"order {test.lower} {told} Runs whose own bend is no more than chance were lowered again.",
                 mend="Nothing; or set drift_order, if the bend stands for something else.",
             )
             continue
