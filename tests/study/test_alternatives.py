@@ -149,7 +149,7 @@ def test_a_listed_tare_left_out_loses_what_it_gains():
 
 
 def test_found_tares_in_force_are_left_out_one_by_one():
-    case = simulated(replace(QUIET, tares=2), 4, recipe=replace(EXACT_DEPTHS, tares="proposed")).case
+    case = simulated(replace(QUIET, tares=2), 2, recipe=replace(EXACT_DEPTHS, tares="proposed")).case
     base = reduce(case)
     assert base.network.proposed_applied and len(base.network.proposed) == 2
     rows = by_key(alternatives(case, results=base))
