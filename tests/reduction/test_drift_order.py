@@ -198,10 +198,13 @@ def squares_of(truth, freedom):
 
 
 def test_runs_whose_own_bend_is_chance_are_lowered_again():
-    orders, tests = chosen_orders((1, 1, 1), (0, 1, 2), squares_of((30.0, 0.5, 25.0), 40))
-    assert orders == (2, 1, 2)
-    assert tests[0].run == EVERY_RUN and tests[0].freedom == (3, 34)
-    assert tests[0].f == pytest.approx(55.5 / 3.0, rel=1e-12)
+    # Alone, 12/(59.5/35) = 7.1 with 1 and 35 degrees of freedom has p = 0.012; the rest is noise to it.
+    squares = squares_of((12.0, 0.5, 12.0, 12.0), 40)
+    assert not squares((1, 1, 1, 1), (2, 1, 1, 1)).test(0, 1, 2, 1).taken
+    orders, tests = chosen_orders((1, 1, 1, 1), (0, 1, 2, 3), squares)
+    assert orders == (2, 1, 2, 2)
+    assert tests[0].run == EVERY_RUN and tests[0].freedom == (4, 32)
+    assert tests[0].f == pytest.approx(36.5 / 4.0, rel=1e-12)
 
 
 def test_a_run_that_can_hold_no_parabola_does_not_keep_the_others_from_it():

@@ -1,4 +1,4 @@
-"""Likelihoods and F of different drifts of the same visits, against dense matrices that share nothing with the network."""
+"""Likelihoods and F of different drifts of the same visits, against dense matrices that know of no network."""
 
 from dataclasses import replace
 
@@ -117,7 +117,7 @@ def test_the_likelihood_of_a_walk_is_that_of_its_whole_covariance():
 
 
 def left_out(fit):
-    """Largest share of a visit's variance, in any combination of visits, that the modes which stand for a walk leave out.
+    """Largest share of a visit's variance, in any mix of visits, that the modes which stand for a walk leave out.
 
     They leave less than a fiftieth of its sd at any visit: the trace bounds the largest eigenvalue.
     """
@@ -148,6 +148,23 @@ def test_the_restricted_likelihood_compares_a_walk_on_and_off():
     )
     expected = restricted(on, on.walk.strength) - restricted(off, 0.0)
     assert on.likelihood - off.likelihood == pytest.approx(expected, abs=0.5 * left_out(on) * (1.0 + squares(on)))
+
+
+def test_what_the_visits_leave_open_counts_on_neither_side():
+    """A second run past stations of its own, each read once: its drift is the prior's, whatever the first run does."""
+    rows = loop(np.random.default_rng(5), "ABCADEAFCAEBA", depth=DEPTH, gravity=GRAVITY, counts=(2,))
+    below = {name: 400.0 + 60.0 * number for number, name in enumerate("GHIJ")}
+    gravity = {name: 8e-7 * depth for name, depth in below.items()}
+    rows += loop(np.random.default_rng(6), "GHIJ", depth=below, gravity=gravity, run="2", start=86400.0, counts=(2,))
+    ours, theirs = [], []
+    for order in (1, 2, 3):
+        runs = (Run(name="1", drift_order=order), Run(name="2", drift_order=1))
+        fit = reduce(made_case(rows, instruments=(METER,), drift_walk="off", runs=runs)).network.adjustment
+        assert fit.rank.lacking == 1 and drift_terms(fit) == order
+        reference = np.full(len(fit.visits), UGAL**2)
+        ours.append(comparable_likelihood(fit, reference))
+        theirs.append(dense(fit, reference, orders=(order, 0))[0])
+    assert np.subtract(ours, ours[0]) == pytest.approx(np.subtract(theirs, theirs[0]), abs=1e-6)
 
 
 def test_f_of_a_change_is_that_of_the_sums_of_squares():

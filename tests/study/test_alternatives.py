@@ -1,4 +1,4 @@
-"""What else could have been done: each row against the results in force and against a folder that is changed by hand."""
+"""What else could have been done: each row against the results in force and against a folder changed by hand."""
 
 import re
 import shutil

@@ -98,8 +98,8 @@ def comparable_likelihood(fit: Adjustment, reference: Array) -> float:
         -1/2 (log|V| + log|X^T V^-1 X| + y^T P y) - 1/2 log|C| .
 
     A model whose noise is the reference thus has its likelihood at the best b. A prior that knows as much of b as one
-    of n readings does has the covariance n C, whose root of the determinant is n^(q/2) times as large: that is BIC (Kass
-    & Wasserman 1995). Unknowns that the visits leave open are pinned in both terms, and their pins fall out.
+    of n readings does has the covariance n C, whose root of the determinant is n^(q/2) times as large: that is BIC
+    (Kass & Wasserman 1995). Unknowns that the visits leave open are pinned in both terms, and their pins fall out.
     """
     if not np.isfinite(fit.likelihood):
         return np.nan

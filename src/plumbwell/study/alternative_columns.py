@@ -88,7 +88,7 @@ COLUMNS = (
     ),
     _number(
         "gain", None,
-        "of the log likelihood of the visits freed of stations and biases alone, over the one in force: compares all rows",
+        "of the log likelihood of visits freed of stations and biases alone, over the one in force: compares all rows",
         "gain",
     ),
     _number("bic", None, "information criterion of that likelihood, lower is better: compares all rows", "bic"),
