@@ -83,7 +83,7 @@ def _toml(value: object) -> str:
     return json.dumps(value, ensure_ascii=False)
 
 
-def run_names(base: Results) -> tuple[str, ...]:
+def _run_names(base: Results) -> tuple[str, ...]:
     return base.survey.readings.run.names
 
 
@@ -93,7 +93,7 @@ def _set(case: Case, key: str, value: str | int) -> SetRecipe:
 
 def single_orders(case: Case, base: Results) -> Iterator[Change]:
     """Each run's order one lower and one higher, from 1 to 3; a run of a single time has no drift."""
-    visits, orders, names = base.network.visits, base.network.adjustment.orders, run_names(base)
+    visits, orders, names = base.network.visits, base.network.adjustment.orders, _run_names(base)
     for run in visits.run_order.tolist():
         if not visits.run_length[run] > 0.0:
             continue
@@ -130,14 +130,14 @@ def _stated_orders(base: Results) -> dict[str, int | str]:
 
 def _automatic(case: Case, base: Results) -> set[int]:
     stated, of_recipe = _stated_orders(base), case.chosen.drift_order
-    return {run for run, name in enumerate(run_names(base)) if stated.get(name, of_recipe) == AUTOMATIC}
+    return {run for run, name in enumerate(_run_names(base)) if stated.get(name, of_recipe) == AUTOMATIC}
 
 
 def _of_orders(
     case: Case, base: Results, orders: tuple[int, ...], *, key: str, sentence: str, run: str = ""
 ) -> Change:
     """The case with all orders written down, and the walk held on or off as it is in force."""
-    fit, names, recipe = base.network.adjustment, run_names(base), case.chosen
+    fit, names, recipe = base.network.adjustment, _run_names(base), case.chosen
     raised = tuple(code for code, order in enumerate(orders) if order > fit.orders[code])
     walk: str | float = recipe.drift_walk
     if walk == "auto":
@@ -164,7 +164,7 @@ def _order_acts(
     visits, stated, fit = base.network.visits, _stated_orders(base), base.network.adjustment
     free, own = set(), True
     for run in visits.run_order.tolist():
-        name = run_names(base)[run]
+        name = _run_names(base)[run]
         if name not in stated:
             if visits.run_length[run] > 0.0:
                 free.add(orders[run])
@@ -179,6 +179,7 @@ def _order_acts(
 
 
 def walks(case: Case, base: Results) -> Iterator[Change]:
+    """The walk off where it is on, on where it is off."""
     fit, asked = base.network.adjustment, case.chosen.drift_walk
     if fit.walk is not None:
         yield Change(key="walk_off", sentence="No random walk of the drift.", acts=(_set(case, "drift_walk", "off"),))
@@ -190,7 +191,8 @@ def walks(case: Case, base: Results) -> Iterator[Change]:
 
 
 def tares(case: Case, base: Results) -> Iterator[Change]:
-    names, network, recipe_walk = run_names(base), base.network, case.chosen.drift_walk
+    """Tares left out one by one and all, proposed ones taken in one by one and all, a walk in their place and beside."""
+    names, network, recipe_walk = _run_names(base), base.network, case.chosen.drift_walk
     laid = with_uses(case.survey, case.overlay)
     found = [AddTare(run=names[one.run], time=one.time) for one in applicable(network.judgement, base.recipe)]
     applied = found if network.proposed_applied else []
@@ -238,6 +240,7 @@ def _tare_change(which: str, tare: Tare | AddTare, acts: tuple[Act, ...]) -> Cha
 
 
 def outliers(case: Case, base: Results) -> Iterator[Change]:
+    """What else may happen to readings that do not fit, where some are named."""
     rows = len(base.network.outlier_rows)
     if not rows:
         return
