@@ -191,7 +191,7 @@ def walks(case: Case, base: Results) -> Iterator[Change]:
 
 
 def tares(case: Case, base: Results) -> Iterator[Change]:
-    """Tares left out one by one and all, proposed ones taken in one by one and all, a walk in their place and beside."""
+    """Tares left out or taken in, one by one and all together; a walk in their place, and beside those proposed."""
     names, network, recipe_walk = _run_names(base), base.network, case.chosen.drift_walk
     laid = with_uses(case.survey, case.overlay)
     found = [AddTare(run=names[one.run], time=one.time) for one in applicable(network.judgement, base.recipe)]
