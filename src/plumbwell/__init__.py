@@ -16,7 +16,8 @@ __version__ = "0.1.0"
 TYPE_CHECKING = False
 if TYPE_CHECKING:
     from plumbwell.files.folder import read_survey
-    from plumbwell.files.frames import frame, frames
+    from plumbwell.files.frames import alternatives_frame, frame, frames
+    from plumbwell.study.alternatives import alternatives
     from plumbwell.study.case import Case
     from plumbwell.study.reduce import reduce
     from plumbwell.study.results import Results
@@ -30,6 +31,8 @@ __all__ = [
     "Results",
     "Survey",
     "__version__",
+    "alternatives",
+    "alternatives_frame",
     "frame",
     "frames",
     "read_survey",
@@ -42,6 +45,8 @@ _HOME_OF = {
     "PlumbwellError": "plumbwell.survey.errors",
     "Results": "plumbwell.study.results",
     "Survey": "plumbwell.survey.survey",
+    "alternatives": "plumbwell.study.alternatives",
+    "alternatives_frame": "plumbwell.files.frames",
     "frame": "plumbwell.files.frames",
     "frames": "plumbwell.files.frames",
     "read_survey": "plumbwell.files.folder",

@@ -59,6 +59,12 @@ def parser() -> argparse.ArgumentParser:
     )
     reduce.add_argument("folder", metavar="FOLDER", help="the survey folder")
     reduce.add_argument("--out", metavar="DIR", required=True, help="folder for the outputs, made if missing")
+    reduce.add_argument(
+        "--alternatives",
+        action="store_true",
+        help="write alternatives.csv too: what else could have been done with drift, tares and noise, each with its "
+        "likelihood, tests, and how the densities would move; takes a reduction for each",
+    )
     reduce.add_argument("--quiet", action="store_true", help="print errors only")
     reduce.set_defaults(act=_reduce)
     check = commands.add_parser(
@@ -213,7 +219,9 @@ def _reduce(arguments: argparse.Namespace, stops: Stops) -> int:
         from plumbwell.files.report_lines import docket_lines
         from plumbwell.files.terminal import ProgressLine, say
         from plumbwell.plates.outputs import write_outputs
+        from plumbwell.study.alternatives import alternatives
         from plumbwell.study.case import Case
+        from plumbwell.study.kept import Kept
         from plumbwell.study.reduce import reduce
 
     target = check_target(Path(arguments.out), survey=Path(arguments.folder))
@@ -221,9 +229,12 @@ def _reduce(arguments: argparse.Namespace, stops: Stops) -> int:
     try:
         line.tell(0.0, "reading the files")
         survey = read_survey(arguments.folder)
-        results = reduce(Case(survey=survey), progress=line.tell)
+        case, kept = Case(survey=survey), Kept()
+        results = reduce(case, kept=kept, progress=line.tell)
+        others = alternatives(case, results=results, kept=kept, progress=line.tell) if arguments.alternatives else ()
         written = write_outputs(
-            results, target, progress=lambda _, what: line.tell(1.0, what), before_moving=stops.raise_noted
+            results, target, alternatives=others, progress=lambda _, what: line.tell(1.0, what),
+            before_moving=stops.raise_noted,
         )
     finally:
         line.clear()

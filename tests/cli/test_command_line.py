@@ -1,5 +1,6 @@
 """The command line as a person meets it: what it prints, what it writes, which status it ends with."""
 
+import csv
 import errno
 import hashlib
 import json
@@ -115,6 +116,21 @@ def test_a_table_that_this_run_does_not_have_is_gone_and_others_stay(plain_figur
     assert main(["reduce", str(survey), "--out", str(out)]) == 0
     assert set(files_of(out)) == (TABLES | FIGURES | {"my notes.txt", "report.pdf"}) - {"layers.csv"}
     assert "layers.csv is not written" in " ".join(capsys.readouterr().out.split())
+
+
+def test_alternatives_are_written_where_they_are_asked_for(plain_figures, tmp_path, capsys):
+    out, rows = tmp_path / "out", []
+    assert main(["reduce", str(WELL), "--out", str(out), "--alternatives", "--quiet"]) == 0
+    assert set(files_of(out)) == TABLES | FIGURES | {"alternatives.csv"}
+    assert "alternatives.csv" in json.loads((out / "summary.json").read_text("utf-8"))["outputs"]
+    with open(out / "alternatives.csv", newline="", encoding="utf-8") as file:
+        rows = list(csv.DictReader(file))
+    assert rows[0]["key"] == "in_force" and rows[0]["gain"] == "0" and rows[0]["f"] == ""
+    assert [row["tares"] for row in rows if row["key"].startswith("tare_out:")] == ["0"]
+    # Without being asked for it is neither worked out nor left from before.
+    assert main(["reduce", str(WELL), "--out", str(out), "--quiet"]) == 0
+    assert set(files_of(out)) == TABLES | FIGURES
+    assert capsys.readouterr() == ("", "")
 
 
 def test_wrong_input_is_told_in_its_parts_with_status_1(survey, tmp_path, capsys):

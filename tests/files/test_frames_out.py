@@ -1,13 +1,15 @@
 """Data frames hold what the CSV files hold, at full precision."""
 
 import io
+from dataclasses import replace
 
 import numpy as np
 import pandas as pd
 import pytest
 
-from plumbwell.files.frames import frame, frames
-from plumbwell.files.tables_out import csv_texts
+from plumbwell.files.frames import alternatives_frame, frame, frames
+from plumbwell.files.tables_out import alternatives_text, csv_texts
+from plumbwell.study.alternatives import alternatives
 
 
 def test_frames_have_the_headings_and_values_of_the_files(shaft):
@@ -43,3 +45,15 @@ def test_times_are_timestamps_in_utc_and_raw_cells_stay_texts(shaft):
 def test_a_table_that_is_not_there_is_refused_with_those_that_are(shaft):
     with pytest.raises(ValueError, match="no table 'layer' in these results; there are stations, intervals, "):
         frame(shaft, "layer")
+
+
+def test_alternatives_are_a_frame_with_the_headings_of_the_file(shaft):
+    rows = alternatives(shaft)
+    table = alternatives_frame(rows)
+    back = pd.read_csv(io.StringIO(alternatives_text(rows)))
+    assert list(table.columns) == list(back.columns) and len(table) == len(back) == len(rows)
+    written = back["log_likelihood"].to_numpy()
+    assert table["log_likelihood"].to_numpy() == pytest.approx(written, rel=1e-11, nan_ok=True)
+    assert table["time"].isna().all() and str(table["time"].dtype).endswith("UTC]")
+    timed = alternatives_frame([replace(rows[0], time=86400.0)])
+    assert timed["time"].iloc[0] == pd.Timestamp("2000-01-02T00:00:00Z")

@@ -11,7 +11,9 @@ import pytest
 
 from plumbwell.files import tables_out
 from plumbwell.files.folder import read_survey
-from plumbwell.files.tables_out import cell, csv_notes, csv_text, csv_texts, number_cells, text_cells
+from plumbwell.files.tables_out import alternatives_text, cell, csv_notes, csv_text, csv_texts, number_cells, text_cells
+from plumbwell.study.alternative_columns import COLUMNS
+from plumbwell.study.alternatives import alternatives
 from plumbwell.study.case import Case
 from plumbwell.study.reduce import reduce
 from plumbwell.study.tables import TABLES
@@ -225,3 +227,34 @@ def test_control_characters_are_escaped_and_line_ends_and_tabs_stay():
     cells = list(text_cells(texts))
     assert cells == ["winch \\x1b[31mred\\x07", '"two\nlines\tand a tab"', "next\\x85line\\u2028sep\\x7f", "plain"]
     assert list(text_cells(["a\x1bb", "c"])) == ["a\\x1bb", "c"]
+
+
+def test_alternatives_stand_in_their_units_and_unknowns_are_empty(written):
+    results, _ = written["well"]
+    rows = alternatives(results)
+    text = alternatives_text(rows)
+    assert text.endswith("\n") and "\r" not in text and "nan" not in text
+    back = rows_of(text)
+    assert len(back) == len(rows) and list(back[0]) == [one.heading for one in COLUMNS]
+    for row, cells in zip(rows, back, strict=True):
+        assert (cells["key"], cells["change"], cells["problem"]) == (row.key, row.sentence, "")
+        assert float(cells["reseating_sd [mGal]"]) == pytest.approx(row.reseating_sd * 1e5, rel=1e-11)
+        assert float(cells["rms_change [g/cm3]"]) == pytest.approx(row.rms_change / 1000.0, rel=1e-11)
+        assert cells["f"] == "" if np.isnan(row.f) else float(cells["f_p"]) == pytest.approx(row.f_chance, rel=1e-11)
+        assert (cells["f_steps"] == "") == (cells["f_dof"] == "") == (cells["f"] == "")
+    (out,) = (cells for cells in back if cells["key"].startswith("tare_out:"))
+    # As the folder lists it: 10:19 in summer time.
+    assert out["time"] == "2026-05-13T09:19:00Z" and out["run"] == "2"
+    assert out["edits"] == 'no [[tare]] run = "2", time = "2026-05-13T09:19:00Z"'
+    assert back[0]["time"] == ""
+    lost = replace(rows[0], problem="why not", squares=np.nan, walk=np.nan)
+    (cells,) = rows_of(alternatives_text([lost]))
+    assert (cells["problem"], cells["dof"], cells["tares"], cells["chi_square"], cells["walk [mGal/h^1.5]"]) == (
+        "why not", "", "", "", "",
+    )  # fmt: skip
+
+
+def test_the_strength_of_a_walk_is_written_in_mgal_an_hour_to_the_one_and_a_half(written):
+    row = replace(alternatives(written["mine"][0])[0], walk=2e-5 / 3600.0**1.5)
+    (cells,) = rows_of(alternatives_text([row]))
+    assert float(cells["walk [mGal/h^1.5]"]) == pytest.approx(2.0, rel=1e-12)

@@ -1,5 +1,6 @@
 """The order of the drift polynomial: the F test itself, what it finds, and how seldom it errs."""
 
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -8,10 +9,13 @@ from scipy.stats import f as f_distribution
 from made_surveys import loop, made_case
 from plumbwell.reduction.candidates import more_drift
 from plumbwell.reduction.design import design
+from plumbwell.reduction.drift_order import EVERY_RUN, Comparison, chosen_orders
 from plumbwell.reduction.network import NO_TIES, solve
 from plumbwell.reduction.run_terms import RunTerms
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run
+from simulated_surveys import Scheme, mixed_trips
+from survey_errors import all_missed, orders_too_high, scaled_rms
 
 UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0
 DEPTH = {name: 60.0 * number for number, name in enumerate("ABCDEF")}
@@ -160,3 +164,71 @@ def test_many_runs_are_tested_one_by_one_against_one_solution():
     adjustment = adjusted(rows)
     assert adjustment.reseating.freedom > 300
     assert adjustment.orders[7] == 2 and sum(order > 1 for order in adjustment.orders) <= 4
+
+
+def test_bends_that_no_run_shows_alone_are_found_together():
+    """Four trips, two of them down and up past every station, all bent by ten sd: one run's cubic may pass for them."""
+    scheme = Scheme(stops=mixed_trips(10, 4))
+    found = all_missed(replace(scheme, bend=10.0 * scheme.visit_sd), range(1, 11))
+    assert all(min(one.results.network.adjustment.orders) >= 2 for one in found)
+    assert scaled_rms(found) < 1.25
+    joint = found[0].results.network.adjustment.tests[0]
+    assert (joint.run, joint.lower, joint.higher, joint.taken) == (EVERY_RUN, 1, 2, True)
+    assert joint.freedom == (4, 60 - 10 - 3 - 4 * 2)
+    (note, *_) = [one for one in found[0].results.findings if one.code == "drift_order_chosen"]
+    assert note.place == "4 runs together" and "The drifts of 4 runs, raised together to order 2, are bent" in note.text
+
+
+def test_straight_drifts_of_many_runs_are_seldom_called_curved():
+    found = all_missed(Scheme(stops=mixed_trips(10, 4)), range(201, 251))
+    # One survey in a hundred by the joint test, four runs each of one in a hundred by their own.
+    assert np.mean([max(one.results.network.adjustment.orders) > 1 for one in found]) <= 0.12
+    assert orders_too_high(found, 1) < 0.05
+
+
+def squares_of(truth, freedom):
+    """Sums of squares that each run's missing bend adds to, by the noise of all."""
+
+    def compare(lower, higher):
+        low = sum(bend for order, bend in zip(lower, truth, strict=True) if order < 2)
+        high = sum(bend for order, bend in zip(higher, truth, strict=True) if order < 2)
+        left = freedom - sum(higher)
+        return Comparison(low=left + low, high=left + high, freedom=left)
+
+    return compare
+
+
+def test_runs_whose_own_bend_is_chance_are_lowered_again():
+    # Alone, 12/(59.5/35) = 7.1 with 1 and 35 degrees of freedom has p = 0.012; the rest is noise to it.
+    squares = squares_of((12.0, 0.5, 12.0, 12.0), 40)
+    assert not squares((1, 1, 1, 1), (2, 1, 1, 1)).test(0, 1, 2, 1).taken
+    orders, tests = chosen_orders((1, 1, 1, 1), (0, 1, 2, 3), squares)
+    assert orders == (2, 1, 2, 2)
+    assert tests[0].run == EVERY_RUN and tests[0].freedom == (4, 32)
+    assert tests[0].f == pytest.approx(36.5 / 4.0, rel=1e-12)
+
+
+def test_a_run_that_can_hold_no_parabola_does_not_keep_the_others_from_it():
+    plain = squares_of((30.0, 25.0, 0.0), 40)
+
+    def compare(lower, higher):
+        return None if higher[2] > 1 else plain(lower, higher)
+
+    orders, tests = chosen_orders((1, 1, 1), (0, 1, 2), compare)
+    assert orders == (2, 2, 1)
+    assert (tests[0].run, tests[0].freedom[0]) == (EVERY_RUN, 2)
+
+
+def test_of_both_outcomes_the_one_stays_that_leaves_the_smaller_mean_square():
+    """Run by run a cubic of the first run takes up nearly all; all parabolas together take up a little more or less."""
+    for left, kept in ((20.0, (2, 2)), (60.0, (3, 1))):
+        squares = {(1, 1): 200.0, (2, 1): 195.0, (3, 1): 40.0, (1, 2): 195.0, (2, 2): left, (3, 2): left, (3, 3): left,
+                   (1, 3): 195.0, (2, 3): left}  # fmt: skip
+
+        def compare(lower, higher, squares=squares):
+            high = min(squares[lower], squares[higher])
+            return Comparison(low=squares[lower], high=high, freedom=32 - sum(higher))
+
+        orders, tests = chosen_orders((1, 1), (0, 1), compare)
+        assert orders == kept
+        assert tests[0].run == EVERY_RUN and tests[0].taken == (kept == (2, 2))

@@ -5,11 +5,15 @@ Columns, headings and units are those of the CSV files; values keep their full p
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 import pandas as pd
 
+from plumbwell.study.alternative_columns import COLUMNS
+from plumbwell.study.alternatives import Alternative
 from plumbwell.study.results import Results
-from plumbwell.study.tables import TABLES, TEXT, TIME
+from plumbwell.study.tables import TABLES, TEXT, TIME, Values
 
 
 def frame(results: Results, name: str) -> pd.DataFrame:
@@ -38,15 +42,31 @@ def frame(results: Results, name: str) -> pd.DataFrame:
     table = TABLES[name]
     columns = {heading: pd.Series(texts, dtype=object) for heading, texts in table.leading(results)}
     for one in table.columns:
-        values = one.values(results)
-        if one.kind == TIME:
-            milliseconds = np.round(np.asarray(values) * 1000.0).astype("timedelta64[ms]")
-            columns[one.heading] = pd.Series(np.datetime64("2000-01-01", "ms") + milliseconds).dt.tz_localize(
-                "UTC"
-            )
-        else:
-            columns[one.heading] = pd.Series(values, dtype=object if one.kind == TEXT else np.float64)
+        columns[one.heading] = _series(one.kind, one.values(results))
     return pd.DataFrame(columns)
+
+
+def _series(kind: str, values: Values) -> pd.Series:
+    """Values of one column, in the unit of its heading; times as UTC timestamps, NaT where there is none."""
+    if kind != TIME:
+        return pd.Series(values, dtype=object if kind == TEXT else np.float64)
+    seconds = np.asarray(values, dtype=np.float64)
+    known = np.isfinite(seconds)
+    moments = np.full(len(seconds), np.datetime64("NaT", "ms"))
+    milliseconds = np.round(seconds[known] * 1000.0).astype("timedelta64[ms]")
+    moments[known] = np.datetime64("2000-01-01", "ms") + milliseconds
+    return pd.Series(moments).dt.tz_localize("UTC")
+
+
+def alternatives_frame(rows: Sequence[Alternative]) -> pd.DataFrame:
+    """What else could have been done, as a data frame with the columns of alternatives.csv.
+
+    Parameters
+    ----------
+    rows : sequence of Alternative
+        As `plumbwell.alternatives` gives them.
+    """
+    return pd.DataFrame({one.heading: _series(one.kind, one.values(rows)) for one in COLUMNS})
 
 
 def frames(results: Results) -> dict[str, pd.DataFrame]:

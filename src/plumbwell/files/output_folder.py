@@ -287,6 +287,7 @@ def outputs_of(folder: Path) -> list[str]:
 EVER_WRITTEN = frozenset(
     {
         "stations.csv", "intervals.csv", "layers.csv", "readings_reduced.csv", "repeats.csv", "visits.csv",
+        "alternatives.csv",
         "density_covariance.csv", "common_covariance.csv", "station_covariance.csv", "gradients_reduced.csv",
         "reduced.las", "figure.svg", "figure.png", SUMMARY,
     }

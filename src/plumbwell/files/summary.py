@@ -246,5 +246,5 @@ def _chi_square(results: Results) -> dict[str, Any]:
     freedom = fit.reseating.freedom
     if freedom < 1:
         return {"value": None, "dof": freedom, "p": None}
-    value = fit.solution.sum_of_squares()
+    value = fit.misfit
     return {"value": _number(value), "dof": freedom, "p": _number(chi_square_chance(value, freedom=freedom))}

@@ -15,8 +15,10 @@ import numpy as np
 from plumbwell.earth.constants import MILLIGAL
 from plumbwell.files.text_table import FORMULA_MARKS
 from plumbwell.files.times import iso
+from plumbwell.study.alternative_columns import COLUMNS as ALTERNATIVE_COLUMNS
+from plumbwell.study.alternatives import Alternative
 from plumbwell.study.results import Results
-from plumbwell.study.tables import TABLES, TEXT, TIME, Table, TableColumn
+from plumbwell.study.tables import TABLES, TEXT, TIME, Table, TableColumn, Values
 from plumbwell.survey.column import Array
 
 MOST_WHOLE = 1000
@@ -66,12 +68,24 @@ def csv_text(headings: Iterable[str], columns: Iterable[Sequence[str]]) -> str:
 
 def column_cells(column: TableColumn, results: Results) -> Sequence[str]:
     """The cells of one column."""
-    values = column.values(results)
-    if column.kind == TEXT:
+    return value_cells(column.kind, column.values(results))
+
+
+def value_cells(kind: str, values: Values) -> Sequence[str]:
+    """The cells of values of some kind, in the unit of their heading."""
+    if kind == TEXT:
         return text_cells(values)  # type: ignore[arg-type]
-    if column.kind == TIME:
-        return [iso(value) for value in values]  # type: ignore[arg-type]
+    if kind == TIME:
+        return [iso(value) if np.isfinite(value) else "" for value in values]  # type: ignore[arg-type]
     return number_cells(values)  # type: ignore[arg-type]
+
+
+def alternatives_text(rows: Sequence[Alternative]) -> str:
+    """alternatives.csv: what else could have been done with drift, tares and noise."""
+    return csv_text(
+        [one.heading for one in ALTERNATIVE_COLUMNS],
+        [value_cells(one.kind, one.values(rows)) for one in ALTERNATIVE_COLUMNS],
+    )
 
 
 def table_text(table: Table, results: Results) -> str:

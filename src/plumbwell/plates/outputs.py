@@ -7,7 +7,7 @@ the drawing libraries are loaded only when they are drawn.
 from __future__ import annotations
 
 import re
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 
@@ -15,7 +15,9 @@ from plumbwell.files.output_folder import SUMMARY, output_folder, write_texts
 from plumbwell.files.reduced_las import reduced_las
 from plumbwell.files.stops import held
 from plumbwell.files.summary import summary_text
-from plumbwell.files.tables_out import csv_notes, csv_texts
+from plumbwell.files.tables_out import alternatives_text, csv_notes, csv_texts
+from plumbwell.study.alternative_columns import FILE
+from plumbwell.study.alternatives import Alternative
 from plumbwell.study.finding import Finding
 from plumbwell.study.reduce import quiet
 from plumbwell.study.results import Results
@@ -46,6 +48,7 @@ def write_outputs(
     results: Results,
     target: Path,
     *,
+    alternatives: Sequence[Alternative] = (),
     progress: Callable[[float, str], None] = quiet,
     before_moving: Callable[[], None] = lambda: None,
 ) -> Written:
@@ -56,6 +59,8 @@ def write_outputs(
     results : Results
     target : Path
         As `output_folder.check_target` gives it.
+    alternatives : sequence of Alternative
+        What else could have been done, where it was asked for; none: that table is not written.
     progress : callable
         Called with the share done (0 to 1) and what is being done; it may raise to stop the work, and nothing is
         then written.
@@ -69,6 +74,8 @@ def write_outputs(
     """
     progress(0.0, "writing tables")
     texts, notes = csv_texts(results), csv_notes(results)
+    if alternatives:
+        texts[FILE] = alternatives_text(alternatives)
     progress(0.4, "writing the LAS file")
     las = reduced_las(results)
     if las is None:

@@ -10,11 +10,21 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from plumbwell.reduction.broken_visits import contrasts, unbroken_stretches
 from plumbwell.reduction.candidates import more_drift
 from plumbwell.reduction.checked import Checked, checked, visit_means
-from plumbwell.reduction.design import Design, crossings, design, drift_of, reweighted, walk_priors, with_priors
+from plumbwell.reduction.design import (
+    Design,
+    crossings,
+    design,
+    drift_of,
+    matrix_of,
+    reweighted,
+    walk_priors,
+    with_priors,
+)
 from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
 from plumbwell.reduction.drift_order import Comparison, OrderTest, chosen_orders, raised_together
 from plumbwell.reduction.network import NO_RANK, Rank, Solution, TieRows, rank_beside_walk, rank_of_visits, solve
@@ -128,6 +138,14 @@ class Adjustment:
     def redundancy(self) -> Array:
         """See `Checked`."""
         return self.checked.redundancy
+
+    @property
+    def misfit(self) -> float:
+        """Weighted sum of squares of the visits' residuals, and of what a walk of the drift had to move."""
+        priors = self.solution.design.priors
+        moved = (priors.of(self.solution.unknown[:, 0]) - priors.value) / priors.sd
+        of_walk = np.array([name.startswith("walk ") for name in priors.name], dtype=bool)
+        return self.solution.sum_of_squares() + float(np.sum(moved[of_walk] ** 2))
 
     def unknown(self, wanted: DriftUnknown) -> tuple[float, float]:
         """Estimate and sd of a border unknown (drift per power of scaled time); 0, 0 when it is held at 0."""
@@ -258,13 +276,15 @@ def adjusted(
             solved[chosen] = (seat, _solved(one, 1.0 / (noise.variance + seat.variance), mean, ties))
         return solved[chosen]
 
-    def compare(chosen: tuple[int, ...], run: int, higher: int) -> Comparison | None:
-        above = fit((*chosen[:run], higher, *chosen[run + 1 :]))
+    def compare(lower: tuple[int, ...], higher: tuple[int, ...]) -> Comparison | None:
+        above = fit(higher)
         if above is None:
             return None
         seat, solution = above
-        added = np.array([one.kind == "drift" and one.power > chosen[one.run] for one in solution.design.unknowns])
-        return Comparison(low=_without(solution, added), high=solution.sum_of_squares(), freedom=seat.freedom)
+        added = np.array([one.kind == "drift" and one.power > lower[one.run] for one in solution.design.unknowns])
+        return Comparison(
+            low=squares_without(solution, added), high=solution.sum_of_squares(), freedom=seat.freedom
+        )
 
     tests: tuple[OrderTest, ...] = ()
     if automatic and len(visits) - rank.rank > MANY_FREEDOM:
@@ -290,7 +310,7 @@ def adjusted(
             one, _ = designed(orders, weighted, modes)
             along = rank_beside_walk(plain_rank, plain, one)
             prior = walk_priors(basis, one, strength)
-            extra = with_priors(replace(one, prior_matrix=np.zeros_like(one.prior_matrix)), prior).prior_matrix
+            extra = matrix_of(one, prior)
             found = seated(one, along, extra)
             gained = np.nan
             if found.freedom > 0:
@@ -392,18 +412,27 @@ def _designed(
     return made[key]  # type: ignore[no-any-return]
 
 
-def _without(above: Solution, left_out: Array) -> float:
-    """Weighted sum of squares of visit residuals when some border unknowns are held at 0, weights kept.
+def squares_without(above: Solution, left_out: NDArray[np.bool_]) -> float:
+    """Weighted sum of squares of visit residuals when some border unknowns (q,) are held at 0, weights kept."""
+    residual, _ = held_at_nought(above, left_out)
+    return float(above.weight @ residual**2)
 
+
+def held_at_nought(above: Solution, left_out: NDArray[np.bool_]) -> tuple[Array, Array]:
+    """Visit residuals (v,) and border unknowns (q,) when some unknowns (q,) are held at 0, weights kept.
+
+    Notes
+    -----
     The solution moves by C e (e^T C e)^-1 x_e, e the unknowns left out, C the covariance, x their estimates.
     """
     gone = np.flatnonzero(left_out)
+    if not gone.size:
+        return above.residual[:, 0], above.unknown[:, 0]
     picked = np.zeros((above.design.size, len(gone)))
     picked[gone, np.arange(len(gone))] = 1.0
     columns = above.factor.solve(picked)
     moved = columns @ np.linalg.solve(columns[gone], above.unknown[gone, 0])
-    residual = above.residual[:, 0] + above.fitted(moved)
-    return float(above.weight @ residual**2)
+    return above.residual[:, 0] + above.fitted(moved), above.unknown[:, 0] - moved
 
 
 def _instant(visits: Visits, run: int) -> bool:

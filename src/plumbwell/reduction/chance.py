@@ -20,6 +20,21 @@ def chi_square_chance(value: float, *, freedom: int) -> float:
     return float(chdtrc(freedom, value))
 
 
+def f_chance(value: float, *, steps: int, freedom: int) -> float:
+    """Probability of Fisher's F at least as large as the value, 0 to 1.
+
+    Parameters
+    ----------
+    value : float
+        Ratio of what a step explains, over its degrees of freedom, to what is left over its own.
+    steps, freedom : int
+        Degrees of freedom of both, at least 1.
+    """
+    from scipy.special import fdtrc
+
+    return float(fdtrc(steps, freedom, value))
+
+
 def student_limit(chance: float, *, freedom: float) -> float:
     """Ratio to its sd that a Student's t exceeds, to either side, with the given chance.
 

@@ -401,6 +401,11 @@ def with_priors(one: Design, priors: Priors) -> Design:
     )
 
 
+def matrix_of(one: Design, priors: Priors) -> Array:
+    """What some priors alone add to the flat border matrix."""
+    return _prior_matrix(one.layout, priors, priors.sd)
+
+
 def _prior_matrix(shape: Layout, priors: Priors, sd: Array) -> Array:
     """What priors of these sds add to the flat border matrix."""
     scaled = priors.factor / sd[priors.row]

@@ -14,7 +14,7 @@ from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
 from plumbwell.reduction.calibration import instruments_used
 from plumbwell.reduction.datums import StationGravity, datum_stations, referred_gravity
 from plumbwell.reduction.drift_basis import DriftUnknown, drift_basis
-from plumbwell.reduction.found_errors import gaps_of, is_told
+from plumbwell.reduction.found_errors import ProposedTare, gaps_of, is_told
 from plumbwell.reduction.judged import Judgement
 from plumbwell.reduction.judgement import alike_weights, as_tares, judgement, robust_weights, used_rows
 from plumbwell.reduction.located import Located
@@ -137,8 +137,7 @@ def network_work(
         )
         if asked_walk == "auto" and not needed:
             walk_not_needed, fit, asked_walk = True, plain, "off"
-    # A bad visit at the end of its run is a jump as well: out of use it needs none.
-    jumps = tuple(one for one in found.proposed if not one.one_visit or recipe.outliers == "flag")
+    jumps = applicable(found, recipe)
     apply = recipe.tares == "proposed" and bool(jumps)
     trust = None
     if recipe.outliers == "exclude" and len(found.rows):
@@ -168,6 +167,14 @@ def network_work(
         trust=trust,
         walk_not_needed=walk_not_needed,
     )
+
+
+def applicable(found: Judgement, recipe: Recipe) -> tuple[ProposedTare, ...]:
+    """The found jumps that are taken out where the recipe asks for it.
+
+    A bad visit at the end of its run is a jump as well: out of use it needs none.
+    """
+    return tuple(one for one in found.proposed if not one.one_visit or recipe.outliers == "flag")
 
 
 def _beside_walk(

@@ -219,7 +219,7 @@ def _figures(results: Results) -> dict[str, str]:
     tares = len(fit.basis.tares)
     drift = "nothing checks it"
     if freedom:
-        drift = f"χ² {number(fit.solution.sum_of_squares() / freedom, 2)}, {freedom} dof"
+        drift = f"χ² {number(fit.misfit / freedom, 2)}, {freedom} dof"
     if tares:
         drift = f"{drift}, {counted(tares, 'tare')}"
     return {

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from plumbwell.reduction.chance import student_limit
 from plumbwell.reduction.drift_basis import DriftUnknown
+from plumbwell.reduction.drift_order import EVERY_RUN
 from plumbwell.reduction.network import own_size
 from plumbwell.reduction.visits import Visits
 from plumbwell.study.docket.wording import (
@@ -190,16 +191,28 @@ def tie_unvisited(results: Results) -> Iterator[Finding]:
 def order_chosen(results: Results) -> Iterator[Finding]:
     """Runs whose drift order the F test raised."""
     for test in results.network.adjustment.tests:
-        if test.taken:
-            name, (steps, freedom) = run(results, test.run), test.freedom
+        if not test.taken:
+            continue
+        steps, freedom = test.freedom
+        told = f"F = {test.f:.1f} with {steps} and {freedom} degrees of freedom, p = {test.p:.1g}."
+        if test.run == EVERY_RUN:
             yield Finding(
                 code="drift_order_chosen",
                 severity="note",
-                place=f"run {name}",
-                text=f"The drift of run {name} is of order {test.higher}: over order {test.lower} F = "
-                f"{test.f:.1f} with {steps} and {freedom} degrees of freedom, p = {test.p:.1g}.",
-                mend="Nothing; or set drift_order of the run, if a tare or an outlier bends it.",
+                place=f"{counted(steps, 'run')} together",
+                text=f"The drifts of {counted(steps, 'run')}, raised together to order {test.higher}, are bent: over "
+                f"order {test.lower} {told} Runs whose own bend is no more than chance were lowered again.",
+                mend="Nothing; or set drift_order, if the bend stands for something else.",
             )
+            continue
+        name = run(results, test.run)
+        yield Finding(
+            code="drift_order_chosen",
+            severity="note",
+            place=f"run {name}",
+            text=f"The drift of run {name} is of order {test.higher}: over order {test.lower} {told}",
+            mend="Nothing; or set drift_order of the run, if a tare or an outlier bends it.",
+        )
 
 
 def drift_held(results: Results) -> Iterator[Finding]:
