@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable, Iterator
 
 from plumbwell.study.docket import (
+    bends,
     corrections,
     depths,
     drift,
@@ -67,6 +68,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     settling.visit_settling,
     settling.visits_creep_alike,
     joins.run_hangs_by_one,
+    bends.bend_untold,
     depths.crosses_ground,
     depths.far_apart,
     rock.density_outside,
