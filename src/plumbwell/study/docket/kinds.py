@@ -41,6 +41,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     network.few_freedom,
     noise.no_majority,
     noise.noise_at_floor,
+    noise.noise_of_few,
     noise.one_station_repeated,
     noise.weights_far_apart,
     drift.drift_large,

@@ -8,10 +8,13 @@ import numpy as np
 
 from plumbwell.reduction.calibration import instruments_used
 from plumbwell.reduction.chance import chi_square_chance
+from plumbwell.reduction.noise_of_few import CHANCE, scatter_chance
+from plumbwell.reduction.variances import ENOUGH_FREEDOM
 from plumbwell.study.docket.wording import (
     MILLIGAL,
     amount,
     counted,
+    depth,
     gravity,
     line,
     lines,
@@ -114,6 +117,43 @@ def noise_at_floor(results: Results) -> Iterator[Finding]:
         text=better + "every sd rests on what is stated (reading_floor, reseating_sd), not on what the survey shows.",
         mend="See that the readings were not averaged, rounded or copied; lower the stated noise, if the instrument "
         "is so good.",
+    )
+
+
+def noise_of_few(results: Results) -> Iterator[Finding]:
+    """Few readings within visits scatter more than what the visits allow: a bad one among them, and no noise."""
+    fit, visits = results.network.adjustment, results.network.visits
+    freedom, among_visits = fit.noise.freedom, fit.reseating.freedom
+    if results.recipe.noise != "estimate" or not 0 < freedom < ENOUGH_FREEDOM or among_visits < 1:
+        return
+    first, sd = visits.start[:-1], fit.noise.sd
+    # Readings off the mean of their visit, and visits off the network as if all their scatter were reading noise.
+    left = fit.residual[visits.rows] + fit.visit_effect[visits.rows]
+    mean = np.add.reduceat(fit.noise.weight * left, first)
+    off = left - np.repeat(mean, np.diff(visits.start))
+    within = float(np.sum((off / sd) ** 2)) / freedom
+    checked = 1.0 - fit.solution.weight * fit.solution.variance_of_fit()
+    among = float(np.sum(mean**2) / np.sum(checked * fit.noise.variance))
+    chance = scatter_chance(within, freedom, among, among_visits)
+    if chance >= CHANCE:
+        return
+    typical = float(np.median(sd))
+    worst = int(visits.of_row[visits.rows[np.argmax(np.abs(off / sd))]])
+    rows = visits.rows[visits.start[worst] : visits.start[worst + 1]]
+    where = int(visits.station[worst])
+    yield Finding(
+        code="noise_of_few",
+        severity="look",
+        place=f"{station(results, where)}; {lines(results, rows)}",
+        text=f"Readings within visits scatter by {gravity(within**0.5 * typical)} "
+        f"({counted(freedom, 'degree of freedom', 'degrees of freedom')}), most in visit {worst + 1} at "
+        f"{depth(results, where)}, where the visits themselves allow {gravity(among**0.5 * typical)} at the most "
+        f"(p = {chance:.1g}): that is no noise, and the noise is taken from the visits alone. The mean of that visit "
+        "holds whatever is wrong there.",
+        mend="Look at the readings of that visit: an unsettled one among them, or two stops taken for one visit; take "
+        "the bad one out of use with a reason.",
+        stations=(where,),
+        rows=numbers(rows),
     )
 
 
