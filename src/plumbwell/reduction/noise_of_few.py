@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from plumbwell.reduction.banded import summed
 from plumbwell.survey.column import Array, Index
 
 ALIKE = 0.01
@@ -100,9 +101,9 @@ def _seen(residual: Array, station: Index, share: Array, lost: int) -> tuple[Arr
     kept = (1.0 - 1.0 / count[at]) * (1.0 - lost / free)
     told = count[at] > 1
     _, group = np.unique(np.round(np.log(share[told]) / ALIKE), return_inverse=True)
-    k = np.bincount(group, kept[told])
-    squares = np.bincount(group, off[told] ** 2)
-    return k, squares, np.bincount(group, share[told]) / np.bincount(group)
+    many = int(group.max(initial=-1)) + 1
+    k, squares = summed(group, kept[told], many), summed(group, off[told] ** 2, many)
+    return k, squares, summed(group, share[told], many) / np.bincount(group)
 
 
 def _likeliest(within: float, freedom: int, k: Array, squares: Array, c: Array) -> float:

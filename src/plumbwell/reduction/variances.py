@@ -1,8 +1,9 @@
 """Reading noise and re-seating noise of a survey, by restricted maximum likelihood.
 
 Reading noise comes from readings within visits, re-seating from the visits themselves; where less than five degrees
-of freedom within visits tell it, from both together (`noise_of_few`). Where few degrees of freedom tie visits together, the stated re-seating noise counts as
-four of them: restricted likelihood alone gives none at all in a third of surveys with one degree of freedom.
+of freedom within visits tell it, from both together (`noise_of_few`). Where few degrees of freedom tie visits
+together, the stated re-seating noise counts as four of them: restricted likelihood alone gives none at all in a third
+of surveys with one degree of freedom.
 """
 
 from __future__ import annotations
