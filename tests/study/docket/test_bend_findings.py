@@ -123,7 +123,7 @@ def test_where_nothing_at_all_tells_it_a_bend_of_ten_sds_is_spoken_of(found):
     results = reduce(simulated(Scheme(stops=trips(10, 1)), 5).case)
     (one,) = found(results, "bend_untold")
     visit_sd = bent_sds(results)[1]
-    assert "would be known not at all" in one.text
+    assert "would not be known at all" in one.text
     assert f"one of {10.0 * visit_sd / MICROGAL:.1f} µGal, 10 times the noise of a visit, would move" in one.text
 
 

@@ -67,11 +67,11 @@ def _finding(results: Results, found: Bends) -> Finding:
     names = listed(labels, LISTED_RUNS)
     worst, sd = int(found.run[found.worst]), float(found.sd[found.worst])
     runs = f"run {names}" if untold.size == 1 else f"runs {names}"
-    known, size = f"only to ± {gravity(sd)}, {amount(sd / found.visit_sd, 1)} times the noise of a visit", sd
+    known, size = f"be known only to ± {gravity(sd)}, {amount(sd / found.visit_sd, 1)} times the noise of a visit", sd
     in_each = " in each" if untold.size > 1 else ""
     supposed = f"one of that size{in_each}"
     if sd > UNBOUND * LOOSE * found.visit_sd:
-        known, size = "not at all", SUPPOSED * found.visit_sd
+        known, size = "not be known at all", SUPPOSED * found.visit_sd
         supposed = f"one of {gravity(size)}{in_each}, {SUPPOSED:g} times the noise of a visit,"
     of_worst = "" if untold.size == 1 else f", worst in run {run(results, worst)}"
     return Finding(
@@ -79,7 +79,7 @@ def _finding(results: Results, found: Bends) -> Finding:
         severity="look",
         place=runs,
         text=f"The stops of {runs} cannot tell a bend of the drift from gravity: were it free, the bend (its greatest "
-        f"departure from the best straight line) would be known {known}{of_worst}. The drift is taken as straight; "
+        f"departure from the best straight line) would {known}{of_worst}. The drift is taken as straight; "
         f"{supposed} would move {_moved(results, found.moved(untold) * size)}, and no error counts it.",
         mend=_mend(results, found, worst)
         + " Else state drift_walk as the instrument is known to wander, so that the errors count it.",
