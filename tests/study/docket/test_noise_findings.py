@@ -197,3 +197,27 @@ def test_one_bad_reading_leaves_a_majority(invented, found):
     rows[7]["reading [mGal]"] = f"{float(rows[7]['reading [mGal]']) + 10_000.0:.4f}"
     results = invented.survey(rows)
     assert not found(results, "no_majority") and len(found(results, "reading_disagrees")) == 1
+
+
+def test_the_fit_by_least_absolute_deviations_is_as_low_as_the_linear_programme(invented):
+    """Half of the visits off by milligals: the sum of absolute residuals against its least by linear programming."""
+    import numpy as np
+    from scipy.optimize import linprog
+
+    from plumbwell.study.docket.noise import _least_deviations
+
+    results = invented.survey(moved(invented.visits(STOPS), *half_of_the_visits(0.5)))
+    fit, visits = results.network.adjustment, results.network.visits
+    residual = fit.solution.residual[:, 0]
+    left = np.abs(_least_deviations(results, residual, np.full(len(visits), 4e-8))).sum() / 1e-5
+    past = (0.5 * (visits.first + visits.last) - visits.first[0]) / 3600.0
+    columns = [visits.station == one for one in range(5)] + [past]
+    design, count = np.column_stack(columns).astype(float), len(visits)
+    # residual = design x + over - under, all in mGal; the sum of over and under is least.
+    equal = np.hstack([design, np.eye(count), -np.eye(count)])
+    bounds = [(None, None)] * design.shape[1] + [(0.0, None)] * (2 * count)
+    cost = np.concatenate([np.zeros(design.shape[1]), np.ones(2 * count)])
+    least = linprog(cost, A_eq=equal, b_eq=residual / 1e-5, bounds=bounds).fun
+    # Residuals under a tenth of 4 microgal count by their squares: at most half of that is lost in each of the visits.
+    assert least <= left + 1e-9 and left - least < count * 0.5 * 0.1 * 0.004
+    assert np.abs(residual).sum() / 1e-5 > 1.02 * least
