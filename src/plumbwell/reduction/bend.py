@@ -105,7 +105,7 @@ class Bends:
 
 
 def bends(fit: Adjustment, runs: tuple[int, ...]) -> Bends | None:
-    """What the stops would tell of the bends of some runs; None where there is none to ask for, or too many.
+    """What the stops would tell of the bends of some runs; None where none can be asked for.
 
     Parameters
     ----------
@@ -137,7 +137,10 @@ def bends(fit: Adjustment, runs: tuple[int, ...]) -> Bends | None:
     visit_sd = float(1.0 / np.sqrt(np.median(solution.weight)))
     one = with_priors(one, _loose(number, visit_sd))
     border = normal_equations(one, solution.weight, solution.ties)
-    factor = factored(one.layout, border.matrix)
+    try:
+        factor = factored(one.layout, border.matrix)
+    except np.linalg.LinAlgError:
+        return None  # weights too far apart for one unknown more: other findings tell of those
     variance = factor.inverse[one.layout.place(number, number)]
     return Bends(
         run=frozen_index(runs),

@@ -181,3 +181,11 @@ def test_three_stretches_are_named_with_both_their_tares(invented, found):
         "A, 20.0 m; run X1 from 2026-05-04 08:55:00 UTC to 2026-05-04 09:45:00 UTC",
         "A, 20.0 m; run X1 from 2026-05-04 09:45:00 UTC on",
     ]
+
+
+def test_a_visit_that_the_tare_falls_into_joins_both_sides_of_it(invented, found):
+    # A is read from 08:40 to 08:42; what the tare at 08:41 is its own readings tell.
+    results = invented.survey(of_runs(invented, "BCBCADEDE"), tables=TARE.format("08:41:00"))
+    (one,) = found(results, "run_hangs_by_one")
+    assert one.place == "A, 20.0 m; run X1 from 2026-05-04 08:41:00 UTC on"
+    assert " through A alone, by 1 visit in it and 1 visit in the others" in one.text

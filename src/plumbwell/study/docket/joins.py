@@ -157,7 +157,8 @@ def _finding(
     weight = results.network.adjustment.solution.weight
     here = visits.station == where
     own = here & stretches.of(group)
-    others = here & ~own
+    # A visit that a tare falls into stands on both sides.
+    others = here & ~(np.isin(stretches.first, group) & np.isin(stretches.last, group))
     present = dict.fromkeys(stretches.first.tolist()) | dict.fromkeys(stretches.last.tolist())
     names = [stretches.name[one] for one in present if one in group]
     runs = f"run {names[0]}" if len(names) == 1 else f"runs {listed(names, LISTED_RUNS)}"

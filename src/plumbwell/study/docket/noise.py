@@ -276,7 +276,11 @@ def _least_deviations(results: Results, residual: Array, usual: Array) -> Array:
     left = residual
     for _ in range(PASSES):
         weight = np.maximum(typical / np.maximum(np.abs(left), 0.1 * usual), LEAST_WEIGHT)
-        before, left = left, solve(fit.design, weight, residual[:, None], NO_TIES, pins=pins).residual[:, 0]
+        try:
+            solution = solve(fit.design, weight, residual[:, None], NO_TIES, pins=pins)
+        except np.linalg.LinAlgError:
+            break
+        before, left = left, solution.residual[:, 0]
         if np.all(np.abs(left - before) < STILL * usual):
             break
     return left
