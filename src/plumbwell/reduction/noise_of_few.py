@@ -12,7 +12,7 @@ import numpy as np
 from plumbwell.reduction.banded import summed
 from plumbwell.survey.column import Array, Index
 
-ALIKE = 0.01
+ALIKE = 0.05
 """Share by which shares of reading noise may differ that are taken for one."""
 
 CHANCE = 0.001
