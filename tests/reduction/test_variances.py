@@ -255,3 +255,74 @@ def test_a_run_of_one_instant_has_no_drift():
     lone = [Row(time=86400.0, reading=0.0, depth=0.0, station="A", run="2")] * 1
     adjustment = reduce(made_case([*rows, *lone], instruments=(METER,), runs=(Run(name="2", drift_order=2),)))
     assert adjustment.network.adjustment.orders == (1, 0)
+
+
+def of_few(rows, doubles, off):
+    """The rows, single readings a visit, with a second reading in some visits, off the first by so much each."""
+    more = [
+        replace(rows[n], time=rows[n].time + 30.0, reading=rows[n].reading + by)
+        for n, by in zip(doubles, off, strict=True)
+    ]
+    return sorted([*rows, *more], key=lambda row: row.time)
+
+
+def test_one_bad_second_reading_is_not_the_noise_of_all():
+    """190 single readings of 5 microgal, one of them read again 60 microgal off: true sds are known."""
+    chance = np.random.default_rng(31)
+    singles = loop(chance, "ABCDE" * 38, counts=(1,), reading_noise=5 * UGAL, reseating=0.0, pause=600.0, **MAKE)
+    meter = replace(METER, station_floor=0.1 * UGAL)
+    results = reduce(made_case(of_few(singles, [77], [60 * UGAL]), instruments=(meter,), drift_order=1))
+    fit = results.network.adjustment
+    assert (fit.noise.freedom, fit.reseating.freedom) == (1, 190 - 5 - 1)
+    np.testing.assert_array_equal(fit.noise.sd, 2 * UGAL)
+    whole = np.sqrt(fit.noise.variance + fit.reseating.variance)
+    # 184 degrees of freedom tell 5 microgal to a twentieth; the bad visit, 30 off, adds 900/184 to 25.
+    assert np.median(whole) == pytest.approx(np.sqrt(25 + 900 / 184) * UGAL, rel=3.0 / np.sqrt(2 * 184))
+    # A station less the datum: 38 visits each.
+    sd = results.stations.gravity_sd.values[1:]
+    np.testing.assert_allclose(sd, np.median(whole) * np.sqrt(2 / 38), rtol=0.02)
+
+
+def test_the_same_scatter_of_many_readings_is_their_noise():
+    chance = np.random.default_rng(31)
+    singles = loop(chance, "ABCDE" * 38, counts=(1,), reading_noise=5 * UGAL, reseating=0.0, pause=600.0, **MAKE)
+    off = [60 * UGAL, -50 * UGAL, 3 * UGAL, 40 * UGAL, 5 * UGAL]
+    rows = of_few(singles, [20, 50, 77, 120, 160], off)
+    noise = reduce(made_case(rows, instruments=(METER,), drift_order=1)).network.adjustment.noise
+    drift = 0.02 * MGAL / HOUR * 30.0
+    wanted = np.sqrt(sum((one - drift) ** 2 / 2.0 for one in off) / 5)
+    assert noise.freedom == 5 and noise.sd[0] == pytest.approx(wanted, rel=2e-3)
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_few_readings_and_the_visits_tell_both_noises_together(seed):
+    """The joint restricted likelihood by the whole design: at the noise found, as high as anywhere.
+
+    Within 0.05 of twice its logarithm, a hundredth of what one sd of e would cost.
+    """
+    chance = np.random.default_rng(40 + seed)
+    seat, noise = ((0.0, 6 * UGAL), (4 * UGAL, 3 * UGAL), (8 * UGAL, 2.5 * UGAL))[seed % 3]
+    singles = loop(chance, "ABCDEF" * 6, counts=(1,), reading_noise=noise, reseating=seat, pause=900.0, **MAKE)
+    doubles = chance.choice(36, 1 + seed % 4, replace=False).tolist()
+    rows = of_few(singles, doubles, (np.sqrt(2.0) * noise * chance.standard_normal(len(doubles))).tolist())
+    fit = reduce(made_case(rows, instruments=(METER,), drift_order=1)).network.adjustment
+    assert fit.noise.freedom == len(doubles) < 5
+    design, variances, values = whole_design(rows, fit)
+    share = variances / (fit.noise.sd[0] / MGAL) ** 2
+    squares = scatter(rows, [1.0] * len(rows)) ** 2 * len(doubles) / MGAL**2
+
+    def height(e):
+        fine = [minus_log_likelihood(u2, design, e**2 * share, values) for u2 in (0.0, *np.geomspace(1e-7, 1e-3, 80))]
+        return len(doubles) * np.log(e**2) + squares / e**2 + min(fine)
+
+    grid = np.geomspace(2e-4, 0.1, 80)  # from well under the floor of 2 microgal
+    best = max(grid[int(np.argmin([height(one) for one in grid]))], 2e-3)
+    assert height(fit.noise.sd[0] / MGAL) <= height(best) + 0.05
+
+
+def test_without_a_visit_more_the_readings_alone_tell_their_noise():
+    rows = loop(np.random.default_rng(32), "ABCA", counts=(1,), **MAKE)
+    noise = reduce(made_case(of_few(rows, [1], [30 * UGAL]), instruments=(METER,), drift_order=1)).network
+    drift = 0.02 * MGAL / HOUR * 30.0
+    assert noise.adjustment.reseating.freedom == 0
+    assert noise.adjustment.noise.sd[0] == pytest.approx((30 * UGAL - drift) / np.sqrt(2.0), rel=2e-3)

@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment
 from plumbwell.reduction.chance import student_limit
+from plumbwell.reduction.drift_rates import rate_sd
 from plumbwell.survey.column import Array, Column, Index, frozen, frozen_index
 
 CHANCE = 0.01
@@ -193,28 +194,9 @@ def network_settling(observed: Column, drift: Column, fit: Adjustment, floor: Ar
         time=fit.basis.utc[rows],
         sd=fit.noise.sd,
         floor=floor[rows],
-        rate_sd=_rate_sd(fit),
+        rate_sd=rate_sd(fit),
         estimate=estimate,
     )
-
-
-def _rate_sd(fit: Adjustment) -> Array:
-    """Sd of the drift rate at each visit, m/s3, no less than it is: the powers' sds are added up without their signs.
-
-    Where returns tell the drift this is next to nothing within a visit; where only the stated rate holds it is not.
-    """
-    visits, basis = fit.visits, fit.basis
-    past = (visits.first - basis.start[visits.run]) / basis.length[visits.run]
-    most = max(fit.orders, default=0)
-    slope = np.zeros((len(fit.orders), most))
-    for unknown in fit.design.unknowns:
-        if unknown.kind == "drift":
-            slope[unknown.run, unknown.power - 1] = fit.unknown(unknown)[1]
-    scaled = sum(
-        (power * slope[visits.run, power - 1] * past ** (power - 1) for power in range(1, most + 1)),
-        start=np.zeros(len(visits)),
-    )
-    return scaled / basis.length[visits.run]
 
 
 def _noise_of_plateaus(

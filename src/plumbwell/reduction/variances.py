@@ -1,8 +1,9 @@
 """Reading noise and re-seating noise of a survey, by restricted maximum likelihood.
 
-Reading noise comes from readings within visits, re-seating from the visits themselves. Where few degrees
-of freedom tie visits together, the stated re-seating noise counts as four of them: restricted likelihood
-alone gives none at all in a third of surveys with one degree of freedom.
+Reading noise comes from readings within visits, re-seating from the visits themselves; where less than five degrees
+of freedom within visits tell it, from both together (`noise_of_few`). Where few degrees of freedom tie visits
+together, the stated re-seating noise counts as four of them: restricted likelihood alone gives none at all in a third
+of surveys with one degree of freedom.
 """
 
 from __future__ import annotations
@@ -13,12 +14,15 @@ import numpy as np
 
 from plumbwell.reduction.design import Design
 from plumbwell.reduction.network import Rank
+from plumbwell.reduction.noise_of_few import reading_variance_of_few
 from plumbwell.reduction.restricted_likelihood import restricted_variance
 from plumbwell.reduction.visits import Visits
 from plumbwell.survey.column import Array, Index
 
 ENOUGH_FREEDOM = 5
 STATED_FREEDOM = 4
+DOUBTED = 0.5
+"""Robust weight under which a visit says nothing of the noise of the others."""
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
@@ -98,8 +102,10 @@ def reading_noise(
         mean = np.add.reduceat(weight * deviation, begin) / np.add.reduceat(weight, begin)
         off = deviation - np.repeat(mean, np.diff(unbroken))
         found = float(np.sqrt(np.sum(weight * off**2) / freedom))
+        if freedom < ENOUGH_FREEDOM:
+            found = _of_few(found, freedom, visits, deviation, weight, kept)
         sd = np.maximum(floor, found * shape)
-        if known.size:
+        if known.size and found > 0.0:
             scale = found
     sd = sd / np.sqrt(kept)
     weight = 1.0 / sd**2
@@ -113,6 +119,27 @@ def reading_noise(
         repeated=freedom > 0,
         freedom=freedom,
     )
+
+
+def _of_few(
+    found: float, freedom: int, visits: Visits, deviation: Array, weight: Array, kept: Array
+) -> float:
+    """Sd of a reading of weight 1 by few degrees of freedom within visits and by what the visits scatter."""
+    first = visits.start[:-1]
+    total = np.add.reduceat(weight, first)
+    trusted = np.flatnonzero(np.maximum.reduceat(kept, first) >= DOUBTED)
+    moving = np.count_nonzero(visits.run_length[visits.run_order] > 0.0)
+    # A bias and a rate for each run that has one; the level of the whole is the stations' own.
+    lost = len(visits.run_order) + int(moving) - 1
+    variance = reading_variance_of_few(
+        found**2,
+        freedom,
+        residual=(np.add.reduceat(weight * deviation, first) / total)[trusted],
+        station=visits.station[trusted],
+        share=1.0 / total[trusted],
+        lost=lost,
+    )
+    return float(np.sqrt(variance))
 
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)

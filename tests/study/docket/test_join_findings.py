@@ -134,3 +134,58 @@ def test_cut_stations_are_those_whose_loss_parts_the_graph():
         assert _cut_stations(joins, 8) == expected
         parted += len(expected)
     assert parted > 100
+
+
+TARE = '[[tare]]\nrun = "X1"\ntime = "2026-05-04T{}Z"\n'
+
+
+def test_the_stretch_after_a_tare_that_one_visit_joins_is_named_with_its_times(invented, found):
+    # Nothing but the visit of A at 09:10 tells how much the tare at 09:05 is.
+    rows = of_runs(invented, "ABCABCADEDED")
+    assert not found(invented.survey(rows), "run_hangs_by_one")
+    rows = of_runs(invented, "ABCBCABDEDEAED")
+    results = invented.survey(rows, tables=TARE.format("09:05:00"))
+    (one,) = found(results, "run_hangs_by_one")
+    assert one.severity == "look" and one.stations == (0,)
+    assert one.place == "A, 20.0 m; run X1 from 2026-05-04 09:05:00 UTC on"
+    assert one.text.startswith(
+        "Run X1 from 2026-05-04 09:05:00 UTC on is joined to the rest of the network through A alone, by 1 visit in it"
+    )
+    at = [n for n, row in enumerate(visits_of(results)) if row["station"] == "A"]
+    assert one.rows == tuple(np.flatnonzero(results.network.visits.of_row == at[-1]).tolist())
+
+
+def test_a_bad_visit_after_the_tare_does_shift_that_whole_stretch(invented, found):
+    rows = of_runs(invented, "ABCBCABDEDEAED")
+    clean = invented.survey(rows, tables=TARE.format("09:05:00"))
+    for row in rows:
+        if row["station"] == "A" and row["time"] > "2026-05-04T09:05":
+            row["reading [mGal]"] = f"{float(row['reading [mGal]']) + 0.5:.4f}"
+    off = invented.survey(rows, tables=TARE.format("09:05:00"))
+    moved = off.stations.gravity.values - clean.stations.gravity.values
+    np.testing.assert_allclose(moved / 1e-5, [0.0, 0.0, 0.0, -0.5, -0.5], atol=1e-6)
+
+
+@pytest.mark.parametrize("more", ["", "size = 0.1\nsize_sd = 0.01\n"])
+def test_two_stations_or_a_stated_size_join_the_stretches(invented, found, more):
+    stops = "ABCBCABDEDEAED" if more else "ABCBCABDEBEAED"
+    results = invented.survey(of_runs(invented, stops), tables=TARE.format("09:05:00") + more)
+    assert not found(results, "run_hangs_by_one")
+
+
+def test_three_stretches_are_named_with_both_their_tares(invented, found):
+    tables = TARE.format("08:55:00") + TARE.format("09:45:00")
+    results = invented.survey(of_runs(invented, "ABABABADADACAC"), tables=tables)
+    places = [one.place for one in found(results, "run_hangs_by_one")]
+    assert sorted(places) == [
+        "A, 20.0 m; run X1 from 2026-05-04 08:55:00 UTC to 2026-05-04 09:45:00 UTC",
+        "A, 20.0 m; run X1 from 2026-05-04 09:45:00 UTC on",
+    ]
+
+
+def test_a_visit_that_the_tare_falls_into_joins_both_sides_of_it(invented, found):
+    # A is read from 08:40 to 08:42; what the tare at 08:41 is its own readings tell.
+    results = invented.survey(of_runs(invented, "BCBCADEDE"), tables=TARE.format("08:41:00"))
+    (one,) = found(results, "run_hangs_by_one")
+    assert one.place == "A, 20.0 m; run X1 from 2026-05-04 08:41:00 UTC on"
+    assert " through A alone, by 1 visit in it and 1 visit in the others" in one.text

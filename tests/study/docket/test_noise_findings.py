@@ -73,15 +73,42 @@ def test_noise_far_below_the_floor_is_told_from_one_chance_in_a_thousand_on(inve
     assert len(found(invented.survey(invented.visits(quiet=quiet)), "noise_at_floor")) == told
 
 
-def test_noise_that_one_bad_visit_gave_to_all_is_told_as_such(invented, found):
-    rows = invented.visits("ABCDEDCBADCBAE", readings=1)
-    rows.insert(5, {**rows[4], "time": rows[4]["time"].replace(":00Z", ":30Z")})
-    rows[5]["reading [mGal]"] = f"{float(rows[4]['reading [mGal]']) + 0.06:.4f}"
-    results = invented.survey(rows)
+def read_twice(rows, visits, size):
+    """Single readings, some of them read again half a minute later, off the first by so much, mGal."""
+    more = [
+        {
+            **rows[one],
+            "time": rows[one]["time"].replace(":00Z", ":30Z"),
+            "reading [mGal]": f"{float(rows[one]['reading [mGal]']) + size:.4f}",
+        }
+        for one in visits
+    ]
+    return sorted([*rows, *more], key=lambda row: row["time"])
+
+
+def test_one_bad_second_reading_is_told_as_such_and_is_no_noise(invented, found):
+    results = invented.survey(read_twice(invented.visits("ABCDEDCBADCBAE", readings=1), [4], 0.06))
     assert not found(results, "noise_at_floor")
     (one,) = found(results, "noise_of_few")
+    assert (one.severity, one.stations, one.rows) == ("look", (4,), (4, 5))
     # Two readings 60 microgal apart, 0.2 of it drift: that over the root of 2.
-    assert one.severity == "look" and "the noise of a reading, 42.3 µGal, is what 1 degree of freedom" in one.text
+    assert one.text.startswith(
+        "Readings within visits scatter by 42.3 µGal (1 degree of freedom), most in visit 5 at 220.0 m, where the "
+        "visits themselves allow "
+    )
+    assert one.place == "E, 220.0 m; readings.csv, rows 6 and 7"
+    assert results.network.adjustment.noise.sd.max() == 2e-8
+
+
+def test_a_second_reading_as_far_off_as_noise_puts_it_is_no_finding(invented, found):
+    rows = read_twice(invented.visits("ABCDEDCBADCBAE", readings=1), [4], 0.01)
+    assert not found(invented.survey(rows), "noise_of_few")
+
+
+def test_noise_that_five_bad_visits_gave_to_all_is_told_as_such(invented, found):
+    rows = read_twice(invented.visits("ABCDE" * 10, readings=1), [4, 13, 22, 31, 45], 0.06)
+    (one,) = found(invented.survey(rows), "noise_of_few")
+    assert one.severity == "look" and "the noise of a reading, 42.3 µGal, is what 5 degrees of freedom" in one.text
 
 
 def test_noise_that_many_visits_share_is_not_that_of_few(invented, found):
@@ -170,3 +197,27 @@ def test_one_bad_reading_leaves_a_majority(invented, found):
     rows[7]["reading [mGal]"] = f"{float(rows[7]['reading [mGal]']) + 10_000.0:.4f}"
     results = invented.survey(rows)
     assert not found(results, "no_majority") and len(found(results, "reading_disagrees")) == 1
+
+
+def test_the_fit_by_least_absolute_deviations_is_as_low_as_the_linear_programme(invented):
+    """Half of the visits off by milligals: the sum of absolute residuals against its least by linear programming."""
+    import numpy as np
+    from scipy.optimize import linprog
+
+    from plumbwell.study.docket.noise import _least_deviations
+
+    results = invented.survey(moved(invented.visits(STOPS), *half_of_the_visits(0.5)))
+    fit, visits = results.network.adjustment, results.network.visits
+    residual = fit.solution.residual[:, 0]
+    left = np.abs(_least_deviations(results, residual, np.full(len(visits), 4e-8))).sum() / 1e-5
+    past = (0.5 * (visits.first + visits.last) - visits.first[0]) / 3600.0
+    columns = [visits.station == one for one in range(5)] + [past]
+    design, count = np.column_stack(columns).astype(float), len(visits)
+    # residual = design x + over - under, all in mGal; the sum of over and under is least.
+    equal = np.hstack([design, np.eye(count), -np.eye(count)])
+    bounds = [(None, None)] * design.shape[1] + [(0.0, None)] * (2 * count)
+    cost = np.concatenate([np.zeros(design.shape[1]), np.ones(2 * count)])
+    least = linprog(cost, A_eq=equal, b_eq=residual / 1e-5, bounds=bounds).fun
+    # Residuals under a tenth of 4 microgal count by their squares: at most half of that is lost in each of the visits.
+    assert least <= left + 1e-9 and left - least < count * 0.5 * 0.1 * 0.004
+    assert np.abs(residual).sum() / 1e-5 > 1.02 * least

@@ -50,8 +50,8 @@ DRIFT_CODES = (
     "relative_gravity", "single_visit", "tare_outside", "tie_far_from_normal", "tie_unknown_station",
     "tie_unvisited", "ties_disagree", "datum_station_unknown", "datum_station_unused", "drift_large",
     "drift_not_as_stated", "no_majority", "noise_at_floor", "noise_of_few", "one_station_repeated", "run_hangs_by_one",
-    "tare_confounded", "tare_proposed", "tare_applied", "drift_walk", "drift_walk_left_out", "outliers_left_out",
-    "scale_estimated", "scale_untold",
+    "bend_untold", "tare_confounded", "tare_proposed", "tare_applied", "drift_walk", "drift_walk_left_out",
+    "outliers_left_out", "scale_estimated", "scale_untold",
 )  # fmt: skip
 """The network: what ties visits together, and the datum they hang on."""
 

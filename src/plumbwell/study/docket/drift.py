@@ -6,8 +6,6 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from plumbwell.reduction.drift_basis import DriftUnknown
-from plumbwell.reduction.visits import Visits
 from plumbwell.study.docket.wording import (
     HOUR,
     MILLIGAL,
@@ -33,7 +31,7 @@ def drift_large(results: Results) -> Iterator[Finding]:
     """Runs whose drift is larger than what gravity changes by between their stations."""
     visits, at = results.network.visits, results.stations.gravity.values
     part = results.network.parts.of_station
-    for code, members in _by_run(visits):
+    for code, members in _moving(results):
         read = np.unique(visits.station[members])
         read = read[np.isfinite(at[read])]
         signal = max((float(np.ptp(at[read[part[read] == one]])) for one in np.unique(part[read])), default=0.0)
@@ -62,20 +60,19 @@ def drift_contradicts(results: Results) -> Iterator[Finding]:
     """
     fit = results.network.adjustment
     basis = fit.basis
-    terms_of: dict[int, list[DriftUnknown]] = {}
-    for one in fit.design.unknowns:
-        if one.kind == "drift":
-            terms_of.setdefault(one.run, []).append(one)
-    for code, terms in terms_of.items():
-        stated, stated_sd = float(basis.rate[code]), float(basis.rate_sd[code])
-        if not stated_sd < np.inf:
-            continue
-        length = float(basis.length[code])
-        # Scaled time ends at 1, so that the powers add up to the drift over the whole run.
-        found = sum(fit.unknown(one)[0] for one in terms) / length
-        off = abs(found - stated) / stated_sd
+    numbers_of = [n for n, one in enumerate(fit.design.unknowns) if one.kind == "drift"]
+    run_of = np.array([fit.design.unknowns[n].run for n in numbers_of], dtype=np.intp)
+    # Scaled time ends at 1, so that the powers add up to the drift over the whole run.
+    whole = np.bincount(run_of, fit.solution.unknown[numbers_of, 0], minlength=len(basis.length))
+    sds_off = np.where(basis.rate_sd < np.inf, np.abs(whole / basis.length - basis.rate) / basis.rate_sd, 0.0)
+    for code in dict.fromkeys(run_of.tolist()):
+        off = float(sds_off[code])
         if off <= CONTRADICTION:
             continue
+        terms = [fit.design.unknowns[n] for n in numbers_of if fit.design.unknowns[n].run == code]
+        stated, stated_sd = float(basis.rate[code]), float(basis.rate_sd[code])
+        length = float(basis.length[code])
+        found = float(whole[code]) / length
         severity, pull = "look", ""
         if len(terms) == 1:
             sd = fit.unknown(terms[0])[1] / length
@@ -100,11 +97,28 @@ def _rate(value: float) -> str:
     return f"{value / MILLIGAL * HOUR:.3g}".replace("-", "\u2212")
 
 
-def _by_run(visits: Visits) -> Iterator[tuple[int, slice]]:
-    """Each run with its visits, which stand together."""
-    first = np.flatnonzero(np.diff(visits.run, prepend=-1)).tolist()
-    for start, end in zip(first, [*first[1:], len(visits)], strict=True):
-        yield int(visits.run[start]), slice(start, end)
+def _moving(results: Results) -> list[tuple[int, slice]]:
+    """Each run with its visits, which stand together, but for those whose drift is plainly within their signal.
+
+    Without a tare all stations of a run are of one part of the network, and its drift has no jumps.
+    """
+    visits, at = results.network.visits, results.stations.gravity.values[results.network.visits.station]
+    drift = results.readings.estimates.drift.values[visits.rows]
+    first = np.flatnonzero(np.diff(visits.run, prepend=-1))
+    signal, span = _ranges(at, first), _ranges(drift, visits.start[first])
+    listed_tare = np.isin(visits.run[first], results.network.adjustment.basis.tare_run)
+    ends = [*first[1:].tolist(), len(visits)]
+    return [
+        (int(visits.run[first[n]]), slice(int(first[n]), ends[n]))
+        for n in np.flatnonzero(listed_tare | (span > signal)).tolist()
+    ]
+
+
+def _ranges(values: Array, first: Index) -> Array:
+    """Greatest less least known value of each group, minus infinity where none is known."""
+    known = np.isfinite(values)
+    most = np.maximum.reduceat(np.where(known, values, -np.inf), first)
+    return most - np.minimum.reduceat(np.where(known, values, np.inf), first)
 
 
 def _drift_span(results: Results, code: int, members: slice) -> float:

@@ -3,53 +3,100 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from plumbwell.study.docket.outliers import UNCHECKED
-from plumbwell.study.docket.wording import counted, gravity, label, listed, numbers, run, station
+from plumbwell.study.docket.wording import counted, gravity, label, listed, moment, numbers, run, station
 from plumbwell.study.finding import Finding
 from plumbwell.study.results import Results
 from plumbwell.study.visit_table import visit_redundancy
-from plumbwell.survey.column import Array
+from plumbwell.survey.column import Array, Index
 
 LISTED_RUNS = 4
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class _Stretches:
+    """Runs, cut at their tares of unknown size: what lies between two of them stands at a level of its own.
+
+    Parameters
+    ----------
+    first, last : (v,) int arrays
+        Stretch of each visit's first and last reading: the run's code before its first tare, further numbers after.
+    name : tuple of str
+        Of each stretch, fit for a message.
+    """
+
+    first: Index
+    last: Index
+    name: tuple[str, ...]
+
+    def of(self, group: tuple[int, ...]) -> NDArray[np.bool_]:
+        """True for the visits of some stretches."""
+        return np.isin(self.first, group) | np.isin(self.last, group)
+
+
+def _stretches(results: Results) -> _Stretches:
+    visits, basis = results.network.visits, results.network.adjustment.basis
+    first, last = visits.run.copy(), visits.run.copy()
+    names = [run(results, code) for code in range(len(results.survey.readings.run.names))]
+    cuts: dict[int, list[float]] = {}
+    for tare, code in zip(basis.tares, basis.tare_run.tolist(), strict=True):
+        if tare.size is None:
+            cuts.setdefault(code, []).append(tare.time)
+    for code, times in cuts.items():
+        times, mine = sorted(times), visits.run == code
+        whole = names[code]
+        names[code] = f"{whole} before {moment(times[0])}"
+        for number, time in enumerate(times):
+            first[mine & (visits.first >= time)] = len(names)
+            last[mine & (visits.last >= time)] = len(names)
+            until = f" to {moment(times[number + 1])}" if number + 1 < len(times) else " on"
+            names.append(f"{whole} from {moment(time)}{until}")
+    return _Stretches(first=first, last=last, name=tuple(names))
 
 
 def run_hangs_by_one(results: Results) -> Iterator[Finding]:
     """Runs, or groups of runs, that one station alone joins to the rest; grave where nothing checks its visits there.
 
     Ties join all tied stations. Of the groups that a station holds together the tied one counts as the rest, else the
-    one with the most visits. A base that each run reads often is the usual practice and is told as a note.
+    one with the most visits. A base that each run reads often is the usual practice and is told as a note. A tare of
+    unknown size parts its run into two.
     """
     visits = results.network.visits
-    if len(visits.run_order) < 2:
+    stretches = _stretches(results)
+    if np.ptp(stretches.last) == 0 and np.ptp(stretches.first) == 0:
         return
-    joins = _neighbours(results)
+    n_stations = len(results.stations)
+    joins = _neighbours(results, stretches)
     redundancy: Array | None = None
-    for where in _cut_stations(joins, len(results.stations)):
-        groups = [_runs_of(joins, start, where, len(results.stations)) for start in joins[where]]
+    for where in _cut_stations(joins, n_stations):
+        groups = [_runs_of(joins, start, where, n_stations) for start in joins[where]]
         tied = {group for group, start in zip(groups, joins[where], strict=True) if start == len(joins) - 1}
-        sizes = {group: (group in tied, _visits_of(results, group)) for group in groups if group}
+        sizes = {group: (group in tied, int(np.count_nonzero(stretches.of(group)))) for group in groups if group}
         rest = max(sizes, key=lambda group: sizes[group])
         for group in sorted(set(sizes) - {rest}):
-            own = np.isin(results.network.visits.run, group)
-            if np.all(results.network.visits.station[own] == where):
+            if np.all(visits.station[stretches.of(group)] == where):
                 continue  # with no station of its own the group has nothing that could be shifted
             redundancy = visit_redundancy(results) if redundancy is None else redundancy
-            yield _finding(results, where, group, redundancy)
+            yield _finding(results, where, group, redundancy, stretches)
 
 
-def _neighbours(results: Results) -> list[list[int]]:
-    """The graph of stations, then runs by code, then all ties as one: what each is joined with, by number."""
+def _neighbours(results: Results, stretches: _Stretches) -> list[list[int]]:
+    """The graph of stations, then stretches of runs, then all ties as one: what each is joined with, by number."""
     visits, tied = results.network.visits, np.unique(results.network.ties.station)
-    n_stations, n_runs = len(results.stations), len(results.survey.readings.run.names)
-    pairs = np.unique(np.column_stack([visits.station, n_stations + visits.run]), axis=0)
-    ties = np.column_stack([tied, np.full(len(tied), n_stations + n_runs)])
-    joins: list[list[int]] = [[] for _ in range(n_stations + n_runs + 1)]
-    for one, other in np.concatenate([pairs, ties]).tolist():
-        joins[one].append(other)
-        joins[other].append(one)
+    n_stations, n_stretches = len(results.stations), len(stretches.name)
+    size = n_stations + n_stretches + 1
+    one = np.concatenate([visits.station, visits.station, tied])
+    other = np.concatenate([stretches.first, stretches.last, np.full(len(tied), n_stretches)]) + n_stations
+    pairs = np.unique(one * size + other)
+    joins: list[list[int]] = [[] for _ in range(size)]
+    for left, right in zip((pairs // size).tolist(), (pairs % size).tolist(), strict=True):
+        joins[left].append(right)
+        joins[right].append(left)
     return joins
 
 
@@ -93,7 +140,7 @@ def _cut_stations(joins: list[list[int]], n_stations: int) -> list[int]:
 
 
 def _runs_of(joins: list[list[int]], start: int, without: int, n_stations: int) -> tuple[int, ...]:
-    """Codes of the runs that hang together with a node when a station is lost."""
+    """The stretches of runs that hang together with a node when a station is lost."""
     seen, waiting = {start, without}, [start]
     while waiting:
         for other in joins[waiting.pop()]:
@@ -103,17 +150,17 @@ def _runs_of(joins: list[list[int]], start: int, without: int, n_stations: int) 
     return tuple(sorted(node - n_stations for node in seen if n_stations <= node < len(joins) - 1))
 
 
-def _visits_of(results: Results, group: tuple[int, ...]) -> int:
-    return int(np.count_nonzero(np.isin(results.network.visits.run, group)))
-
-
-def _finding(results: Results, where: int, group: tuple[int, ...], redundancy: Array) -> Finding:
+def _finding(
+    results: Results, where: int, group: tuple[int, ...], redundancy: Array, stretches: _Stretches
+) -> Finding:
     visits = results.network.visits
     weight = results.network.adjustment.solution.weight
     here = visits.station == where
-    own = here & np.isin(visits.run, group)
-    others = here & ~own
-    names = [run(results, code) for code in visits.run_order.tolist() if code in group]
+    own = here & stretches.of(group)
+    # A visit that a tare falls into stands on both sides.
+    others = here & ~(np.isin(stretches.first, group) & np.isin(stretches.last, group))
+    present = dict.fromkeys(stretches.first.tolist()) | dict.fromkeys(stretches.last.tolist())
+    names = [stretches.name[one] for one in present if one in group]
     runs = f"run {names[0]}" if len(names) == 1 else f"runs {listed(names, LISTED_RUNS)}"
     many = len(names) > 1
     variance = 1.0 / float(weight[own].sum())

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable, Iterator
 
 from plumbwell.study.docket import (
+    bends,
     corrections,
     depths,
     drift,
@@ -40,6 +41,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     network.few_freedom,
     noise.no_majority,
     noise.noise_at_floor,
+    noise.noise_of_few,
     noise.one_station_repeated,
     noise.weights_far_apart,
     drift.drift_large,
@@ -67,6 +69,7 @@ KINDS: tuple[Callable[[Results], Iterator[Finding]], ...] = (
     settling.visit_settling,
     settling.visits_creep_alike,
     joins.run_hangs_by_one,
+    bends.bend_untold,
     depths.crosses_ground,
     depths.far_apart,
     rock.density_outside,

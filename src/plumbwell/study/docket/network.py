@@ -58,7 +58,7 @@ def single_station(results: Results) -> Iterator[Finding]:
     )
 
 
-def _undetermined_runs(results: Results) -> list[int]:
+def undetermined_runs(results: Results) -> list[int]:
     """Codes of the runs of order 1 or more whose mean drift the visits alone leave open."""
     fit = results.network.adjustment
     one = fit.design
@@ -88,7 +88,7 @@ def _comes_back(visits: Visits, code: int) -> bool:
 def no_repeat(results: Results) -> Iterator[Finding]:
     """Runs without a repeat separated in time: their drift rests on what the instrument states."""
     basis, visits = results.network.adjustment.basis, results.network.visits
-    for code in _undetermined_runs(results):
+    for code in undetermined_runs(results):
         if _comes_back(visits, code):
             continue  # what is open then is a higher order, and `rank_lost` names it
         stated = f"{rate(float(basis.rate[code]))} ± {rate(float(basis.rate_sd[code]))} mGal/h"

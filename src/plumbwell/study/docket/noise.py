@@ -8,10 +8,14 @@ import numpy as np
 
 from plumbwell.reduction.calibration import instruments_used
 from plumbwell.reduction.chance import chi_square_chance
+from plumbwell.reduction.network import NO_TIES, solve
+from plumbwell.reduction.noise_of_few import CHANCE, scatter_chance
+from plumbwell.reduction.variances import ENOUGH_FREEDOM
 from plumbwell.study.docket.wording import (
     MILLIGAL,
     amount,
     counted,
+    depth,
     gravity,
     line,
     lines,
@@ -39,8 +43,11 @@ LEAST_CHECKS = 3
 """Degrees of freedom from which on a majority can be spoken of."""
 
 PASSES = 30
-LARGEST_FIT = 20_000_000
-"""Numbers in the design of the fit by least absolute deviations; beyond it is not made."""
+STILL = 0.01
+"""Share of the noise of a visit under which a fit by least absolute deviations no longer moves."""
+
+LEAST_WEIGHT = 1e-6
+"""Of a visit in that fit; less would be lost in rounding."""
 
 
 def weights_far_apart(results: Results) -> Iterator[Finding]:
@@ -114,6 +121,43 @@ def noise_at_floor(results: Results) -> Iterator[Finding]:
         text=better + "every sd rests on what is stated (reading_floor, reseating_sd), not on what the survey shows.",
         mend="See that the readings were not averaged, rounded or copied; lower the stated noise, if the instrument "
         "is so good.",
+    )
+
+
+def noise_of_few(results: Results) -> Iterator[Finding]:
+    """Few readings within visits scatter more than what the visits allow: a bad one among them, and no noise."""
+    fit, visits = results.network.adjustment, results.network.visits
+    freedom, among_visits = fit.noise.freedom, fit.reseating.freedom
+    if results.recipe.noise != "estimate" or not 0 < freedom < ENOUGH_FREEDOM or among_visits < 1:
+        return
+    first, sd = visits.start[:-1], fit.noise.sd
+    # Readings off the mean of their visit, and visits off the network as if all their scatter were reading noise.
+    left = fit.residual[visits.rows] + fit.visit_effect[visits.rows]
+    mean = np.add.reduceat(fit.noise.weight * left, first)
+    off = left - np.repeat(mean, np.diff(visits.start))
+    within = float(np.sum((off / sd) ** 2)) / freedom
+    checked = 1.0 - fit.solution.weight * fit.solution.variance_of_fit()
+    among = float(np.sum(mean**2) / np.sum(checked * fit.noise.variance))
+    chance = scatter_chance(within, freedom, among, among_visits)
+    if chance >= CHANCE:
+        return
+    typical = float(np.median(sd))
+    worst = int(visits.of_row[visits.rows[np.argmax(np.abs(off / sd))]])
+    rows = visits.rows[visits.start[worst] : visits.start[worst + 1]]
+    where = int(visits.station[worst])
+    yield Finding(
+        code="noise_of_few",
+        severity="look",
+        place=f"{station(results, where)}; {lines(results, rows)}",
+        text=f"Readings within visits scatter by {gravity(within**0.5 * typical)} "
+        f"({counted(freedom, 'degree of freedom', 'degrees of freedom')}), most in visit {worst + 1} at "
+        f"{depth(results, where)}, where the visits themselves allow {gravity(among**0.5 * typical)} at the most "
+        f"(p = {chance:.1g}): that is no noise, and the noise is taken from the visits alone. The mean of that visit "
+        "holds whatever is wrong there.",
+        mend="Look at the readings of that visit: an unsettled one among them, or two stops taken for one visit; take "
+        "the bad one out of use with a reason.",
+        stations=(where,),
+        rows=numbers(rows),
     )
 
 
@@ -224,29 +268,19 @@ def _least_deviations(results: Results, residual: Array, usual: Array) -> Array:
     Least squares with weights 1/|residual|, over and over (Schlossmacher 1973, J. Am. Stat. Assoc. 68, 857-859), of
     stations, biases, drift and tares; started from the residuals of the network, which hold all that a fit can take.
     """
-    fit, visits = results.network.adjustment, results.network.visits
-    columns = []
-    middle = 0.5 * (visits.first + visits.last)
-    for run in visits.run_order.tolist():
-        mine = visits.run == run
-        time = (middle - visits.run_start[run]) / max(float(visits.run_length[run]), 1.0)
-        columns += [np.where(mine, time**power, 0.0) for power in range(fit.orders[run] + 1)]
-    for tare, run in zip(fit.basis.tares, fit.basis.tare_run.tolist(), strict=True):
-        columns.append(np.where((visits.run == run) & (middle >= tare.time), 1.0, 0.0))
-    if len(columns) * len(visits) > LARGEST_FIT:
-        return residual
-    border, at = np.column_stack(columns), visits.station
-    number = len(results.stations)
+    fit, typical = results.network.adjustment, float(np.median(usual))
+    # The visits alone: what is stated of drift would bend a fit that trusts no visit much. Modes of a walk stay bound.
+    pins = fit.rank.pins
+    if fit.walk is not None:
+        pins = pins + fit.design.prior_matrix * typical**2
     left = residual
     for _ in range(PASSES):
-        weight = 1.0 / np.maximum(np.abs(left) / usual, 0.1) / usual
-        total = np.bincount(at, weight, minlength=number)
-        total = np.where(total > 0.0, total, 1.0)
-        mean = np.zeros((number, border.shape[1] + 1))
-        both = np.column_stack([border, residual])
-        np.add.at(mean, at, weight[:, None] * both)
-        both = both - (mean / total[:, None])[at]
-        root = np.sqrt(weight)[:, None]
-        answer = np.linalg.lstsq(root * both[:, :-1], root[:, 0] * both[:, -1], rcond=1e-10)[0]
-        left = both[:, -1] - both[:, :-1] @ answer
+        weight = np.maximum(typical / np.maximum(np.abs(left), 0.1 * usual), LEAST_WEIGHT)
+        try:
+            solution = solve(fit.design, weight, residual[:, None], NO_TIES, pins=pins)
+        except np.linalg.LinAlgError:
+            break
+        before, left = left, solution.residual[:, 0]
+        if np.all(np.abs(left - before) < STILL * usual):
+            break
     return left
