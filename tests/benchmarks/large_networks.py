@@ -12,7 +12,6 @@ from plumbwell.study.case import Case
 # The maker of surveys that the tests share; these files are run by hand, where nobody else says where it is.
 sys.path.insert(0, str(Path(__file__).parents[1] / "made"))
 from made_surveys import Row, made_case  # noqa: E402
-
 from plumbwell.survey.instrument import Instrument, Tare  # noqa: E402
 
 UGAL, MGAL, HOUR = 1e-8, 1e-5, 3600.0

@@ -33,7 +33,8 @@ class ChainSpread:
         """Covariances of chosen pairs, (m,)."""
         found = np.zeros(len(first))
         for spread, pairs in self.terms:
-            one, other = pairs[first], pairs[second]
+            one = pairs[first]
+            other = one if second is first else pairs[second]
             found += np.einsum("kr,kr,r->k", _columns(spread, one), _columns(spread, other), spread.signs)
             if spread.diagonal.any():
                 for station, by in _ends(one):

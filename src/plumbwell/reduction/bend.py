@@ -164,4 +164,5 @@ def _loose(number: Index, visit_sd: float) -> Priors:
         row=np.arange(count),
         unknown=number,
         factor=np.ones(count),
+        run=np.full(count, -1),
     )

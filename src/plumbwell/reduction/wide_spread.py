@@ -87,11 +87,13 @@ class WideSpread:
         step = max(AT_ONCE // (4 * widest * widest), 1)
         for start in range(0, len(one), step):
             part = np.arange(start, min(start + step, len(one)))
-            found[part] = self._between(one[part], other[part])
+            mine = one[part]
+            found[part] = self._between(mine, mine if other is one else other[part])
         return found
 
     def _between(self, one: Sums, other: Sums) -> Array:
-        rows, their_rows = self._rows(one), self._rows(other)
+        rows = self._rows(one)
+        their_rows = rows if other is one else self._rows(other)
         found = products(self.factor, rows, their_rows, len(one))
         if len(self.anchors):
             share, their_share = self._shares(one), self._shares(other)

@@ -14,7 +14,7 @@ from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
 from plumbwell.reduction.calibration import instruments_used
 from plumbwell.reduction.datums import StationGravity, datum_stations, referred_gravity
 from plumbwell.reduction.drift_basis import DriftUnknown, drift_basis
-from plumbwell.reduction.found_errors import ProposedTare, gaps_of, is_told
+from plumbwell.reduction.found_errors import OUT, ProposedTare, gaps_of, is_told
 from plumbwell.reduction.judged import Judgement
 from plumbwell.reduction.judgement import alike_weights, as_tares, judgement, robust_weights, used_rows
 from plumbwell.reduction.located import Located
@@ -117,26 +117,37 @@ def network_work(
     fixed = {
         "n_stations": n_stations, "start_orders": start, "automatic": automatic, "station": asked.station,
     }
-    asked_walk: str | float = recipe.drift_walk
-    fit = keep(
-        adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed, walk=asked_walk, responses=responses
+    plain = keep(
+        adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed, walk="off", responses=responses
     )
-    plain = fit
-    if fit.walk is not None:
-        plain = keep(
-            adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed, walk="off", responses=responses
-        )
     found = keep(
         judgement, plain, observed, asked.ties, parts, noise, **fixed, run_names=names, tares=asked.tares,
         run_instrument=meters,
     )
-    walk_not_needed = False
-    if fit.walk is not None and any(not one.one_visit for one in found.proposed):
-        found, needed = keep(
-            _beside_walk, fit, found, observed, asked, noise, start, automatic, asked_walk
+    # Readings in error would be taken for a wander: whether there is one is asked of the others.
+    fit, walk, walk_not_needed = plain, _Walk(asked=recipe.drift_walk), False
+    if recipe.drift_walk != "off":
+        clean = keep(_without_named, found, len(readings)) if len(found.rows) else None
+        wandering = keep(
+            adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed | _held(plain), walk=recipe.drift_walk,
+            responses=responses, trust=clean,
         )
-        if asked_walk == "auto" and not needed:
-            walk_not_needed, fit, asked_walk = True, plain, "off"
+        tried = wandering.walk_tried
+        if wandering.walk is not None and any(not one.one_visit for one in found.proposed):
+            found, needed = keep(
+                _beside_walk, wandering, found, observed, asked, noise, start, automatic, clean
+            )
+            walk_not_needed = recipe.drift_walk == "auto" and not needed
+        if wandering.walk is not None and not walk_not_needed:
+            walk = _Walk(asked=recipe.drift_walk, strength=wandering.walk.strength)
+            if clean is not None:
+                wandering = keep(
+                    adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed | _held(plain),
+                    walk=walk.in_force, responses=responses,
+                )
+            fit = keep(_with_tests, wandering, plain)
+        else:
+            fit = keep(_with_trial, plain, tried)
     jumps = applicable(found, recipe)
     apply = recipe.tares == "proposed" and bool(jumps)
     trust = None
@@ -152,8 +163,8 @@ def network_work(
         trust = keep(robust_weights, observed, basis, stays, asked.ties, parts, noise, found, **fixed)
     if apply or stays is not fit.visits or trust is not None:
         fit = keep(
-            adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed, walk=asked_walk, responses=responses,
-            trust=trust,
+            adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed, walk=walk.in_force,
+            responses=responses, trust=trust,
         )
     counts = keep(_visit_counts, stays, n_stations)
     return NetworkWork(
@@ -177,6 +188,38 @@ def applicable(found: Judgement, recipe: Recipe) -> tuple[ProposedTare, ...]:
     return tuple(one for one in found.proposed if not one.one_visit or recipe.outliers == "flag")
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Walk:
+    """The walk that was asked for, and the strength of the one that is kept; None for none."""
+
+    asked: str | float
+    strength: float | None = None
+
+    @property
+    def in_force(self) -> str | float:
+        """What an adjustment is asked for."""
+        return "off" if self.strength is None else self.strength
+
+
+def _held(plain: Adjustment) -> dict[str, tuple[int, ...]]:
+    """The drift orders that were chosen, to be kept."""
+    return {"start_orders": plain.orders, "automatic": ()}
+
+
+def _with_tests(wandering: Adjustment, plain: Adjustment) -> Adjustment:
+    return replace(wandering, tests=plain.tests, walk_tried=True)
+
+
+def _with_trial(plain: Adjustment, tried: bool) -> Adjustment:
+    return replace(plain, walk_tried=tried)
+
+
+def _without_named(found: Judgement, n_rows: int) -> Array:
+    trust = np.ones(n_rows)
+    trust[found.rows] = OUT
+    return frozen(trust)
+
+
 def _beside_walk(
     fit: Adjustment,
     found: Judgement,
@@ -185,12 +228,12 @@ def _beside_walk(
     noise: NoiseTerms,
     start: tuple[int, ...],
     automatic: tuple[int, ...],
-    walk: str | float,
+    trust: Array | None,
 ) -> tuple[Judgement, bool]:
     """The found jumps that stand beside a walk of the drift, and whether a walk is needed beside them."""
     names, n_stations = asked.readings.run.names, len(asked.where.placement.label)
     meters = _run_instruments(asked.readings, asked.instruments)
-    # What a bad visit at an end may be too says nothing against a walk.
+    # What a bad visit at an end may be too says nothing against a walk, and it is out here.
     at_ends = [one for one in found.proposed if one.one_visit]
     proposed = [one for one in found.proposed if not one.one_visit]
     while True:
@@ -199,9 +242,10 @@ def _beside_walk(
             asked.tares + as_tares(tuple(proposed), names), meters,
         )
         parts = network_parts(basis, fit.visits, asked.ties, n_stations=n_stations)
+        # An unlisted jump raises the order of its run: beside it the orders are chosen anew.
         both = adjusted(
             observed, basis, fit.visits, asked.ties, parts, noise, n_stations=n_stations, start_orders=start,
-            automatic=automatic, station=asked.station, walk=walk,
+            automatic=automatic, station=asked.station, walk="auto", trust=trust,
         )
         first = len(basis.tares) - len(proposed)
         told = []

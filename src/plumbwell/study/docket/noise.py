@@ -42,6 +42,9 @@ NORMAL_OF_MEDIAN = 1.4826
 LEAST_CHECKS = 3
 """Degrees of freedom from which on a majority can be spoken of."""
 
+MOST_VISITS = 10_000
+"""Visits up to which a majority is looked for: of so many the readings in error are named one by one."""
+
 PASSES = 30
 STILL = 0.01
 """Share of the noise of a visit under which a fit by least absolute deviations no longer moves."""
@@ -201,7 +204,7 @@ def no_majority(results: Results) -> Iterator[Finding]:
             middle = NORMAL_OF_MEDIAN * float(np.median(off_median)) if off_median.size else 0.0
             noise = np.maximum(noise, middle)
         usual = np.sqrt(seat**2 + noise**2 / counts)
-        if np.sum((residual / usual) ** 2) > wide:
+        if np.sum((residual / usual) ** 2) > wide and len(visits) <= MOST_VISITS:
             off = np.flatnonzero(np.abs(_least_deviations(results, residual, usual)) > WIDE_VISITS * usual)
             if 2 * off.size >= freedom:
                 yield Finding(
