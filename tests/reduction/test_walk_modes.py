@@ -92,7 +92,7 @@ def test_how_many_modes_a_walk_is_given():
     counts = [modes_for(wander, 50) for wander in (1.0, 3.0, 10.0, 30.0, 100.0)]
     assert counts == sorted(counts) and counts[-1] > counts[0]
     for wander, count in zip((3.0, 10.0, 30.0), counts[1:4], strict=True):
-        # Strength 1 over a time of 1 ends with variance 1/3; what is left out at the end is under a fiftieth of a visit.
+        # Strength 1 over a time of 1 ends with variance 1/3; what is left out there is under a fiftieth of a visit.
         visit_sd = 1.0 / (np.sqrt(3.0) * wander)
         if count < MOST_MODES:
             modes = walk_modes(np.array([1.0]), count)
