@@ -10,7 +10,6 @@ import pytest
 from scipy.optimize import minimize, minimize_scalar
 
 from made_surveys import HOUR, MICROGAL, MILLIGAL, loop, made_case
-from many_runs import in_bands
 from plumbwell.reduction.restricted_likelihood import visits_alone
 from plumbwell.reduction.walk import FURTHER, LEAST_FREEDOM, enough_gain, likeliest_strength
 from plumbwell.study.reduce import reduce
@@ -194,9 +193,7 @@ def test_runs_weighed_one_by_one_find_a_strength_of_the_same_order():
         )
 
     (together,), gain = strengths_of(plain)
-    monkey = pytest.MonkeyPatch()
-    with monkey.context() as patch:
-        in_bands(patch)
+    with pytest.MonkeyPatch.context() as patch:
         patch.setattr("plumbwell.reduction.walk.MOST_TOGETHER", 8)
         alone, alone_gain = strengths_of(plain)
     assert len(alone) == len(FURTHER) and alone[0] < 2.0 * together and alone[-1] > 0.5 * together
