@@ -203,8 +203,8 @@ def test_higher_orders_of_runs_that_stand_at_others(orders, nothing):
     runs = tuple(Run(name=str(n + 1), drift_order=order) for n, order in enumerate(orders))
     fit = reduce(made_case(rows, instruments=(METER,), runs=runs, **FIXED)).network.adjustment
     found = more_drift(fit.solution, fit.basis, fit.visits, fit.noise.weight)
-    for run, order in enumerate(orders):
-        if nothing[run]:
+    for run, none in enumerate(nothing):
+        if none:
             assert found[run] == (0.0, 0.0)
     if 0 in orders:
         return
