@@ -1,4 +1,4 @@
-"""Readings and visits in error, found in invented surveys: which rows are named, by how much, and what is left alone."""
+"""Readings and visits in error, found in invented surveys: which rows are named, by how much, and what is not."""
 
 from dataclasses import replace
 
@@ -154,6 +154,15 @@ def test_large_residuals_do_not_hide_one_another():
     found = judged(rows_of({3: 200.0, 12: -150.0, 22: 90.0}))
     assert found.rows.tolist() == [3, 12, 22]
     np.testing.assert_allclose(found.error / MICROGAL, [200.0, -150.0, 90.0], atol=15.0)
+
+
+@pytest.mark.parametrize("gross", [{40: 5.0 * GAL}, dict.fromkeys((18, 19, 20), 5.0 * GAL)], ids=["reading", "visit"])
+@pytest.mark.parametrize("small", [{62: 30.0}, {60: 30.0, 61: 30.0, 62: 30.0}], ids=["reading", "visit"])
+def test_an_error_of_gals_does_not_hide_a_small_one(gross, small):
+    """While what is out of trust still bends the first look at the drift, readings minutes apart seem to scatter."""
+    found = judged(rows_of({**gross, **small}, count=3))
+    assert found.rows.tolist() == sorted({**gross, **small})
+    np.testing.assert_allclose(found.error[-1], 30 * MICROGAL, atol=10 * MICROGAL)
 
 
 def test_quiet_surveys_have_nothing_named_but_by_chance():

@@ -101,9 +101,9 @@ def test_errors_of_gals_leave_no_trace(outliers, gal):
     gross = reduced(rows, outliers=outliers)
     assert set(NAMED) <= set(gross.network.outlier_rows.tolist())
     off = gross.intervals.density.values - mild.intervals.density.values
-    # Weights of 1e-6 and less of errors of 1e6 uGal and less: a uGal at the most over one of three readings.
-    assert np.abs(off).max() < 1.5 * mild.intervals.density_sd.values.max()
-    np.testing.assert_allclose(gross.intervals.density_sd.values, mild.intervals.density_sd.values, rtol=0.3)
+    # A weight of 1e-14 of an error of 5e6 uGal is nothing; one of 1e-6 would still be some sds.
+    assert np.abs(off).max() < 0.05 * mild.intervals.density_sd.values.max()
+    np.testing.assert_allclose(gross.intervals.density_sd.values, mild.intervals.density_sd.values, rtol=0.02)
 
 
 @pytest.mark.parametrize("outliers", ["exclude", "downweight"])
