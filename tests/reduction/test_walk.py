@@ -167,6 +167,28 @@ def test_the_walk_takes_up_its_part_of_the_noise_when_that_is_estimated():
     assert falls(found) - best.fun < 0.1
 
 
+@pytest.mark.parametrize("wander", [20.0, 200.0])
+def test_gravity_beside_a_walk_is_that_of_the_walks_own_covariance(wander):
+    rows = rows_of(6, wander)
+    free = replace(METER, drift_rate_sd=np.inf, station_floor=0.0)
+    recipe = {"noise": "as_given", "drift_order": 1, "drift_walk": wander * UNIT}
+    results = reduce(made_case(rows, instruments=(free,), **recipe))
+    fit = results.network.adjustment
+    algebra = visit_algebra(rows, fit, orders={"1": 1, "2": 1})
+    variance = fit.noise.variance + fit.reseating.variance
+    root = np.linalg.cholesky((np.diag(variance) + (wander * UNIT) ** 2 * algebra.kernel()) / MICROGAL**2)
+    white = np.linalg.solve(root, algebra.design)
+    take = np.eye(len(LABELS), algebra.design.shape[1])
+    take[:, 0] -= 1.0
+    gain = take @ np.linalg.pinv(white, rcond=1e-10)
+    assert results.stations.label == tuple(LABELS)
+    # Modes leave out a drift whose sd is under a fiftieth of a visit's.
+    off = results.stations.gravity.values / MICROGAL - gain @ np.linalg.solve(root, algebra.values / MICROGAL)
+    sd = results.stations.gravity_sd.values / MICROGAL
+    assert np.abs(off).max() < np.sqrt(np.median(variance)) / MICROGAL / 50.0
+    np.testing.assert_allclose(sd, np.sqrt(np.sum(gain**2, axis=1)), rtol=4e-4, atol=1e-6)
+
+
 def test_few_degrees_of_freedom_leave_it_untried():
     rows = rows_of(1, 200.0, stops="ABCDEFGABCDEFG", runs=1)
     fit = adjusted(rows, drift_walk="auto")
