@@ -5,6 +5,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 from scipy.stats import f as f_law
+from scipy.stats import norm
 
 from made_surveys import HOUR, MICROGAL, MILLIGAL, STILL, loop, made_case
 from plumbwell.reduction.candidates import jumps
@@ -193,6 +194,9 @@ def test_noise_as_given_is_the_measure_where_the_recipe_says_so():
     whole = np.column_stack([station[:, None] == np.arange(8), time / time[-1], np.arange(32) >= 16]).astype(float)
     cofactor = np.linalg.inv(whole.T @ whole)
     assert found.sd == pytest.approx(np.hypot(2, 3) * MICROGAL * np.sqrt(cofactor[-1, -1]), rel=1e-3)
+    # The chance is that of a normal ratio in any of 31 gaps, the gain half of its square: nothing is estimated.
+    assert found.p == pytest.approx(31 * 2.0 * norm.sf(abs(found.size / found.sd)), rel=1e-6)
+    assert found.p < 0.01 and found.gain == pytest.approx(0.5 * (found.size / found.sd) ** 2, rel=1e-9)
     loose = replace(METER, reseating_sd=12 * MICROGAL)
     recipe = replace(STILL, noise="as_given", drift_order=1)
     assert reduce(made_case(rows, instruments=(loose,), recipe=recipe)).network.proposed == ()

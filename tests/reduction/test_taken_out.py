@@ -123,14 +123,7 @@ def test_one_hidden_by_no_majority_is_kept_and_its_sd_covers_both(outliers):
 
 
 @pytest.mark.parametrize("outliers", ["exclude", "downweight"])
-@pytest.mark.parametrize(
-    "floor",
-    [
-        pytest.param(0.2, marks=pytest.mark.xfail(reason="the doubt is put on reading noise alone", strict=True)),
-        pytest.param(0.5, marks=pytest.mark.xfail(reason="the doubt is put on reading noise alone", strict=True)),
-        2.0,
-    ],
-)
+@pytest.mark.parametrize("floor", [0.2, 0.5, 2.0])
 def test_of_two_visits_that_disagree_neither_goes_and_the_sd_covers_both(outliers, floor):
     meter, stops = replace(METER, reading_floor=floor * MICROGAL), "ABCDEFGHABCDEFGHA"
     clean = reduced(rows_of({}, stops=stops, count=1), meter)
