@@ -8,6 +8,7 @@ from scipy.stats import f as f_law
 from scipy.stats import norm
 
 from made_surveys import HOUR, MICROGAL, MILLIGAL, STILL, loop, made_case
+from plumbwell.files.summary import variance_components
 from plumbwell.reduction.candidates import jumps
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Tare
@@ -184,6 +185,7 @@ def test_a_jump_is_not_swallowed_by_a_walk(seed):
     assert ("drift_walk_left_out" in codes) == network.walk_not_needed
     # It was tried: nobody may be told that the degrees of freedom, 21 or more, are too few for it.
     assert "drift_walk_untested" not in codes
+    assert variance_components(results)["walk"] == 0.0
 
 
 def test_noise_as_given_is_the_measure_where_the_recipe_says_so():
