@@ -126,6 +126,16 @@ def test_the_search_names_the_blunder_of_the_complete_graph_and_nothing_else(out
     assert results.network.adjustment.redundancy[other] == pytest.approx(0.0, abs=1e-12) and np.isnan(left[other])
 
 
+@pytest.mark.parametrize("blunder", [0.1, -0.2, 5.0])
+def test_what_the_blunder_alone_has_made_suspicious_is_given_back(blunder):
+    # With larger blunders ties 3 and 4, which share no station at one end, are both over the critical value.
+    found = graph(blunder=blunder).network.judgement
+    (row,) = found.rows.tolist()
+    assert row in (4, 5)
+    # -v of tie 3 is +7.5 uGal less half of the blunder; divided by its redundancy of a half.
+    assert abs(found.error[0]) / UGAL == pytest.approx(abs(blunder * 1000.0 - 15.0), rel=1e-9)
+
+
 def test_the_search_names_nothing_in_the_sound_graph():
     # The largest w is 2.12.
     network = graph().network

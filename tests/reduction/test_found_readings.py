@@ -138,6 +138,16 @@ def test_a_listed_bad_row_is_out_of_use_and_no_longer_named():
     assert judged(rows).rows.size == 0
 
 
+def test_an_eighth_of_all_visits_bad_do_not_hide_one_another():
+    """Eight of 64: the root mean square is swollen a hundredfold, the median tells what most visits scatter."""
+    chance = np.random.default_rng(0)
+    rows = np.sort(chance.choice(64, 8, replace=False))
+    size = chance.uniform(100.0, 300.0, 8) * chance.choice([-1.0, 1.0], 8)
+    found = judged(rows_of(dict(zip(rows.tolist(), size.tolist(), strict=True)), stops=LABELS * 8))
+    assert found.rows.tolist() == rows.tolist() and found.proposed == ()
+    np.testing.assert_allclose(found.error / MICROGAL, size, atol=15.0)
+
+
 def test_ties_that_contradict_one_another_accuse_no_reading():
     rows = rows_of({})
     ties = {name: (9.8 + MAKE["gravity"][name] + off * MICROGAL, 2 * MICROGAL)

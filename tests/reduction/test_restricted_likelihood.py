@@ -104,6 +104,21 @@ def test_with_a_walk_it_is_the_dense_likelihood_with_the_walks_covariance(bands)
         assert ours[1] - ours[0] == pytest.approx(dense[1] - dense[0], abs=bound)
 
 
+def test_ties_do_not_count_and_what_they_hold_is_held_otherwise():
+    """Where ties hold the level the visits alone leave it open, beside the modes of a walk too."""
+    rows = rows_of(4)
+    ties = {"A": (0.1, 5 * MICROGAL), "D": (0.1 + 3 * 3.6 * MILLIGAL + 50 * MICROGAL, 5 * MICROGAL)}
+    recipe = {"noise": "as_given", "drift_order": 1}
+    tied = [
+        reduce(made_case(rows, instruments=(METER,), ties=ties, **recipe, drift_walk=walk)).network.adjustment
+        for walk in ("off", STRENGTH)
+    ]
+    free = [adjusted(rows, drift_walk=walk) for walk in ("off", STRENGTH)]
+    assert tied[0].rank.lacking == 1 and free[0].rank.lacking == 0 and tied[0].rank.rank == free[0].rank.rank
+    gains = [both[1].likelihood - both[0].likelihood for both in (tied, free)]
+    assert gains[0] == pytest.approx(gains[1], abs=1e-6) and abs(gains[1]) > 0.05
+
+
 @pytest.mark.parametrize(("seed", "seat"), [(1, 4.0), (2, 4.0), (3, 15.0), (4, 15.0), (5, 0.0), (9, 0.0), (10, 0.0)])
 def test_the_variance_beside_a_walk_is_where_the_dense_likelihood_is_greatest(seed, seat):
     rows = rows_of(seed, reseating=seat * MICROGAL)
