@@ -26,8 +26,8 @@ MGAL, UGAL, HOUR = 1e-5, 1e-8, 3600.0
 METER = Instrument(name="A", reading_floor=1e-20, reseating_sd=0.0, station_floor=0.0, drift_rate_sd=inf)
 
 
-def differences(ties, depth):
-    """Results of measured differences (from, to, value, sd), one run each, m/s2."""
+def differences(ties, depth, **changed):
+    """Results of measured differences (from, to, value, sd), one run each, m/s2; `changed` are keys of the recipe."""
     rows, runs = [], []
     for number, (start, end, value, sd) in enumerate(ties):
         run = str(number + 1)
@@ -39,7 +39,7 @@ def differences(ties, depth):
                     reading_sd=sd / sqrt(2.0),
                 )
             )  # fmt: skip
-    return reduce(made_case(rows, instruments=(METER,), runs=tuple(runs), noise="as_given"))
+    return reduce(made_case(rows, instruments=(METER,), runs=tuple(runs), noise="as_given", **changed))
 
 
 def of_differences(results):
@@ -57,10 +57,10 @@ GRAPH = [
 ]  # fmt: skip
 
 
-def graph(blunder=0.0):
+def graph(blunder=0.0, **changed):
     """The complete graph on four points; tie 3 may be wrong."""
     ties = [(a, b, (value + blunder * (n == 2)) * MGAL, 5 * UGAL) for n, (a, b, value) in enumerate(GRAPH)]
-    return differences(ties, POINTS)
+    return differences(ties, POINTS, **changed)
 
 
 def test_complete_graph_on_four_points():
@@ -92,6 +92,74 @@ def test_a_blunder_in_the_complete_graph():
     # Two differences are over the critical value; the largest is the wrong one.
     assert np.flatnonzero(np.abs(w) > critical).tolist() == [0, 2]
     assert int(np.argmax(np.abs(w))) == 2
+
+
+@pytest.mark.parametrize("outliers", ["flag", "exclude"])
+def test_the_search_names_the_blunder_of_the_complete_graph_and_nothing_else(outliers):
+    # Tie 1 is over the critical value too: the largest alone is removed, and then nothing is left over it.
+    results = graph(blunder=0.050, outliers=outliers)
+    found = results.network.judgement
+    (row,) = results.network.outlier_rows.tolist()
+    assert row in (4, 5), "one end of tie 3; which of its two readings is wrong nothing tells"
+    sign = 1.0 if row == 5 else -1.0
+    assert found.error[0] / UGAL == pytest.approx(sign * 35.0, abs=1e-6)
+    assert found.ratio[0] == pytest.approx(sign * 4.949747, abs=6e-7)
+    (jump,) = results.network.proposed
+    assert jump.one_visit and jump.run == 2 and jump.size / UGAL == pytest.approx(35.0, abs=1e-6)
+    if outliers == "flag":
+        np.testing.assert_allclose(results.stations.gravity.values / MGAL, [0.0, 10.0220, 15.0345, 18.0255], atol=1e-9)
+        return
+    # Without tie 3 the normal equations of B, C, D by hand; their determinant is 8.
+    rest = [(a, b, value) for n, (a, b, value) in enumerate(GRAPH) if n != 2]
+    design = np.array([[(b == name) - (a == name) for name in "BCD"] for a, b, _ in rest], dtype=float)
+    assert (design.T @ design).tolist() == [[3.0, -1.0, -1.0], [-1.0, 2.0, -1.0], [-1.0, -1.0, 3.0]]
+    inverse = np.array([[5.0, 4.0, 3.0], [4.0, 8.0, 4.0], [3.0, 4.0, 5.0]]) / 8.0
+    wanted = inverse @ design.T @ [value for _, _, value in rest]
+    np.testing.assert_allclose(results.stations.gravity.values[1:] / MGAL, wanted, atol=1e-9)
+    np.testing.assert_allclose(
+        results.stations.gravity_sd.values[1:] / UGAL, 5.0 * np.sqrt(np.diag(inverse)), rtol=1e-9
+    )
+    left = np.abs(results.readings.estimates.standardised.values)
+    assert np.nanmax(left) < ndtri(1.0 - 0.001 / 2.0)
+    # The other end of tie 3 stands alone: nothing checks it.
+    other = 9 - row
+    assert results.network.adjustment.redundancy[other] == pytest.approx(0.0, abs=1e-12) and np.isnan(left[other])
+
+
+@pytest.mark.parametrize("blunder", [0.1, -0.2, 5.0])
+def test_what_the_blunder_alone_has_made_suspicious_is_given_back(blunder):
+    # With larger blunders ties 3 and 4, which share no station at one end, are both over the critical value.
+    found = graph(blunder=blunder).network.judgement
+    (row,) = found.rows.tolist()
+    assert row in (4, 5)
+    # -v of tie 3 is +7.5 uGal less half of the blunder; divided by its redundancy of a half.
+    assert abs(found.error[0]) / UGAL == pytest.approx(abs(blunder * 1000.0 - 15.0), rel=1e-9)
+
+
+def test_the_search_names_nothing_in_the_sound_graph():
+    # The largest w is 2.12.
+    network = graph().network
+    assert network.outlier_rows.size == 0 and network.proposed == ()
+
+
+@pytest.mark.parametrize("blunder", [0.0, 1.0, -100.0])
+def test_no_search_can_name_what_nothing_checks(blunder):
+    readings = [1000.000, 1010.010, 1025.024 + blunder, 1010.032, 1000.040]
+    rows = [
+        Row(time=n * HOUR, reading=value * MGAL, depth=POINTS[name], station=name, reading_sd=5 * UGAL)
+        for n, (name, value) in enumerate(zip("ABCBA", readings, strict=True))
+    ]
+    results = reduce(made_case(rows, instruments=(METER,), noise="as_given", drift_order=1, drift_walk="off"))
+    # All of the blunder goes into gravity of C; sums and tests know nothing of it.
+    np.testing.assert_allclose(results.stations.gravity.values / MGAL, [0.0, 10.0010, 25.0040 + blunder], atol=1e-9)
+    assert results.network.adjustment.solution.sum_of_squares() == pytest.approx(0.064, rel=1e-5)
+    assert results.network.outlier_rows.size == 0 and results.network.proposed == ()
+    checked = results.network.adjustment.checked
+    assert np.isnan([checked.error[2], checked.predicted[2], checked.standardised[2]]).all()
+    # Error of the others: v over r with the sign turned, -0.4/0.1, 0.8/0.4 and so on.
+    np.testing.assert_allclose(checked.error[[0, 1, 3, 4]] / UGAL, [4.0, -2.0, 2.0, -4.0], atol=1e-4)
+    (unchecked,) = (one for one in results.findings if one.code == "unchecked_readings")
+    assert unchecked.rows == (2,)
 
 
 def test_a_loop_with_linear_drift():
