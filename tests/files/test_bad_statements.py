@@ -85,7 +85,7 @@ def test_recipe_values_that_are_wrong_or_cannot_be_done(told: Told) -> None:
         'survey.toml, row 14, [recipe] layers: found "smooth", which this version cannot do; '
         'expected "plain" or "none"; to mend: write one of these, or remove the key',
         'survey.toml, row 15, [recipe] drift_walk: found -0.01; expected "auto", "off", "on" or a number in '
-        "mGal/h^1.5 above 0; to mend: correct the value",
+        "mGal/h^1.5 above 0, at most 10; to mend: correct the value",
         'survey.toml, row 16, [recipe] tares: found "found"; expected "listed" or "proposed"; to mend: correct '
         "the value",
     ]

@@ -100,3 +100,4 @@ def in_bands(patch: pytest.MonkeyPatch) -> None:
     for module in (banded, design):
         patch.setattr(module, "ONE_BLOCK", 20)
     patch.setattr(banded, "LEAST_BLOCK", 6)
+    patch.setattr(design, "NEAR", 0)

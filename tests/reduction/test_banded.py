@@ -33,7 +33,8 @@ def flat_of(one, dense):
     kept = (dense[first, second] != 0.0) & one.once(first, second)
     place = one.place(first[kept], second[kept])
     assert place.min() >= 0
-    return np.bincount(place, dense[first[kept], second[kept]], minlength=one.starts[3]).astype(float)
+    filled = np.bincount(place, dense[first[kept], second[kept]], minlength=one.starts[3]).astype(float)
+    return one.mirrored(filled)
 
 
 def some(one, seed=1, flat_along=None):

@@ -9,6 +9,7 @@ from made_surveys import HOUR, MICROGAL, MILLIGAL, loop, made_case
 from many_runs import METER as METER_OF_MANY
 from many_runs import in_bands, many_runs
 from plumbwell.reduction.candidates import jumps, more_drift
+from plumbwell.reduction.run_terms import RunTerms
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Run, Tare
 from visit_algebra import visit_algebra
@@ -116,7 +117,7 @@ def fitted(request):
 def test_every_jump_is_what_dense_algebra_finds(fitted):
     rows, fit, dense = fitted
     told, untold = 0, 0
-    for run in jumps(fit.solution, fit.visits):
+    for run in jumps(RunTerms(fit.solution), fit.visits):
         members = np.flatnonzero(fit.visits.run == run.run)
         np.testing.assert_array_equal(run.visit, members[1:])
         for visit, size, sd, gain in zip(run.visit.tolist(), run.size, run.sd, run.gain, strict=True):
@@ -140,7 +141,8 @@ def test_some_jumps_are_not_told():
     rows += loop(np.random.default_rng(4), "ABG", run="4", start=5 * 86400.0, counts=(1,), depth=MAKE["depth"],
                  gravity=MAKE["gravity"])  # fmt: skip
     rows = [replace(row, station="Z", depth=900.0) if row.run == "4" and row.station == "G" else row for row in rows]
-    (fourth,) = (one for one in jumps(adjusted(rows, drift_order=1).solution, adjusted(rows).visits) if one.run == 3)
+    fit = adjusted(rows, drift_order=1)
+    (fourth,) = (one for one in jumps(RunTerms(fit.solution), fit.visits) if one.run == 3)
     assert np.isnan(fourth.size[-1]) and fourth.gain[-1] == 0.0 and fourth.gain[0] > 0.0
 
 
@@ -153,7 +155,7 @@ def test_a_jump_is_what_the_network_finds_when_it_is_listed():
         off = (priors.of(one.solution.unknown[:, 0]) - priors.value) / priors.sd
         return one.solution.sum_of_squares() + float(off @ off)
 
-    for run in jumps(fit.solution, fit.visits):
+    for run in jumps(RunTerms(fit.solution), fit.visits):
         for visit, size, sd, gain in zip(run.visit.tolist(), run.size, run.sd, run.gain, strict=True):
             if not gain:
                 continue
@@ -173,13 +175,13 @@ def test_visits_at_one_time_have_no_gap_between_them():
     meant = rows[int(visits.rows[visits.start[1] - 1])].time
     rows = [replace(row, time=meant) if n == heads[1] else row for n, row in enumerate(rows)]
     fit = adjusted(rows, drift_order=1)
-    first = jumps(fit.solution, fit.visits)[0]
+    first = jumps(RunTerms(fit.solution), fit.visits)[0]
     assert first.gain[0] == 0.0 and np.isnan(first.size[0]) and first.gain[1] > 0.0
 
 
 def test_higher_orders_are_what_dense_algebra_finds(fitted):
     rows, fit, dense = fitted
-    found = more_drift(fit.solution, fit.basis, fit.visits, fit.noise.weight)
+    found = more_drift(RunTerms(fit.solution), fit.basis, fit.visits, fit.noise.weight)
     assert sorted(found) == sorted(fit.visits.run_order.tolist())
     names = list(dict.fromkeys(row.run for row in rows))
     tried = 0
@@ -202,7 +204,7 @@ def test_higher_orders_of_runs_that_stand_at_others(orders, nothing):
     rows = three_runs(5)
     runs = tuple(Run(name=str(n + 1), drift_order=order) for n, order in enumerate(orders))
     fit = reduce(made_case(rows, instruments=(METER,), runs=runs, **FIXED)).network.adjustment
-    found = more_drift(fit.solution, fit.basis, fit.visits, fit.noise.weight)
+    found = more_drift(RunTerms(fit.solution), fit.basis, fit.visits, fit.noise.weight)
     for run, none in enumerate(nothing):
         if none:
             assert found[run] == (0.0, 0.0)

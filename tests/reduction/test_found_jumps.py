@@ -10,6 +10,7 @@ from scipy.stats import norm
 from made_surveys import HOUR, MICROGAL, MILLIGAL, STILL, loop, made_case
 from plumbwell.files.summary import variance_components
 from plumbwell.reduction.candidates import jumps
+from plumbwell.reduction.run_terms import RunTerms
 from plumbwell.study.reduce import reduce
 from plumbwell.survey.instrument import Instrument, Tare
 from simulated_surveys import EVERY_FIFTH, EXACT_DEPTHS, FEW_RETURNS, QUIET, Scheme, base_returns, simulated
@@ -61,7 +62,7 @@ def test_a_jump_is_found_with_its_gap_its_size_and_its_sd(seed):
     assert again.adjustment.unknown(unknown) == pytest.approx((found.size, found.sd), rel=1e-4)
     assert again.proposed == ()
     freedom = again.adjustment.reseating.freedom
-    gaps = sum(len(each.gain) for each in jumps(again.adjustment.solution, again.visits))
+    gaps = sum(len(each.gain) for each in jumps(RunTerms(again.adjustment.solution), again.visits))
     assert found.p == pytest.approx(min(gaps * f_law.sf((found.size / found.sd) ** 2, 1, freedom), 1.0), rel=1e-2)
     assert found.p < 0.01 * gaps / (gaps - 1) and found.gain > 5.0
 

@@ -133,7 +133,7 @@ def test_a_walk_is_kept_when_it_gains_more_than_half_the_logarithm_of_the_freedo
             continue  # too near for modes and a grid to say
         assert (fit.walk is not None) == (gain > wanted), seed
         kept, left_out = kept + (gain > wanted), left_out + (gain < wanted)
-        if fit.walk is not None:
+        if fit.walk is not None and not network.outlier_rows.size:  # with some its strength is that of the others
             assert fit.walk.likelihood - plain.likelihood == pytest.approx(gain, abs=0.05)
             assert fit.likelihood == fit.walk.likelihood
     assert kept >= 5 and left_out >= 5

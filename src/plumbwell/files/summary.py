@@ -230,7 +230,8 @@ def variance_components(results: Results) -> dict[str, Any]:
     """
     fit = results.network.adjustment
     noise, seat = fit.noise, fit.reseating
-    strength = fit.walk.strength if fit.walk is not None else (0.0 if fit.walk_tried else None)
+    tried = fit.walk_tried or results.network.walk_not_needed
+    strength = fit.walk.strength if fit.walk is not None else (0.0 if tried else None)
     return {
         "reading": _number(float(np.median(noise.sd)), MILLIGAL),
         "reading_scale": _number(noise.scale),

@@ -31,7 +31,14 @@ from plumbwell.reduction.network import NO_RANK, Rank, Solution, TieRows, rank_b
 from plumbwell.reduction.network_parts import Parts, undetermined
 from plumbwell.reduction.restricted_likelihood import log_likelihood, visits_alone
 from plumbwell.reduction.run_terms import RunTerms
-from plumbwell.reduction.variances import ReadingNoise, Reseating, reading_noise, reseating, stated_reseating
+from plumbwell.reduction.variances import (
+    ReadingNoise,
+    Reseating,
+    reading_noise,
+    reseating,
+    stated_reseating,
+    trusted_noise,
+)
 from plumbwell.reduction.visits import Visits
 from plumbwell.reduction.walk import LEAST_FREEDOM, WalkFit, enough_gain, likeliest_strength
 from plumbwell.reduction.walk_modes import modes_for
@@ -172,6 +179,7 @@ def adjusted(
     responses: tuple[Array, ...] = (),
     trust: Array | None = None,
     near: Adjustment | None = None,
+    known: Adjustment | None = None,
 ) -> Adjustment:
     """The adjusted network.
 
@@ -195,8 +203,10 @@ def adjusted(
     trust : (n,) array or None
         Robust weight of each row, 0 to 1. None: 1 for all.
     near : Adjustment or None
-        One of the same visits with much the same drift, from which reading noise is taken and re-seating noise looked
-        for; the likelihood is left out then.
+        One of the same visits, from whose re-seating noise that of this one is looked for, nearly enough for a search;
+        the likelihood is left out then.
+    known : Adjustment or None
+        One of the same visits whose noise is held: weights that fall with the residuals would make it look smaller.
     """
     rows = visits.rows
     orders = tuple(
@@ -224,22 +234,24 @@ def adjusted(
     while (missing := undetermined(first, ties, rank)) is not None:
         lost.append(missing)
         first, rank = designed(orders, even)
-    if near is None:
-        means = np.add.reduceat(values, visits.start[:-1]) / counts
-        typical = float(np.mean(terms.reseating_sd[rows] ** 2 + terms.reading_floor[rows] ** 2))
-        rough = _solved(first, np.full(len(visits), 1.0 / typical), means, ties)
-        drift = drift_of(basis, first, rough.unknown[:, 0], None, bias=True)
+    # What is not trusted must not bend the drift that is taken out before reading noise is looked for.
+    kept = np.ones(len(rows)) if trust is None else trust[rows]
+    means = np.add.reduceat(kept * values, visits.start[:-1]) / np.add.reduceat(kept, visits.start[:-1])
+    typical = float(np.mean(terms.reseating_sd[rows] ** 2 + terms.reading_floor[rows] ** 2))
+    rough = _solved(first, np.maximum.reduceat(kept, visits.start[:-1]) / typical, means, ties)
+    drift = drift_of(basis, first, rough.unknown[:, 0], None, bias=True)
+    if known is not None:
+        noise = trusted_noise(known.noise, visits, np.ones(len(rows)) if trust is None else trust[rows])
     else:
-        drift = near.border_drift[rows]
-    noise = reading_noise(
-        visits,
-        values - drift,
-        unbroken=unbroken,
-        stated=terms.reading_sd[rows],
-        floor=terms.reading_floor[rows],
-        estimate=terms.estimate,
-        trust=None if trust is None else trust[rows],
-    )
+        noise = reading_noise(
+            visits,
+            values - drift,
+            unbroken=unbroken,
+            stated=terms.reading_sd[rows],
+            floor=terms.reading_floor[rows],
+            estimate=terms.estimate,
+            trust=None if trust is None else trust[rows],
+        )
     sd = noise.sd
     # Rounding apart the weights within visits are even where all readings are equally good.
     weighted = even if np.abs(noise.weight - even).max() < 1e-15 else noise.weight
@@ -256,6 +268,8 @@ def adjusted(
     latest: list[float] = [] if near is None or not near.reseating.estimate > 0.0 else [near.reseating.estimate]
 
     def seated(one: Design, rank: Rank, modes: Array | None = None) -> Reseating:
+        if known is not None:
+            return known.reseating
         found = reseating(
             one, mean, noise, rank=rank, stated_variance=u0, estimate=terms.estimate, doubtful=doubtful,
             start=latest[-1] if latest else None, walk=modes, nearly=near is not None,

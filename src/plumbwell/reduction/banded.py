@@ -379,7 +379,7 @@ def held(one: Layout, flat: Array, numbers: Index, *, pin: float = 0.0) -> Facto
     left, by_block = flat.copy(), keep.reshape(one.count, p)
     left[:beside].reshape(-1, p, p)[:] *= by_block[:, :, None] * by_block[:, None, :]
     left[beside:arrow].reshape(-1, p, p)[:] *= by_block[1:, :, None] * by_block[:-1, None, :]
-    left[arrow:corner].reshape(-1, c)[:] *= keep[:, None] * low
+    left[arrow:corner].reshape(one.count * p, c)[:] *= keep[:, None] * low
     left[corner:].reshape(c, c)[:] *= low[:, None] * low
     left[one.place(numbers, numbers)] = 1.0
     factor = factored(one, left, pin=pin)

@@ -143,6 +143,19 @@ def errors_of(fit: Adjustment, rows: Index, alike: Index | None = None) -> tuple
     return error, ratio
 
 
+def doubts(fit: Adjustment, rows: Index, error: Array, ratio: Array) -> Array:
+    """What the variance of rows that stand alike grows by, in units of their reading noise.
+
+    Of two visits as a whole by half the square of their difference; readings of one visit by their ratio to the rest.
+    """
+    visits, noise = fit.visits, fit.noise
+    own = np.full(len(visits.of_row), np.nan)
+    own[visits.rows] = noise.sd**2 * OUT
+    visit = visits.of_row[rows]
+    whole = np.isfinite(_visit_errors(fit)[0][visit])
+    return np.where(whole, 0.5 * error**2 * np.diff(visits.start)[visit] / own[rows], ratio**2)
+
+
 def _visit_errors(fit: Adjustment) -> tuple[Array, Array]:
     """What each visit is off by as the others predict it, and in sds."""
     solution = fit.solution
@@ -154,7 +167,7 @@ def _visit_errors(fit: Adjustment) -> tuple[Array, Array]:
     return error, error / np.sqrt(np.maximum(predicted, 0.0) + own)
 
 
-def proposed_tare(fit: Adjustment, tare: Tare, number: int, count: int) -> ProposedTare:
+def proposed_tare(fit: Adjustment, tare: Tare, number: int, count: int, *, estimate: bool) -> ProposedTare:
     """A jump that the search has added to the basis, the `number`th of `count`, as it is proposed."""
     visits, basis = fit.visits, fit.basis
     run = int(basis.tare_run[len(basis.tares) - count + number])
@@ -174,12 +187,19 @@ def proposed_tare(fit: Adjustment, tare: Tare, number: int, count: int) -> Propo
         visits_between=high - low - 1,
         size=size,
         sd=sd,
-        gain=0.5 * (freedom + 1) * float(np.log1p(ratio / max(freedom, 1))),
-        p=min(chance_of(size, sd, freedom, True) * gaps, 1.0),
+        gain=_gain(ratio, freedom, estimate),
+        p=min(chance_of(size, sd, freedom, estimate) * gaps, 1.0),
     )
 
 
-def jumps_at_ends(fit: Adjustment, rows: Index, off: dict[int, tuple[float, float]]) -> list[ProposedTare]:
+def _gain(square: float, freedom: int, estimate: bool) -> float:
+    """Gain of the log likelihood by a term of so large a squared ratio to its sd."""
+    return 0.5 * (freedom + 1) * float(np.log1p(square / max(freedom, 1))) if estimate else 0.5 * square
+
+
+def jumps_at_ends(
+    fit: Adjustment, rows: Index, off: dict[int, tuple[float, float]], *, estimate: bool
+) -> list[ProposedTare]:
     """Bad visits at the ends of their runs as jumps, which they may be as well."""
     visits, freedom = fit.visits, fit.reseating.freedom
     named, found = np.isin(visits.rows, rows), []
@@ -196,8 +216,8 @@ def jumps_at_ends(fit: Adjustment, rows: Index, off: dict[int, tuple[float, floa
                 ProposedTare(
                     run=run, time=0.5 * (gap[0] + gap[1]), gap_from=gap[0], gap_to=gap[1], visits_between=0,
                     size=sign * error, sd=abs(error / ratio),
-                    gain=0.5 * (freedom + 1) * float(np.log1p(ratio**2 / max(freedom, 1))),
-                    p=min(chance_of(ratio, 1.0, freedom, True) * gaps, 1.0), one_visit=True,
+                    gain=_gain(ratio**2, freedom, estimate),
+                    p=min(chance_of(ratio, 1.0, freedom, estimate) * gaps, 1.0), one_visit=True,
                 )
             )
     return found

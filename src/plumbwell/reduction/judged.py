@@ -27,6 +27,7 @@ from plumbwell.reduction.found_errors import (
     ProposedTare,
     chance_of,
     critical_ratio,
+    doubts,
     errors_of,
     gaps_of,
     is_told,
@@ -59,6 +60,15 @@ ALIKE = 0.98
 MANY_READINGS, MANY_SHARE = 50, 0.002
 """Readings in error at one step, and their share, from which on drift and jumps wait."""
 
+MIRRORED = 0.5
+"""Share of the strongest term's worth under which others wait: a gross error lends its neighbours a quarter of it."""
+
+SHADED = 0.01
+"""The same of single readings: a gross error bends the drift within the visits of the others."""
+
+FEW_RUNS = 30
+"""Runs up to which all may mirror one another."""
+
 OF_ONE_VISIT = 3.0
 """What a jump must explain more than one bad visit does: before the last visit of a run both are the same."""
 
@@ -77,6 +87,8 @@ class Judgement:
         What each is off by, m/s2, and in sds of its own.
     alike : (m,) bool array
         True where nothing tells which of several at the station is off: leaving all of them out would leave none.
+    doubt : (m,) array
+        Variance that each has for it, in units of its reading noise; 0 for the others.
     """
 
     proposed: tuple[ProposedTare, ...]
@@ -84,6 +96,7 @@ class Judgement:
     error: Array
     ratio: Array
     alike: NDArray[np.bool_]
+    doubt: Array
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -155,15 +168,16 @@ def judged(
     rows = np.flatnonzero(trust < 0.5)
     alike = np.isin(rows, twins) | last_of_station(start.visits, trust, rows)
     error, ratio = errors_of(fit, rows, rows[alike])
-    found = [proposed_tare(fit, one, number, len(tares)) for number, one in enumerate(tares)]
+    found = [proposed_tare(fit, one, number, len(tares), estimate=estimate) for number, one in enumerate(tares)]
     off = {row: (float(error[n]), float(ratio[n])) for n, row in enumerate(rows.tolist())}
-    found += jumps_at_ends(fit, rows[~alike], off)
+    found += jumps_at_ends(fit, rows[~alike], off, estimate=estimate)
     return Judgement(
         proposed=tuple(sorted(found, key=lambda one: one.time)),
         rows=frozen_index(rows),
         error=error,
         ratio=ratio,
         alike=alike,
+        doubt=np.where(alike, doubts(fit, rows, error, ratio), 0.0),
     )
 
 
@@ -213,12 +227,19 @@ def _best(
     runs: set[int] = set()
     stations: set[int] = set()
     looked_at: set[int] = set()
+    gravest = max((one.worth for one in found), default=0.0)
+    strongest = max((one.worth for one in found if one.kind != "reading"), default=0.0)
     for one in sorted(found, key=lambda each: -each.worth):
         # A reading stands against its own visit, whatever else is wrong; only its visit and its run have to wait.
         if one.kind == "reading":
-            if one.visit in looked_at:
+            if one.visit in looked_at or one.worth < SHADED * gravest:
                 continue
         elif one.run in runs or (one.station >= 0 and one.station in stations):
+            # What is weaker in its run or at its station may be its mirror image alone: it waits for another round.
+            runs.add(one.run)
+            stations.add(one.station)
+            continue
+        elif len(visits.run_order) <= FEW_RUNS and one.worth < MIRRORED * strongest:
             continue
         looked_at.add(one.visit)
         taken.append(one)

@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import replace
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
 from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
 from plumbwell.reduction.drift_basis import DriftBasis, drift_basis
-from plumbwell.reduction.found_errors import ProposedTare
+from plumbwell.reduction.found_errors import OUT, ProposedTare
 from plumbwell.reduction.judged import Judgement, judged
 from plumbwell.reduction.network import TieRows
 from plumbwell.reduction.network_parts import Parts
@@ -100,8 +100,16 @@ def as_tares(proposed: tuple[ProposedTare, ...], run_names: tuple[str, ...]) -> 
 def alike_weights(found: Judgement, n_rows: int) -> Array:
     """Robust weight of every row, (n,): less than 1 for those that stand alike, whose sd becomes their difference."""
     trust = np.ones(n_rows)
-    trust[found.rows[found.alike]] = 1.0 / (1.0 + found.ratio[found.alike] ** 2)
+    trust[found.rows[found.alike]] = 1.0 / (1.0 + found.doubt[found.alike])
     return frozen(trust)
+
+
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class Robust:
+    """Robust weights of all rows, (n,), 0 to 1, and the network without the readings in error, whose noise holds."""
+
+    trust: Array
+    known: Adjustment
 
 
 def robust_weights(
@@ -117,8 +125,8 @@ def robust_weights(
     start_orders: tuple[int, ...],
     automatic: tuple[int, ...],
     station: Index,
-) -> Array:
-    """Robust weight of every row, (n,), 0 to 1: Tukey's, from residuals by all that is trusted.
+) -> Robust:
+    """Robust weight of every row: Tukey's, from residuals by all that is trusted.
 
     Parameters
     ----------
@@ -130,12 +138,13 @@ def robust_weights(
     Notes
     -----
     (1 - (t/6)^2)^2 within 6 sd (Beaton & Tukey 1974), t the ratio of a residual to the sd that it has when it is
-    trusted; a visit and each of its readings are weighed apart, and the smaller of both holds.
+    trusted; a visit and each of its readings are weighed apart, and the smaller of both holds. Noise and drift orders
+    are those without the readings in error: estimated from weighted residuals the noise would be a tenth too small.
     """
     alike = alike_weights(found, len(observed))
     trust = alike.copy()
-    trust[found.rows[~found.alike]] = LEAST_TRUST
-    fit = adjusted(
+    trust[found.rows[~found.alike]] = OUT
+    known = fit = adjusted(
         observed, basis, visits, ties, parts, terms, n_stations=n_stations, start_orders=start_orders,
         automatic=automatic, station=station, trust=frozen(trust),
     )
@@ -147,9 +156,9 @@ def robust_weights(
             break
         fit = adjusted(
             observed, basis, visits, ties, parts, terms, n_stations=n_stations, start_orders=fit.orders,
-            automatic=(), station=station, trust=frozen(trust), near=fit,
+            automatic=(), station=station, trust=frozen(trust), near=fit, known=known,
         )
-    return trust
+    return Robust(trust=frozen(trust), known=known)
 
 
 def _weights(fit: Adjustment, trust: Array, named: Index, alike: Array) -> Array:
@@ -170,7 +179,7 @@ def _weights(fit: Adjustment, trust: Array, named: Index, alike: Array) -> Array
     new = np.ones(len(trust))
     new[rows] = np.maximum(np.minimum(np.repeat(share, counts), of_reading), LEAST_TRUST)
     # Named ones stay without weight, and those that stand alike hold each other: their residuals tell nothing.
-    new[named] = np.where(alike[named] < 1.0, alike[named], LEAST_TRUST)
+    new[named] = np.where(alike[named] < 1.0, alike[named], OUT)
     return new
 
 

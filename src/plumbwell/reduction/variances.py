@@ -8,7 +8,7 @@ of surveys with one degree of freedom.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -32,7 +32,9 @@ class ReadingNoise:
     Parameters
     ----------
     sd : (u,) array
-        Sd of each reading, m/s2, floors applied.
+        Sd of each reading, m/s2, floors applied, grown where it is trusted less.
+    plain : (u,) array
+        The same of full trust.
     floor : (u,) array
         No reading is believed better, m/s2.
     weight : (u,) array
@@ -48,6 +50,7 @@ class ReadingNoise:
     """
 
     sd: Array
+    plain: Array
     floor: Array
     weight: Array
     variance: Array
@@ -84,8 +87,6 @@ def reading_noise(
     trust : (u,) array or None
         Robust weight of each reading, 0 to 1: its variance is divided by it. None: 1 for all.
     """
-    first = visits.start[:-1]
-    counts = np.diff(visits.start)
     kept = np.ones(len(deviation)) if trust is None else trust
     freedom = int(np.sum(np.maximum(np.add.reduceat(kept, unbroken[:-1]) - 1.0, 0.0)) + 1e-9)
     known = stated[~np.isnan(stated)]
@@ -107,17 +108,19 @@ def reading_noise(
         sd = np.maximum(floor, found * shape)
         if known.size and found > 0.0:
             scale = found
-    sd = sd / np.sqrt(kept)
+    plain = ReadingNoise(
+        sd=sd, plain=sd, floor=floor, weight=sd, variance=sd, scale=scale, repeated=freedom > 0, freedom=freedom
+    )
+    return trusted_noise(plain, visits, kept)
+
+
+def trusted_noise(noise: ReadingNoise, visits: Visits, trust: Array) -> ReadingNoise:
+    """The same noise of readings that are trusted so far, (u,) each."""
+    sd = noise.plain / np.sqrt(trust)
     weight = 1.0 / sd**2
-    summed = np.add.reduceat(weight, first)
-    return ReadingNoise(
-        sd=sd,
-        floor=floor,
-        weight=weight / np.repeat(summed, counts),
-        variance=1.0 / summed,
-        scale=scale,
-        repeated=freedom > 0,
-        freedom=freedom,
+    summed = np.add.reduceat(weight, visits.start[:-1])
+    return replace(
+        noise, sd=sd, weight=weight / np.repeat(summed, np.diff(visits.start)), variance=1.0 / summed
     )
 
 

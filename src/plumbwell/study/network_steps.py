@@ -145,7 +145,7 @@ def network_work(
                     adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed | _held(plain),
                     walk=walk.in_force, responses=responses,
                 )
-            fit = keep(_with_tests, wandering, plain)
+            fit = keep(_with_tests, wandering, plain, True)
         else:
             fit = keep(_with_trial, plain, tried)
     jumps = applicable(found, recipe)
@@ -160,8 +160,14 @@ def network_work(
         basis = keep(drift_basis, utc, readings.run.code, names, stays, tares, meters)
         parts = keep(network_parts, basis, stays, asked.ties, n_stations=n_stations)
     if recipe.outliers == "downweight":
-        trust = keep(robust_weights, observed, basis, stays, asked.ties, parts, noise, found, **fixed)
-    if apply or stays is not fit.visits or trust is not None:
+        robust = keep(robust_weights, observed, basis, stays, asked.ties, parts, noise, found, **fixed)
+        trust = robust.trust
+        weighed = keep(
+            adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed | _held(robust.known),
+            walk=walk.in_force, responses=responses, trust=trust, known=robust.known,
+        )
+        fit = keep(_with_tests, weighed, robust.known, fit.walk_tried)
+    elif apply or stays is not fit.visits or trust is not None:
         fit = keep(
             adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed, walk=walk.in_force,
             responses=responses, trust=trust,
@@ -206,8 +212,8 @@ def _held(plain: Adjustment) -> dict[str, tuple[int, ...]]:
     return {"start_orders": plain.orders, "automatic": ()}
 
 
-def _with_tests(wandering: Adjustment, plain: Adjustment) -> Adjustment:
-    return replace(wandering, tests=plain.tests, walk_tried=True)
+def _with_tests(last: Adjustment, plain: Adjustment, tried: bool) -> Adjustment:
+    return replace(last, tests=plain.tests, walk_tried=tried)
 
 
 def _with_trial(plain: Adjustment, tried: bool) -> Adjustment:

@@ -128,7 +128,7 @@ KEYS: dict[str, RecipeKey] = {
         ),
         RecipeKey(
             key="drift_walk", label="Drift walk", words=("auto", "off", "on"), unit="mGal/h^1.5",
-            factor=MILLIGAL / 3600.0**1.5, least=0.0, above=True,
+            factor=MILLIGAL / 3600.0**1.5, least=0.0, most=10.0, above=True,
             what="slow wander of the drift beyond its polynomial", source="integrated random walk",
         ),
         RecipeKey(

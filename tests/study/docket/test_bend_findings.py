@@ -130,7 +130,7 @@ def test_where_nothing_at_all_tells_it_a_bend_of_ten_sds_is_spoken_of(found):
 
 def test_what_a_person_decided_or_another_finding_tells_needs_no_word(found):
     assert not found(reduce(simulated(BACK, 5, drift_order=1).case), "bend_untold")
-    assert not found(reduce(simulated(BACK, 5, drift_walk=1e-6).case), "bend_untold")
+    assert not found(reduce(simulated(BACK, 5, drift_walk=1e-10).case), "bend_untold")
     alone = reduce(simulated(Scheme(stops=one_pass(10)), 5).case)
     assert found(alone, "no_repeat") and not found(alone, "bend_untold")
 

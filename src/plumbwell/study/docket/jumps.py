@@ -90,7 +90,8 @@ def walk_kept(results: Results) -> Iterator[Finding]:
 def walk_untested(results: Results) -> Iterator[Finding]:
     """The degrees of freedom are too few to tell a wander of the drift from noise."""
     fit = results.network.adjustment
-    if results.recipe.drift_walk != "auto" or fit.walk_tried or not any(fit.orders):
+    tried = fit.walk_tried or results.network.walk_not_needed
+    if results.recipe.drift_walk != "auto" or tried or not any(fit.orders):
         return
     yield Finding(
         code="drift_walk_untested",
