@@ -79,6 +79,6 @@ def write_folder(folder: Path, readings: int, *, gross: float, recipe: str) -> N
     (folder / "survey.toml").write_text(
         'format = "plumbwell-survey/1"\n[site]\nname = "Invented network"\nlatitude = 50.0\nlongitude = 8.0\n'
         "ground_elevation = 500.0\n[instrument.A]\nreading_floor = 0.002\nreseating_sd = 0.003\n"
-        f'{jumps}[data]\nreadings = "readings.csv"\n[recipe]\n{recipe}\n',
+        f'{jumps}[data]\nreadings = "readings.csv"\n[recipe]\ntide = "none"\n{recipe}\n',
         "utf-8",
     )

@@ -50,6 +50,9 @@ MANY_FREEDOM = 300
 """Beyond so many degrees of freedom one column more moves the noise by less than a third of a percent, and the weights
 of the lower order serve the F test."""
 
+BESIDE = (0.8, 1.0, 1.25)
+"""What the strength of a walk is tried at in the network, where re-seating noise alone is scaled, not all noise."""
+
 HOPELESS = 0.7
 """Share of the gain that is asked of a walk under which it is not tried in the network itself."""
 
@@ -354,7 +357,7 @@ def adjusted(
             if strengths and (walk == "on" or gain > HOPELESS * wanted):
                 tried = [
                     WalkFit(strength=one, modes=modes_of(one), likelihood=walked(one, modes_of(one))[3])
-                    for one in strengths
+                    for one in (strengths if len(strengths) > 1 else (strengths[0] * share for share in BESIDE))
                 ]
                 best = max(tried, key=lambda one: one.likelihood)
                 if walk == "on" or best.likelihood - likelihood > wanted:

@@ -15,6 +15,9 @@ from plumbwell.reduction.chance import f_chance
 from plumbwell.reduction.drift_basis import HIGHEST_ORDER
 
 CHANCE = 0.01
+NEVER = 4.0
+"""F under which no step is taken: of F with 2 and very many degrees of freedom 1 % lies above 4.61."""
+
 LEAST_FREEDOM = 3
 
 
@@ -183,7 +186,7 @@ def raised_together(
     Notes
     -----
     All runs are raised at once, step by step as one alone would be. With some hundred degrees of freedom the weights
-    of one order serve the other.
+    of one order serve the other. Steps whose F is never taken, whatever the degrees of freedom, are not told.
     """
     orders, tests, waiting = list(start), [], list(automatic)
     while waiting:
@@ -197,6 +200,8 @@ def raised_together(
                 if gain <= 0.0 or steps < 1 or higher > HIGHEST_ORDER:
                     continue
                 f = gain / steps / ((left - gain) / (freedom - steps))
+                if f < NEVER:
+                    continue
                 p = f_chance(f, steps=steps, freedom=freedom - steps)
                 tests.append(
                     OrderTest(

@@ -203,6 +203,7 @@ def jumps_at_ends(
     """Bad visits at the ends of their runs as jumps, which they may be as well."""
     visits, freedom = fit.visits, fit.reseating.freedom
     named, found = np.isin(visits.rows, rows), []
+    tells = 1.0 - fit.solution.weight * fit.solution.variance_of_fit() > SAME_GAIN
     gaps = gaps_of(visits)
     for run in visits.run_order.tolist():
         members = np.flatnonzero(visits.run == run)
@@ -211,10 +212,17 @@ def jumps_at_ends(
             if not other.size or not named[own].all():
                 continue
             error, ratio = off[int(visits.rows[own.start])]
-            gap = sorted(float(one) for one in (visits.last[min(visit, other[0])], visits.first[max(visit, other[0])]))
+            # Visits next to it that nothing checks may lie on either side.
+            inner = members[1:] if sign < 0.0 else members[-2::-1]
+            checks = np.flatnonzero(tells[inner])
+            between = int(checks[0]) if checks.size else len(inner) - 1
+            far = int(inner[between])
+            gap = (
+                float(visits.last[min(int(visit), far)]), float(visits.first[max(int(visit), far)])
+            )
             found.append(
                 ProposedTare(
-                    run=run, time=0.5 * (gap[0] + gap[1]), gap_from=gap[0], gap_to=gap[1], visits_between=0,
+                    run=run, time=0.5 * (gap[0] + gap[1]), gap_from=gap[0], gap_to=gap[1], visits_between=between,
                     size=sign * error, sd=abs(error / ratio),
                     gain=_gain(ratio**2, freedom, estimate),
                     p=min(chance_of(ratio, 1.0, freedom, estimate) * gaps, 1.0), one_visit=True,

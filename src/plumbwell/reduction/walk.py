@@ -26,9 +26,6 @@ MODES, LEAST_MODES = 16, 4
 MOST_TOGETHER = 320
 """Modes of all runs that are weighed together; of more runs each is weighed alone."""
 
-BESIDE = (0.8, 1.0, 1.25)
-"""What the strength is tried at in the network, whose re-seating noise alone is scaled there."""
-
 FURTHER = (1.0, 2.0, 4.0)
 """What the first step from no walk is tried at in the network, where runs were weighed alone."""
 
@@ -62,7 +59,7 @@ def likeliest_strength(
 ) -> tuple[tuple[float, ...], float]:
     """Strengths at which the restricted likelihood may be greatest, m/s2/s^1.5, and its gain of the logarithm.
 
-    None where it falls from no walk on.
+    None where it falls from no walk on. One where all runs could be weighed together.
 
     Parameters
     ----------
@@ -128,7 +125,7 @@ def likeliest_strength(
     if estimate:
         noise = max(whole - float(np.sum(strength2 * squares / (1.0 + strength2 * values))), 0.0) / freedom
     strength = float(np.sqrt(strength2 * noise))
-    return (tuple(strength * one for one in BESIDE), float(gains[best])) if strength > 0.0 else ((), 0.0)
+    return ((strength,), float(gains[best])) if strength > 0.0 else ((), 0.0)
 
 
 def _first_step(
