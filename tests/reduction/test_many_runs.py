@@ -6,6 +6,7 @@ import pytest
 from dense_networks import dense_network
 from made_surveys import MICROGAL, MILLIGAL, made_case
 from many_runs import METER, RUNS, WAYS, in_bands, many_runs
+from plumbwell.reduction import datums
 from plumbwell.reduction.design import MOST_RUNS
 from plumbwell.reduction.restricted_likelihood import log_likelihood
 from plumbwell.study.reduce import reduce
@@ -151,6 +152,18 @@ def test_covariances_of_gravity(three):
     for datum_station in at:
         here = np.full(count, datum_station)
         assert (independent.between(here, np.arange(count)) == 0.0).all()
+
+
+@pytest.mark.parametrize("way", ["tares", "base, ties and tares"])
+def test_what_tares_add_is_the_same_by_a_column_each_and_by_a_difference(way, monkeypatch):
+    one = many_runs(way)
+    by_columns = reduced(one, wide=True)
+    monkeypatch.setattr(datums, "MANY_TARES", 0)
+    by_difference = reduced(one, wide=True)
+    for name in ("tare", "drift", "reading"):
+        first, second = (getattr(each.network.gravity, name).matrix() for each in (by_columns, by_difference))
+        np.testing.assert_allclose(second, first, atol=1e-9 * np.abs(first).max() + 1e-10 * METER.reading_floor**2)
+    assert by_columns.network.gravity.tare.matrix().any()
 
 
 def test_covariances_of_intervals(three):

@@ -6,7 +6,7 @@ error is that of the difference from there.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -20,6 +20,9 @@ from plumbwell.reduction.network_parts import Parts
 from plumbwell.reduction.spread import Spread, low_rank
 from plumbwell.reduction.wide_spread import WideSpread
 from plumbwell.survey.column import Array, Index
+
+MANY_TARES = 64
+"""Tares up to which what freeing them adds is held as a column for each."""
 
 UNDETERMINED = 1e-13  # of a border matrix with unit diagonal: its rounding
 
@@ -172,6 +175,10 @@ def _by_pairs(
     drift = Spread(diagonal=inside, columns=nothing, signs=np.zeros(0), wide=(wide,))
     if not len(tares):
         return drift, low_rank(nothing)
+    if len(tares) > MANY_TARES:
+        # A column for each would take stations times tares: what freeing them adds is taken as a difference.
+        freed = replace(wide, factor=factored(shape, border.matrix, pin=pin))
+        return drift, replace(low_rank(nothing), wide=(freed, replace(wide, sign=-1.0)))
     carry = columns_of(shape, border.matrix, tares)
     among = carry[tares].copy()
     carry[tares] = 0.0

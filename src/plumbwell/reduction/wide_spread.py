@@ -49,7 +49,7 @@ def single(stations: Index) -> Sums:
 
 @dataclass(frozen=True, eq=False, slots=True, kw_only=True)
 class WideSpread:
-    """T P M^-1 P^T T^T of a network, with T = 1 - shares times what picks the anchors.
+    """s T P M^-1 P^T T^T of a network, with T = 1 - shares times what picks the anchors.
 
     Parameters
     ----------
@@ -59,6 +59,8 @@ class WideSpread:
     shares : (s, a) array
     answers : (q, a) array
         M^-1 P^T at the anchors.
+    sign : float
+        1, or -1 where it is taken off another.
     """
 
     design: Design
@@ -67,6 +69,7 @@ class WideSpread:
     anchors: Index
     shares: Array
     answers: Array
+    sign: float = 1.0
 
     def anchored(self, anchors: Index, shares: Array) -> WideSpread:
         """The spread when gravity of further anchors is taken, by these shares (s, a), from every station."""
@@ -89,7 +92,7 @@ class WideSpread:
             part = np.arange(start, min(start + step, len(one)))
             mine = one[part]
             found[part] = self._between(mine, mine if other is one else other[part])
-        return found
+        return self.sign * found
 
     def _between(self, one: Sums, other: Sums) -> Array:
         rows = self._rows(one)
@@ -157,4 +160,4 @@ class WideSpread:
             nothing = self._nothing(one)
             whole[nothing] = 0.0
             whole[:, nothing] = 0.0
-        return whole
+        return self.sign * whole
