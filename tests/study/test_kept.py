@@ -25,7 +25,7 @@ OTHER = {
     "tide_factor": [1.0],
     "pressure_admittance": [-0.4e-8 / 100.0],
     "drift_order": [0, 1, 2, 3],
-    "drift_walk": ["off", "on", 2e-5 / 3600.0**1.5],
+    "drift_walk": ["off", "on", 2e-8 / 3600.0**1.5],
     "tares": ["proposed"],
     "outliers": ["downweight", "exclude"],
     "scale_factor": ["estimate"],

@@ -4,7 +4,7 @@ A law gives its cell to 1e-12 relative. A weighing gives it to 1e-9 relative, or
 cell is a small difference of numbers near 10 m/s2, which carry rounding of 2e-15 in each of many terms.
 """
 
-from dataclasses import fields, is_dataclass
+from dataclasses import fields, is_dataclass, replace
 from functools import cache
 from pathlib import Path
 
@@ -21,13 +21,20 @@ SURVEYS = {
     "well": CHECKOUT / "sample_surveys" / "tolly_bank_well",
     "shaft": CHECKOUT / "sample_surveys" / "quernlow_shaft",
     "real": CHECKOUT / "tests" / "data" / "reiche_zeche_shaft",
+    "well, weighed": CHECKOUT / "sample_surveys" / "tolly_bank_well",
+    "shaft, excluded": CHECKOUT / "sample_surveys" / "quernlow_shaft",
+}
+CHANGED = {
+    "well, weighed": {"drift_walk": "on", "outliers": "downweight", "tares": "proposed", "scale_factor": "estimate"},
+    "shaft, excluded": {"drift_walk": 2e-8 / 3600.0**1.5, "outliers": "exclude", "drift_order": 2},
 }
 
 
 @cache
 def columns_of(name):
     """All columns that the results of a survey hold, with the path by which each was found."""
-    results = reduce(Case(survey=read_survey(SURVEYS[name])))
+    case = Case(survey=read_survey(SURVEYS[name]))
+    results = reduce(case, recipe=replace(case.chosen, **CHANGED.get(name, {})))
     found: dict[int, tuple[str, Column]] = {}
     seen: dict[int, object] = {}
 
