@@ -119,7 +119,7 @@ def plain_squares(adjustment, rows, order, weight):
 
 def test_the_test_statistic_is_the_ratio_it_says():
     stops = "ABCADEAFCAEBA"
-    rows = loop(np.random.default_rng(9), stops, drift=curved(8 * UGAL, 6.5), **MAKE)
+    rows = loop(np.random.default_rng(9), stops, drift=curved(16 * UGAL, 6.5), **MAKE)
     automatic, given = adjusted(rows), adjusted(rows, drift_order=2)
     test = automatic.tests[0]
     # Weights of the higher order, for both.

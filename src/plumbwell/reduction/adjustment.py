@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 
 from plumbwell.reduction.broken_visits import contrasts, unbroken_stretches
 from plumbwell.reduction.candidates import more_drift
+from plumbwell.reduction.chance import f_chance
 from plumbwell.reduction.checked import Checked, checked, visit_means
 from plumbwell.reduction.design import (
     Design,
@@ -26,6 +27,7 @@ from plumbwell.reduction.design import (
     with_priors,
 )
 from plumbwell.reduction.drift_basis import DriftBasis, DriftUnknown
+from plumbwell.reduction.drift_order import LEAST_FREEDOM as LEAST_LEFT
 from plumbwell.reduction.drift_order import Comparison, OrderTest, chosen_orders, raised_together
 from plumbwell.reduction.network import NO_RANK, Rank, Solution, TieRows, rank_beside_walk, rank_of_visits, solve
 from plumbwell.reduction.network_parts import Parts, undetermined
@@ -55,6 +57,9 @@ BESIDE = (0.8, 1.0, 1.25)
 
 HOPELESS = 0.7
 """Share of the gain that is asked of a walk under which it is not tried in the network itself."""
+
+PLAINLY = 0.1
+"""Chance by the weights of the lower order over which those of the higher cannot make it 1 %."""
 
 DOUBTED = 0.5
 """Robust weight under which a reading counts as taken out in degrees of freedom."""
@@ -293,7 +298,28 @@ def adjusted(
             solved[chosen] = (seat, _solved(one, 1.0 / (noise.variance + seat.variance), mean, ties))
         return solved[chosen]
 
+    more: dict[tuple[int, ...], dict[int, tuple[float, float]]] = {}
+
+    def plainly_less(lower: tuple[int, ...], higher: tuple[int, ...]) -> Comparison | None:
+        """The comparison with the weights of the lower orders, where it leaves no doubt that they are enough."""
+        runs = [run for run, (one, other) in enumerate(zip(lower, higher, strict=True)) if one != other]
+        below = fit(lower) if len(runs) == 1 else None
+        if below is None:
+            return None
+        (run,), (seat, solution) = runs, below
+        if lower not in more:
+            more[lower] = more_drift(RunTerms(solution), basis, visits, weighted)
+        steps = higher[run] - lower[run]
+        gain, left = more[lower][run][0 if steps == 1 else 1], solution.sum_of_squares()
+        freedom = seat.freedom - steps
+        if not 0.0 < gain < left or freedom < LEAST_LEFT:
+            return None
+        doubt = f_chance(gain / steps / ((left - gain) / freedom), steps=steps, freedom=freedom)
+        return Comparison(low=left, high=left - gain, freedom=freedom) if doubt > PLAINLY else None
+
     def compare(lower: tuple[int, ...], higher: tuple[int, ...]) -> Comparison | None:
+        if (found := plainly_less(lower, higher)) is not None:
+            return found
         above = fit(higher)
         if above is None:
             return None

@@ -29,6 +29,8 @@ EVERY_RUN = -1
 class OrderTest:
     """One F test: run code, the two orders, F, its degrees of freedom, the chance p, and whether the higher was taken.
 
+    A step that plainly explains nothing (p over 0.1) is told with the weights of the lower order.
+
     Run `EVERY_RUN`: all automatic runs that stood at the lower order together; taken when what came of it stayed.
     """
 
