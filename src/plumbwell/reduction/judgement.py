@@ -7,7 +7,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
+from plumbwell.reduction.adjusted_network import adjusted
+from plumbwell.reduction.adjustment import Adjustment, NoiseTerms
 from plumbwell.reduction.drift_basis import DriftBasis, drift_basis
 from plumbwell.reduction.found_errors import OUT, ProposedTare
 from plumbwell.reduction.judged import Judgement, judged

@@ -15,7 +15,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from plumbwell.reduction.adjustment import Adjustment, held_at_nought
+from plumbwell.reduction.adjusted_network import held_at_nought
+from plumbwell.reduction.adjustment import Adjustment
 from plumbwell.reduction.chance import f_chance
 from plumbwell.reduction.design import design, walk_priors
 from plumbwell.reduction.drift_basis import DriftUnknown

@@ -10,7 +10,8 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from plumbwell.reduction.adjustment import Adjustment, NoiseTerms, adjusted
+from plumbwell.reduction.adjusted_network import adjusted
+from plumbwell.reduction.adjustment import Adjustment, NoiseTerms
 from plumbwell.reduction.calibration import instruments_used
 from plumbwell.reduction.datums import StationGravity, datum_stations, referred_gravity
 from plumbwell.reduction.drift_basis import DriftUnknown, drift_basis
@@ -24,6 +25,7 @@ from plumbwell.reduction.scale_factor import ScaleEstimate, ScaleTold
 from plumbwell.reduction.visits import Visits, visits
 from plumbwell.study.kept import Kept
 from plumbwell.survey.column import Array, Index, frozen, frozen_index
+from plumbwell.survey.errors import NumericalError
 from plumbwell.survey.instrument import Instrument, Run, Tare
 from plumbwell.survey.readings import Readings
 from plumbwell.survey.recipe import Recipe
@@ -128,10 +130,17 @@ def network_work(
     fit, walk, walk_not_needed = plain, _Walk(asked=recipe.drift_walk), False
     if recipe.drift_walk != "off":
         clean = keep(_without_named, found, len(readings)) if len(found.rows) else None
-        wandering = keep(
-            adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed | _held(plain), walk=recipe.drift_walk,
-            responses=responses, trust=clean,
-        )
+        try:
+            wandering = keep(
+                adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed | _held(plain),
+                walk=recipe.drift_walk, responses=responses, trust=clean,
+            )
+        except NumericalError:  # without the readings in error nothing joins the rest
+            clean = None
+            wandering = keep(
+                adjusted, observed, basis, stays, asked.ties, parts, noise, **fixed | _held(plain),
+                walk=recipe.drift_walk, responses=responses,
+            )
         tried = wandering.walk_tried
         if wandering.walk is not None and any(not one.one_visit for one in found.proposed):
             found, needed = keep(
