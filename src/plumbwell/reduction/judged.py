@@ -101,7 +101,10 @@ class Judgement:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class _Candidate:
-    """One term: worth (fall of the weighted squares in units of noise, less what trying costs) and what it is."""
+    """One term: worth (fall of the weighted squares in units of noise, less what trying costs) and what it is.
+
+    `more` is True for a reading or visit that reads too much.
+    """
 
     worth: float
     run: int
@@ -109,6 +112,7 @@ class _Candidate:
     kind: str
     at: int
     visit: int = -1
+    more: bool = False
     twin: bool = False
 
 
@@ -214,6 +218,7 @@ def _best(
                 _Candidate(
                     worth=float(told[n]) - 2.0 * np.log(tested.size), run=int(visits.run[visit]),
                     station=int(visits.station[visit]), kind="visit", at=visit, visit=visit,
+                    more=bool(solution.residual[visit, 0] > 0.0),
                 )
             )
         if freedom >= LEAST_FREEDOM and not many:
@@ -255,8 +260,9 @@ def _best(
 
 def _twins(one: _Candidate, near: dict[tuple[str, int], list[_Candidate]]) -> list[_Candidate]:
     """What is as far off, so that nothing tells which is wrong: visits of one station, two readings of a visit."""
-    others = near.get(_place(one), [])
-    return [other for other in others if other is not one and other.worth > ALIKE**2 * one.worth]
+    # What is off to the same side stands with it, not against it.
+    others = (other for other in near.get(_place(one), []) if other.more != one.more)
+    return [other for other in others if other.worth > ALIKE**2 * one.worth]
 
 
 def _place(one: _Candidate) -> tuple[str, int]:
@@ -356,6 +362,7 @@ def _readings(fit: Adjustment, kept: NDArray[np.bool_], estimate: bool) -> list[
             _Candidate(
                 worth=float(told[n]) - 2.0 * np.log(alike.size), run=int(visits.run[visit[at]]),
                 station=int(visits.station[visit[at]]), kind="reading", at=at, visit=int(visit[at]),
+                more=bool(fit.standardised[visits.rows[at]] > 0.0),
             )
         )
     return found
