@@ -34,7 +34,7 @@ def wide(request):
     return spread, answer @ solution.factor.whole() @ answer.T
 
 
-def close(got, wanted):
+def assert_close(got, wanted):
     """Agreement to 1e-8 uGal2, some uGal2 being usual."""
     np.testing.assert_allclose(np.asarray(got) / MICROGAL**2, np.asarray(wanted) / MICROGAL**2, rtol=0, atol=1e-8)
 
@@ -48,8 +48,8 @@ def every_pair(n):
 def test_pairs_near_and_far_and_the_matrix(wide):
     one, whole = wide
     first, second = every_pair(len(whole))
-    close(one.between(single(first), single(second)).reshape(whole.shape), whole)
-    close(one.matrix(single(np.arange(len(whole)))), whole)
+    assert_close(one.between(single(first), single(second)).reshape(whole.shape), whole)
+    assert_close(one.matrix(single(np.arange(len(whole)))), whole)
     # Off the pattern: stations of the first and the last run have elements of the inverse that stand nowhere.
     design = one.design
     touched = [design.touched_unknown[design.touched_station == at] for at in range(len(whole))]
@@ -62,7 +62,7 @@ def test_it_does_not_matter_how_many_pairs_are_formed_at_a_time(wide, monkeypatc
     first, second = every_pair(len(whole))
     monkeypatch.setattr(wide_spread, "AT_ONCE", 1)
     some = np.arange(0, len(first), 7)
-    close(one.between(single(first[some]), single(second[some])), whole[first[some], second[some]])
+    assert_close(one.between(single(first[some]), single(second[some])), whole[first[some], second[some]])
 
 
 def sums_of(n, count, seed):
@@ -82,10 +82,10 @@ def test_sums_of_two_stations(wide):
     sums, by = sums_of(len(whole), 30, 1)
     others, by_others = sums_of(len(whole), 30, 2)
     wanted = by @ whole @ by_others.T
-    close(one.between(sums, others), np.diag(wanted))
-    close(one.matrix(sums), by @ whole @ by.T)
+    assert_close(one.between(sums, others), np.diag(wanted))
+    assert_close(one.matrix(sums), by @ whole @ by.T)
     some = np.array([2, 2, 9])
-    close(one.between(sums[some], others[some]), np.diag(wanted)[some])
+    assert_close(one.between(sums[some], others[some]), np.diag(wanted)[some])
     assert len(sums) == 30 and len(sums[some]) == 3
 
 
@@ -101,10 +101,10 @@ def test_anchors_are_taken_from_every_station(wide):
         turn = turn - shares @ picked
     wanted = turn @ whole @ turn.T
     first, second = every_pair(n)
-    close(spread.between(single(first), single(second)).reshape(n, n), wanted)
-    close(spread.matrix(single(np.arange(n))), wanted)
+    assert_close(spread.between(single(first), single(second)).reshape(n, n), wanted)
+    assert_close(spread.matrix(single(np.arange(n))), wanted)
     sums, by = sums_of(n, 25, 4)
-    close(spread.matrix(sums), by @ wanted @ by.T)
+    assert_close(spread.matrix(sums), by @ wanted @ by.T)
 
 
 @pytest.fixture
@@ -128,10 +128,10 @@ def test_gravity_referred_to_its_datum_has_exact_zeros_there(gravity, datum):
     taken = np.flatnonzero(at >= 0)
     turn[taken, at[taken]] -= 1.0
     referred, wanted = spread.referred(at), turn @ whole @ turn.T
-    close(referred.matrix(), wanted)
-    close(referred.variance(), np.maximum(np.diag(wanted), 0.0))
+    assert_close(referred.matrix(), wanted)
+    assert_close(referred.variance(), np.maximum(np.diag(wanted), 0.0))
     first, second = every_pair(n)
-    close(referred.between(first, second).reshape(n, n), wanted)
+    assert_close(referred.between(first, second).reshape(n, n), wanted)
     for own in np.unique(at[taken]).tolist():
         if at[own] != own:
             continue
@@ -143,8 +143,8 @@ def test_gravity_referred_to_its_datum_has_exact_zeros_there(gravity, datum):
 def test_sums_of_spreads(gravity, wide):
     spread, whole = gravity
     more = low_rank(np.full((len(whole), 1), MICROGAL))
-    close((spread + more).matrix(), whole + MICROGAL**2)
-    close((spread + spread).variance(), 2.0 * np.diag(whole))
+    assert_close((spread + more).matrix(), whole + MICROGAL**2)
+    assert_close((spread + spread).variance(), 2.0 * np.diag(whole))
 
 
 def test_covariances_along_a_chain(gravity):
@@ -165,12 +165,12 @@ def test_covariances_along_a_chain(gravity):
     referred, from_datum = through(spread.referred(datum), pairs, follower), by @ turn @ whole @ turn.T @ by.T
     for one, want in ((chain, wanted), (referred, from_datum), (chain + referred, wanted + from_datum)):
         assert len(one) == n - 1
-        close(one.matrix(), want)
-        close(one.variance(), np.diag(want))
-        close(one.with_follower(), np.append(np.diag(want, 1), 0.0))
+        assert_close(one.matrix(), want)
+        assert_close(one.variance(), np.diag(want))
+        assert_close(one.with_follower(), np.append(np.diag(want, 1), 0.0))
         some = np.array([0, 4, 4, n - 2])
-        close(one.matrix(some), want[np.ix_(some, some)])
-        close(one.between(some, some[::-1]), want[some, some[::-1]])
+        assert_close(one.matrix(some), want[np.ix_(some, some)])
+        assert_close(one.between(some, some[::-1]), want[some, some[::-1]])
     # Of two stations that both answer with one weight the datum falls out, whatever it is.
     even = replace(pairs, by_first=-np.ones(n - 1), by_second=np.ones(n - 1))
-    close(through(spread.referred(datum), even, follower).matrix(), through(spread, even, follower).matrix())
+    assert_close(through(spread.referred(datum), even, follower).matrix(), through(spread, even, follower).matrix())

@@ -182,7 +182,7 @@ def solved(request):
     return results, dense_of(rows, orders, tares, ties), rows, orders, tares, ties
 
 
-def close(got, wanted, scale=UGAL, *, tied=False):
+def assert_close(got, wanted, scale=UGAL, *, tied=False):
     """Agreement to a millionth of a microgal; with gravity near 10 m/s2 rounding takes a little more."""
     np.testing.assert_allclose(got, wanted, rtol=0, atol=1e-6 * scale + (3e-14 if tied else 0.0))
 
@@ -196,17 +196,17 @@ def test_visits_are_the_stops_with_their_mean_time_and_count(solved):
     )
     stops = [visit[0].station for visit in dense.visits]
     assert table.repeated.tolist() == [stops.count(one) > 1 for one in stops]
-    close(table.level_sd, np.sqrt(dense.variance[: len(dense.visits)]))
+    assert_close(table.level_sd, np.sqrt(dense.variance[: len(dense.visits)]))
 
 
 def test_residuals_and_their_sd_are_those_of_the_dense_network(solved):
     results, dense, _, _, _, ties = solved
     table = visit_table(results)
-    close(table.residual, dense.residual, tied=bool(ties))
+    assert_close(table.residual, dense.residual, tied=bool(ties))
     unchecked = np.isnan(dense.residual_sd)
     assert np.isnan(table.residual_sd).tolist() == unchecked.tolist()
-    close(table.residual_sd[~unchecked], dense.residual_sd[~unchecked])
-    close(table.residual[unchecked], 0.0, tied=bool(ties))
+    assert_close(table.residual_sd[~unchecked], dense.residual_sd[~unchecked])
+    assert_close(table.residual[unchecked], 0.0, tied=bool(ties))
 
 
 def test_a_level_is_the_visit_less_bias_and_gravity_of_its_station(solved):
@@ -216,7 +216,7 @@ def test_a_level_is_the_visit_less_bias_and_gravity_of_its_station(solved):
     for n, visit in enumerate(dense.visits):
         fixed = dense.functional({("station", visit[0].station): 1.0, ("bias", visit[0].run): 1.0})
         level.append(dense.values[n] + dense.known[n] - fixed @ dense.estimate)
-    close(table.level, level, tied=bool(ties))
+    assert_close(table.level, level, tied=bool(ties))
 
 
 def spans_of(run, tares):
@@ -245,7 +245,7 @@ def test_drift_lines_with_tares_are_those_of_the_dense_network(solved):
                     terms["tare", n] = 1.0
                     held += tare.size if tare.size is not None and tare.size_sd is None else 0.0
             wanted.append(dense.functional(terms) @ dense.estimate + held)
-        close(line.drift, wanted, tied=bool(ties))
+        assert_close(line.drift, wanted, tied=bool(ties))
 
 
 def test_the_band_is_the_sd_of_the_line_among_the_visits_that_tell_of_it(solved):
@@ -273,7 +273,7 @@ def test_the_band_is_the_sd_of_the_line_among_the_visits_that_tell_of_it(solved)
                     if tare.run == run and line.time[at] >= tare.time:
                         terms["tare", n] = 1.0
                 row = mean + dense.functional(terms)
-                close(line.sd[at], np.sqrt(row @ dense.covariance @ row))
+                assert_close(line.sd[at], np.sqrt(row @ dense.covariance @ row))
 
 
 def test_mean_rate_and_its_sd(solved):
@@ -287,8 +287,8 @@ def test_mean_rate_and_its_sd(solved):
             assert line.rate == RATE and np.isnan(line.rate_sd)
             continue
         row = dense.functional({("drift", run, p): length ** (p - 1) for p in range(1, orders[run] + 1)})
-        close(line.rate * HOUR, row @ dense.estimate, tied=True)
-        close(line.rate_sd * HOUR, np.sqrt(row @ dense.covariance @ row))
+        assert_close(line.rate * HOUR, row @ dense.estimate, tied=True)
+        assert_close(line.rate_sd * HOUR, np.sqrt(row @ dense.covariance @ row))
 
 
 def test_sizes_of_tares_and_their_sd(solved):
@@ -302,8 +302,8 @@ def test_sizes_of_tares_and_their_sd(solved):
             assert one.size == one.tare.size and one.sd is None
             continue
         row = dense.functional({("tare", n): 1.0})
-        close(one.size, row @ dense.estimate)
-        close(one.sd, np.sqrt(row @ dense.covariance @ row))
+        assert_close(one.size, row @ dense.estimate)
+        assert_close(one.sd, np.sqrt(row @ dense.covariance @ row))
 
 
 def one_station(times, *, chance, per_stop=1):
@@ -351,7 +351,7 @@ def test_no_choice_of_the_datum_changes_line_and_band():
         bands.append([np.concatenate([one.drift, one.sd]) for one in drift_lines(results)])
     for other in bands[1:]:
         for got, wanted in zip(other, bands[0], strict=True):
-            close(got, wanted, tied=True)
+            assert_close(got, wanted, tied=True)
     assert min(one[97:].min() for one in bands[0]) > 1 * UGAL
 
 

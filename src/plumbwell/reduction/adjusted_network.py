@@ -7,7 +7,10 @@ depth; the datum is set by `datums.referred_gravity`.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
+from functools import wraps
+from typing import ParamSpec, TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -68,8 +71,24 @@ PLAINLY = 0.1
 DOUBTED = 0.5
 """Robust weight under which a reading counts as taken out in degrees of freedom."""
 
+Asked = ParamSpec("Asked")
+Given = TypeVar("Given")
 
 
+def told_when_unsolved(step: Callable[Asked, Given]) -> Callable[Asked, Given]:
+    """The step, whose failing algebra is told as the failing network that it is."""
+
+    @wraps(step)
+    def told(*inputs: Asked.args, **settings: Asked.kwargs) -> Given:
+        try:
+            return step(*inputs, **settings)
+        except np.linalg.LinAlgError as error:
+            raise NumericalError(UNSOLVED) from error
+
+    return told
+
+
+@told_when_unsolved
 def adjusted(
     observed: Array,
     basis: DriftBasis,
@@ -120,41 +139,6 @@ def adjusted(
     NumericalError
         The visits, ties and priors determine the unknowns in name alone.
     """
-    try:
-        return _adjusted(
-            observed, basis, visits, ties, parts, terms,
-            n_stations=n_stations,
-            start_orders=start_orders,
-            automatic=automatic,
-            station=station,
-            walk=walk,
-            responses=responses,
-            trust=trust,
-            near=near,
-            known=known,
-        )
-    except np.linalg.LinAlgError as error:
-        raise NumericalError(UNSOLVED) from error
-
-
-def _adjusted(
-    observed: Array,
-    basis: DriftBasis,
-    visits: Visits,
-    ties: TieRows,
-    parts: Parts,
-    terms: NoiseTerms,
-    *,
-    n_stations: int,
-    start_orders: tuple[int, ...],
-    automatic: tuple[int, ...],
-    station: Index,
-    walk: str | float = "off",
-    responses: tuple[Array, ...] = (),
-    trust: Array | None = None,
-    near: Adjustment | None = None,
-    known: Adjustment | None = None,
-) -> Adjustment:
     rows = visits.rows
     orders = tuple(
         0 if not basis.length[run] > 0.0 or _instant(visits, run) else order for run, order in enumerate(start_orders)
@@ -236,7 +220,7 @@ def _adjusted(
             try:
                 seat = seated(one, rank)
                 solved[chosen] = (seat, _solved(one, 1.0 / (noise.variance + seat.variance), mean, ties))
-            except (np.linalg.LinAlgError, NumericalError):  # determined in name alone
+            except np.linalg.LinAlgError:  # determined in name alone
                 return None
         return solved[chosen]
 
@@ -363,7 +347,7 @@ def _adjusted(
 
 
 def _nothing() -> tuple[Reseating, Solution]:
-    raise NumericalError("the network of readings could not be solved: its drift terms cannot be told apart")
+    raise NumericalError(UNSOLVED)
 
 
 def _designed(
@@ -427,7 +411,4 @@ def _instant(visits: Visits, run: int) -> bool:
 
 
 def _solved(one: Design, weight: Array, observed: Array, ties: TieRows) -> Solution:
-    try:
-        return solve(one, weight, observed if observed.ndim == 2 else observed[:, None], ties)
-    except np.linalg.LinAlgError as error:
-        raise NumericalError(UNSOLVED) from error
+    return solve(one, weight, observed if observed.ndim == 2 else observed[:, None], ties)

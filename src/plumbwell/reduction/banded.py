@@ -122,8 +122,8 @@ class Factor:
     layout : Layout
     scale : (size,) array
         Makes the diagonal 1.
-    root, spread : (count, p, p) arrays
-        Inverse of the Cholesky factor of each reduced diagonal block, and that block's inverse.
+    spread : (count, p, p) array
+        Inverse of each reduced diagonal block.
     carry : (count - 1, p, p) array
         Next block's neighbour times `spread`.
     arrow : (count * p, c) array
@@ -137,7 +137,6 @@ class Factor:
 
     layout: Layout
     scale: Array
-    root: Array
     spread: Array
     carry: Array
     arrow: Array
@@ -254,7 +253,7 @@ def factored(one: Layout, flat: Array, *, pin: float = 0.0, scale: Array | None 
     neighbours = np.zeros((0, p, p))
     if count > 1:
         neighbours = flat[beside:arrow].reshape(count - 1, p, p) * (by_block[1:, :, None] * by_block[:-1, None, :])
-    root, spread, carry = np.empty_like(blocks), np.empty_like(blocks), np.empty_like(neighbours)
+    spread, carry = np.empty_like(blocks), np.empty_like(neighbours)
     logarithm, pins = 0.0, []
     for k in range(count):
         reduced = blocks[k]
@@ -263,7 +262,6 @@ def factored(one: Layout, flat: Array, *, pin: float = 0.0, scale: Array | None 
         inverse, log_det, held = _inverse_root(reduced, pin)
         logarithm += log_det
         pins += [k * p + n for n in held]
-        root[k] = inverse
         spread[k] = inverse.T @ inverse
         if k < count - 1:
             carry[k] = neighbours[k] @ spread[k]
@@ -280,7 +278,6 @@ def factored(one: Layout, flat: Array, *, pin: float = 0.0, scale: Array | None 
     return Factor(
         layout=one,
         scale=scale,
-        root=root,
         spread=spread,
         carry=carry,
         arrow=turned,

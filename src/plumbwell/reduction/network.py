@@ -123,11 +123,6 @@ class Solution:
         at_station[np.flatnonzero(one.in_border >= 0)] = 0.0  # there the pairs of entries hold it
         return own - 2.0 * cross + at_station[one.local]
 
-    def unknown_sd(self) -> Array:
-        """Sd of every border unknown, (q,)."""
-        sd: Array = np.sqrt(self.unknown_variance(np.arange(self.design.size)))
-        return sd
-
     def sum_of_squares(self) -> float:
         """Weighted sum of squares of the first right-hand side's visit residuals."""
         return float(self.weight @ self.residual[:, 0] ** 2)
