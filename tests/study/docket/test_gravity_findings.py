@@ -126,6 +126,15 @@ def test_metres_written_as_feet_are_found_by_the_stated_reference(invented):
     assert one.text.endswith("If the depths are metres, written as feet, it is 2.40 g/cm³, which fits.")
 
 
+def test_metres_written_as_feet_are_told_where_the_markers_name_other_rock_at_the_false_depths(invented):
+    # 3.680 - (3.680 - 2.4)/0.3048 = -0.519, no rock; 2.40 is half a g/cm3 from the 1.90 of the markers there.
+    (one,) = plausible(marked(invented, of_rock(invented, 2.4, depth=0.3048), 1.9))
+    assert one.text.endswith(
+        "If the depths are metres, written as feet, it is 2.40 g/cm³, a density of rock: other rock is then expected "
+        "there."
+    )
+
+
 def test_what_no_foot_explains_says_so(invented):
     (one,) = plausible(marked(invented, of_rock(invented, 2.7), 1.9))
     assert "0.80 g/cm³ above that of the markers" in one.text and "do not explain it (" in one.text

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from plumbwell.earth.constants import FOUR_PI_G
 from plumbwell.study.docket.depths import mostly_above_ground
+from plumbwell.study.docket.rock import HEAVIEST, LIGHTEST
 from plumbwell.study.docket.ties import far_ties
 from plumbwell.study.docket.wording import GRAM_PER_CM3, amount, counted, density, gravity, numbers
 from plumbwell.study.finding import Finding
@@ -135,6 +136,13 @@ def _far_from_expected(results: Results, known: Index, turning: float) -> Iterat
         explains = f"If the depths are feet, written as metres, it is {density(as_feet, 2)}, which fits."
     elif abs(as_metres - rock) <= EXPLAINED:
         explains = f"If the depths are metres, written as feet, it is {density(as_metres, 2)}, which fits."
+    elif (told := _like_rock(median, as_feet, rock)) or _like_rock(median, as_metres, rock):
+        # What is expected is taken at the stated depths, and moves with them when they are wrong.
+        units, as_rock = ("feet, written as metres", as_feet) if told else ("metres, written as feet", as_metres)
+        explains = (
+            f"If the depths are {units}, it is {density(as_rock, 2)}, a density of rock: other rock is then expected "
+            "there."
+        )
     else:
         explains = (
             f"Depths in feet written as metres, or the other way round, do not explain it ({density(as_feet, 2)}, "
@@ -151,6 +159,12 @@ def _far_from_expected(results: Results, known: Index, turning: float) -> Iterat
         "there.",
         intervals=numbers(known),
     )
+
+
+def _like_rock(median: float, other: float, expected: float) -> bool:
+    """True where other units of depth make of a density that no rock has one that rock has, nearer the expected."""
+    no_rock = not LIGHTEST <= median <= HEAVIEST
+    return no_rock and LIGHT_AS_FEET <= other <= HEAVY_AS_FEET and abs(other - expected) < abs(median - expected)
 
 
 def _as_of_feet(known: Index, median: float, as_feet: float) -> Finding:
